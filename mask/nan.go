@@ -1,0 +1,5 @@
+package mask
+
+import "math"
+
+var nan = math.NaN()
