@@ -1,0 +1,67 @@
+# foldshade: build, demonstrate and test. `make help` lists the targets.
+
+GO       ?= go
+FUZZTIME ?= 20s
+
+# A clone that belongs to another user has no version stamp; that is no reason
+# to fail the build.
+VCS := $(shell git -C '$(CURDIR)' status >/dev/null 2>&1 && echo auto || echo false)
+
+PURE   := ./geometry/... ./dem ./mask/...
+SHARED := ./mask/... ./dem/raster/...
+
+.PHONY: help setup build demo test check unit pure race bench fuzz clean
+
+help:
+	@echo 'make setup   install what the build needs and what is missing'
+	@echo 'make build   bin/foldshade'
+	@echo 'make demo    build, then the main job on an invented valley, in demo/'
+	@echo 'make test    every check, in under ten minutes on two cores'
+	@echo 'make bench   speed, against GDAL on the same machine'
+	@echo 'make fuzz    every fuzz target for FUZZTIME=$(FUZZTIME)'
+	@echo 'make clean   remove bin/ and demo/'
+
+setup:
+	@GO='$(GO)' .ci/setup
+
+build: setup
+	$(GO) build -buildvcs=$(VCS) -o bin/foldshade ./cmd/foldshade
+
+demo: build
+	bin/foldshade demo --out demo --overwrite
+
+test: setup check unit pure race
+	@echo 'make test: everything passed'
+
+check:
+	@unformatted=$$(gofmt -l cmd dem geometry mask); if [ -n "$$unformatted" ]; then \
+		echo "gofmt would change:"; echo "$$unformatted"; exit 1; fi
+	$(GO) vet ./...
+	$(GO) tool staticcheck ./...
+
+unit:
+	$(GO) test ./...
+
+# geometry, dem and mask serve programs that have no C compiler.
+pure:
+	CGO_ENABLED=0 $(GO) build $(PURE)
+	CGO_ENABLED=0 $(GO) test $(PURE)
+
+# The concurrent parts, with the race detector and the strict check of
+# pointers passed to C.
+race:
+	GOEXPERIMENT=cgocheck2 $(GO) test -race -short $(SHARED)
+
+bench: setup
+	$(GO) test -run '^$$' -bench . -benchmem ./...
+
+fuzz: setup
+	@for package in $$($(GO) list ./...); do \
+		for target in $$($(GO) test -list '^Fuzz' $$package | grep '^Fuzz'); do \
+			echo "$$package $$target"; \
+			$(GO) test -run '^$$' -fuzz "^$$target\$$" -fuzztime $(FUZZTIME) $$package || exit 1; \
+		done; \
+	done
+
+clean:
+	rm -rf bin demo
