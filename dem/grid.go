@@ -30,6 +30,9 @@ type Grid struct {
 	Transform [6]float64
 	// CRS is the coordinate reference system as WKT2.
 	CRS string
+	// Geographic says that the rows are parallels and the columns meridians,
+	// as on a grid in longitude and latitude.
+	Geographic bool
 
 	step       int // cells between lattice nodes
 	latR, latC int // lattice nodes along rows and columns
@@ -89,6 +92,7 @@ func (g *Grid) fill(locate Locator) error {
 		return err
 	}
 	g.nodes = make([]Local, n)
+	g.Geographic = true
 	for i := range n {
 		lon, lat := x[5*i:5*i+5], y[5*i:5*i+5]
 		phi := geometry.Angle(lat[0]) * geometry.Degree
@@ -99,6 +103,9 @@ func (g *Grid) fill(locate Locator) error {
 			ColE: wrap(lon[2]-lon[1]) * east, ColN: (lat[2] - lat[1]) * north,
 			RowE: wrap(lon[4]-lon[3]) * east, RowN: (lat[4] - lat[3]) * north,
 		}
+		if l := &g.nodes[i]; math.Abs(l.ColN) > parallel*math.Abs(l.ColE) || math.Abs(l.RowE) > parallel*math.Abs(l.RowN) {
+			g.Geographic = false
+		}
 		if !(math.Abs(g.nodes[i].ColE*g.nodes[i].RowN-g.nodes[i].ColN*g.nodes[i].RowE) > 0) {
 			row, col := i/g.latC*g.step, i%g.latC*g.step
 			return fmt.Errorf("cell size at row %d, column %d is not a positive number of metres", row, col)
@@ -106,6 +113,10 @@ func (g *Grid) fill(locate Locator) error {
 	}
 	return nil
 }
+
+// parallel is the tangent of the angle by which a row may lean against the
+// parallel: over 100,000 cells it stays below a tenth of a cell.
+const parallel = 1e-6
 
 // wrap brings a longitude difference into [-180, 180).
 func wrap(d float64) float64 { return d - 360*math.Floor((d+180)/360) }
