@@ -1,5 +1,11 @@
 package geometry
 
+import (
+	"encoding/csv"
+	"math"
+	"strings"
+)
+
 // Kind is the kind of a look; its text is what the user writes.
 type Kind string
 
@@ -11,6 +17,13 @@ const (
 	Flight    Kind = "flight"    // geodesic line at constant height
 	Tripod    Kind = "tripod"    // fixed ground-based radar
 )
+
+// Kinds lists the five kinds in the order of the docs.
+var Kinds = []Kind{Fixed, Orbit, Ephemeris, Flight, Tripod}
+
+// DrivenKinds lists the kinds that the program computes today. The looks of
+// the others are read and checked, then refused by whoever cannot drive them.
+var DrivenKinds = []Kind{Fixed}
 
 // Side is the side to which the radar looks, seen along the heading.
 type Side string
@@ -73,7 +86,57 @@ type Look struct {
 	SectorFrom, SectorTo Angle   // clockwise from SectorFrom to SectorTo
 	MinRange, MaxRange   float64 // slant range, metres
 
+	// Band is the IEEE Std 521 letter when the user gave nothing closer;
+	// Wavelength is then that of the band's centre.
+	Band       string
 	Wavelength float64 // metres
 	Bandwidth  float64 // hertz
 	Baseline   float64 // perpendicular baseline, metres
+}
+
+// NewLook returns a look with nothing given.
+func NewLook() Look {
+	nan, nowhere := math.NaN(), Place{NotGiven, NotGiven}
+	return Look{
+		Incidence: NotGiven, Azimuth: NotGiven, Heading: NotGiven, SlantRange: nan,
+		Altitude: nan, Inclination: NotGiven, Anchor: nowhere,
+		NearIncidence: NotGiven, FarIncidence: NotGiven,
+		Start: nowhere, End: nowhere, Height: nan, HeightAboveGround: nan,
+		Position: nowhere, Antenna: nan, SectorFrom: NotGiven, SectorTo: NotGiven,
+		MinRange: nan, MaxRange: nan,
+		Wavelength: nan, Bandwidth: nan, Baseline: nan,
+	}
+}
+
+// Frequency returns the centre frequency in hertz, NaN when neither band nor
+// frequency nor wavelength was given.
+func (l Look) Frequency() float64 { return FrequencyOf(l.Wavelength) }
+
+// Pairs returns the look as keys and values in the order of KeyTable, as a
+// user would write them: BuildLook of them is the same look, bit for bit,
+// for every look that came from BuildLook.
+func (l Look) Pairs() []Pair {
+	var pairs []Pair
+	for _, k := range KeyTable {
+		if v := k.write(&l); v != "" {
+			pairs = append(pairs, Pair{Key: k.Name, Value: v})
+		}
+	}
+	return pairs
+}
+
+// String returns the look in the form of the --look flag: key=value pairs
+// with commas between them, a pair that holds a comma or a quote in quotes as
+// in CSV.
+func (l Look) String() string {
+	pairs := l.Pairs()
+	fields := make([]string, len(pairs))
+	for i, p := range pairs {
+		fields[i] = p.Key + "=" + p.Value
+	}
+	var text strings.Builder
+	w := csv.NewWriter(&text)
+	_ = w.Write(fields) // a strings.Builder does not fail
+	w.Flush()
+	return strings.TrimSuffix(text.String(), "\n")
 }
