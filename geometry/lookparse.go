@@ -340,7 +340,7 @@ func nearest(text string, candidates []string) string {
 			return c
 		}
 	}
-	best, least := "", len(t)/3
+	best, least := "", (len(t)+1)/3
 	for _, c := range candidates {
 		if d := editDistance(t, strings.ToLower(c)); d <= least {
 			if best == "" || d < least {

@@ -263,8 +263,12 @@ func placeCodec(field func(*Look) *Place) codec {
 
 // sectorCodec is FROM/TO in azimuths; 0/360 is all around, as if not given.
 var sectorCodec = codec{"FROM/TO, each 0 to 360", func(text string, l *Look) error {
-	if _, _, err := twoNumbers(text); err != nil {
+	first, second, err := twoNumbers(text)
+	if err != nil {
 		return err
+	}
+	if first == 0 && second == 360 {
+		return nil
 	}
 	a, b, _ := strings.Cut(text, "/")
 	from, err := readAzimuth(strings.TrimSpace(a))
