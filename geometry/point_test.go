@@ -335,6 +335,24 @@ func TestSightFrames(t *testing.T) {
 	}
 }
 
+// The polynomial against the standard library, and both angles against Atan2
+// over the whole range of facets.
+func TestArctan(t *testing.T) {
+	const seed = 11
+	t.Logf("seed %d", seed)
+	rnd := rand.New(rand.NewPCG(seed, 3))
+	for i := range 4001 {
+		x := float64(i-2000) / 2000
+		require.InDelta(t, math.Atan(x), arctan(x), arctanError)
+	}
+	for range 20000 {
+		s := NewSight(Angle(1+88*rnd.Float64())*Degree, Angle(360*rnd.Float64())*Degree)
+		f := s.Facet(2*rnd.NormFloat64(), 2*rnd.NormFloat64())
+		require.InDelta(t, math.Atan2(math.Hypot(f.Above, f.Across), f.Along), float64(f.LocalIncidence()), arctanError)
+		require.InDelta(t, math.Atan2(f.Above, f.Along), float64(f.RangeIncidence()), arctanError)
+	}
+}
+
 // NaN in gives NaN out, and never a class.
 func TestPointNaN(t *testing.T) {
 	s := NewSight(39*Degree, 78*Degree)
