@@ -34,8 +34,8 @@ type Grid struct {
 	// as on a grid in longitude and latitude.
 	Geographic bool
 
-	step       int // cells between lattice nodes
-	latR, latC int // lattice nodes along rows and columns
+	stepR, stepC float64 // cells between lattice nodes
+	latR, latC   int     // lattice nodes along rows and columns
 	nodes      []Local
 }
 
@@ -59,19 +59,37 @@ type Locator func(x, y []float64) error
 const latticeStep = 32
 
 // NewGrid lays out a grid. The transform must be without rotation, and locate
-// must be able to place every node of a lattice that reaches one step beyond
-// the grid; where it returns an error the grid is refused with it.
+// must be able to place the nodes of a lattice over the grid, from outer edge
+// to outer edge and no farther; where it returns an error the grid is refused
+// with it. It is called once, with all points.
 func NewGrid(rows, cols int, transform [6]float64, crs string, locate Locator) (*Grid, error) {
 	if rows < 1 || cols < 1 {
 		return nil, fmt.Errorf("grid of %d x %d cells: needs at least one row and one column", rows, cols)
 	}
-	g := &Grid{Rows: rows, Cols: cols, Transform: transform, CRS: crs, step: latticeStep}
-	g.latR = (rows-1)/g.step + 2
-	g.latC = (cols-1)/g.step + 2
+	g := &Grid{Rows: rows, Cols: cols, Transform: transform, CRS: crs}
+	for step := latticeStep; g.latR == 0 || g.latR*g.latC > maxNodes; step *= 2 {
+		g.latR, g.stepR = lattice(rows, step)
+		g.latC, g.stepC = lattice(cols, step)
+	}
 	if err := g.fill(locate); err != nil {
 		return nil, err
 	}
 	return g, nil
+}
+
+// maxNodes bounds the lattice, 48 bytes a node and 160 more while it is laid
+// out; beyond it the nodes stand farther apart. A grid reaches it at 16,000
+// cells a side, where cells are smaller than the 100 m of latticeStep.
+const maxNodes = 1 << 18
+
+// lattice places nodes at most step cells apart from the first cell to the
+// last one.
+func lattice(cells, step int) (nodes int, spacing float64) {
+	if cells == 1 {
+		return 2, 1
+	}
+	nodes = (cells-2)/step + 2
+	return nodes, float64(cells-1) / float64(nodes-1)
 }
 
 // fill computes the lattice: five located points a node, the node itself and
@@ -83,7 +101,7 @@ func (g *Grid) fill(locate Locator) error {
 	n := g.latR * g.latC
 	x, y := make([]float64, 5*n), make([]float64, 5*n)
 	for i := range n {
-		row, col := float64(i/g.latC*g.step), float64(i%g.latC*g.step)
+		row, col := float64(i/g.latC)*g.stepR, float64(i%g.latC)*g.stepC
 		for k, o := range offsets {
 			x[5*i+k], y[5*i+k] = g.XY(row+o[0], col+o[1])
 		}
@@ -107,8 +125,8 @@ func (g *Grid) fill(locate Locator) error {
 			g.Geographic = false
 		}
 		if !(math.Abs(g.nodes[i].ColE*g.nodes[i].RowN-g.nodes[i].ColN*g.nodes[i].RowE) > 0) {
-			row, col := i/g.latC*g.step, i%g.latC*g.step
-			return fmt.Errorf("cell size at row %d, column %d is not a positive number of metres", row, col)
+			row, col := float64(i/g.latC)*g.stepR, float64(i%g.latC)*g.stepC
+			return fmt.Errorf("cell size at row %.0f, column %.0f is not a positive number of metres", row, col)
 		}
 	}
 	return nil
@@ -140,8 +158,8 @@ func (g *Grid) RowCol(x, y float64) (row, col float64) {
 // At returns the ground at a fractional cell position, interpolated
 // bilinearly on the lattice and extrapolated outside the grid.
 func (g *Grid) At(row, col float64) Local {
-	r, u := split(row/float64(g.step), g.latR)
-	c, v := split(col/float64(g.step), g.latC)
+	r, u := split(row/g.stepR, g.latR)
+	c, v := split(col/g.stepC, g.latC)
 	a, b := &g.nodes[r*g.latC+c], &g.nodes[r*g.latC+c+1]
 	d, e := &g.nodes[(r+1)*g.latC+c], &g.nodes[(r+1)*g.latC+c+1]
 	mix := func(p, q, s, t float64) float64 {
