@@ -35,7 +35,7 @@ func (v *Valley) GeoJSON() string {
 // with the conformal latitude undone by its own series in sin(2 j chi).
 // Source: Krueger 1912 in the form of Karney 2011, Transverse Mercator with
 // an accuracy of a few nanometers, eqs. 11 and 36 (from memory). Three terms
-// err by less than 1e-5 m here.
+// err by less than a millimetre here.
 func lonLat(x, y float64) (lon, lat float64) {
 	const n = geometry.Flattening / (2 - geometry.Flattening)
 	const radius = geometry.SemiMajor / (1 + n) * (1 + n*n/4 + n*n*n*n/64)

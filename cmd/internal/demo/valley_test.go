@@ -10,20 +10,23 @@ import (
 	"regexp"
 	"slices"
 	"strings"
+	"sync"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 )
 
+var made = sync.OnceValues(func() (*Valley, error) { return New(Seed) })
+
 func valley(t *testing.T) *Valley {
 	t.Helper()
-	v, err := New(Seed)
+	v, err := made()
 	require.NoError(t, err)
 	return v
 }
 
-// decimetres is the sum of the heights as whole decimetres.
+// decimetres is the SHA-256 sum of the heights as whole decimetres.
 func decimetres(v *Valley) string {
 	hash := sha256.New()
 	for _, h := range v.Heights {
@@ -170,9 +173,9 @@ func TestLonLat(t *testing.T) {
 		{423200, 5203600, -40.0098408581454, 46.9814718095518},
 	} {
 		lon, lat := lonLat(row.x, row.y)
-		const metre = 1e-5 // degrees, a little more than a metre
-		assert.InDelta(t, row.lon, lon, metre/1e4)
-		assert.InDelta(t, row.lat, lat, metre/1e4)
+		const millimetre = 1e-8 // degrees: a little more than one; what is left out is n^4, 0.4 mm
+		assert.InDelta(t, row.lon, lon, millimetre)
+		assert.InDelta(t, row.lat, lat, millimetre)
 	}
 }
 
