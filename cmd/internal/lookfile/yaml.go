@@ -64,7 +64,7 @@ func looksList(data []byte) (*yaml.Node, error) {
 	if err != nil {
 		return nil, syntax(err)
 	}
-	if len(document.Content) == 0 {
+	if len(document.Content) == 0 || document.Content[0].Tag == "!!null" {
 		return nil, fmt.Errorf("is empty; %s", shapeLine)
 	}
 	root := document.Content[0]
