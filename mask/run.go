@@ -5,6 +5,14 @@ package mask
 
 import (
 	"context"
+	"fmt"
+	"math"
+	"runtime"
+	"slices"
+	"sync"
+	"sync/atomic"
+
+	"golang.org/x/sync/errgroup"
 
 	"foldshade/dem"
 	"foldshade/geometry"
@@ -29,6 +37,11 @@ type Options struct {
 	Tile    int   // cells a side of a work tile; 0 to choose by memory
 }
 
+// DefaultOptions returns the options that hold when the user gives none.
+func DefaultOptions() Options {
+	return Options{Ceiling: nan, HoleHeight: nan, CompressedBelow: 0.3}
+}
+
 // Job is one run over a grid.
 type Job struct {
 	Source  dem.Source
@@ -42,7 +55,8 @@ type Job struct {
 	// goroutines, never twice at once for the same look, in no fixed order.
 	// The tile's slices are the callee's until it returns.
 	Emit func(look int, t *Tile) error
-	// Progress, when not nil, is told of finished work out of all work.
+	// Progress, when not nil, is told of finished work out of all work. It is
+	// called from several goroutines, never twice at once.
 	Progress func(done, all int64)
 }
 
@@ -63,10 +77,229 @@ type Tally struct {
 // Run computes the layers for every look and hands out tiles. The results are
 // bit-identical for every tile size, number of threads and output window. It
 // returns the tallies in the order of the looks, or the first error of the
-// source, of Emit or of the context.
-func Run(ctx context.Context, job Job) ([]Tally, error) { return nil, context.Canceled }
+// source, of Emit or of the context. A grid of fewer than 2 x 2 cells, a look
+// of a kind that cannot be marched, a layer that the look lacks something for
+// and an output window outside the grid are errors.
+func Run(ctx context.Context, job Job) ([]Tally, error) {
+	r, err := newRunner(job)
+	if err != nil {
+		return nil, err
+	}
+	tiles := r.tiles()
+	r.all = int64(len(tiles) * len(job.Looks))
+	queue := make(chan dem.Window)
+	group, ctx := errgroup.WithContext(ctx)
+	group.Go(func() error {
+		defer close(queue)
+		for _, t := range tiles {
+			select {
+			case queue <- t:
+			case <-ctx.Done():
+				return ctx.Err()
+			}
+		}
+		return nil
+	})
+	for range r.threads {
+		group.Go(func() error {
+			w := r.newWorker()
+			for t := range queue {
+				if err := w.tile(ctx, t); err != nil {
+					return err
+				}
+			}
+			return nil
+		})
+	}
+	if err := group.Wait(); err != nil {
+		return nil, err
+	}
+	return r.result(), nil
+}
 
-// DefaultOptions returns the options that hold when the user gives none.
-func DefaultOptions() Options {
-	return Options{Ceiling: nan, HoleHeight: nan, CompressedBelow: 0.3}
+// runner is what all workers share.
+type runner struct {
+	job     Job
+	grid    *dem.Grid
+	lim     limits
+	looks   []*lanes
+	locks   []sync.Mutex // one a look, around Emit and its tally
+	tally   [][256]int64
+	threads int
+
+	done     atomic.Int64
+	all      int64
+	progress sync.Mutex
+}
+
+func newRunner(job Job) (*runner, error) {
+	g := job.Source.Grid()
+	if g.Rows < 2 || g.Cols < 2 {
+		return nil, fmt.Errorf("grid of %d x %d cells: range lines need at least 2 x 2", g.Rows, g.Cols)
+	}
+	if w := job.Window; w != g.Clip(w) || w.Rows < 1 || w.Cols < 1 {
+		return nil, fmt.Errorf("output window %+v is not inside the grid of %d x %d cells", w, g.Rows, g.Cols)
+	}
+	o := job.Options
+	lim := limits{low: job.Range.Min, high: job.Range.Max, ceiling: o.Ceiling, openEdge: o.OpenEdge, holeHeight: o.HoleHeight}
+	if !(lim.low <= lim.high) {
+		return nil, fmt.Errorf("the grid has no height")
+	}
+	if lim.ceiling != lim.ceiling {
+		lim.ceiling = lim.high
+	}
+	if job.Range.Missing > 0 && lim.holeHeight == lim.holeHeight {
+		lim.low, lim.high = min(lim.low, lim.holeHeight), max(lim.high, lim.holeHeight)
+	}
+	r := &runner{job: job, grid: g, lim: lim, threads: o.Threads}
+	if r.threads < 1 {
+		r.threads = runtime.GOMAXPROCS(0)
+	}
+	for _, look := range job.Looks {
+		if look.Kind != geometry.Fixed {
+			return nil, fmt.Errorf("look %q: kind %q cannot be marched", look.Name, look.Kind)
+		}
+		if !(look.Incidence > 0 && look.Incidence < 90*geometry.Degree) || !look.Azimuth.Given() {
+			return nil, fmt.Errorf("look %q: needs an incidence between 0 and 90 degrees and an azimuth", look.Name)
+		}
+		for _, l := range job.Layers {
+			if _, ok := Info(l); !ok {
+				return nil, fmt.Errorf("unknown layer %q", l)
+			}
+			if lacks := Lacks(l, look); lacks != nil {
+				return nil, fmt.Errorf("look %q: layer %q needs %v", look.Name, l, lacks)
+			}
+		}
+		r.looks = append(r.looks, fixedLanes(g, look))
+	}
+	r.locks = make([]sync.Mutex, len(job.Looks))
+	r.tally = make([][256]int64, len(job.Looks))
+	return r, nil
+}
+
+// tileSize returns the cells a side of a work tile: as large as memory allows,
+// since halos are walked for nothing, but small enough that every worker gets
+// some.
+func (r *runner) tileSize() int {
+	if r.job.Options.Tile > 0 {
+		return r.job.Options.Tile
+	}
+	memory := r.job.Options.Memory
+	if memory <= 0 {
+		memory = 1 << 30
+	}
+	bands := int64(0)
+	for _, l := range r.job.Layers {
+		info, _ := Info(l)
+		bands += 4 * int64(len(info.Bands))
+	}
+	fits := func(t int64) bool {
+		most := int64(0)
+		for _, ln := range r.looks {
+			near, far := ln.reach(r.lim)
+			rows := min(t+int64(near+far), int64(ln.orient.u))
+			most = max(most, rows*(t+8)*5+(t+int64(far))*t*13+t*t*24)
+		}
+		return (most+t*t*(24+bands))*int64(r.threads) <= memory
+	}
+	// Four tiles a worker balance their unequal costs.
+	w := r.job.Window
+	share := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(4*r.threads)))
+	t := min(max(share, minTile), maxTile)
+	for t > minTile && !fits(t) {
+		t = t * 3 / 4
+	}
+	return int(t)
+}
+
+const (
+	minTile = 192
+	maxTile = 2048
+)
+
+func (r *runner) tiles() []dem.Window {
+	w := r.job.Window
+	size := r.tileSize()
+	var out []dem.Window
+	for row := 0; row < w.Rows; row += size {
+		for col := 0; col < w.Cols; col += size {
+			out = append(out, dem.Window{Row: w.Row + row, Col: w.Col + col,
+				Rows: min(size, w.Rows-row), Cols: min(size, w.Cols-col)})
+		}
+	}
+	return out
+}
+
+func (r *runner) result() []Tally {
+	out := make([]Tally, len(r.job.Looks))
+	for i := range out {
+		out[i] = Tally{Look: r.job.Looks[i].Name, Cells: map[Class]int64{}}
+		for code, n := range r.tally[i] {
+			if n > 0 {
+				out[i].Cells[Class(code)] = n
+			}
+		}
+	}
+	return out
+}
+
+// worker is the memory of one goroutine.
+type worker struct {
+	*runner
+	sheet sheet
+	field field
+	walk  walker
+	tileBuffers
+}
+
+func (r *runner) newWorker() *worker {
+	w := &worker{runner: r}
+	has := func(l Layer) bool { return slices.Contains(r.job.Layers, l) }
+	w.sheet.wantClear, w.sheet.wantFold = has(Clearance), has(FoldMargin)
+	return w
+}
+
+// tile computes one tile for every look.
+func (w *worker) tile(ctx context.Context, win dem.Window) error {
+	if err := w.sheet.load(w.job.Source, win); err != nil {
+		return err
+	}
+	for i := range w.looks {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		if err := w.look(i, win); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (w *worker) look(i int, win dem.Window) error {
+	ln := w.looks[i]
+	f := &w.field
+	u0, u1, v0, v1 := ln.window(win)
+	f.setUp(ln, w.lim, u0, u1, v0, v1)
+	if err := f.load(w.job.Source); err != nil {
+		return err
+	}
+	f.march()
+	w.sheet.classify(f, &w.walk)
+	t := w.fill(i)
+	w.locks[i].Lock()
+	defer w.locks[i].Unlock()
+	for _, c := range w.verdict {
+		w.tally[i][c]++
+	}
+	if w.job.Emit != nil {
+		if err := w.job.Emit(i, t); err != nil {
+			return err
+		}
+	}
+	if w.job.Progress != nil {
+		w.progress.Lock()
+		w.job.Progress(w.done.Add(1), w.all)
+		w.progress.Unlock()
+	}
+	return nil
 }

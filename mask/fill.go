@@ -1,0 +1,184 @@
+package mask
+
+import (
+	"math"
+
+	"foldshade/geometry"
+)
+
+// tileBuffers holds the results of one tile while they are computed.
+type tileBuffers struct {
+	out     *Tile
+	verdict []uint8
+	left    view
+	right   view
+	cross   crossing
+	facets  []geometry.Facet // of one row
+	sights  []geometry.Sight // of one row, up components
+	views   []view           // of one row, when a layer asks for more
+}
+
+// fill turns the raw codes and the differences of height of the sheet into the
+// layers of look i.
+func (w *worker) fill(i int) *Tile {
+	t := w.newTile()
+	ln, look := w.looks[i], &w.job.Looks[i]
+	win := w.sheet.w
+	w.facets, w.sights, w.views = resize(w.facets, win.Cols), resize(w.sights, win.Cols), resize(w.views, win.Cols)
+	for r := range win.Rows {
+		w.see(ln, win.Row+r, win.Col, r*win.Cols)
+		w.classRow(t, r)
+		for l, bands := range t.Values {
+			w.valueRow(l, bands, r, ln, look)
+		}
+	}
+	return t
+}
+
+// newTile returns the worker's tile with slices of the sheet's size.
+func (w *worker) newTile() *Tile {
+	n := w.sheet.w.Rows * w.sheet.w.Cols
+	if w.out == nil {
+		w.out = &Tile{Classes: map[Layer][]uint8{}, Values: map[Layer][][]float32{}}
+	}
+	t := w.out
+	t.Window = w.sheet.w
+	w.verdict = resize(w.verdict, n)
+	for _, l := range w.job.Layers {
+		info, _ := Info(l)
+		switch {
+		case l == VerdictLayer:
+			t.Classes[l] = w.verdict
+		case info.IsClass:
+			t.Classes[l] = resize(t.Classes[l], n)
+		default:
+			if t.Values[l] == nil {
+				t.Values[l] = make([][]float32, len(info.Bands))
+			}
+			for b := range t.Values[l] {
+				t.Values[l][b] = resize(t.Values[l][b], n)
+			}
+		}
+	}
+	return t
+}
+
+// see fills the views, sights and facets of one row of the sheet.
+func (w *worker) see(ln *lanes, row, col, at int) {
+	zc, zr := w.sheet.zc[at:], w.sheet.zr[at:]
+	n := len(w.facets)
+	for j := 0; j < n; {
+		block := (col + j) / viewStep * viewStep
+		w.left = ln.viewOf(w.grid, float64(row), float64(block), &w.cross)
+		w.right = ln.viewOf(w.grid, float64(row), float64(block+viewStep), &w.cross)
+		for ; j < n && col+j < block+viewStep; j++ {
+			v := between(&w.left, &w.right, float64(col+j-block)/viewStep)
+			w.facets[j] = v.facet(float64(zc[j]), float64(zr[j]))
+			w.sights[j] = v.sight()
+			w.views[j] = v
+		}
+	}
+}
+
+// classRow writes the class layers of one row.
+func (w *worker) classRow(t *Tile, row int) {
+	n := t.Window.Cols
+	raw := w.sheet.raw[row*n : (row+1)*n]
+	verdict := w.verdict[row*n : (row+1)*n]
+	limit := w.job.Options.CompressedBelow
+	for j, c := range raw {
+		f := w.facets[j]
+		k := layoverClass(Class(c), f)
+		if k == Open && w.sights[j].Foreshortening(f) < limit {
+			k = Compressed
+		}
+		verdict[j] = uint8(k)
+	}
+	if out := t.Classes[LayoverLayer]; out != nil {
+		out = out[row*n : (row+1)*n]
+		for j, c := range raw {
+			out[j] = uint8(layoverClass(Class(c), w.facets[j]))
+		}
+	}
+	if out := t.Classes[ShadowLayer]; out != nil {
+		out = out[row*n : (row+1)*n]
+		for j, c := range raw {
+			out[j] = uint8(shadowClass(Class(c), w.facets[j]))
+		}
+	}
+}
+
+// valueRow writes one row of one layer of values.
+func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *geometry.Look) {
+	n := w.sheet.w.Cols
+	z := w.sheet.z[row*n : (row+1)*n]
+	out := bands[0][row*n : (row+1)*n]
+	each := func(f func(j int, fc geometry.Facet, s *geometry.Sight) float64) {
+		for j := range out {
+			if z[j] != z[j] {
+				out[j] = float32(nan)
+				continue
+			}
+			out[j] = float32(f(j, w.facets[j], &w.sights[j]))
+		}
+	}
+	slant := func(j int) float64 {
+		_, r := ln.at(w.views[j].s, float64(z[j]))
+		if look.SlantRange == look.SlantRange {
+			r += look.SlantRange
+		}
+		return r
+	}
+	switch l {
+	case LocalIncidence:
+		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.LocalIncidence().Degrees() })
+	case SlantRange:
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return slant(j) })
+	case Foreshortening:
+		each(func(_ int, f geometry.Facet, s *geometry.Sight) float64 { return s.Foreshortening(f) })
+	case Incidence:
+		each(func(_ int, _ geometry.Facet, s *geometry.Sight) float64 {
+			return geometry.Angle(math.Acos(s.Along.Up)).Degrees()
+		})
+	case RangeIncidence:
+		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.RangeIncidence().Degrees() })
+	case Clearance:
+		copy(out, w.sheet.clear[row*n:])
+	case FoldMargin:
+		copy(out, w.sheet.fold[row*n:])
+	case LineOfSight:
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
+		out = bands[1][row*n : (row+1)*n]
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].north })
+		out = bands[2][row*n : (row+1)*n]
+		each(func(_ int, _ geometry.Facet, s *geometry.Sight) float64 { return s.Along.Up })
+	case GroundResolution:
+		step := geometry.SlantResolution(look.Bandwidth)
+		each(func(_ int, f geometry.Facet, s *geometry.Sight) float64 { return s.GroundResolution(f, step) })
+	case AreaFactor:
+		each(func(_ int, f geometry.Facet, s *geometry.Sight) float64 { return s.SigmaArea(f) })
+	case Downslope:
+		each(func(_ int, f geometry.Facet, s *geometry.Sight) float64 { return downslope(f, s) })
+	case OrientationShift:
+		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.OrientationShift().Degrees() })
+	case CriticalBaseline:
+		each(func(j int, f geometry.Facet, _ *geometry.Sight) float64 {
+			return f.CriticalBaseline(look.Wavelength, slant(j), look.Bandwidth)
+		})
+	case AmbiguityHeight:
+		each(func(j int, _ geometry.Facet, s *geometry.Sight) float64 {
+			return geometry.AmbiguityHeight(look.Wavelength, slant(j), s.Above.Up, look.Baseline)
+		})
+	}
+}
+
+// downslope is geometry's Sight.Downslope from the facet, whose squared length
+// is one more than that of the gradient g and whose Along component holds
+// g . u = Along.Up - f.Along in the horizontal.
+func downslope(f geometry.Facet, s *geometry.Sight) float64 {
+	g2 := f.Along*f.Along + f.Above*f.Above + f.Across*f.Across - 1
+	if !(g2 > 1e-18) { // level ground has no downslope direction
+		return nan
+	}
+	return -(s.Along.Up - f.Along + g2*s.Along.Up) / math.Sqrt(g2*(1+g2))
+}

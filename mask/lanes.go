@@ -1,0 +1,367 @@
+package mask
+
+import (
+	"math"
+
+	"foldshade/dem"
+	"foldshade/geometry"
+)
+
+// orient maps the grid's rows and columns to the marching frame: u is the
+// axis that is marched, growing from near range to far range, v the other.
+// A look within 45 degrees of the column axis marches along rows; any other
+// marches along columns, on transposed tiles.
+type orient struct {
+	transposed bool // u runs along the grid's columns
+	flip       bool // u falls along its grid axis
+	u, v       int  // cells along each axis
+}
+
+func newOrient(g *dem.Grid, transposed, flip bool) orient {
+	if transposed {
+		return orient{transposed, flip, g.Cols, g.Rows}
+	}
+	return orient{transposed, flip, g.Rows, g.Cols}
+}
+
+// cell returns the grid position of a marching position.
+func (o orient) cell(u, v float64) (row, col float64) {
+	if o.flip {
+		u = float64(o.u-1) - u
+	}
+	if o.transposed {
+		return v, u
+	}
+	return u, v
+}
+
+// window returns the marching rectangle [u0, u1) x [v0, v1) of a grid window.
+func (o orient) window(w dem.Window) (u0, u1, v0, v1 int) {
+	u0, u1, v0, v1 = w.Row, w.Row+w.Rows, w.Col, w.Col+w.Cols
+	if o.transposed {
+		u0, u1, v0, v1 = v0, v1, u0, u1
+	}
+	if o.flip {
+		u0, u1 = o.u-u1, o.u-u0
+	}
+	return u0, u1, v0, v1
+}
+
+// grid is the inverse of window.
+func (o orient) grid(u0, u1, v0, v1 int) dem.Window {
+	if o.flip {
+		u0, u1 = o.u-u1, o.u-u0
+	}
+	if o.transposed {
+		return dem.Window{Row: v0, Col: u0, Rows: v1 - v0, Cols: u1 - u0}
+	}
+	return dem.Window{Row: u0, Col: v0, Rows: u1 - u0, Cols: v1 - v0}
+}
+
+// step returns the ground vector, metres east and north, of one u and of one
+// v at a marching position.
+func (o orient) step(g *dem.Grid, u, v float64) (ue, un, ve, vn float64) {
+	l := g.At(o.cell(u, v))
+	ue, un, ve, vn = l.RowE, l.RowN, l.ColE, l.ColN
+	if o.transposed {
+		ue, un, ve, vn = ve, vn, ue, un
+	}
+	if o.flip {
+		ue, un = -ue, -un
+	}
+	return ue, un, ve, vn
+}
+
+// laneStep is the number of rows and of lanes between two nodes of a lane
+// lattice.
+const laneStep = 32
+
+// lanes says where the range lines of one look cross the rows of the marching
+// frame. Lane k crosses row u at column v(u, k); s(u, k) is the ground
+// distance along it. Both are exact at the nodes of a lattice that covers the
+// DEM and is anchored to it and to the look, never to a tile, and bilinear
+// between. Lane k passes column k at row 0.
+type lanes struct {
+	orient
+	// uniform lanes are straight and parallel: v = k + slope u, exactly.
+	uniform bool
+	slope   float64
+
+	first  int // lane of the lattice's first column, a multiple of laneStep
+	nu, nk int // nodes along u and along the lanes
+	v, s   []float64
+	// ahead returns the unit ground vector, east and north, of the range line
+	// at a place of the grid, away from the radar.
+	ahead  func(l *dem.Local) (e, n float64)
+	minDS  float64 // least ground distance of one row along a lane, metres
+	lens
+}
+
+// lens turns a position and a height into the two quantities that the march
+// compares along a lane: m, which is larger the larger the look angle, and r,
+// the slant range up to a constant. For a plane wave at incidence i
+//
+//	m = h + s cot(i)        r = s sin(i) - h cos(i)
+//
+// A difference of m is metres of height; a difference of r metres of range.
+type lens struct{ sin, cos, cot, tan float64 }
+
+func (l *lens) at(s, h float64) (m, r float64) {
+	return h + float64(l.cot*s), float64(l.sin*s) - float64(l.cos*h)
+}
+
+// fixedLanes lays out the range lines of a plane wave: straight lines in the
+// map plane of a projected grid, with the look's true azimuth at the centre of
+// the DEM; lines of constant true azimuth on a geographic grid. geographic
+// says that rows are parallels.
+func fixedLanes(g *dem.Grid, look geometry.Look) *lanes {
+	a := look.Azimuth
+	cr, cc := float64(g.Rows-1)/2, float64(g.Cols-1)/2
+	dr, dc := indexDirection(g.At(cr, cc), a)
+	geographic := g.Geographic
+	ln := &lanes{lens: lens{look.Incidence.Sin(), look.Incidence.Cos(), 1 / look.Incidence.Tan(), look.Incidence.Tan()}}
+	if math.Abs(dr) >= math.Abs(dc) {
+		ln.orient = newOrient(g, false, dr < 0)
+	} else {
+		ln.orient = newOrient(g, true, dc < 0)
+	}
+	// slope returns dv/du of the range line through a marching position.
+	slope := func(u, v float64) float64 {
+		r, c := dr, dc
+		if geographic {
+			r, c = indexDirection(g.At(ln.cell(u, v)), a)
+		}
+		du, dv := r, c
+		if ln.transposed {
+			du, dv = c, r
+		}
+		if math.Abs(dv/du) < flatSlope {
+			return 0
+		}
+		return dv / math.Abs(du)
+	}
+	ln.ahead = func(l *dem.Local) (e, n float64) {
+		if geographic {
+			return a.Sin(), a.Cos()
+		}
+		e, n = dr*l.RowE+dc*l.ColE, dr*l.RowN+dc*l.ColN
+		d := math.Hypot(e, n)
+		return e / d, n / d
+	}
+	ln.uniform = !geographic || slope(0, 0) == 0 && slope(float64(ln.orient.u), float64(ln.orient.v)) == 0
+	ln.slope = slope(0, 0)
+	ln.layOut(slope)
+	ln.measure(g, slope)
+	return ln
+}
+
+// flatSlope is the drift of a lane, columns a row, that is taken for none: over
+// 100,000 rows it stays below a ten-thousandth of a cell.
+const flatSlope = 1e-9
+
+// indexDirection returns the step in rows and columns that moves one metre
+// along an azimuth.
+func indexDirection(l dem.Local, azimuth geometry.Angle) (dr, dc float64) {
+	e, n := azimuth.Sin(), azimuth.Cos()
+	det := l.ColE*l.RowN - l.ColN*l.RowE
+	return (l.ColE*n - l.ColN*e) / det, (e*l.RowN - n*l.RowE) / det
+}
+
+// layOut finds the lanes' columns at the lattice rows by following dv/du =
+// slope(u, v) from row 0 with the classical Runge-Kutta method, four steps
+// between two nodes.
+func (ln *lanes) layOut(slope func(u, v float64) float64) {
+	ln.nu = (ln.orient.u-1)/laneStep + 2
+	last := float64(laneStep * (ln.nu - 1))
+	lo, hi := 0.0, float64(ln.orient.v-1)
+	for _, v := range []float64{lo, hi} {
+		for u := 0.0; u <= last; u += laneStep {
+			k := ln.back(slope, u, v)
+			lo, hi = math.Min(lo, k), math.Max(hi, k)
+		}
+	}
+	ln.first = laneStep * (int(math.Floor(lo/laneStep)) - 1)
+	ln.nk = (int(math.Ceil(hi))-ln.first)/laneStep + 3
+	ln.v = make([]float64, ln.nu*ln.nk)
+	for j := range ln.nk {
+		k := float64(ln.first + laneStep*j)
+		v := k
+		for i := range ln.nu {
+			u := float64(laneStep * i)
+			if ln.uniform {
+				v = k + float64(ln.slope*u)
+			} else if i > 0 {
+				v = follow(slope, u-laneStep, v, laneStep)
+			}
+			ln.v[i*ln.nk+j] = v
+		}
+	}
+}
+
+// back returns the lane through a marching position.
+func (ln *lanes) back(slope func(u, v float64) float64, u, v float64) float64 {
+	if ln.uniform {
+		return v - ln.slope*u
+	}
+	for ; u > 0; u -= laneStep {
+		v = follow(slope, u, v, -laneStep)
+	}
+	return v
+}
+
+// follow integrates dv/du = slope(u, v) over a distance in u.
+func follow(slope func(u, v float64) float64, u, v, distance float64) float64 {
+	const steps = 4
+	h := distance / steps
+	for range steps {
+		k1 := slope(u, v)
+		k2 := slope(u+h/2, v+h/2*k1)
+		k3 := slope(u+h/2, v+h/2*k2)
+		k4 := slope(u+h, v+h*k3)
+		u, v = u+h, v+h/6*(k1+2*k2+2*k3+k4)
+	}
+	return v
+}
+
+// measure fills the ground distances: zero on the wavefront through the
+// centre of the DEM, from there along the middle row, and from the middle row
+// along each lane, both by Simpson's rule on the local ground vectors.
+func (ln *lanes) measure(g *dem.Grid, slope func(u, v float64) float64) {
+	ln.s = make([]float64, len(ln.v))
+	ln.minDS = math.Inf(1)
+	cu, cv := float64(ln.orient.u-1)/2, float64(ln.orient.v-1)/2
+	// ds is the ground distance of one row along the lane, da the part along
+	// the look direction of one column.
+	ds := func(u, v float64) float64 {
+		ue, un, ve, vn := ln.step(g, u, v)
+		b := slope(u, v)
+		return math.Hypot(ue+b*ve, un+b*vn)
+	}
+	da := func(u, v float64) float64 {
+		ue, un, ve, vn := ln.step(g, u, v)
+		b := slope(u, v)
+		e, n := ue+b*ve, un+b*vn
+		return (e*ve + n*vn) / math.Hypot(e, n)
+	}
+	simpson := func(f func(t float64) float64, a, b float64) float64 {
+		return (b - a) / 6 * (f(a) + 4*f((a+b)/2) + f(b))
+	}
+	along := func(u0, v0, u1, v1 float64) float64 {
+		return simpson(func(u float64) float64 {
+			v := v0
+			if u1 != u0 {
+				v += (v1 - v0) * (u - u0) / (u1 - u0)
+			}
+			d := ds(u, v)
+			ln.minDS = math.Min(ln.minDS, d)
+			return d
+		}, u0, u1)
+	}
+	mid := min(int(cu)/laneStep, ln.nu-2)
+	from, prev := cv, 0.0
+	// Walk the middle row outwards from the centre, node by node.
+	node := func(j int) float64 { return ln.vAt(cu, float64(ln.first+laneStep*j)) }
+	j0 := 0
+	for j0 < ln.nk-1 && node(j0) < cv {
+		j0++
+	}
+	start := make([]float64, ln.nk)
+	for j := j0; j < ln.nk; j++ {
+		to := node(j)
+		prev += simpson(func(v float64) float64 { return da(cu, v) }, from, to)
+		start[j], from = prev, to
+	}
+	from, prev = cv, 0.0
+	for j := j0 - 1; j >= 0; j-- {
+		to := node(j)
+		prev += simpson(func(v float64) float64 { return da(cu, v) }, from, to)
+		start[j], from = prev, to
+	}
+	for j := range ln.nk {
+		col := func(i int) (u, v float64) { return float64(laneStep * i), ln.v[i*ln.nk+j] }
+		u0, v0 := cu, node(j)
+		s := start[j]
+		for i := mid + 1; i < ln.nu; i++ {
+			u1, v1 := col(i)
+			s += along(u0, v0, u1, v1)
+			ln.s[i*ln.nk+j] = s
+			u0, v0 = u1, v1
+		}
+		u0, v0, s = cu, node(j), start[j]
+		for i := mid; i >= 0; i-- {
+			u1, v1 := col(i)
+			s += along(u0, v0, u1, v1)
+			ln.s[i*ln.nk+j] = s
+			u0, v0 = u1, v1
+		}
+	}
+}
+
+// vAt returns the column at which lane k, which may be fractional, crosses
+// row u, which may be fractional.
+func (ln *lanes) vAt(u, k float64) float64 {
+	if ln.uniform {
+		return k + float64(ln.slope*u)
+	}
+	i := min(max(int(u)/laneStep, 0), ln.nu-2)
+	j := min(max((int(math.Floor(k))-ln.first)/laneStep, 0), ln.nk-2)
+	p := (u - float64(laneStep*i)) / laneStep
+	q := (k - float64(ln.first+laneStep*j)) / laneStep
+	return bilinear(ln.v[i*ln.nk+j:], ln.nk, p, q)
+}
+
+// bilinear mixes a[0], a[1], a[n], a[n+1] by the fractions p (rows) and q.
+func bilinear(a []float64, n int, p, q float64) float64 {
+	top := a[0] + float64(p*(a[n]-a[0]))
+	end := a[1] + float64(p*(a[n+1]-a[1]))
+	return top + float64(q*(end-top))
+}
+
+// crossing is the lattice seen along one row: column and ground distance of
+// every node lane at that row.
+type crossing struct {
+	u    int
+	v, s []float64 // by node lane; v is unused for uniform lanes
+}
+
+// cross fills c for row u.
+func (ln *lanes) cross(u int, c *crossing) {
+	c.u = u
+	if c.s == nil {
+		c.v, c.s = make([]float64, ln.nk), make([]float64, ln.nk)
+	}
+	i := min(u/laneStep, ln.nu-2)
+	p := float64(u-laneStep*i) / laneStep
+	a, b := ln.s[i*ln.nk:(i+1)*ln.nk], ln.s[(i+1)*ln.nk:(i+2)*ln.nk]
+	for j := range c.s {
+		c.s[j] = a[j] + float64(p*(b[j]-a[j]))
+	}
+	a, b = ln.v[i*ln.nk:(i+1)*ln.nk], ln.v[(i+1)*ln.nk:(i+2)*ln.nk]
+	for j := range c.v {
+		c.v[j] = a[j] + float64(p*(b[j]-a[j]))
+	}
+}
+
+// laneOf returns the fractional lane through column v at the row of c.
+func (ln *lanes) laneOf(c *crossing, v float64) float64 {
+	if ln.uniform {
+		return v - float64(ln.slope*float64(c.u))
+	}
+	// The node lanes are nearly equidistant: start from a guess.
+	j := int((v - c.v[0]) / (c.v[ln.nk-1] - c.v[0]) * float64(ln.nk-1))
+	j = min(max(j, 0), ln.nk-2)
+	for j > 0 && c.v[j] > v {
+		j--
+	}
+	for j < ln.nk-2 && c.v[j+1] <= v {
+		j++
+	}
+	return float64(ln.first+laneStep*j) + laneStep*(v-c.v[j])/(c.v[j+1]-c.v[j])
+}
+
+// sOf returns the ground distance on the fractional lane k at the row of c.
+func (ln *lanes) sOf(c *crossing, k float64) float64 {
+	j := min(max((int(math.Floor(k))-ln.first)/laneStep, 0), ln.nk-2)
+	q := (k - float64(ln.first+laneStep*j)) / laneStep
+	return c.s[j] + float64(q*(c.s[j+1]-c.s[j]))
+}
