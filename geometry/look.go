@@ -3,6 +3,7 @@ package geometry
 import (
 	"encoding/csv"
 	"math"
+	"slices"
 	"strings"
 )
 
@@ -107,6 +108,9 @@ func NewLook() Look {
 		Wavelength: nan, Bandwidth: nan, Baseline: nan,
 	}
 }
+
+// Driven reports whether the program computes looks of this kind.
+func (l Look) Driven() bool { return slices.Contains(DrivenKinds, l.Kind) }
 
 // Frequency returns the centre frequency in hertz, NaN when neither band nor
 // frequency nor wavelength was given.
