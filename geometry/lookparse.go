@@ -218,7 +218,11 @@ func lookAzimuth(heading Angle, side Side) Angle {
 	if side == Left {
 		turn = -90
 	}
-	return Angle(math.Mod(writtenDegrees(heading)+turn+360, 360)) * Degree
+	d := writtenDegrees(heading) + turn
+	if d < 0 {
+		d += 360
+	}
+	return Angle(math.Mod(d, 360)) * Degree
 }
 
 // limits checks pairs of limits against each other.

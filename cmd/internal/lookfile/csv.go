@@ -15,7 +15,7 @@ import (
 // cells for what is not given. Commas, semicolons or tabs part the cells, as
 // the first row has them; empty rows and rows that start with # are skipped.
 func parseCSV(data []byte) ([]geometry.Look, error) {
-	data, err := text(data)
+	data, err := decode(data)
 	if err != nil {
 		return nil, err
 	}
@@ -99,7 +99,7 @@ func nextRow(r *csv.Reader) (cells []string, line int, err error) {
 		cells, err = r.Read()
 		var bad *csv.ParseError
 		if errors.As(err, &bad) {
-			return nil, 0, fmt.Errorf("line %d: a quote stands in the middle of a cell or is not closed; quote whole cells and double the quotes inside", bad.Line)
+			return nil, 0, fmt.Errorf("line %d: a quote stands in the middle of a cell or is not closed; quote whole cells and double the quotes inside", bad.StartLine)
 		}
 		if err != nil {
 			return nil, 0, err

@@ -16,8 +16,9 @@ import (
 	"foldshade/geometry"
 )
 
-// maxSize bounds a looks file, bytes: some ten thousand looks.
-const maxSize = 4 << 20
+// maxSize bounds a looks file, bytes: ten thousand looks fit, and text made to
+// keep the YAML reader busy takes about a second.
+const maxSize = 1 << 20
 
 // Flag reads the text of one --look flag: key=value pairs with commas between
 // them. A pair that holds a comma itself stands in double quotes, as in CSV.
@@ -128,8 +129,8 @@ func bare(err error) error {
 	return err
 }
 
-// text checks the encoding and takes a byte order mark off.
-func text(data []byte) ([]byte, error) {
+// decode checks the encoding and takes a byte order mark off.
+func decode(data []byte) ([]byte, error) {
 	if bytes.HasPrefix(data, []byte{0xff, 0xfe}) || bytes.HasPrefix(data, []byte{0xfe, 0xff}) {
 		return nil, fmt.Errorf("is UTF-16 text; save it as UTF-8")
 	}
@@ -151,7 +152,11 @@ func Merge(flags, file []geometry.Look) ([]geometry.Look, error) {
 	}
 	all := make([]geometry.Look, 0, len(flags)+len(file))
 	all = append(append(all, flags...), file...)
-	if err := geometry.NameLooks(all); err != nil {
+	err := geometry.NameLooks(all)
+	switch {
+	case err != nil && len(flags) > 0 && len(file) > 0:
+		return nil, fmt.Errorf("--look together with --looks: %w", err)
+	case err != nil:
 		return nil, err
 	}
 	return all, nil

@@ -184,7 +184,7 @@ func TestFileRefused(t *testing.T) {
 		{"l.csv", header + ",,\n# a\n", "holds no look under its first row"},
 		{"l.csv", header + "a,38,400\n", `line 2, column azimuth: look "a": azimuth "400" is out of range`},
 		{"l.csv", "# one\n\n" + header + "\n# two\na,38,400\n", `line 6, column azimuth:`},
-		{"l.csv", header + "\"a\n", "line|a quote stands in the middle of a cell or is not closed"},
+		{"l.csv", header + "\"a\n\n\n", "line 2|a quote stands in the middle of a cell or is not closed"},
 		{"l.csv", header + "a\"b,38,7\n", "line 2: a quote stands in the middle"},
 		{"l.csv", header + "a,38\n", "line 2: has 2 cells, the first row 3"},
 		{"l.csv", header + "a,38,5,7\n", `line 2: cell 4, "7", has no key in the first row`},
@@ -199,7 +199,7 @@ func TestFileRefused(t *testing.T) {
 		{"l.csv", header + "a,3\x008,77\n", "line 2: is not UTF-8 text"},
 		{"l.csv", header + "\xe4,38,77\n", "line 2: is not UTF-8 text"},
 		{"l.csv", "\xfe\xff\x00n", "UTF-16|save it as UTF-8"},
-		{"l.csv", strings.Repeat("#\n", maxSize/2) + "#\n", "is larger than 4 MiB; split it"},
+		{"l.csv", strings.Repeat("#\n", maxSize/2) + "#\n", "is larger than 1 MiB; split it"},
 	} {
 		path := write(t, row.name, row.content)
 		looks, err := Read(path)
@@ -251,7 +251,7 @@ func TestMerge(t *testing.T) {
 	assert.Empty(t, flags[0].Name, "the caller's looks stay as they are")
 
 	_, err = Merge(flags, []geometry.Look{flag("name=B,incidence=40,azimuth=77")})
-	assert.ErrorContains(t, err, `look names "b" and "B" differ in nothing but case`)
+	assert.ErrorContains(t, err, `--look together with --looks: look names "b" and "B" differ in nothing but case`)
 	_, err = Merge(nil, nil)
 	assert.ErrorContains(t, err, "no look given; add --look name=north")
 	one, err := Merge(nil, file[1:])

@@ -12,8 +12,10 @@ import (
 	"foldshade/geometry"
 )
 
-// Bounds on what anchors and merge keys may unfold to.
+// Bounds on what anchors and merge keys may unfold to, and on what an error
+// repeats.
 const (
+	maxSaid  = 200 // characters of an error of the YAML reader
 	maxMerge = 4   // merge keys inside merged mappings
 	maxPairs = 500 // pairs of one look, merged ones included
 )
@@ -28,7 +30,7 @@ var shapeLine = strings.Join(strings.Fields(shape), " ")
 // a list of mappings of scalars. Anchors, aliases and merge keys are followed
 // within bounds.
 func parseYAML(data []byte) ([]geometry.Look, error) {
-	data, err := text(data)
+	data, err := decode(data)
 	if err != nil {
 		return nil, err
 	}
@@ -99,6 +101,9 @@ func looksList(data []byte) (*yaml.Node, error) {
 func syntax(err error) error {
 	said := strings.TrimPrefix(err.Error(), "yaml: ")
 	said = strings.Join(strings.Fields(said), " ")
+	if r := []rune(said); len(r) > maxSaid { // it repeats names from the file
+		said = string(r[:maxSaid]) + "..."
+	}
 	if strings.HasPrefix(said, "line ") {
 		said = "at or below " + said
 	}
