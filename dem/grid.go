@@ -36,7 +36,7 @@ type Grid struct {
 
 	stepR, stepC float64 // cells between lattice nodes
 	latR, latC   int     // lattice nodes along rows and columns
-	nodes      []Local
+	nodes        []Local
 }
 
 // Local is the ground at a grid position: its place on the ellipsoid, and the
