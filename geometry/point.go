@@ -233,10 +233,7 @@ func (s *Sight) Foreshortening(f Facet) float64 {
 
 // SlantResolution returns the slant range resolution of a range bandwidth in
 // hertz, metres: c / (2 W). Common practice.
-func SlantResolution(bandwidth float64) float64 { return lightSpeed / (2 * bandwidth) }
-
-// lightSpeed is the speed of light in vacuum, m/s (SI definition).
-const lightSpeed = 299792458.0
+func SlantResolution(bandwidth float64) float64 { return SpeedOfLight / (2 * bandwidth) }
 
 // GroundResolution returns the horizontal ground distance along the range line
 // that one slant resolution cell covers, metres. It is +Inf at the layover
@@ -310,7 +307,7 @@ func (f Facet) OrientationShift() Angle { return Angle(math.Atan(-f.Across / f.A
 // limit, +Inf at the self-shadow limit. Source: Gatelli et al., IEEE TGRS
 // 32(4), 1994, 855-865 (from memory).
 func (f Facet) CriticalBaseline(wavelength, slantRange, bandwidth float64) float64 {
-	return wavelength * slantRange * bandwidth / lightSpeed * math.Abs(f.Above/f.Along)
+	return wavelength * slantRange * bandwidth / SpeedOfLight * math.Abs(f.Above/f.Along)
 }
 
 // AmbiguityHeight returns the height difference of one interferometric fringe

@@ -237,7 +237,7 @@ func TestCriticalBaseline(t *testing.T) {
 		for alpha, want := range c.want {
 			s := sightOf(c.th, 70)
 			f := s.Facet(gradientOf(alpha, 70))
-			got := f.CriticalBaseline(lightSpeed/(c.ghz*1e9), c.km*1e3, c.mhz*1e6)
+			got := f.CriticalBaseline(SpeedOfLight/(c.ghz*1e9), c.km*1e3, c.mhz*1e6)
 			assert.InDelta(t, want, got, 0.051, "%g GHz, alpha %g", c.ghz, alpha)
 		}
 	}
@@ -255,13 +255,13 @@ func TestInterferometry(t *testing.T) {
 		{9.65, 617, 35, 55.0},
 	}
 	for _, r := range ha {
-		got := AmbiguityHeight(lightSpeed/(r.ghz*1e9), r.km*1e3, math.Sin(r.th*math.Pi/180), 100)
+		got := AmbiguityHeight(SpeedOfLight/(r.ghz*1e9), r.km*1e3, math.Sin(r.th*math.Pi/180), 100)
 		assert.InDelta(t, r.want, got, 0.051, "%+v", r)
 	}
-	assert.InDelta(t, 9393, AmbiguityHeight(lightSpeed/5.3e9, 850e3, (23*Degree).Sin(), 1), 0.51)
+	assert.InDelta(t, 9393, AmbiguityHeight(SpeedOfLight/5.3e9, 850e3, (23*Degree).Sin(), 1), 0.51)
 	fringes := []struct{ ghz, mm float64 }{{5.3, 28.28}, {5.405, 27.73}, {9.65, 15.53}, {1.27, 118.03}}
 	for _, r := range fringes {
-		assert.InDelta(t, r.mm, 1e3*FringeDisplacement(lightSpeed/(r.ghz*1e9), 1), 0.0051)
+		assert.InDelta(t, r.mm, 1e3*FringeDisplacement(SpeedOfLight/(r.ghz*1e9), 1), 0.0051)
 	}
 	assert.InDelta(t, 9.640, SlantResolution(15.55e6), 0.51e-3)
 	s := sightOf(23, 10)
