@@ -153,6 +153,12 @@ func info(t *testing.T, path string, args ...string) map[string]any {
 	return doc
 }
 
+// commandOutput runs a program and returns what it prints.
+func commandOutput(name string, args ...string) (string, error) {
+	out, err := exec.Command(name, args...).Output()
+	return string(out), err
+}
+
 // band returns a band's part of what gdalinfo says.
 func band(t *testing.T, doc map[string]any, i int) map[string]any {
 	t.Helper()
