@@ -11,6 +11,7 @@ import (
 	"os"
 	"path/filepath"
 	"strings"
+	"unicode"
 	"unicode/utf8"
 
 	"foldshade/geometry"
@@ -136,12 +137,19 @@ func decode(data []byte) ([]byte, error) {
 	}
 	data = bytes.TrimPrefix(data, []byte("\xef\xbb\xbf"))
 	for i, line := range bytes.Split(data, []byte("\n")) {
-		if !utf8.Valid(line) || bytes.IndexByte(line, 0) >= 0 {
+		if !utf8.Valid(line) {
 			return nil, fmt.Errorf("line %d: is not UTF-8 text; save the file as UTF-8", i+1)
+		}
+		if at := bytes.IndexFunc(line, unprintable); at >= 0 {
+			r, _ := utf8.DecodeRune(line[at:])
+			return nil, fmt.Errorf("line %d: holds the control character %U; save the file as plain text", i+1, r)
 		}
 	}
 	return data, nil
 }
+
+// unprintable reports a control character that has no place in a line.
+func unprintable(r rune) bool { return unicode.IsControl(r) && r != '\t' && r != '\r' }
 
 // Merge joins the looks of the flags and of the file, flags first, and
 // numbers those without a name by their place in the joined list. It refuses

@@ -55,21 +55,32 @@ func parseYAML(data []byte) ([]geometry.Look, error) {
 	return build(entries)
 }
 
+// rootOf returns the root node of the only document.
+func rootOf(data []byte) (*yaml.Node, error) {
+	decoder := yaml.NewDecoder(bytes.NewReader(data))
+	var first, second yaml.Node
+	err := decoder.Decode(&first)
+	if err != nil && err != io.EOF {
+		return nil, syntax(err, data)
+	}
+	if err == io.EOF || len(first.Content) == 0 || first.Content[0].Tag == "!!null" {
+		return nil, fmt.Errorf("is empty; %s", shapeLine)
+	}
+	switch err := decoder.Decode(&second); {
+	case err == nil:
+		return nil, at(&second, "a second document begins; keep all looks in one list")
+	case err != io.EOF:
+		return nil, syntax(err, data)
+	}
+	return first.Content[0], nil
+}
+
 // looksList returns the node of the list under looks.
 func looksList(data []byte) (*yaml.Node, error) {
-	decoder := yaml.NewDecoder(bytes.NewReader(data))
-	var document, second yaml.Node
-	err := decoder.Decode(&document)
-	if err == io.EOF {
-		return nil, fmt.Errorf("is empty; %s", shapeLine)
-	}
+	root, err := rootOf(data)
 	if err != nil {
-		return nil, syntax(err)
+		return nil, err
 	}
-	if len(document.Content) == 0 || document.Content[0].Tag == "!!null" {
-		return nil, fmt.Errorf("is empty; %s", shapeLine)
-	}
-	root := document.Content[0]
 	if root.Kind != yaml.MappingNode {
 		return nil, at(root, "the list has no key; %s", shapeLine)
 	}
@@ -87,27 +98,25 @@ func looksList(data []byte) (*yaml.Node, error) {
 	if list == nil || list.Kind != yaml.SequenceNode || len(list.Content) == 0 {
 		return nil, at(root, "looks holds no list; %s", shapeLine)
 	}
-	if err := decoder.Decode(&second); err != io.EOF {
-		if err != nil {
-			return nil, syntax(err)
-		}
-		return nil, at(&second, "a second document begins; keep all looks in one list")
-	}
 	return list, nil
 }
 
-// syntax rewrites an error of the YAML reader, whose line is often that of
-// the block around the fault, and one line early.
-func syntax(err error) error {
-	said := strings.TrimPrefix(err.Error(), "yaml: ")
-	said = strings.Join(strings.Fields(said), " ")
+// syntax rewrites an error of the YAML reader. Its line is often that of the
+// block around the fault or one line early, and it gives none in the first
+// line and for an unknown anchor.
+func syntax(err error, data []byte) error {
+	said := strings.Join(strings.Fields(strings.TrimPrefix(err.Error(), "yaml: ")), " ")
 	if r := []rune(said); len(r) > maxSaid { // it repeats names from the file
 		said = string(r[:maxSaid]) + "..."
 	}
-	if strings.HasPrefix(said, "line ") {
-		said = "at or below " + said
+	if name, _, ok := strings.Cut(strings.TrimPrefix(said, "unknown anchor '"), "' referenced"); ok {
+		before, _, _ := bytes.Cut(data, []byte("*"+name))
+		return fmt.Errorf("line %d: %s; write the anchor &%s before its use", 1+bytes.Count(before, []byte("\n")), said, name)
 	}
-	return errors.New(said + "; correct the YAML there")
+	if !strings.HasPrefix(said, "line ") {
+		said = "line 1: " + said
+	}
+	return errors.New("at or below " + said + "; correct the YAML there")
 }
 
 // at returns an error with the line of a node.
