@@ -255,6 +255,8 @@ func openDataset(name string, log *messages) (*godal.Dataset, error) {
 		return nil, refuse(name, err, "the file is empty; fetch it again")
 	case statErr == nil && strings.HasSuffix(strings.ToLower(name), ".zip"):
 		return nil, refuse(name, err, "is an archive; name the raster in it as /vsizip/%s/FILE", name)
+	case strings.HasPrefix(name, "/vsicurl"), strings.HasPrefix(name, "http"):
+		return nil, refuse(name, err, "cannot be fetched (GDAL: %s); check the address and the network", detail)
 	case strings.Contains(detail, "No such file"), strings.Contains(detail, "does not exist"):
 		return nil, refuse(name, err, "nothing found under this name; check the parts of the name with gdalinfo")
 	case strings.Contains(detail, "not recognized"):

@@ -26,7 +26,7 @@ func unfit(b godal.Band, forced bool) string {
 		return "colour indices"
 	case ci == godal.CIAlpha:
 		return "an alpha mask"
-	case s.DataType == godal.Byte && ci >= godal.CIRed:
+	case (s.DataType == godal.Byte || s.DataType == godal.UInt16) && ci >= godal.CIRed:
 		return "an image channel (" + strings.ToLower(ci.Name()) + ")"
 	}
 	return ""
@@ -59,14 +59,15 @@ func chooseBand(name string, bands []godal.Band, asked int) (int, error) {
 
 // decoder turns stored values into heights in metres.
 type decoder struct {
-	dtype     godal.DataType
-	wide      bool // stored values need float64
-	masked    bool // a mask or alpha band tells missing cells
-	hasNodata bool
-	nodata    float64
-	nodata32  float32
-	mul, add  float64 // height = stored*mul + add
-	plain     bool    // mul is 1 and add is 0
+	dtype         godal.DataType
+	wide          bool // stored values need float64
+	masked        bool // a mask or alpha band tells missing cells
+	hasNodata     bool
+	nodata        float64
+	nodata32      float32
+	scale, offset float64 // of the band
+	mul, add      float64 // height = stored*mul + add, metres
+	plain         bool    // mul is 1 and add is 0
 }
 
 // GDAL's mask flags, RFC 15.
@@ -83,14 +84,14 @@ const huge = 1e30
 
 func newDecoder(b godal.Band, unit float64) decoder {
 	s := b.Structure()
-	d := decoder{dtype: s.DataType, mul: s.Scale, add: s.Offset}
-	if d.mul == 0 || math.IsNaN(d.mul) || math.IsInf(d.mul, 0) { // no scale stored
-		d.mul = 1
+	d := decoder{dtype: s.DataType, scale: s.Scale, offset: s.Offset}
+	if d.scale == 0 || math.IsNaN(d.scale) || math.IsInf(d.scale, 0) { // no scale at all
+		d.scale = 1
 	}
-	if math.IsNaN(d.add) || math.IsInf(d.add, 0) {
-		d.add = 0
+	if math.IsNaN(d.offset) || math.IsInf(d.offset, 0) {
+		d.offset = 0
 	}
-	d.mul, d.add = d.mul*unit, d.add*unit
+	d.mul, d.add = d.scale*unit, d.offset*unit
 	d.plain = d.mul == 1 && d.add == 0
 	switch s.DataType {
 	case godal.Byte, godal.Int8, godal.Int16, godal.UInt16, godal.Float32:
@@ -116,7 +117,7 @@ func (d *decoder) narrow(v []float32, t *tally) {
 		case d.hasNodata && x == d.nodata32, !(x > -huge && x < huge):
 			v[i] = nan
 		case !d.plain:
-			v[i] = float32(float64(x)*d.mul + d.add)
+			v[i] = d.height(float64(x))
 		}
 	}
 }
@@ -128,11 +129,19 @@ func (d *decoder) widen(dst []float32, v []float64, t *tally) {
 		if t != nil && (x <= lowSuspect || x >= highSuspect) && !(d.hasNodata && x == d.nodata) {
 			t.stored(x, i)
 		}
-		h := x*d.mul + d.add
-		if d.hasNodata && x == d.nodata || !(h > -huge && h < huge) {
+		if d.hasNodata && x == d.nodata || !(x > -huge && x < huge) {
 			dst[i] = nan
 			continue
 		}
-		dst[i] = float32(h)
+		dst[i] = d.height(x)
 	}
+}
+
+// height scales one stored value; NaN when a wild scale leaves the range.
+func (d *decoder) height(x float64) float32 {
+	h := x*d.mul + d.add
+	if !(h > -huge && h < huge) {
+		return float32(math.NaN())
+	}
+	return float32(h)
 }

@@ -82,7 +82,7 @@ func (d *DEM) collect(band int, r *reference, u verticalUnit) {
 		Name: d.name, Driver: d.ds.Driver().ShortName(), Files: sourceFiles(d.name, 0),
 		Rows: g.Rows, Cols: g.Cols, Bands: d.ds.Structure().NBands, Band: band,
 		DataType: s.DataType.String(), Block: [2]int{s.BlockSizeY, s.BlockSizeX},
-		Mask: d.decod.maskName(d.band.MaskFlags()), Scale: d.decod.mul / u.metres, Offset: d.decod.add / u.metres,
+		Mask: d.decod.maskName(d.band.MaskFlags()), Scale: d.decod.scale, Offset: d.decod.offset,
 		CRS: r.name, CRSCode: r.code, Geographic: r.geographic, MapUnit: r.unit, MapUnitSize: r.unitSize,
 		VerticalCRS: r.heights(), VerticalUnit: u.name, VerticalUnitM: u.metres, VerticalUnitSource: u.source,
 		PixelIs: "area", SouthUp: g.Transform[5] > 0, Transform: g.Transform, Held: d.hold,

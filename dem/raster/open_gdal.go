@@ -32,6 +32,9 @@ func init() {
 // 64 MiB.
 func SetCache(bytes int64) { C.GDALSetCacheMax64(C.GIntBig(max(bytes, 1<<20))) }
 
+// cacheBytes is the bound in force.
+func cacheBytes() int64 { return int64(C.GDALGetCacheMax64()) }
+
 // wkt2 rewrites a well-known text of any version as WKT2:2019 (ISO 19162).
 func wkt2(text string) (string, error) {
 	in := C.CString(text)

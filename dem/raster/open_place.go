@@ -106,7 +106,7 @@ func (d *DEM) layOut(rows, cols int, t [6]float64, r *reference) (*dem.Grid, err
 	if err != nil {
 		return nil, err
 	}
-	return grid, d.checkAntimeridian(grid)
+	return grid, d.checkEdges(grid)
 }
 
 // poleInside refuses a grid that holds or touches a pole.
@@ -153,18 +153,31 @@ func (d *DEM) locate(to *godal.Transform, r *reference, x, y []float64) error {
 	return nil
 }
 
-// checkAntimeridian refuses a grid with cell centres on both sides of it; a
-// grid may end on it, with half a cell beyond.
-func (d *DEM) checkAntimeridian(g *dem.Grid) error {
-	const limit = 180*geometry.Degree + slack*geometry.Degree
+// nearPole is how many cells from a pole the directions of east and north turn
+// too fast for the grid's lattice: over its 32 cells they turn by 32/nearPole
+// radians, and lengths lose an eighth of the square, 5e-4.
+const nearPole = 512
+
+// checkEdges walks the outer cells. It refuses a grid with cell centres on
+// both sides of the antimeridian, which may end there with half a cell beyond,
+// and warns of one close to a pole.
+func (d *DEM) checkEdges(g *dem.Grid) error {
+	const limit = (180 + slack) * geometry.Degree
+	lastR, lastC := float64(g.Rows-1), float64(g.Cols-1)
+	close := false
 	for i := range 65 {
 		f := float64(i) / 64
-		r, c := f*float64(g.Rows-1), f*float64(g.Cols-1)
-		for _, p := range [4][2]float64{{r, 0}, {r, float64(g.Cols - 1)}, {0, c}, {float64(g.Rows - 1), c}} {
-			if l := g.At(p[0], p[1]); l.Lon > limit || l.Lon < -limit {
+		for _, p := range [4][2]float64{{f * lastR, 0}, {f * lastR, lastC}, {0, f * lastC}, {lastR, f * lastC}} {
+			l := g.At(p[0], p[1])
+			if l.Lon > limit || l.Lon < -limit {
 				return refuse(d.name, nil, "crosses the antimeridian (180 degrees) near row %d, column %d; cut it in two there with gdal_translate -projwin", int(math.Round(p[0])), int(math.Round(p[1])))
 			}
+			metres := geometry.SemiMajor * float64(90*geometry.Degree-geometry.Angle(math.Abs(float64(l.Lat))))
+			close = close || metres < nearPole*max(math.Hypot(l.ColE, l.ColN), math.Hypot(l.RowE, l.RowN))
 		}
+	}
+	if close && !g.Geographic {
+		d.log.add(fmt.Sprintf("it comes within %d cells of a pole, where east and north turn too fast to follow: slopes and azimuths there are rough; cut that part off", nearPole))
 	}
 	return nil
 }

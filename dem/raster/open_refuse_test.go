@@ -5,6 +5,8 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"net/http"
+	"net/http/httptest"
 	"os"
 	"path/filepath"
 	"strings"
@@ -36,6 +38,33 @@ func cutShort(t *testing.T, keep float64) string {
 // world is a virtual raster without sources, of any size.
 func world(t *testing.T, rows, cols int, crs, transform string) string {
 	return textFile(t, "made.vrt", fmt.Sprintf(`<VRTDataset rasterXSize="%d" rasterYSize="%d"><SRS>%s</SRS><GeoTransform>%s</GeoTransform><VRTRasterBand dataType="Float32" band="1"/></VRTDataset>`, cols, rows, crs, transform))
+}
+
+// translated is a fixture copied by GDAL with switches.
+func translated(t *testing.T, f fixture, switches ...string) string {
+	t.Helper()
+	src, err := godal.Open(f.write(t, "source.tif"))
+	require.NoError(t, err)
+	path := filepath.Join(t.TempDir(), "copy.tif")
+	out, err := src.Translate(path, switches)
+	require.NoError(t, err)
+	require.NoError(t, out.Close())
+	require.NoError(t, src.Close())
+	return path
+}
+
+// twoTables is a GeoPackage with two rasters.
+func twoTables(t *testing.T) string {
+	path := filepath.Join(t.TempDir(), "two.gpkg")
+	for _, table := range []string{"a", "b"} {
+		src, err := godal.Open(fixture{crs: "EPSG:4326", transform: [6]float64{9, 0.1, 0, 46, 0, -0.1}}.write(t, "source.tif"))
+		require.NoError(t, err)
+		out, err := src.Translate(path, []string{"-of", "GPKG", "-co", "RASTER_TABLE=" + table, "-co", "APPEND_SUBDATASET=YES"})
+		require.NoError(t, err)
+		require.NoError(t, out.Close())
+		require.NoError(t, src.Close())
+	}
+	return path
 }
 
 // TestRefused: each file that cannot serve gives one line that names the file,
@@ -86,6 +115,16 @@ func TestRefused(t *testing.T) {
 			return textFile(t, "p.geojson", `{"type":"FeatureCollection","features":[{"type":"Feature","properties":{},"geometry":{"type":"Point","coordinates":[9,46]}}]}`)
 		}, Options{}, "not a raster", "convert it to GeoTIFF"},
 		{"header cut", func(t *testing.T) string { return cutShort(t, 1e-5) }, Options{}, "", "gdalinfo"},
+		{"ground control points", func(t *testing.T) string {
+			return translated(t, fixture{crs: "EPSG:32632"}, "-gcp", "0", "0", "500000", "5100000", "-gcp", "7", "0", "500210", "5100000", "-gcp", "0", "5", "500000", "5099850", "-a_srs", "EPSG:32632")
+		}, Options{}, "ground control points", "gdalwarp"},
+		{"several rasters in one file", twoTables, Options{}, "holds 2 rasters and none by itself", "name one of them, such as GPKG:"},
+		{"nothing at the address", func(t *testing.T) string {
+			server := httptest.NewServer(http.NotFoundHandler())
+			t.Cleanup(server.Close)
+			return "/vsicurl/" + server.URL + "/dem.tif"
+		}, Options{}, "cannot be fetched", "check the address"},
+		{"another planet", tif(fixture{crs: "none", transform: deg(10, 46)}), Options{CRS: "+proj=longlat +a=3396190 +b=3376200 +no_defs"}, "WGS84", "gdalwarp"},
 		{"no CRS", tif(fixture{crs: "none"}), Options{}, "no coordinate reference system", "--crs"},
 		{"CRS not understood", tif(fixture{}), Options{CRS: "EPSG:999999"}, "EPSG:999999", "--crs takes"},
 		{"local CRS", tif(fixture{}), Options{CRS: `LOCAL_CS["site grid",UNIT["metre",1]]`}, "neither geographic nor projected", "--crs"},

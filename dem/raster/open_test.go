@@ -3,9 +3,12 @@ package raster
 import (
 	"archive/zip"
 	"context"
+	"encoding/json"
 	"fmt"
 	"io"
 	"math"
+	"net/http"
+	"net/http/httptest"
 	"os"
 	"path/filepath"
 	"sync"
@@ -81,6 +84,7 @@ func TestHeights(t *testing.T) {
 		{"mask band", fixture{mask: seen}, Options{}, holes, 0},
 		{"mask band over fill values", fixture{mask: seen, dtype: godal.Float64, value: holesAs(-9999)}, Options{}, holes, 0},
 		{"alpha band", fixture{bands: 2, colours: []godal.ColorInterp{godal.CIGray, godal.CIAlpha}, dtype: godal.UInt16, alpha: seen}, Options{}, holes, 0},
+		{"nodata of the whole file", fixture{bands: 2, value: holesAs(-9999), metadata: map[string]string{"NODATA_VALUES": "-9999 -9899"}}, Options{}, holes, 0},
 		// float32 of a sum of exact decimals: half a unit in the last place of 16.
 		{"scale and offset", fixture{dtype: godal.Int16, scale: 0.1, offset: 5}, Options{}, times(0.1, 5, ramp), 1e-6},
 		{"scaled nodata is stored", fixture{dtype: godal.Int16, scale: 0.1, offset: 5, nodata: ptr(-7), value: holesAs(-7)}, Options{}, times(0.1, 5, holes), 1e-6},
@@ -281,17 +285,27 @@ func TestSharedRead(t *testing.T) {
 	}
 }
 
-// TestPixelIsPoint: a GeoTIFF that ties its first cell's centre to a position
-// has its outer corner half a cell away (OGC GeoTIFF 1.1, 19-008r4, B.6); the
-// tie point is written with another tool's convention switched off.
+// TestPixelIsPoint: a GeoTIFF of points ties the first cell's centre to a map
+// position, one of areas its outer corner (OGC GeoTIFF 1.1, 19-008r4, annex B).
+// The file of points is written without GDAL's own half cell, so its tie point
+// is the position given.
 func TestPixelIsPoint(t *testing.T) {
-	f := fixture{crs: "EPSG:32632", transform: utm32, metadata: map[string]string{"AREA_OR_POINT": "Point"}}
-	d, err := Open(f.write(t, "dem.tif"), Options{})
+	area := fixture{crs: "EPSG:32632", transform: utm32}.write(t, "area.tif")
+	point := filepath.Join(t.TempDir(), "point.tif")
+	src, err := godal.Open(area)
 	require.NoError(t, err)
-	assert.Equal(t, "point", d.Facts().PixelIs)
-	x, y := d.Grid().XY(0, 0)
-	assert.Equal(t, [2]float64{500015, 5099985}, [2]float64{x, y})
-	require.NoError(t, d.Close())
+	out, err := src.Translate(point, []string{"-mo", "AREA_OR_POINT=Point"}, godal.ConfigOption("GTIFF_POINT_GEO_IGNORE=TRUE"))
+	require.NoError(t, err)
+	require.NoError(t, out.Close())
+	require.NoError(t, src.Close())
+	for path, centre := range map[string][2]float64{area: {500015, 5099985}, point: {500000, 5100000}} {
+		d, err := Open(path, Options{})
+		require.NoError(t, err)
+		assert.Equal(t, path == point, d.Facts().PixelIs == "point")
+		x, y := d.Grid().XY(0, 0)
+		assert.Equal(t, centre, [2]float64{x, y})
+		require.NoError(t, d.Close())
+	}
 }
 
 // TestCRSOption: --crs replaces what the file says, or lacks.
@@ -326,4 +340,59 @@ func TestDatumShiftDoesNotTear(t *testing.T) {
 			require.InEpsilon(t, -latArc*d, l.RowN, 3e-4, "row %v, column %v", row, col)
 		}
 	}
+}
+
+// TestInt64: the newest integer type, whose nodata float64 may not hold.
+func TestInt64(t *testing.T) {
+	path := translated(t, fixture{dtype: godal.Int32, crs: "EPSG:32632", transform: utm32, value: holesAs(-1), nodata: ptr(-1)}, "-ot", "Int64")
+	d, err := Open(path, Options{})
+	require.NoError(t, err)
+	requireHeights(t, d, 0, holes)
+	require.NoError(t, d.Close())
+}
+
+// TestNetwork: a raster behind an address is read in parts.
+func TestNetwork(t *testing.T) {
+	path := fixture{crs: "EPSG:32632", transform: utm32}.write(t, "dem.tif")
+	server := httptest.NewServer(http.FileServer(http.Dir(filepath.Dir(path))))
+	defer server.Close()
+	d, err := Open("/vsicurl/"+server.URL+"/dem.tif", Options{})
+	require.NoError(t, err)
+	requireHeights(t, d, 0, ramp)
+	assert.Empty(t, d.Facts().Files)
+	require.NoError(t, d.Close())
+}
+
+// TestFactsJSON: facts are valid JSON with the promised keys, also where a
+// number is none.
+func TestFactsJSON(t *testing.T) {
+	for nodata, want := range map[*float64]any{ptr(math.NaN()): "NaN", ptr(-9999): -9999.0, nil: nil} {
+		f := fixture{crs: "EPSG:32632+5773", transform: utm32, nodata: nodata, dtype: godal.Float32}
+		d, err := Open(f.write(t, "dem.tif"), Options{VerticalUnit: "ft"})
+		require.NoError(t, err)
+		text, err := json.Marshal(d.Facts())
+		require.NoError(t, err)
+		var got map[string]any
+		require.NoError(t, json.Unmarshal(text, &got))
+		assert.Equal(t, want, got["nodata"])
+		assert.Equal(t, "WGS 84 / UTM zone 32N + EGM96 height", got["crs"])
+		assert.Equal(t, "EGM96 height", got["vertical_crs"])
+		assert.Equal(t, "EPSG:5773", got["vertical_code"])
+		assert.Equal(t, "ft", got["vertical_unit"])
+		assert.Equal(t, 0.3048, got["vertical_unit_m"])
+		assert.Equal(t, "given", got["vertical_unit_source"])
+		assert.Equal(t, "metre", got["map_unit"])
+		assert.Len(t, got["corners"], 4)
+		require.NoError(t, d.Close())
+	}
+}
+
+// TestCache: the bound of GDAL's block cache is the one asked for.
+func TestCache(t *testing.T) {
+	before := cacheBytes()
+	defer SetCache(before)
+	SetCache(32 << 20)
+	assert.Equal(t, int64(32<<20), cacheBytes())
+	SetCache(0)
+	assert.Equal(t, int64(1<<20), cacheBytes())
 }

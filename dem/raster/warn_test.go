@@ -51,6 +51,8 @@ func TestWarnings(t *testing.T) {
 		{"geoid heights", fixture{crs: "EPSG:32632+5773"}, Options{}, []string{"refer to EGM96 height|used as ellipsoidal"}, []string{"not stated"}},
 		{"map in feet", fixture{crs: "EPSG:2926", transform: [6]float64{1200000, 100, 0, 500000, 0, -100}}, Options{}, []string{"map is in US survey foot|--vertical-unit"}, nil},
 		{"map in feet, unit given", fixture{crs: "EPSG:2926", transform: [6]float64{1200000, 100, 0, 500000, 0, -100}}, Options{VerticalUnit: "m"}, nil, []string{"map is in"}},
+		{"near a pole", fixture{crs: "EPSG:3413", transform: [6]float64{300, 30, 0, 100, 0, -30}}, Options{}, []string{"within 512 cells of a pole"}, nil},
+		{"far from the pole", fixture{crs: "EPSG:3413", transform: [6]float64{30000, 30, 0, -30000, 0, -30}}, Options{}, nil, []string{"pole"}},
 		{"wrong zone", fixture{crs: "EPSG:32632", transform: [6]float64{5100000, 30, 0, 500000, 0, -30}}, Options{}, []string{"outside the area that WGS 84 / UTM zone 32N is made for|--crs"}, nil},
 	}
 	for _, c := range cases {
