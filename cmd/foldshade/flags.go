@@ -22,16 +22,24 @@ const (
 
 var groups = []string{groupInput, groupLook, groupTerrain, groupOutput, groupMachine}
 
-// groupKey is the flag annotation that holds the heading.
-const groupKey = "group"
+// Flag annotations that the help reads: the heading, and the placeholder of
+// the value.
+const (
+	groupKey       = "group"
+	placeholderKey = "placeholder"
+)
 
 // inGroup files flags that are already defined under a heading of the help.
-func inGroup(cmd *cobra.Command, group string, names ...string) {
-	for _, name := range names {
-		// It fails for a flag that is not defined only.
-		if err := cmd.Flags().SetAnnotation(name, groupKey, []string{group}); err != nil {
-			panic(err)
+// Each is a name, or a name and the placeholder of its value, as in "out DIR".
+func inGroup(cmd *cobra.Command, group string, flags ...string) {
+	for _, flag := range flags {
+		name, placeholder, _ := strings.Cut(flag, " ")
+		f := cmd.Flags().Lookup(name)
+		if f.Annotations == nil {
+			f.Annotations = map[string][]string{}
 		}
+		f.Annotations[groupKey] = []string{group}
+		f.Annotations[placeholderKey] = []string{placeholder}
 	}
 }
 

@@ -74,15 +74,15 @@ func describe(cmd *cobra.Command) string {
 func flagsOf(cmd *cobra.Command, group string) []*pflag.Flag {
 	var found []*pflag.Flag
 	cmd.Flags().VisitAll(func(f *pflag.Flag) {
-		of := ""
-		if a := f.Annotations[groupKey]; len(a) > 0 {
-			of = a[0]
-		}
-		if of == group && !f.Hidden {
+		if annotation(f, groupKey) == group && !f.Hidden {
 			found = append(found, f)
 		}
 	})
 	return found
+}
+
+func annotation(f *pflag.Flag, key string) string {
+	return strings.Join(f.Annotations[key], "")
 }
 
 // printFlags writes one heading and its flags in two columns.
@@ -93,15 +93,14 @@ func printFlags(w io.Writer, heading string, flags []*pflag.Flag) {
 	names := make([]string, len(flags))
 	texts := make([]string, len(flags))
 	for i, f := range flags {
-		placeholder, text := pflag.UnquoteUsage(f)
-		if f.NoOptDefVal != "" {
-			placeholder = ""
-		}
-		names[i] = strings.TrimRight("--"+f.Name+" "+placeholder, " ")
+		names[i] = strings.TrimRight("--"+f.Name+" "+annotation(f, placeholderKey), " ")
 		if f.Shorthand != "" {
 			names[i] = "-" + f.Shorthand + ", " + names[i]
 		}
-		texts[i] = text
+		texts[i] = f.Usage
+		if f.DefValue != "" && f.DefValue != "false" && f.DefValue != "[]" {
+			texts[i] += " (default " + f.DefValue + ")"
+		}
 	}
 	width := len(slices.MaxFunc(names, func(a, b string) int { return len(a) - len(b) }))
 	fmt.Fprintf(w, "\n%s:\n", heading)

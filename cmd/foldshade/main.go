@@ -22,6 +22,8 @@ func main() {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	// Only the first signal is ours: a second one ends the process at once.
 	context.AfterFunc(ctx, stop)
+	// A file size limit shall be an error of the write, not the end.
+	signal.Ignore(syscall.SIGXFSZ)
 	os.Exit(run(ctx, os.Args[1:], os.Stdin, os.Stdout, os.Stderr))
 }
 
@@ -39,7 +41,7 @@ const (
 // arguments, does the work and returns the exit code.
 func run(ctx context.Context, args []string, stdin io.Reader, stdout, stderr io.Writer) int {
 	out := &sink{w: stdout}
-	root := newRoot()
+	root := newRoot(append([]string{"foldshade"}, args...))
 	root.SetArgs(args)
 	root.SetIn(stdin)
 	root.SetOut(out)
@@ -68,12 +70,13 @@ func report(ctx context.Context, stderr io.Writer, err error) int {
 	}
 	var usage *usageError
 	var output *outputError
+	var written *raster.OutputError
 	switch {
 	case errors.Is(err, errRequire):
 		return exitRequire
 	case errors.As(err, &usage):
 		return exitUsage
-	case errors.As(err, &output):
+	case errors.As(err, &output), errors.As(err, &written):
 		return exitOutput
 	default:
 		return exitInput
@@ -139,8 +142,9 @@ func (s *sink) Write(p []byte) (int, error) {
 	return n, err
 }
 
-// newRoot builds the command tree.
-func newRoot() *cobra.Command {
+// newRoot builds the command tree. The command is what the user wrote, one
+// word an element; the files repeat it.
+func newRoot(command []string) *cobra.Command {
 	root := &cobra.Command{
 		Use:   "foldshade",
 		Short: "radar layover, shadow and incidence from a DEM and a look geometry",
@@ -148,8 +152,8 @@ func newRoot() *cobra.Command {
 sees it once, folds it (layover) or hides it (shadow), by what margin, and under
 which incidence.`,
 		Example: `  foldshade demo --out valley
-  foldshade inspect valley/dem.tif
-  foldshade layers valley/dem.tif --look name=west,incidence=38,azimuth=80 --out valley/west`,
+  foldshade inspect valley/valley.tif
+  foldshade layers valley/valley.tif --look name=east,incidence=38,azimuth=78 --out east`,
 		Args:              noSuchCommand,
 		RunE:              func(cmd *cobra.Command, _ []string) error { return cmd.Help() },
 		SilenceErrors:     true,
@@ -161,7 +165,7 @@ which incidence.`,
 	root.SetHelpCommand(newHelp())
 	root.Version = fmt.Sprintf("%s (GDAL %s)", toolVersion(), raster.GDALVersion())
 	root.SetFlagErrorFunc(flagError)
-	root.AddCommand(newVersion(), newMan())
+	root.AddCommand(newLayers(command), newInspect(), newDemo(), newVersion(), newMan())
 	return root
 }
 

@@ -27,8 +27,8 @@ folder, which is made when it is not there. Pages of an earlier run are replaced
 			return writeMan(cmd.Root(), dir)
 		},
 	}
-	newFlags(cmd).StringVar(&dir, "out", "", "`DIR` that takes the pages")
-	inGroup(cmd, groupOutput, "out")
+	newFlags(cmd).StringVar(&dir, "out", "", "folder for the pages")
+	inGroup(cmd, groupOutput, "out DIR")
 	cmd.DisableFlagsInUseLine = true
 	return cmd
 }

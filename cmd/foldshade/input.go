@@ -1,0 +1,121 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"foldshade/cmd/internal/lookfile"
+	"foldshade/dem"
+	"foldshade/dem/raster"
+	"foldshade/geometry"
+)
+
+// demFlags say how a DEM is to be understood.
+type demFlags struct {
+	crs, unit string
+	band      int
+}
+
+func (d *demFlags) define(cmd *cobra.Command) {
+	f := newFlags(cmd)
+	f.StringVar(&d.crs, "crs", "", "CRS of the DEM where the file has none or a wrong one:\nEPSG:code, WKT or a PROJ string")
+	f.Var(&whole{&d.band, 1, 65535}, "band", "the band with the heights, 1 to 65535;\nby default the first that can hold heights")
+	f.StringVar(&d.unit, "vertical-unit", "", "unit of the heights where the file does not say it:\nm, ft, us-ft, cm, dm, mm or km; by default m")
+	inGroup(cmd, groupInput, "crs CRS", "band N", "vertical-unit UNIT")
+}
+
+// open opens a DEM that may hold its heights in so many bytes.
+func (d *demFlags) open(name string, hold int64) (*raster.DEM, error) {
+	if name == "" {
+		return nil, usagef("DEM is empty; give the path or the GDAL name of a raster")
+	}
+	src, err := raster.Open(name, raster.Options{CRS: d.crs, Band: d.band, VerticalUnit: d.unit, HoldBytes: hold})
+	if err != nil {
+		return nil, err
+	}
+	return src, nil
+}
+
+// survey reads all heights once.
+func survey(ctx context.Context, src *raster.DEM) (dem.Range, error) {
+	found, err := src.Survey(ctx)
+	if err != nil {
+		return dem.Range{}, err
+	}
+	return found, nil
+}
+
+// warn prints warnings, one a line.
+func warn(w io.Writer, warnings []string) {
+	for _, text := range warnings {
+		fmt.Fprintf(w, "warning: %s\n", oneLine(text))
+	}
+}
+
+// lookFlags are the looks of a job.
+type lookFlags struct {
+	looks []string
+	file  string
+}
+
+func (l *lookFlags) define(cmd *cobra.Command) {
+	f := newFlags(cmd)
+	f.StringArrayVar(&l.looks, "look", nil, "one look; repeat the flag for more. A fixed look takes\nincidence (degrees at the ground) with azimuth (where the\nradar looks, degrees clockwise from true north), or\nheading with side")
+	f.StringVar(&l.file, "looks", "", "file of looks, .yaml, .yml or .csv, with the same keys")
+	inGroup(cmd, groupLook, "look KEY=VALUE,...", "looks FILE")
+}
+
+// given reports whether the user gave any look.
+func (l *lookFlags) given() bool { return len(l.looks) > 0 || l.file != "" }
+
+// read returns the looks of the flags and of the file, all named.
+func (l *lookFlags) read() ([]geometry.Look, error) {
+	var flags, file []geometry.Look
+	for _, text := range l.looks {
+		look, err := lookfile.Flag(text)
+		if err != nil {
+			return nil, &usageError{err}
+		}
+		flags = append(flags, look)
+	}
+	if l.file != "" {
+		var err error
+		if file, err = lookfile.Read(l.file); err != nil {
+			return nil, err
+		}
+	}
+	looks, err := lookfile.Merge(flags, file)
+	if err != nil {
+		return nil, &usageError{err}
+	}
+	return looks, nil
+}
+
+// fixedOnly refuses the kinds of look that the marching does not serve.
+func fixedOnly(looks []geometry.Look) error {
+	for _, l := range looks {
+		if l.Kind != geometry.Fixed {
+			return usagef("look %q is of kind %s; this version computes kind fixed", l.Name, l.Kind)
+		}
+	}
+	return nil
+}
+
+// isInterrupt reports whether an error says that the work was called off.
+func isInterrupt(err error) bool {
+	return errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded)
+}
+
+// joinNames writes names in a row.
+func joinNames[T ~string](names []T) string {
+	words := make([]string, len(names))
+	for i, n := range names {
+		words[i] = string(n)
+	}
+	return strings.Join(words, ", ")
+}
