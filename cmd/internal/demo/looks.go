@@ -25,12 +25,12 @@ looks:
     heading: 191
     side: right
 
-  # An aircraft north-west of the valley. The azimuth may stand in place of
-  # heading and side: it points from the radar to the ground. A steep look
-  # casts little shadow and folds much.
-  - name: steep-south-east
+  # An aircraft north-west of the valley, at a grazing look: little folds, much
+  # is hidden. The azimuth may stand in place of heading and side: it points
+  # from the radar to the ground.
+  - name: plane-south-east
     kind: fixed
-    incidence: 26
+    incidence: 61
     azimuth: 148
     slant_range_km: 8.5  # to the centre of the map, at height 0
 `

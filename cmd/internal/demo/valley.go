@@ -10,7 +10,7 @@ import (
 )
 
 // Seed is the seed of the valley that the demo shows.
-const Seed = 2
+const Seed = 10
 
 // Outer corner of the first cell in UTM zone 24 north, metres: open ocean, so
 // that nobody takes the valley for a real one.
@@ -113,7 +113,7 @@ func cast(streams []tributary, length int) (gorge, fan, ice int) {
 	middle := func(t tributary) bool { return t.joins > length/6 && t.joins < length*6/10 }
 	high := func(t tributary) float64 { return t.bed[len(t.bed)/2] }
 	for k, t := range streams {
-		if inside(t.points[len(t.points)-1], 12) && len(t.points) > 60 && (ice < 0 || high(t) > high(streams[ice])) {
+		if inside(t.points[len(t.points)-1], 60) && len(t.points) > 60 && (ice < 0 || high(t) > high(streams[ice])) {
 			ice = k
 		}
 	}
@@ -181,11 +181,11 @@ func (f *field) saddle(path []int32) point {
 	best, at := math.Inf(1), point{}
 	for i := range f.h {
 		p := point{float64(i / f.cols), float64(i % f.cols)}
-		if !home[i] || !inside(p, 25) {
+		if !home[i] || !inside(p, 50) {
 			continue
 		}
 		f.each(i, func(j int, _ float64) {
-			if h := max(f.h[i], f.h[j]); !home[j] && h < best && p.col > cols*0.35 {
+			if h := max(f.h[i], f.h[j]); !home[j] && h < best {
 				best, at = h, p
 			}
 		})

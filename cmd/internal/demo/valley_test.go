@@ -6,15 +6,19 @@ import (
 	"encoding/hex"
 	"encoding/json"
 	"math"
+	"os"
 	"os/exec"
+	"path/filepath"
 	"regexp"
 	"slices"
-	"strings"
 	"sync"
 	"testing"
 
 	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
+
+	"foldshade/cmd/internal/lookfile"
+	"foldshade/geometry"
 )
 
 var made = sync.OnceValues(func() (*Valley, error) { return New(Seed) })
@@ -41,14 +45,11 @@ func TestSameValleyEverywhere(t *testing.T) {
 	v := valley(t)
 	// Not a truth, a seal: change it together with the terrain, and look at
 	// the pictures in docs when it changes.
-	const sealed = "75410f7eaa6cdc7bbea2edd8c761d3b79b8690deab83c21428f92f1e88fdce8f"
+	const sealed = "7dbf0384dc1f36d87430ab510ad6736abc4c9b9953a96e6e48bb81f07f8ab2e7"
 	assert.Equal(t, sealed, decimetres(v))
 	for i, h := range v.Heights {
 		require.InDelta(t, math.Round(10*float64(h)), 10*float64(h), 1e-3, "cell %d is no multiple of 0.1 m", i)
 	}
-	other, err := New(Seed + 1)
-	require.NoError(t, err)
-	assert.NotEqual(t, sealed, decimetres(other), "another seed gives another valley")
 }
 
 // On arm64 the compiler fuses a product and a sum into one rounding wherever
@@ -136,8 +137,8 @@ func TestSites(t *testing.T) {
 	slide := around(v, sites["landslide"], 12)
 	assert.Greater(t, slide[len(slide)-1], 40.0, "the landslide has a scarp")
 	assert.Greater(t, height("pass"), height("glacier"))
-	assert.Greater(t, height("glacier"), height("landslide"))
-	assert.Greater(t, height("landslide"), height("town"))
+	assert.Greater(t, height("glacier"), height("town")+400)
+	assert.Greater(t, height("landslide"), height("town")+200)
 }
 
 func TestGeoJSON(t *testing.T) {
@@ -179,16 +180,27 @@ func TestLonLat(t *testing.T) {
 	}
 }
 
-func TestMostSeedsMakeAValley(t *testing.T) {
-	for seed := range uint64(4) {
-		v, err := New(seed + 6) // 7 has a glacier outside the frame
-		if err != nil {
-			assert.True(t, strings.HasPrefix(err.Error(), "seed "), err)
-			assert.Nil(t, v)
-			continue
-		}
-		for i, h := range v.Heights {
-			require.False(t, math.IsNaN(float64(h)) || math.IsInf(float64(h), 0), "seed %d, cell %d", seed, i)
-		}
+func TestOtherSeeds(t *testing.T) {
+	v, err := New(7)
+	assert.ErrorContains(t, err, "seed 7: ", "its glacier lies outside the frame")
+	assert.Nil(t, v)
+	v, err = New(8)
+	require.NoError(t, err)
+	assert.NotEqual(t, decimetres(valley(t)), decimetres(v))
+	for i, h := range v.Heights {
+		require.True(t, h > 0 && h < 5000, "height %g at cell %d", h, i)
+	}
+}
+
+func TestLooks(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "looks.yaml")
+	require.NoError(t, os.WriteFile(path, []byte(Looks), 0o644))
+	looks, err := lookfile.Read(path)
+	require.NoError(t, err)
+	require.Len(t, looks, 3)
+	for k, want := range []struct{ incidence, azimuth float64 }{{39, 79}, {34, 281}, {61, 148}} {
+		assert.Equal(t, geometry.Fixed, looks[k].Kind)
+		assert.InDelta(t, want.incidence, looks[k].Incidence.Degrees(), 1e-9, looks[k].Name)
+		assert.InDelta(t, want.azimuth, looks[k].Azimuth.Degrees(), 1e-9, looks[k].Name)
 	}
 }

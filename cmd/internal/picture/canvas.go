@@ -232,7 +232,7 @@ func spread(mask *image.Alpha, area image.Rectangle, radius float64) *image.Alph
 					a = max(a, uint8(edge*float64(mask.AlphaAt(x+dx, y+dy).A)))
 				}
 			}
-			out.SetAlpha(x, y, color.Alpha{uint8(float64(a) * 0.92)})
+			out.SetAlpha(x, y, color.Alpha{uint8(float64(a) * 0.96)})
 		}
 	}
 	return out

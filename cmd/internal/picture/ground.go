@@ -6,6 +6,7 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"sync"
 
 	"foldshade/mask"
 )
@@ -98,10 +99,14 @@ func (s *ground) slopes() {
 var light = [3]float64{-0.5, 0.5, math.Sqrt2 / 2}
 
 // shade is the brightness of a slope: 1 on flat ground, so that plains keep
-// the colour of the legend.
+// the colour of the legend, and hardly more on slopes that face the light, so
+// that they do not glare.
 func shade(right, up float64) float64 {
-	lit := (-right*light[0] - up*light[1] + light[2]) / math.Sqrt(1+right*right+up*up)
-	return min(max(1+0.92*(lit-light[2]), 0.34), 1.14)
+	lit := (-right*light[0]-up*light[1]+light[2])/math.Sqrt(1+right*right+up*up) - light[2]
+	if lit > 0 {
+		return 1 + 0.13*lit
+	}
+	return max(1+0.75*lit, 0.45)
 }
 
 // picture draws the map w by h pixels. Each pixel averages a few samples, so
@@ -115,20 +120,27 @@ func (s *ground) picture(w, h int) *image.RGBA {
 	img := image.NewRGBA(image.Rect(0, 0, w, h))
 	perX, perY := float64(g.Cols)/float64(w), float64(g.Rows)/float64(h)
 	n := int(min(max(math.Ceil(max(perX, perY)), 2), 4))
+	var rows sync.WaitGroup
 	for y := range h {
-		for x := range w {
-			var sum [3]float64
-			for k := range n * n {
-				px := float64(x) + (float64(k%n)+0.5)/float64(n)
-				py := float64(y) + (float64(k/n)+0.5)/float64(n)
-				c := s.sample(py*perY-0.5, px*perX-0.5, px, py)
-				sum[0], sum[1], sum[2] = sum[0]+c[0], sum[1]+c[1], sum[2]+c[2]
-			}
-			q := float64(n * n)
-			img.SetRGBA(x, y, color.RGBA{level(sum[0] / q), level(sum[1] / q), level(sum[2] / q), 255})
-		}
+		rows.Go(func() { s.row(img, y, perX, perY, n) })
 	}
+	rows.Wait()
 	return img
+}
+
+// row draws one row of pixels, n by n samples each.
+func (s *ground) row(img *image.RGBA, y int, perX, perY float64, n int) {
+	for x := range img.Rect.Dx() {
+		var sum [3]float64
+		for k := range n * n {
+			px := float64(x) + (float64(k%n)+0.5)/float64(n)
+			py := float64(y) + (float64(k/n)+0.5)/float64(n)
+			c := s.sample(py*perY-0.5, px*perX-0.5, px, py)
+			sum[0], sum[1], sum[2] = sum[0]+c[0], sum[1]+c[1], sum[2]+c[2]
+		}
+		q := float64(n * n)
+		img.SetRGBA(x, y, color.RGBA{level(sum[0] / q), level(sum[1] / q), level(sum[2] / q), 255})
+	}
 }
 
 func level(v float64) uint8 { return uint8(min(max(v, 0), 255) + 0.5) }
@@ -159,11 +171,15 @@ func (s *ground) sample(row, col, px, py float64) [3]float64 {
 
 // class is the one with the largest weight among four cells.
 func (s *ground) class(cells [4]int, weights [4]float64) mask.Class {
+	kinds := [4]mask.Class{s.at(cells[0]), s.at(cells[1]), s.at(cells[2]), s.at(cells[3])}
+	if kinds[0] == kinds[1] && kinds[0] == kinds[2] && kinds[0] == kinds[3] {
+		return kinds[0]
+	}
 	best, share := mask.NoData, -1.0
-	for _, i := range cells {
-		kind, sum := s.at(i), 0.0
-		for k, j := range cells {
-			if s.at(j) == kind {
+	for _, kind := range kinds {
+		sum := 0.0
+		for k, other := range kinds {
+			if other == kind {
 				sum += weights[k]
 			}
 		}
@@ -189,19 +205,23 @@ func (s *ground) at(i int) mask.Class {
 // tone mixes a class's colour with the relief and its texture. The relief
 // shows through: calm where the ground is open, weaker in dark classes.
 func tone(c mask.Class, shade, px, py float64) [3]float64 {
-	base, ok := colors[c]
-	if !ok || c == mask.NoData {
+	base, open := &colors[c], &colors[mask.Open]
+	if !known[c] {
 		stripe := 236 - 22*stroke(px+py, 9, 1.4)
 		return [3]float64{stripe, stripe, stripe - 3}
 	}
 	out := [3]float64{}
-	cover := 0.86
-	if c == mask.Open {
-		cover = 1
+	cover, dim := 0.86, [3]float64{shade, shade, shade}
+	switch c {
+	case mask.Open: // warm where it is dark, so that it is not taken for grey undetermined ground
+		cover, dim = 1, [3]float64{1 - 0.92*(1-shade), shade, 1 - 1.10*(1-shade)}
+	case mask.Undetermined:
+		flat := 1 - 0.55*(1-shade)
+		dim = [3]float64{flat, flat, flat}
 	}
 	line := texture(c, px, py)
 	for k := range out {
-		v := (cover*base[k] + (1-cover)*colors[mask.Open][k]) * shade
+		v := (cover*base[k] + (1-cover)*open[k]) * dim[k]
 		if line >= 0 {
 			v += line * (255 - v)
 		} else {
@@ -241,15 +261,16 @@ func stroke(v, period, wide float64) float64 {
 	return min(max((wide/2-d/math.Sqrt2)+0.5, 0), 1)
 }
 
-// colors are the classes' colours in 0 to 255.
-var colors = palette()
+// colors are the classes' colours in 0 to 255, by code; known tells the codes
+// that have one.
+var colors, known = palette()
 
-func palette() map[mask.Class][3]float64 {
-	p := map[mask.Class][3]float64{}
+func palette() (colors [256][3]float64, known [256]bool) {
 	for _, c := range mask.Classes {
 		if n, err := strconv.ParseUint(strings.TrimPrefix(c.Color, "#"), 16, 32); err == nil {
-			p[c.Code] = [3]float64{float64(n >> 16 & 255), float64(n >> 8 & 255), float64(n & 255)}
+			colors[c.Code] = [3]float64{float64(n >> 16 & 255), float64(n >> 8 & 255), float64(n & 255)}
+			known[c.Code] = true
 		}
 	}
-	return p
+	return colors, known
 }

@@ -13,7 +13,7 @@ type label struct {
 
 const (
 	markRadius = 5.5
-	haloWidth  = 2.4
+	haloWidth  = 2.8
 )
 
 // place finds room for every site's name: near its mark, inside the map, and

@@ -78,8 +78,6 @@ const (
 	gutter = 40.0  // between map and column, and between maps
 	column = 304.0 // legend column beside a single map
 	rowGap = 31.0  // from one legend row to the next
-
-	titleWidth = 220.0 // room for a swatch and a class's title
 )
 
 // layoutMap lays out one map with its legend in a column at the right.
@@ -100,10 +98,7 @@ func layoutMap(m Map) *sheet {
 	s.corners(g, s.maps[0].frame, wide)
 	x := math.Round(edge + wide + gutter)
 	bottom := s.dials(m.Look, g.north, x, top)
-	bottom += 46
-	s.say(strongType, false, spot{x, bottom}, 0, "What the radar sees")
-	s.say(captionType, true, spot{x + column, bottom}, 1, "share of cells")
-	bottom = s.legend([]tally{count(&m)}, x, x+column, 0, bottom)
+	bottom = s.legend(count(&m), x, x+column, bottom+46)
 	bottom = s.scale(g.width/float64(w), x, x+column, bottom+36)
 	s.w = int(math.Ceil(edge + full + edge))
 	s.h = int(math.Ceil(max(top+tall+20, bottom) + edge))
@@ -306,9 +301,9 @@ func count(m *Map) tally {
 	return t
 }
 
-// share is the part of a group in the cells with data, in words. No data
-// itself is counted against all cells.
-func (t tally) share(g group) string {
+// part is the share of a group in the cells with data, 0 to 1. No data itself
+// is counted against all cells.
+func (t tally) part(g group) float64 {
 	n, all := 0, t.known
 	for _, c := range g.codes {
 		n += t.cells[c]
@@ -316,12 +311,17 @@ func (t tally) share(g group) string {
 			all += t.cells[c]
 		}
 	}
-	switch p := 100 * float64(n) / float64(all); {
-	case n == 0:
+	return float64(n) / float64(max(all, 1))
+}
+
+// share is the part in words, never rounded to all or nothing.
+func (t tally) share(g group) string {
+	switch p := 100 * t.part(g); {
+	case p == 0:
 		return "–"
 	case p < 0.1:
 		return "< 0.1 %"
-	case p > 99.9 && n < all:
+	case p > 99.9 && p < 100:
 		return "> 99.9 %"
 	default:
 		return fmt.Sprintf("%.1f %%", p)
@@ -344,20 +344,19 @@ func shown(g group, tallies []tally) bool {
 	return !plain && (kind == mask.Open.Kind() || kind == mask.ActiveLayover.Kind() || kind == mask.SelfShadow.Kind())
 }
 
-// legend lists the classes with a swatch, the title and one share a map,
-// and returns the lower end. The shares' columns are
-// shareWidth apart, the last ends at x1.
-func (s *sheet) legend(tallies []tally, x0, x1, shareWidth, y float64) float64 {
+// legend lists the classes with a swatch, the title and the share, and
+// returns the lower end.
+func (s *sheet) legend(t tally, x0, x1, y float64) float64 {
+	s.say(strongType, false, spot{x0, y}, 0, "What the radar sees")
+	s.say(captionType, true, spot{x1, y}, 1, "share of cells")
 	for _, g := range groups() {
-		if !shown(g, tallies) {
+		if !shown(g, []tally{t}) {
 			continue
 		}
 		y += rowGap
 		s.swatch(g.codes[0], box{x0, y - 17, x0 + 34, y + 5})
 		s.say(textType, false, spot{x0 + 48, y}, 0, g.title)
-		for k, t := range tallies {
-			s.say(textType, false, spot{x1 - shareWidth*float64(len(tallies)-1-k), y}, 1, t.share(g))
-		}
+		s.say(textType, false, spot{x1, y}, 1, t.share(g))
 	}
 	return y
 }

@@ -4,6 +4,9 @@ import (
 	"fmt"
 	"image/color"
 	"math"
+	"strings"
+
+	"foldshade/mask"
 )
 
 func rgba(t [3]float64) color.RGBA {
@@ -36,20 +39,20 @@ func layoutPanel(p Panel) *sheet {
 	for k := range p.Maps {
 		m := &p.Maps[k]
 		x := math.Round(edge + float64(k%across)*(cell+gutter))
-		y := math.Round(top + float64(k/across)*(head+640+gutter))
-		if k/across > 0 {
-			y = math.Round(bottom + gutter)
+		if k%across == 0 && k > 0 {
+			top = math.Round(bottom + gutter)
 		}
+		y := math.Round(top)
 		g := survey(m)
 		s.head(m, g.north, k, len(p.Maps), x, y, cell)
 		mw, mh := g.size(float64(w), float64(h))
 		s.addMap(g, box{x, y + head, x + float64(mw), y + head + float64(mh)})
-		tallies = append(tallies, count(m))
-		if k%across == across-1 || k == len(p.Maps)-1 {
-			bottom = y + head + float64(h)
-		}
+		t := count(m)
+		tallies = append(tallies, t)
+		s.bar(t, box{x, y + head + float64(mh) + 16, x + cell, y + head + float64(mh) + 30})
+		bottom = max(bottom, y+head+float64(mh)+54)
 	}
-	bottom = s.foot(tallies, first, float64(w), edge+full, bottom+50)
+	bottom = s.foot(tallies, first.width/float64(w), edge+full, bottom+52)
 	s.w, s.h = int(math.Ceil(edge+full+edge)), int(math.Ceil(bottom+edge))
 	return s
 }
@@ -65,7 +68,7 @@ func (s *sheet) head(m *Map, north float64, k, of int, x, y, wide float64) {
 	line := ""
 	for _, part := range m.Look.words() {
 		if line != "" {
-			line += " · "
+			part = ", " + strings.ToLower(part)
 		}
 		line += part
 	}
@@ -92,21 +95,64 @@ func (s *sheet) compassSmall(l Look, north float64, at spot, radius float64) {
 	s.say(captionType, false, spot{turn(north, radius+9).x, turn(north, radius+9).y + 4}, 0.5, "N")
 }
 
-// foot draws the shared legend at the left and the scale at the right, and
-// returns the lower end.
-func (s *sheet) foot(tallies []tally, g *ground, w, right, y float64) float64 {
-	n := float64(len(tallies))
-	shareWidth := min(104, (right-edge-titleWidth)/n)
-	end := edge + titleWidth + shareWidth*n
-	s.say(strongType, false, spot{edge, y}, 0, "What the radar sees")
-	if len(tallies) > 1 {
-		for k := range tallies {
-			s.say(strongType, false, spot{end - shareWidth*float64(len(tallies)-1-k), y}, 1, string('A'+rune(k%26)))
+// bar draws a map's shares as one strip of its classes, with the kinds'
+// numbers below.
+func (s *sheet) bar(t tally, b box) {
+	if t.known == 0 || t.plain {
+		return
+	}
+	x := b.x0
+	for _, g := range groups() {
+		if g.codes[0] == mask.NoData {
+			continue
+		}
+		part := box{x, b.y0, x + t.part(g)*b.w(), b.y1}
+		if part.w() > 0 {
+			s.swatch(g.codes[0], part)
+		}
+		x = part.x1
+	}
+	var parts []string
+	for _, k := range []struct {
+		title string
+		kind  int
+	}{{"open", 1}, {"compressed", 2}, {"layover", 3}, {"shadow", 4}, {"undetermined", 5}} {
+		all := group{title: k.title}
+		for _, c := range mask.Classes {
+			if c.Code.Kind() == k.kind {
+				all.codes = append(all.codes, c.Code)
+			}
+		}
+		if k.kind%2 == 1 && k.kind < 5 || k.kind == 4 || t.part(all) > 0 {
+			parts = append(parts, k.title+" "+t.share(all))
 		}
 	}
-	bottom := s.legend(tallies, edge, end, shareWidth, y)
-	if x := right - 300; x > end+gutter {
-		return max(bottom, s.scale(g.width/w, x, right, y-10))
+	s.say(captionType, false, spot{b.x0, b.y1 + 20}, 0, captionType.fit(strings.Join(parts, "   "), b.w()))
+}
+
+// foot draws the shared legend in rows from the left, and the scale at the
+// right or below, and returns the lower end.
+func (s *sheet) foot(tallies []tally, metresPerPixel, right, y float64) float64 {
+	const scaleWidth = 300
+	room := right
+	if right-edge > 900 {
+		room = right - scaleWidth - gutter
 	}
-	return s.scale(g.width/w, edge, edge+300, bottom+36)
+	x, base := edge, y
+	for _, g := range groups() {
+		if !shown(g, tallies) {
+			continue
+		}
+		wide := 44 + textType.width(g.title)
+		if x > edge && x+wide > room {
+			x, base = edge, base+rowGap
+		}
+		s.swatch(g.codes[0], box{x, base - 17, x + 34, base + 5})
+		s.say(textType, false, spot{x + 44, base}, 0, g.title)
+		x += wide + 26
+	}
+	if room < right {
+		return max(base+8, s.scale(metresPerPixel, right-scaleWidth, right, y-14))
+	}
+	return s.scale(metresPerPixel, edge, edge+scaleWidth, base+30)
 }
