@@ -31,7 +31,7 @@ type OEMSegment struct {
 
 // Bounds of what is read; they keep the memory of a hostile file small.
 const (
-	maxOEMStates = 1 << 20 // 30 days at 2.5 s, 60 MB
+	maxOEMStates = 1 << 18 // 30 days at 10 s, 16 MB
 	maxOEMLine   = 1024    // bytes; the standard allows 254
 	maxOEMDegree = 27
 	// Distances from the earth's centre, metres, that keep slips of the unit

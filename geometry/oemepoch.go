@@ -134,7 +134,7 @@ func parseClock(text string) (h, m, s int, fraction float64, ok bool) {
 		return 0, 0, 0, 0, false
 	}
 	if rest := text[8:]; rest != "" {
-		if rest[0] != '.' || strings.Trim(rest[1:], "0123456789") != "" || len(rest) > 20 {
+		if len(rest) < 2 || rest[0] != '.' || strings.Trim(rest[1:], "0123456789") != "" || len(rest) > 20 {
 			return 0, 0, 0, 0, false
 		}
 		fraction, _ = strconv.ParseFloat("0"+rest, 64) // digits only: no error

@@ -57,7 +57,18 @@ func (a ENU) LookAzimuth() Angle {
 	if a.East == 0 && a.North == 0 {
 		return 0
 	}
-	return Angle(math.Atan2(-a.East, -a.North)).Turn()
+	return Angle(turned(math.Atan2(-a.East, -a.North)))
+}
+
+// turned brings an angle in (-2 pi, 2 pi), radians, into [0, 2 pi).
+func turned(a float64) float64 {
+	if a < 0 {
+		a += 2 * math.Pi
+		if a >= 2*math.Pi { // a tiny negative angle rounds up to a full turn
+			return 0
+		}
+	}
+	return a
 }
 
 // Sight is how a radar sees one ground point: a right-handed orthonormal frame

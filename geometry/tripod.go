@@ -54,7 +54,7 @@ func (p Place) text() string {
 func (t *tripod) ZeroDoppler(p ECEF) (float64, bool) {
 	d := p.Sub(t.frame.origin)
 	e, n := d.Dot(t.frame.east), d.Dot(t.frame.north)
-	return float64(Angle(math.Atan2(e, n)).Turn()), e != 0 || n != 0
+	return turned(math.Atan2(e, n)), e != 0 || n != 0
 }
 
 func (t *tripod) State(azimuth float64) (pos, vel ECEF) {
@@ -72,7 +72,7 @@ func (t *tripod) View(p Geodetic) (View, Seen) {
 	v := viewOf(&f, t.frame.origin, vel, t.frame.up)
 	v.T = azimuth
 	switch {
-	case float64(Angle(azimuth-t.from).Turn()) > t.width:
+	case turned(azimuth-t.from) > t.width:
 		return v, OutsideSector
 	case v.SlantRange < t.near || v.SlantRange > t.far:
 		return v, OutsideRange
