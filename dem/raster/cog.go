@@ -452,11 +452,15 @@ func (w *Writer) seal() error {
 		return err
 	}
 	layout := ds.Metadata("LAYOUT", godal.Domain("IMAGE_STRUCTURE"))
+	placed := ds.Projection() != "" || w.grid.CRS == ""
 	if err := ds.Close(godal.ErrLogger(strictly)); err != nil {
 		return err
 	}
 	if layout != "COG" {
 		return fmt.Errorf("GDAL made a file of layout %q, not COG", layout)
+	}
+	if !placed {
+		return errors.New("GDAL could not store the DEM's coordinate reference system in it; give the DEM one of the EPSG registry with --crs")
 	}
 	f, err := os.Open(w.path)
 	if err != nil {

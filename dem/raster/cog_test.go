@@ -533,3 +533,53 @@ func TestSameBytes(t *testing.T) {
 	assert.Equal(t, sums[0], sums[1])
 	assert.Equal(t, sums[0], sums[2])
 }
+
+// TestCRSKept writes grids of several reference systems, whose text comes from
+// the gdalsrsinfo program, and has GDAL say whether what the file holds is the same.
+func TestCRSKept(t *testing.T) {
+	for _, code := range []string{
+		"EPSG:4326",       // degrees, latitude first by definition
+		"EPSG:26710",      // an old datum
+		"EPSG:2263",       // feet
+		"EPSG:32632+5773", // with heights above a geoid
+		"EPSG:4979",       // three dimensions
+		"+proj=laea +lat_0=46 +lon_0=9 +datum=WGS84 +units=m +no_defs +type=crs", // no code
+	} {
+		t.Run(code, func(t *testing.T) {
+			want, err := godal.NewSpatialRef(code)
+			require.NoError(t, err)
+			defer want.Close()
+			wkt, err := commandOutput("gdalsrsinfo", "-o", "wkt2", code)
+			require.NoError(t, err)
+			transform := [6]float64{9.25, 0.01, 0, 46.5, 0, -0.01}
+			g, err := dem.NewGrid(4, 5, transform, wkt, func(_, _ []float64) error { return nil })
+			require.NoError(t, err)
+			s, dir := newSet(t)
+			w, err := s.Writer("a", floatLayer(), g, g.Whole())
+			require.NoError(t, err)
+			writeFloats(t, w, g.Whole(), smooth(4, 5))
+			require.NoError(t, s.Commit())
+			ds := openRaster(t, dir+"/a/height.tif")
+			got := ds.SpatialRef()
+			defer got.Close()
+			assert.True(t, got.IsSame(want), "%s", ds.Projection())
+			gt, err := ds.GeoTransform()
+			require.NoError(t, err)
+			assert.InDeltaSlice(t, transform[:], gt[:], 1e-12)
+			assert.Equal(t, []string{"a", "a/height.tif"}, listing(t, dir))
+		})
+	}
+}
+
+// TestBadCRS expects an error where GDAL would leave the reference system out
+// and say nothing.
+func TestBadCRS(t *testing.T) {
+	g := *utmGrid(t, 4, 5)
+	g.CRS = "somewhere"
+	s, dir := newSet(t)
+	w, err := s.Writer("a", floatLayer(), &g, g.Whole())
+	require.NoError(t, err)
+	writeFloats(t, w, g.Whole(), smooth(4, 5))
+	assertOutput(t, s.Commit(), filepath.Join(dir, "a/height.tif"), "could not store the DEM's coordinate reference system")
+	assert.Empty(t, listing(t, dir))
+}

@@ -9,6 +9,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strconv"
+	"strings"
 )
 
 // vrt describes the scratch file to GDAL, with all that the raster shall
@@ -18,8 +19,8 @@ func (w *Writer) vrt() []byte {
 	t := w.grid.Transform
 	row, col := float64(w.window.Row), float64(w.window.Col)
 	x.line(`<VRTDataset rasterXSize="%d" rasterYSize="%d">`, w.window.Cols, w.window.Rows)
-	if w.grid.CRS != "" {
-		x.element("SRS", w.grid.CRS)
+	if crs := strings.TrimSpace(w.grid.CRS); crs != "" {
+		x.element("SRS", crs)
 	}
 	x.line("<GeoTransform>%.17g, %.17g, %.17g, %.17g, %.17g, %.17g</GeoTransform>",
 		t[0]+col*t[1]+row*t[2], t[1], t[2], t[3]+col*t[4]+row*t[5], t[4], t[5])

@@ -1,6 +1,7 @@
 package raster
 
 import (
+	"cmp"
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
@@ -17,6 +18,7 @@ import (
 	"slices"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"syscall"
 	"time"
 
@@ -86,6 +88,9 @@ type Set struct {
 	// Threads is the number of processors that Finish may keep busy; 0 means
 	// all of them.
 	Threads int
+	// Progress, when not nil, is told by Finish of bytes of cells made into
+	// rasters out of all; it may be called from several goroutines.
+	Progress func(done, all int64)
 
 	dir       string
 	temp      string
@@ -394,15 +399,19 @@ func multihash(sum hash.Hash) string { return "1220" + hex.EncodeToString(sum.Su
 // error; only Abort may follow then, as after any other error.
 func (s *Set) Finish(ctx context.Context) error {
 	s.mu.Lock()
+	writers := slices.Clone(s.writers)
+	s.mu.Unlock()
 	var open []*Writer
-	for _, w := range s.writers {
+	var all int64
+	for _, w := range writers {
 		if !w.finished() {
 			open = append(open, w)
+			all += w.cost()
 		}
 	}
-	s.mu.Unlock()
 	// Long ones first, so that no thread is left with one at the end.
-	slices.SortStableFunc(open, func(a, b *Writer) int { return int(b.cost() - a.cost()) })
+	slices.SortStableFunc(open, func(a, b *Writer) int { return cmp.Compare(b.cost(), a.cost()) })
+	var made atomic.Int64
 	threads := s.threads()
 	each := max(1, threads/max(1, len(open)))
 	group, inner := errgroup.WithContext(ctx)
@@ -414,7 +423,11 @@ func (s *Set) Finish(ctx context.Context) error {
 				if err := inner.Err(); err != nil {
 					return err
 				}
-				return w.finish(each)
+				err := w.finish(each)
+				if n := made.Add(w.cost()); err == nil && s.Progress != nil {
+					s.Progress(n, all)
+				}
+				return err
 			})
 		}
 		done <- group.Wait()
@@ -518,6 +531,9 @@ func (p *publisher) run(all []pair) error {
 		if err := p.rename(move.from, move.to); err != nil {
 			return failed(move.to, "give the file its final name", err)
 		}
+	}
+	if p.set.madeDir {
+		p.folders = append(p.folders, filepath.Dir(p.set.dir))
 	}
 	for _, folder := range p.folders {
 		if err := syncFolder(folder); err != nil {

@@ -6,6 +6,7 @@ import (
 	"os/signal"
 	"path/filepath"
 	"runtime"
+	"sync/atomic"
 	"syscall"
 	"testing"
 
@@ -66,10 +67,17 @@ func TestCommitMakesTheFolder(t *testing.T) {
 	s, err := NewSet(dir, false, nil)
 	require.NoError(t, err)
 	require.NoError(t, fillSet(t, s))
+	var most, all atomic.Int64
+	s.Progress = func(done, of int64) {
+		most.Store(max(most.Load(), done))
+		all.Store(of)
+	}
 	for _, name := range listing(t, dir) {
 		assert.Equal(t, byte('.'), name[0], "%s is visible before commit", name)
 	}
 	require.NoError(t, s.Commit())
+	assert.Equal(t, int64(60*70*5), all.Load(), "a byte and a float32 a cell")
+	assert.Equal(t, all.Load(), most.Load())
 	assert.Equal(t, fullSet, listing(t, dir))
 	s.Abort()
 	assert.Equal(t, fullSet, listing(t, dir), "abort after commit changes nothing")
