@@ -94,7 +94,7 @@ func difference(a, mid, b float32, hasA, hasB bool) float32 {
 	return float32(nan)
 }
 
-// classify interpolates the lanes' margins to the cells, settles the doubtful
+// classify marches, interpolates the lanes' margins to the cells, settles the doubtful
 // ones and leaves the raw codes, with the margins when they are wanted.
 func (t *sheet) classify(f *field, wk *walker) {
 	n := t.w.Rows * t.w.Cols
@@ -104,9 +104,8 @@ func (t *sheet) classify(f *field, wk *walker) {
 	if t.wantFold {
 		t.fold = resize(t.fold, n)
 	}
-	for u := f.u0; u < f.u1; u++ {
-		t.classifyRow(f, wk, u)
-	}
+	f.forward()
+	f.backward(func(u int) { t.classifyRow(f, wk, u) })
 }
 
 // place returns the index in the sheet of marching position (u, v0) and the
@@ -127,60 +126,102 @@ func (t *sheet) place(f *field, u int) (at, stride int) {
 func (t *sheet) locate(f *field, u int) {
 	n := f.v1 - f.v0
 	t.lanes, t.weights = resize(t.lanes, n), resize(t.weights, n)
-	f.ln.cross(u, &f.c)
-	if f.ln.uniform {
-		k := f.ln.laneOf(&f.c, float64(f.v0))
-		whole := math.Floor(k)
-		first, rest := int32(int(whole)-f.k0), float32(k-whole)
-		for j := range t.lanes {
-			t.lanes[j], t.weights[j] = first+int32(j), rest
-		}
-		return
-	}
 	for j := range t.lanes {
-		k := f.ln.laneOf(&f.c, float64(f.v0+j))
+		k := f.ln.lane(float64(u), float64(f.v0+j))
 		whole := math.Floor(k)
 		t.lanes[j], t.weights[j] = int32(int(whole)-f.k0), float32(k-whole)
 	}
 }
 
+// classifyRow classifies the cells of row u, at which the backward march
+// stands.
 func (t *sheet) classifyRow(f *field, wk *walker, u int) {
-	t.locate(f, u)
 	ln := f.ln
-	slackM := float32(settleShare * ln.minDS * ln.cot)
-	slackR := float32(settleShare * ln.minDS * ln.sin)
+	slack := slacks{float32(settleShare * ln.minDS * ln.cot), float32(settleShare * ln.minDS * ln.sin)}
 	from := (u - f.u0) * f.nk
-	clear, near, far := f.clear[from:from+f.nk], f.near[from:from+f.nk], f.far[from:from+f.nk]
+	rows := marginRows{clear: f.clear[from : from+f.nk], near: f.near0[from : from+f.nk], far: f.far0[:f.nk]}
+	if !f.sure {
+		rows.clearU, rows.nearU, rows.farU = f.clearU[from:from+f.nk], f.near0U[from:from+f.nk], f.far0U[:f.nk]
+	}
 	at, stride := t.place(f, u)
-	for j, k := range t.lanes {
-		w := t.weights[j]
+	var first int
+	var weight float32
+	if ln.uniform {
+		k := ln.lane(float64(u), float64(f.v0))
+		whole := math.Floor(k)
+		first, weight = int(whole)-f.k0, float32(k-whole)
+	} else {
+		t.locate(f, u)
+	}
+	z := f.z[(u-f.ua)*f.width+f.v0-f.at[u-f.ua]:]
+	for j := range f.v1 - f.v0 {
+		k, w := first+j, weight
+		if !ln.uniform {
+			k, w = int(t.lanes[j]), t.weights[j]
+		}
 		i := at + j*stride
-		z := t.z[i]
-		if z != z {
+		if z[j] != z[j] {
 			t.raw[i] = uint8(NoData)
 			t.keep(i, float32(nan), float32(nan))
 			continue
 		}
-		c := mix(clear[k], clear[k+1], w)
-		a := mix(near[k], near[k+1], w)
-		b := mix(far[k], far[k+1], w)
-		m := lane{c, a, b, c, a, b}
-		if !f.sure {
-			m.clearU = mix(f.clearU[from+int(k)], f.clearU[from+int(k)+1], w)
-			m.nearU = mix(f.nearU[from+int(k)], f.nearU[from+int(k)+1], w)
-			m.farU = mix(f.farU[from+int(k)], f.farU[from+int(k)+1], w)
-		}
-		if m.doubtful(slackM, slackR, f.sure) || (clear[k] > 0) != (clear[k+1] > 0) ||
-			c > 0 && ((near[k] > 0) != (near[k+1] > 0) || (far[k] > 0) != (far[k+1] > 0)) {
-			m = t.settle(f, wk, u, f.v0+j, m, slackM, slackR)
+		m, doubt := rows.at(k, w, slack)
+		if doubt {
+			m = t.settle(f, wk, u, f.v0+j, m, slack)
 		}
 		t.raw[i] = uint8(m.raw())
-		if m.clear > 0 {
-			t.keep(i, m.clear, min(m.near, m.far))
-		} else {
-			t.keep(i, m.clear, float32(nan))
+		if t.wantClear || t.wantFold {
+			fold := float32(nan)
+			if m.clear > 0 {
+				fold = min(m.near, m.far)
+			}
+			t.keep(i, m.clear, fold)
 		}
 	}
+}
+
+// slacks are the margins, in metres of height and of slant range, under which
+// a cell is doubtful.
+type slacks struct{ m, r float32 }
+
+// marginRows are the lanes' margins along one row; the U rows are nil where no
+// unknown terrain is within reach.
+type marginRows struct{ clear, near, far, clearU, nearU, farU []float32 }
+
+// at returns the margins at weight w between lanes k and k+1, and whether they
+// are doubtful: a margin that decides is missing or small against one row's
+// worth of ground, or the two lanes disagree about it.
+func (r *marginRows) at(k int, w float32, slack slacks) (m lane, doubt bool) {
+	m.clear, doubt = between2(r.clear, k, w, slack.m)
+	m.clearU, m.near, m.far = m.clear, 0, 0
+	if m.clear < 0 && !doubt {
+		return m, false
+	}
+	var dn, df bool
+	m.near, dn = between2(r.near, k, w, slack.r)
+	m.far, df = between2(r.far, k, w, slack.r)
+	m.nearU, m.farU = m.near, m.far
+	doubt = doubt || dn || df
+	if r.clearU != nil {
+		var dc bool
+		m.clearU, dc = between2(r.clearU, k, w, slack.m)
+		m.nearU, dn = between2(r.nearU, k, w, slack.r)
+		m.farU, df = between2(r.farU, k, w, slack.r)
+		doubt = doubt || dc || dn || df
+	}
+	return m, doubt
+}
+
+// between2 interpolates a margin between two lanes. At weight 0 the second does
+// not count, also when it is NaN.
+func between2(a []float32, k int, w, slack float32) (x float32, doubt bool) {
+	x = a[k]
+	if w == 0 {
+		return x, !(x > slack || x < -slack)
+	}
+	y := a[k+1]
+	m := x + w*(y-x)
+	return m, !(m > slack && x > 0 && y > 0 || m < -slack && x <= 0 && y <= 0)
 }
 
 func (t *sheet) keep(i int, clear, fold float32) {
@@ -192,38 +233,13 @@ func (t *sheet) keep(i int, clear, fold float32) {
 	}
 }
 
-// mix interpolates between two lanes. At weight 0 the second does not count,
-// also when it is NaN.
-func mix(a, b, w float32) float32 {
-	if w == 0 {
-		return a
-	}
-	return a + w*(b-a)
-}
-
 // lane holds margins as the lanes keep them.
 type lane struct{ clear, near, far, clearU, nearU, farU float32 }
 
-// doubtful reports whether a margin that decides the cell is small against one
-// row's worth of ground, or missing.
-func (m *lane) doubtful(slackM, slackR float32, sure bool) bool {
-	small := func(x, slack float32) bool { return !(x > slack || x < -slack) }
-	if small(m.clear, slackM) {
-		return true
-	}
-	if m.clear < 0 {
-		return false
-	}
-	if small(m.near, slackR) || small(m.far, slackR) {
-		return true
-	}
-	return !sure && (small(m.clearU, slackM) || small(m.nearU, slackR) || small(m.farU, slackR))
-}
-
 // settle replaces lane margins by those of an exact walk wherever the walk
 // finds them below the slack.
-func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, slackM, slackR float32) lane {
-	sm, sr := float64(slackM), float64(slackR)
+func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, slack slacks) lane {
+	sm, sr := float64(slack.m), float64(slack.r)
 	all := m.clear + m.near + m.far
 	if !f.sure {
 		all += m.clearU + m.nearU + m.farU

@@ -8,14 +8,14 @@ import (
 
 // tileBuffers holds the results of one tile while they are computed.
 type tileBuffers struct {
-	out     *Tile
-	verdict []uint8
-	left    view
-	right   view
-	cross   crossing
-	facets  []geometry.Facet // of one row
-	sights  []geometry.Sight // of one row, up components
-	views   []view           // of one row, when a layer asks for more
+	out       *Tile
+	verdict   []uint8
+	left      view
+	right     view
+	facets    []geometry.Facet // of one row
+	ups       [][3]float64     // of one row: up components of the sights
+	views     []view           // of one row, when a layer asks for more
+	wantViews bool
 }
 
 // fill turns the raw codes and the differences of height of the sheet into the
@@ -24,7 +24,10 @@ func (w *worker) fill(i int) *Tile {
 	t := w.newTile()
 	ln, look := w.looks[i], &w.job.Looks[i]
 	win := w.sheet.w
-	w.facets, w.sights, w.views = resize(w.facets, win.Cols), resize(w.sights, win.Cols), resize(w.views, win.Cols)
+	w.facets, w.ups = resize(w.facets, win.Cols), resize(w.ups, win.Cols)
+	if w.wantViews {
+		w.views = resize(w.views, win.Cols)
+	}
 	for r := range win.Rows {
 		w.see(ln, win.Row+r, win.Col, r*win.Cols)
 		w.classRow(t, r)
@@ -63,20 +66,49 @@ func (w *worker) newTile() *Tile {
 	return t
 }
 
-// see fills the views, sights and facets of one row of the sheet.
+// see fills the sights and facets of one row of the sheet, and its views when
+// a layer asks for more.
 func (w *worker) see(ln *lanes, row, col, at int) {
-	zc, zr := w.sheet.zc[at:], w.sheet.zr[at:]
 	n := len(w.facets)
-	for j := 0; j < n; {
-		block := (col + j) / viewStep * viewStep
-		w.left = ln.viewOf(w.grid, float64(row), float64(block), &w.cross)
-		w.right = ln.viewOf(w.grid, float64(row), float64(block+viewStep), &w.cross)
-		for ; j < n && col+j < block+viewStep; j++ {
-			v := between(&w.left, &w.right, float64(col+j-block)/viewStep)
-			w.facets[j] = v.facet(float64(zc[j]), float64(zr[j]))
-			w.sights[j] = v.sight()
-			w.views[j] = v
+	zc, zr := w.sheet.zc[at:at+n], w.sheet.zr[at:at+n]
+	block := col / viewStep * viewStep
+	w.right = ln.viewOf(w.grid, float64(row), float64(block), w.wantViews)
+	for j := 0; j < n; block += viewStep {
+		w.left, w.right = w.right, ln.viewOf(w.grid, float64(row), float64(block+viewStep), w.wantViews)
+		var d view
+		for i := range 3 {
+			d.up[i] = w.right.up[i] - w.left.up[i]
+			d.c[i] = w.right.c[i] - w.left.c[i]
+			d.r[i] = w.right.r[i] - w.left.r[i]
 		}
+		a := &w.left
+		first := col + j - block
+		for m := min(n-j, viewStep-first); m > 0; m-- {
+			t := float64(col+j-block) / viewStep
+			c, r := float64(zc[j]), float64(zr[j])
+			up0, up1, up2 := a.up[0]+float64(t*d.up[0]), a.up[1]+float64(t*d.up[1]), a.up[2]+float64(t*d.up[2])
+			w.facets[j] = geometry.Facet{
+				Along:  up0 + float64(c*(a.c[0]+float64(t*d.c[0]))) + float64(r*(a.r[0]+float64(t*d.r[0]))),
+				Above:  up1 + float64(c*(a.c[1]+float64(t*d.c[1]))) + float64(r*(a.r[1]+float64(t*d.r[1]))),
+				Across: up2 + float64(c*(a.c[2]+float64(t*d.c[2]))) + float64(r*(a.r[2]+float64(t*d.r[2]))),
+			}
+			w.ups[j] = [3]float64{up0, up1, up2}
+			if w.wantViews {
+				w.views[j] = between(a, &w.right, t)
+			}
+			j++
+		}
+	}
+}
+
+// sight returns the sight of column j of the row as far as the quantities of a
+// facet need it: the up components.
+func (w *worker) sight(j int) *geometry.Sight {
+	u := &w.ups[j]
+	return &geometry.Sight{
+		Along:  geometry.ENU{Up: u[0]},
+		Above:  geometry.ENU{Up: u[1]},
+		Across: geometry.ENU{Up: u[2]},
 	}
 }
 
@@ -86,10 +118,15 @@ func (w *worker) classRow(t *Tile, row int) {
 	raw := w.sheet.raw[row*n : (row+1)*n]
 	verdict := w.verdict[row*n : (row+1)*n]
 	limit := w.job.Options.CompressedBelow
+	z := w.sheet.z[row*n : (row+1)*n]
 	for j, c := range raw {
+		if z[j] != z[j] { // also where a hole height was given
+			raw[j], verdict[j] = uint8(NoData), uint8(NoData)
+			continue
+		}
 		f := w.facets[j]
 		k := layoverClass(Class(c), f)
-		if k == Open && w.sights[j].Foreshortening(f) < limit {
+		if k == Open && w.sight(j).Foreshortening(f) < limit {
 			k = Compressed
 		}
 		verdict[j] = uint8(k)
@@ -119,7 +156,7 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 				out[j] = float32(nan)
 				continue
 			}
-			out[j] = float32(f(j, w.facets[j], &w.sights[j]))
+			out[j] = float32(f(j, w.facets[j], w.sight(j)))
 		}
 	}
 	slant := func(j int) float64 {
@@ -143,9 +180,9 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	case RangeIncidence:
 		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.RangeIncidence().Degrees() })
 	case Clearance:
-		copy(out, w.sheet.clear[row*n:])
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return float64(w.sheet.clear[row*n+j]) })
 	case FoldMargin:
-		copy(out, w.sheet.fold[row*n:])
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return float64(w.sheet.fold[row*n+j]) })
 	case LineOfSight:
 		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
 		out = bands[1][row*n : (row+1)*n]

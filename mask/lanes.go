@@ -35,6 +35,18 @@ func (o orient) cell(u, v float64) (row, col float64) {
 	return u, v
 }
 
+// place is the inverse of cell.
+func (o orient) place(row, col float64) (u, v float64) {
+	u, v = row, col
+	if o.transposed {
+		u, v = v, u
+	}
+	if o.flip {
+		u = float64(o.u-1) - u
+	}
+	return u, v
+}
+
 // window returns the marching rectangle [u0, u1) x [v0, v1) of a grid window.
 func (o orient) window(w dem.Window) (u0, u1, v0, v1 int) {
 	u0, u1, v0, v1 = w.Row, w.Row+w.Rows, w.Col, w.Col+w.Cols
@@ -92,8 +104,8 @@ type lanes struct {
 	v, s   []float64
 	// ahead returns the unit ground vector, east and north, of the range line
 	// at a place of the grid, away from the radar.
-	ahead  func(l *dem.Local) (e, n float64)
-	minDS  float64 // least ground distance of one row along a lane, metres
+	ahead func(l *dem.Local) (e, n float64)
+	minDS float64 // least ground distance of one row along a lane, metres
 	lens
 }
 
@@ -318,50 +330,59 @@ func bilinear(a []float64, n int, p, q float64) float64 {
 }
 
 // crossing is the lattice seen along one row: column and ground distance of
-// every node lane at that row.
+// the node lanes at that row.
 type crossing struct {
-	u    int
-	v, s []float64 // by node lane; v is unused for uniform lanes
+	v, s []float64 // by node lane; only the nodes asked for are filled
 }
 
-// cross fills c for row u.
-func (ln *lanes) cross(u int, c *crossing) {
-	c.u = u
-	if c.s == nil {
+// cross fills c for row u with the nodes that lanes [ka, kb) lie between.
+func (ln *lanes) cross(u, ka, kb int, c *crossing) {
+	if len(c.s) != ln.nk {
 		c.v, c.s = make([]float64, ln.nk), make([]float64, ln.nk)
 	}
+	from := max((ka-ln.first)/laneStep, 0)
+	to := min((kb-ln.first)/laneStep+2, ln.nk)
 	i := min(u/laneStep, ln.nu-2)
 	p := float64(u-laneStep*i) / laneStep
-	a, b := ln.s[i*ln.nk:(i+1)*ln.nk], ln.s[(i+1)*ln.nk:(i+2)*ln.nk]
-	for j := range c.s {
-		c.s[j] = a[j] + float64(p*(b[j]-a[j]))
-	}
-	a, b = ln.v[i*ln.nk:(i+1)*ln.nk], ln.v[(i+1)*ln.nk:(i+2)*ln.nk]
-	for j := range c.v {
-		c.v[j] = a[j] + float64(p*(b[j]-a[j]))
+	for j := from; j < to; j++ {
+		n := i*ln.nk + j
+		c.s[j] = ln.s[n] + float64(p*(ln.s[n+ln.nk]-ln.s[n]))
+		if !ln.uniform {
+			c.v[j] = ln.v[n] + float64(p*(ln.v[n+ln.nk]-ln.v[n]))
+		}
 	}
 }
 
-// laneOf returns the fractional lane through column v at the row of c.
-func (ln *lanes) laneOf(c *crossing, v float64) float64 {
-	if ln.uniform {
-		return v - float64(ln.slope*float64(c.u))
-	}
+// locate returns the lattice cell (i, j) that holds a marching position, which
+// may lie a step outside the DEM, and the place in it.
+func (ln *lanes) locate(u, v float64) (i, j int, p, q float64) {
+	i = min(max(int(math.Floor(u))/laneStep, 0), ln.nu-2)
+	p = (u - float64(laneStep*i)) / laneStep
+	a, b := ln.v[i*ln.nk:(i+1)*ln.nk], ln.v[(i+1)*ln.nk:(i+2)*ln.nk]
+	at := func(j int) float64 { return a[j] + float64(p*(b[j]-a[j])) }
 	// The node lanes are nearly equidistant: start from a guess.
-	j := int((v - c.v[0]) / (c.v[ln.nk-1] - c.v[0]) * float64(ln.nk-1))
-	j = min(max(j, 0), ln.nk-2)
-	for j > 0 && c.v[j] > v {
+	first, last := at(0), at(ln.nk-1)
+	j = min(max(int((v-first)/(last-first)*float64(ln.nk-1)), 0), ln.nk-2)
+	for j > 0 && at(j) > v {
 		j--
 	}
-	for j < ln.nk-2 && c.v[j+1] <= v {
+	for j < ln.nk-2 && at(j+1) <= v {
 		j++
 	}
-	return float64(ln.first+laneStep*j) + laneStep*(v-c.v[j])/(c.v[j+1]-c.v[j])
+	return i, j, p, (v - at(j)) / (at(j+1) - at(j))
 }
 
-// sOf returns the ground distance on the fractional lane k at the row of c.
-func (ln *lanes) sOf(c *crossing, k float64) float64 {
-	j := min(max((int(math.Floor(k))-ln.first)/laneStep, 0), ln.nk-2)
-	q := (k - float64(ln.first+laneStep*j)) / laneStep
-	return c.s[j] + float64(q*(c.s[j+1]-c.s[j]))
+// lane returns the fractional lane through a marching position.
+func (ln *lanes) lane(u, v float64) float64 {
+	if ln.uniform {
+		return v - float64(ln.slope*u)
+	}
+	_, j, _, q := ln.locate(u, v)
+	return float64(ln.first+laneStep*j) + laneStep*q
+}
+
+// distance returns the ground distance at a marching position.
+func (ln *lanes) distance(u, v float64) float64 {
+	i, j, p, q := ln.locate(u, v)
+	return bilinear(ln.s[i*ln.nk+j:], ln.nk, p, q)
 }

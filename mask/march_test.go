@@ -3,6 +3,7 @@ package mask
 import (
 	"context"
 	"math"
+	"syscall"
 	"testing"
 
 	"github.com/stretchr/testify/require"
@@ -29,8 +30,19 @@ func alpine(rows, cols int, cell float64) *dem.Memory {
 		panic(err)
 	}
 	z := make([]float32, rows*cols)
+	const part = 900 // computed once, then mirrored across the grid
+	fold := func(i int) int {
+		if i %= 2 * part; i >= part {
+			i = 2*part - 1 - i
+		}
+		return i
+	}
 	for r := range rows {
 		for c := range cols {
+			if r >= part || c >= part {
+				z[r*cols+c] = z[fold(r)*cols+fold(c)]
+				continue
+			}
 			x, y := float64(c)*cell, float64(r)*cell
 			h := 0.0
 			for o, f := 0, 1.0; o < 9; o, f = o+1, f*2 {
@@ -39,7 +51,7 @@ func alpine(rows, cols int, cell float64) *dem.Memory {
 				q := (-x*math.Sin(a)+y*math.Cos(a))*f/9000 + 5*math.Cos(a)
 				h += (1 - math.Abs(math.Sin(p)*math.Cos(q))) / math.Pow(f, 0.95)
 			}
-			z[r*cols+c] = float32(900 + 1300*h)
+			z[r*cols+c] = float32(900 + 2600*h)
 		}
 	}
 	return &dem.Memory{Frame: g, Heights: z}
@@ -52,6 +64,16 @@ func fixed(incidence, azimuth float64) geometry.Look {
 	return l
 }
 
+// cpuTime returns the processor time the process has used, nanoseconds: a
+// measure that other work on the machine disturbs little.
+func cpuTime() float64 {
+	var u syscall.Rusage
+	if err := syscall.Getrusage(syscall.RUSAGE_SELF, &u); err != nil {
+		panic(err)
+	}
+	return float64(u.Utime.Nano())
+}
+
 func BenchmarkMasks(b *testing.B) {
 	src := alpine(3600, 3600, 30)
 	rng, err := dem.Scan(context.Background(), src)
@@ -59,12 +81,14 @@ func BenchmarkMasks(b *testing.B) {
 	for _, az := range []float64{78, 191} {
 		b.Run("", func(b *testing.B) {
 			o := DefaultOptions()
+			before, runs := cpuTime(), 0
 			for b.Loop() {
+				runs++
 				_, err := Run(context.Background(), Job{Source: src, Range: rng, Looks: []geometry.Look{fixed(39, az)},
 					Layers: []Layer{LayoverLayer, ShadowLayer, Clearance, FoldMargin}, Window: src.Frame.Whole(), Options: o})
 				require.NoError(b, err)
 			}
-			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/3600/3600*2, "ns/cell/core")
+			b.ReportMetric((cpuTime()-before)/float64(runs)/3600/3600, "cpu-ns/cell")
 		})
 	}
 }

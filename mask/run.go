@@ -255,6 +255,7 @@ type worker struct {
 func (r *runner) newWorker() *worker {
 	w := &worker{runner: r}
 	has := func(l Layer) bool { return slices.Contains(r.job.Layers, l) }
+	w.wantViews = has(SlantRange) || has(LineOfSight) || has(CriticalBaseline) || has(AmbiguityHeight)
 	w.sheet.wantClear, w.sheet.wantFold = has(Clearance), has(FoldMargin)
 	return w
 }
@@ -283,7 +284,6 @@ func (w *worker) look(i int, win dem.Window) error {
 	if err := f.load(w.job.Source); err != nil {
 		return err
 	}
-	f.march()
 	w.sheet.classify(f, &w.walk)
 	t := w.fill(i)
 	w.locks[i].Lock()

@@ -119,11 +119,10 @@ type walker struct {
 
 // settle returns the exact margins of the cell (u, v), wherever they are
 // below the slacks (metres of height, metres of range); larger ones may come
-// out larger than they are. The cell must have a height, and f.c must stand at
-// its row.
+// out larger than they are. The cell must have a height.
 func (w *walker) settle(f *field, u, v int, slackM, slackR float64) margins {
 	w.f = f
-	w.y = ray{ln: f.ln, k: f.ln.laneOf(&f.c, float64(v)), u0: u, v0: v, i: -1}
+	w.y = ray{ln: f.ln, k: f.ln.lane(float64(u), float64(v)), u0: u, v0: v, i: -1}
 	_, s := w.y.at(u)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	m, r := f.ln.at(s, h)

@@ -1,0 +1,283 @@
+package mask
+
+import (
+	"math"
+
+	"foldshade/dem"
+)
+
+// limits is what a look may meet where the DEM shows nothing, and the DEM's
+// own extremes.
+type limits struct {
+	low, high  float64 // the DEM's own lowest and highest height
+	ceiling    float64 // highest terrain that unknown ground may carry
+	openEdge   bool
+	holeHeight float64 // NaN when holes are unknown
+}
+
+// reach returns how many rows towards the radar and away from it can matter
+// to a cell: terrain nearer than relief tan(i) may hide it, terrain within
+// relief cot(i) either way may share its slant range, and may itself be
+// hidden.
+func (ln *lanes) reach(lim limits) (near, far int) {
+	relief := math.Max(lim.high, lim.ceiling) - lim.low
+	rows := func(metres float64) int {
+		return int(math.Min(metres/ln.minDS, float64(ln.orient.u))) + 2
+	}
+	return rows(relief * (ln.cot + ln.tan)), rows(relief * ln.cot)
+}
+
+// field is the part of the DEM that the cells [u0, u1) x [v0, v1) of one look
+// depend on, in the marching frame, and what the march finds there.
+//
+// Heights are stored sheared: row u keeps the columns from at[u-ua] on, so
+// that a lane stays in about the same stored column all the way and no room is
+// spent on the corners of a slanting strip.
+type field struct {
+	ln             *lanes
+	lim            limits
+	u0, u1, v0, v1 int // the cells
+	near, far      int // reach towards the radar and away from it, rows
+	ua, ub         int // rows with heights: the cells' and the halo
+	k0, nk         int // lanes k0 ... k0+nk-1
+
+	width int       // stored columns a row
+	at    []int     // first stored column of each row
+	z     []float32 // heights, NaN where there is none
+	tops  tops
+	sure  bool // no unknown terrain within reach: the U margins are not kept
+
+	// By row from u0 to ub and lane: NaN where the lane is hidden or has no
+	// height; else how much less slant range than the sample's own the lit
+	// ground begins with, and negative, -0 included, where unknown terrain may
+	// hide it.
+	dip []float32
+	// By row of the cells and lane: the margins that the forward march finds.
+	clear, near0   []float32
+	clearU, near0U []float32 // counting terrain that the DEM does not show
+	// The margins that the backward march finds, of the row it stands at.
+	far0, far0U []float32
+
+	c           crossing
+	h, s, m, rr []float64 // of the row that is sampled, by lane
+	fwd         forwardState
+	bwd         backwardState
+	row         []float32 // scratch for reading
+}
+
+// setUp sizes the field for a rectangle of cells.
+func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
+	f.ln, f.lim = ln, lim
+	f.u0, f.u1, f.v0, f.v1 = u0, u1, v0, v1
+	f.near, f.far = ln.reach(lim)
+	f.ua, f.ub = max(u0-f.near, 0), min(u1+f.far, ln.orient.u)
+	a, b := math.Inf(1), math.Inf(-1)
+	for _, u := range [2]int{u0, u1 - 1} { // a lane drifts one way only
+		a = math.Min(a, ln.lane(float64(u), float64(v0)))
+		b = math.Max(b, ln.lane(float64(u), float64(v1-1)))
+	}
+	f.k0 = int(math.Floor(a))
+	f.nk = int(math.Floor(b)) + 2 - f.k0
+	rows := f.ub - f.ua
+	f.at = resize(f.at, rows)
+	f.width = 0
+	for i := range rows {
+		u := float64(f.ua + i)
+		f.at[i] = int(math.Floor(ln.vAt(u, float64(f.k0)))) - 1
+		end := int(math.Floor(ln.vAt(u, float64(f.k0+f.nk-1)))) + 3
+		f.width = max(f.width, end-f.at[i])
+	}
+	f.z = resize(f.z, rows*f.width)
+	for _, a := range []*[]float64{&f.h, &f.s, &f.m, &f.rr} {
+		*a = resize(*a, f.nk)
+	}
+}
+
+// resize returns a slice of length n, reusing a's memory when it can. The
+// contents are arbitrary.
+func resize[T any](a []T, n int) []T {
+	if cap(a) < n {
+		return make([]T, n)
+	}
+	return a[:n]
+}
+
+// load reads the heights, a chunk of rows at a time, and notes whether any
+// unknown terrain is among them.
+func (f *field) load(src dem.Source) error {
+	const chunk = 64
+	o := f.ln.orient
+	f.sure = f.lim.openEdge || f.ua > 0 && f.ub < o.u
+	for a := f.ua; a < f.ub; a += chunk {
+		b := min(a+chunk, f.ub)
+		lo, hi := o.v, 0
+		for u := a; u < b; u++ {
+			lo, hi = min(lo, f.at[u-f.ua]), max(hi, f.at[u-f.ua]+f.width)
+		}
+		if !f.lim.openEdge && (lo < 0 || hi > o.v) {
+			f.sure = false
+		}
+		lo, hi = max(lo, 0), min(hi, o.v)
+		if lo >= hi {
+			fillWith(f.z[(a-f.ua)*f.width:(b-f.ua)*f.width], float32(nan))
+			continue
+		}
+		w := o.grid(a, b, lo, hi)
+		f.row = resize(f.row, w.Rows*w.Cols)
+		if err := src.Read(w, f.row); err != nil {
+			return err
+		}
+		f.fillHoles(f.row)
+		f.place(a, b, lo, hi)
+	}
+	f.tops.build(f)
+	return nil
+}
+
+func fillWith(a []float32, x float32) {
+	for i := range a {
+		a[i] = x
+	}
+}
+
+// fillHoles puts the hole height where the user gave one.
+func (f *field) fillHoles(z []float32) {
+	hole := float32(f.lim.holeHeight)
+	for i, h := range z {
+		if h != h {
+			z[i] = hole
+			if hole != hole {
+				f.sure = false
+			}
+		}
+	}
+}
+
+// place copies the chunk [a, b) x [lo, hi) just read to its rows.
+func (f *field) place(a, b, lo, hi int) {
+	o := f.ln.orient
+	for u := a; u < b; u++ {
+		dst := f.z[(u-f.ua)*f.width : (u-f.ua+1)*f.width]
+		at := f.at[u-f.ua]
+		from, to := max(at, lo), min(at+f.width, hi)
+		fillWith(dst[:min(max(from-at, 0), len(dst))], float32(nan))
+		fillWith(dst[min(max(to-at, 0), len(dst)):], float32(nan))
+		if from >= to {
+			continue
+		}
+		i := u - a
+		if o.flip {
+			i = b - 1 - u
+		}
+		if o.transposed {
+			from := f.row[(from-lo)*(b-a)+i:]
+			for v := range dst[max(f.at[u-f.ua], lo)-at : to-at] {
+				dst[max(at, lo)-at+v] = from[v*(b-a)]
+			}
+			continue
+		}
+		copy(dst[from-at:to-at], f.row[i*(hi-lo)+from-lo:i*(hi-lo)+to-lo])
+	}
+}
+
+// span is a range of lanes [a, b), counted from the field's first.
+type span struct{ a, b int }
+
+// spanAt returns the lanes that matter at row u: those that meet a cell no
+// farther than the halo from here, as far as they lie in the DEM.
+func (f *field) spanAt(u int) span {
+	ln := f.ln
+	l := span{f.nk, 0}
+	for _, w := range [2]int{u - f.far, u + f.near} {
+		w := float64(min(max(w, f.u0), f.u1-1))
+		l.a = min(l.a, int(math.Floor(ln.lane(w, float64(f.v0))))-f.k0)
+		l.b = max(l.b, int(math.Floor(ln.lane(w, float64(f.v1-1))))+2-f.k0)
+	}
+	l.a, l.b = max(l.a, 0), min(l.b, f.nk)
+	for l.a < l.b && !f.inside(u, l.a) {
+		l.a++
+	}
+	for l.a < l.b && !f.inside(u, l.b-1) {
+		l.b--
+	}
+	return l
+}
+
+// inside reports whether lane k's column at row u lies in the DEM.
+func (f *field) inside(u, k int) bool {
+	v := f.ln.vAt(float64(u), float64(f.k0+k))
+	return u >= 0 && u < f.ln.orient.u && v >= 0 && v <= float64(f.ln.orient.v-1)
+}
+
+// sample fills f.h with the heights and f.s with the ground distances of the
+// lanes at row u, then f.rr and, when withM is set, f.m. Only lanes of the span
+// are filled.
+func (f *field) sample(u int, l span, withM bool) {
+	ln := f.ln
+	ln.cross(u, f.k0+l.a, f.k0+l.b, &f.c)
+	z := f.z[(u-f.ua)*f.width : (u-f.ua+1)*f.width]
+	at := f.at[u-f.ua]
+	if ln.uniform && l.a < l.b {
+		v := float64(f.k0+l.a) + float64(ln.slope*float64(u))
+		i := math.Floor(v)
+		heightsAt(f.h[l.a:l.b], z[int(i)-at:], v-i)
+	}
+	for k := l.a; k < l.b; {
+		j := (f.k0 + k - ln.first) / laneStep
+		kb := ln.first + laneStep*j - f.k0
+		end := min(l.b, kb+laneStep)
+		s0, ds := f.c.s[j], (f.c.s[j+1]-f.c.s[j])/laneStep
+		s := f.s[k:end]
+		for i := range s {
+			s[i] = s0 + float64(ds*float64(k+i-kb))
+		}
+		if !ln.uniform {
+			v0, dv := f.c.v[j], (f.c.v[j+1]-f.c.v[j])/laneStep
+			for i := k; i < end; i++ {
+				f.h[i] = lerp(z, v0+float64(dv*float64(i-kb))-float64(at))
+			}
+		}
+		k = end
+	}
+	h := f.h[l.a:l.b]
+	r, s := f.rr[l.a:l.b], f.s[l.a:l.b]
+	sin, cos := ln.sin, ln.cos
+	for k, h := range h {
+		r[k] = float64(sin*s[k]) - float64(cos*h)
+	}
+	if withM {
+		m, cot := f.m[l.a:l.b], ln.cot
+		for k, h := range h {
+			m[k] = h + float64(cot*s[k])
+		}
+	}
+}
+
+// heightsAt fills h with the heights at the same fraction of every step of z.
+func heightsAt(h []float64, z []float32, rest float64) {
+	if rest == 0 {
+		for k := range h {
+			h[k] = float64(z[k])
+		}
+		return
+	}
+	z = z[:len(h)+1]
+	p := float64(z[0])
+	for k := range h {
+		q := float64(z[k+1])
+		h[k] = p + float64(rest*(q-p))
+		p = q
+	}
+}
+
+// lerp returns the height at the fractional index x of a row, NaN where a
+// height that counts is missing.
+func lerp(z []float32, x float64) float64 {
+	i := int(x)
+	rest := x - float64(i)
+	if rest == 0 {
+		return float64(z[i])
+	}
+	p, q := float64(z[i]), float64(z[i+1])
+	return p + float64(rest*(q-p))
+}
