@@ -5,6 +5,7 @@ import (
 	"image/color"
 	"image/draw"
 	"math"
+	"sort"
 	"sync"
 
 	"golang.org/x/image/font"
@@ -82,13 +83,12 @@ func (s style) fit(text string, limit float64) string {
 		return text
 	}
 	runes := []rune(text)
-	for len(runes) > 0 {
-		runes = runes[:len(runes)-1]
-		if short := string(runes) + "…"; s.width(short) <= limit {
-			return short
-		}
+	cut := func(n int) string { return string(runes[:n]) + "…" }
+	tooLong := sort.Search(len(runes), func(n int) bool { return s.width(cut(n)) > limit })
+	if tooLong == 0 {
+		return ""
 	}
-	return ""
+	return cut(tooLong - 1)
 }
 
 // spot is a place on the sheet in pixels, y downwards.

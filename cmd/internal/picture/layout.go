@@ -283,13 +283,13 @@ func groups() []group {
 
 // tally counts a map's cells by class.
 type tally struct {
-	cells map[mask.Class]int
-	known int // all but no data
+	cells [256]int // by class code
+	known int      // all but no data
 	plain bool
 }
 
 func count(m *Map) tally {
-	t := tally{cells: map[mask.Class]int{}, plain: m.Classes == nil}
+	t := tally{plain: m.Classes == nil}
 	g := ground{m: m}
 	for i := range m.Heights {
 		c := g.at(i)
