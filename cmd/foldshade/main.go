@@ -47,8 +47,8 @@ func run(ctx context.Context, args []string, stdin io.Reader, stdout, stderr io.
 	root.SetOut(out)
 	root.SetErr(stderr)
 	err := root.ExecuteContext(ctx)
-	if err == nil {
-		err = out.err
+	if out.err != nil {
+		err = out.err // the cause, whatever came of it
 	}
 	return report(ctx, stderr, err)
 }
