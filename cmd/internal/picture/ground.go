@@ -211,7 +211,8 @@ func tone(c mask.Class, shade, px, py float64) [3]float64 {
 		return [3]float64{stripe, stripe, stripe - 3}
 	}
 	out := [3]float64{}
-	cover, dim := 0.86, [3]float64{shade, shade, shade}
+	relief := 1 - 0.75*(1-shade)
+	cover, dim := 0.86, [3]float64{relief, relief, relief}
 	switch c {
 	case mask.Open: // warm where it is dark, so that it is not taken for grey undetermined ground
 		cover, dim = 1, [3]float64{1 - 0.92*(1-shade), shade, 1 - 1.10*(1-shade)}

@@ -182,8 +182,9 @@ func (s *sheet) dials(l Look, north, x, y float64) float64 {
 	if l.Incidence.Given() {
 		s.say(captionType, true, spot{right.x + 40, base}, 0.5, "from the side")
 	}
+	base += 6
 	for _, line := range l.words() {
-		base += 25
+		base += 26
 		s.say(textType, false, spot{x, base}, 0, textType.fit(line, column))
 	}
 	return base
@@ -265,11 +266,11 @@ type group struct {
 	codes []mask.Class
 }
 
-// groups are the legend's rows.
+// groups are the legend's rows, no data last.
 func groups() []group {
 	var rows []group
 	byColor := map[string]int{}
-	for _, c := range mask.Classes {
+	for _, c := range append(mask.Classes[1:len(mask.Classes):len(mask.Classes)], mask.Classes[0]) {
 		if k, ok := byColor[c.Color]; ok {
 			rows[k].codes = append(rows[k].codes, c.Code)
 			continue
