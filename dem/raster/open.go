@@ -55,7 +55,8 @@ func refuse(name string, cause error, format string, args ...any) error {
 	return &InputError{fmt.Sprintf("dem %q: ", name) + fmt.Sprintf(format, args...), cause}
 }
 
-// DEM is an open elevation raster. It is a dem.Source.
+// DEM is an open elevation raster. It is a dem.Source, safe for several
+// goroutines.
 type DEM struct {
 	name  string
 	grid  *dem.Grid
@@ -73,6 +74,8 @@ type DEM struct {
 	hold     bool
 	held     atomic.Pointer[dem.Memory]
 }
+
+var _ dem.Source = (*DEM)(nil)
 
 var registerOnce sync.Once
 

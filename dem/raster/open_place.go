@@ -164,7 +164,7 @@ const nearPole = 512
 func (d *DEM) checkEdges(g *dem.Grid) error {
 	const limit = (180 + slack) * geometry.Degree
 	lastR, lastC := float64(g.Rows-1), float64(g.Cols-1)
-	close := false
+	polar := false
 	for i := range 65 {
 		f := float64(i) / 64
 		for _, p := range [4][2]float64{{f * lastR, 0}, {f * lastR, lastC}, {0, f * lastC}, {lastR, f * lastC}} {
@@ -173,10 +173,10 @@ func (d *DEM) checkEdges(g *dem.Grid) error {
 				return refuse(d.name, nil, "crosses the antimeridian (180 degrees) near row %d, column %d; cut it in two there with gdal_translate -projwin", int(math.Round(p[0])), int(math.Round(p[1])))
 			}
 			metres := geometry.SemiMajor * float64(90*geometry.Degree-geometry.Angle(math.Abs(float64(l.Lat))))
-			close = close || metres < nearPole*max(math.Hypot(l.ColE, l.ColN), math.Hypot(l.RowE, l.RowN))
+			polar = polar || metres < nearPole*max(math.Hypot(l.ColE, l.ColN), math.Hypot(l.RowE, l.RowN))
 		}
 	}
-	if close && !g.Geographic {
+	if polar && !g.Geographic {
 		d.log.add(fmt.Sprintf("it comes within %d cells of a pole, where east and north turn too fast to follow: slopes and azimuths there are rough; cut that part off", nearPole))
 	}
 	return nil

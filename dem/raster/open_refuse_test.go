@@ -173,7 +173,6 @@ func TestRefused(t *testing.T) {
 			}
 			var input *InputError
 			require.ErrorAs(t, err, &input)
-			t.Log(err)
 			assert.Contains(t, err.Error(), fmt.Sprintf("dem %q: ", name))
 			assert.Contains(t, err.Error(), c.found)
 			assert.Contains(t, err.Error(), c.next)

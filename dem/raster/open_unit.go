@@ -2,7 +2,6 @@ package raster
 
 import (
 	"math"
-	"sort"
 	"strings"
 )
 
@@ -69,14 +68,4 @@ func (d *DEM) verticalUnit(s *sheet, r *reference, asked string) (verticalUnit, 
 		d.log.add("the map is in " + r.unit + " and the unit of the heights is not stated: they are used as metres; if they are feet, say --vertical-unit ft or us-ft")
 	}
 	return verticalUnit{"m", "assumed", 1}, nil
-}
-
-// Units lists the spellings that Options.VerticalUnit takes, sorted.
-func Units() []string {
-	out := make([]string, 0, len(lengths))
-	for k := range lengths {
-		out = append(out, k)
-	}
-	sort.Strings(out)
-	return out
 }
