@@ -102,14 +102,17 @@ func TestEphemerisAgainstDenseSolution(t *testing.T) {
 	}
 	for name, k := range orbits {
 		for _, m := range methods {
+			if m.name == "linear" && name != "circular" {
+				continue // thousands of states: once is enough
+			}
 			worst := 0.0
 			for _, side := range []Side{Left, Right} {
 				// Times at the equator, near 46 and near 70 degrees or the
 				// orbit's own turning point, on both passes.
 				for _, target := range []float64{0, 46, 70} {
 					for _, rising := range []bool{true, false} {
-						if m.name == "linear" && (name != "circular" || target != 46) {
-							continue // thousands of states: once is enough
+						if m.name == "linear" && target != 46 {
+							continue
 						}
 						zero := timeOver(k, target, rising)
 						about := fmt.Sprintf("%s %s %s over %g rising %v", name, m.name, side, target, rising)

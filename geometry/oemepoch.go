@@ -27,7 +27,7 @@ func (a instant) plus(seconds float64) instant {
 }
 
 // leapSeconds lists when TAI - UTC became what, since UTC ticks in whole
-// seconds. Source: IERS Bulletin C and its summary (from memory).
+// seconds. Source: IERS, leap-seconds.list of 2025.
 var leapSeconds = []struct {
 	year, month int
 	offset      int64

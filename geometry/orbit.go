@@ -132,9 +132,8 @@ func (c course) through(dir ECEF) (o circular, miss float64) {
 	return o, 0
 }
 
-// newOrbit anchors a circular orbit: the antenna is sought at an arc from the
-// anchor at which the incidence holds, and in the direction from it in which
-// the anchor lies abreast, both by bisection.
+// newOrbit anchors a circular orbit at the anchor of the look or at the DEM
+// centre, on the ellipsoid.
 func newOrbit(look Look, site Site) (Platform, error) {
 	c, err := courseOf(look)
 	if err != nil {
@@ -181,54 +180,119 @@ func courseOf(look Look) (course, error) {
 	return c, nil
 }
 
-// anchored returns the orbit that is abreast of the anchor at t = 0 with the
-// given incidence there.
-func (c course) anchored(anchor Geodetic, incidence Angle, left bool) (circular, error) {
-	at := anchor.ECEF()
-	up := newFrame(anchor).up
-	centre := at.Scale(1 / at.Norm())
-	east, north, _ := sphere(centre)
-	aside := func(arc, bearing float64) ECEF {
-		sinB, cosB := math.Sincos(bearing)
-		sinA, cosA := math.Sincos(arc)
-		return centre.Scale(cosA).Add(east.Scale(sinA * sinB)).Add(north.Scale(sinA * cosB))
+// anchoring is the search for the antenna's place over an anchor.
+type anchoring struct {
+	course
+	at, up              ECEF // the anchor and the ellipsoid's normal there
+	centre, east, north ECEF // directions on the sphere at the anchor
+	left                bool
+}
+
+// aside returns the direction from the earth's centre at an arc and a bearing
+// from the anchor, radians.
+func (a *anchoring) aside(arc, bearing float64) ECEF {
+	sinB, cosB := math.Sincos(bearing)
+	sinA, cosA := math.Sincos(arc)
+	return a.centre.Scale(cosA).Add(a.east.Scale(sinA * sinB)).Add(a.north.Scale(sinA * cosB))
+}
+
+// incidence returns the incidence at the anchor of an antenna over a direction.
+func (a *anchoring) incidence(dir ECEF) float64 {
+	d := dir.Scale(a.radius).Sub(a.at)
+	return math.Atan2(d.Cross(a.up).Norm(), d.Dot(a.up))
+}
+
+// ahead returns the cosine of the angle between the velocity of an antenna over
+// a direction and the line to the anchor, how far the orbit there misses its
+// inclination, and whether it looks to the anchor on its side.
+func (a *anchoring) ahead(dir ECEF) (f, miss float64, facing bool) {
+	o, miss := a.through(dir)
+	s := o.state(0)
+	d := a.at.Sub(s.pos)
+	return d.Dot(s.vel) / (d.Norm() * s.vel.Norm()), miss, a.left == (d.Dot(s.vel.Cross(s.pos)) < 0)
+}
+
+// bearing returns the bearing nearest to another at which the anchor lies
+// abreast of an antenna at an arc. The circle is searched in steps, since near
+// the poles and near an orbit's turning point there may be several or none. A
+// bearing at which the orbit misses its inclination is the last choice.
+func (a *anchoring) bearing(arc, near float64) (bearing, miss float64, ok bool) {
+	const steps = 180
+	f := func(b float64) float64 {
+		f, _, _ := a.ahead(a.aside(arc, b))
+		return f
 	}
+	best := math.Inf(1)
+	last := f(near - math.Pi)
+	for i := range steps {
+		b := near + math.Pi*float64(2*i-steps)/steps
+		next := b + 2*math.Pi/steps
+		value := f(next)
+		crosses := last*value <= 0
+		last = value
+		if !crosses {
+			continue
+		}
+		x, _ := bisect(b, next, f)
+		rest, m, facing := a.ahead(a.aside(arc, x))
+		cost := math.Abs(x - near)
+		if m < 0 {
+			cost += 2 * math.Pi
+		}
+		// A jump over the pole changes sign too, without a root.
+		if facing && math.Abs(rest) < abreastCosine && cost < best {
+			bearing, miss, best, ok = x, m, cost, true
+		}
+	}
+	return bearing, miss, ok
+}
+
+// abreastCosine is the cosine under which a bearing counts as found; bisection
+// leaves some 1e-14.
+const abreastCosine = 1e-9
+
+// anchored returns the orbit that is abreast of the anchor at t = 0 with the
+// given incidence there. Arc and bearing are found in turn, each by bisection;
+// incidence hardly depends on the bearing, so that they settle quickly.
+func (c course) anchored(anchor Geodetic, incidence Angle, left bool) (circular, error) {
+	a := anchoring{course: c, at: anchor.ECEF(), up: newFrame(anchor).up, left: left}
+	a.centre = a.at.Scale(1 / a.at.Norm())
+	a.east, a.north, _ = sphere(a.centre)
 	// The antenna stands to the left of the heading's sense at the anchor when
 	// it looks right.
-	first, _ := c.through(centre)
+	first, _ := c.through(a.centre)
 	v := first.state(0).vel
-	bearing := math.Atan2(v.Dot(east), v.Dot(north)) - math.Pi/2
+	bearing := math.Atan2(v.Dot(a.east), v.Dot(a.north)) - math.Pi/2
 	if left {
 		bearing += math.Pi
 	}
-	const spread = 75 * math.Pi / 180 // the heading turns by less on the way
-	abreast := func(arc float64) (dir ECEF, ok bool) {
-		b, ok := bisect(bearing-spread, bearing+spread, func(b float64) float64 {
-			o, _ := c.through(aside(arc, b))
-			s := o.state(0)
-			return at.Sub(s.pos).Dot(s.vel)
-		})
-		return aside(arc, b), ok
-	}
-	seen := func(dir ECEF) float64 {
-		d := dir.Scale(c.radius).Sub(at)
-		return math.Atan2(d.Cross(up).Norm(), d.Dot(up))
-	}
 	limb := math.Acos(SemiMajor*(1-Flattening)/c.radius) + 0.01
-	arc, ok := bisect(1e-6, limb, func(arc float64) float64 {
-		dir, _ := abreast(arc)
-		return seen(dir) - float64(incidence)
-	})
-	dir, found := abreast(arc)
-	o, miss := c.through(dir)
-	switch {
-	case miss < 0 && !c.heading.Given():
-		return o, c.outOfReach(dir)
-	case !ok || !found || math.IsNaN(o.q.X):
-		return o, fmt.Errorf("incidence %.6g at the anchor is not reached from %.6g km: no orbit with this course comes abreast of it so; change incidence, heading or altitude_km",
-			incidence.Degrees(), (c.radius-SemiMajor)/1e3)
+	var miss float64
+	for range 100 {
+		arc, ok := bisect(1e-6, limb, func(arc float64) float64 {
+			return a.incidence(a.aside(arc, bearing)) - float64(incidence)
+		})
+		var next float64
+		if ok {
+			next, miss, ok = a.bearing(arc, bearing)
+		}
+		if !ok {
+			break
+		}
+		settled := math.Abs(next-bearing)*math.Sin(arc) < 1e-13
+		bearing = next
+		if !settled {
+			continue
+		}
+		dir := a.aside(arc, bearing)
+		if miss < 0 {
+			return circular{}, c.outOfReach(dir)
+		}
+		o, _ := c.through(dir)
+		return o, nil
 	}
-	return o, nil
+	return circular{}, fmt.Errorf("incidence %.6g at the anchor is not reached from %.6g km: no orbit with this course comes abreast of it so; change incidence, course or altitude_km",
+		incidence.Degrees(), (c.radius-SemiMajor)/1e3)
 }
 
 func (c course) outOfReach(dir ECEF) error {

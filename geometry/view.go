@@ -240,3 +240,17 @@ func Heading(pos, vel ECEF) Angle {
 func LocalTime(utc time.Time, lon Angle) time.Time {
 	return utc.UTC().Add(time.Duration(lon.Degrees() / 15 * float64(time.Hour)))
 }
+
+// Pose is where the antenna is and how it moves at one parameter.
+type Pose struct {
+	Foot    Geodetic // the place under the antenna and its height above the ellipsoid
+	Heading Angle    // direction of travel over the turning earth
+	Speed   float64  // metres per unit of T: m/s for an orbit or ephemeris
+}
+
+// PoseAt returns the pose of a platform at a parameter. A tripod has the
+// heading 90 degrees to the left of its azimuth, and a speed of 1.
+func PoseAt(p Platform, t float64) Pose {
+	pos, vel := p.State(t)
+	return Pose{Foot: pos.Geodetic(), Heading: Heading(pos, vel), Speed: vel.Norm()}
+}

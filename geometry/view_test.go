@@ -517,3 +517,41 @@ func TestViewSight(t *testing.T) {
 	assert.InDelta(t, math.Abs(level), s.SlantPerGround(s.Facet(0, 0)), 2e-5)
 	assert.InDelta(t, slope/level, s.Foreshortening(s.Facet(0.3, 0.4)), 1e-4)
 }
+
+// Any heading and side within 60 degrees of the equator has its orbit: abreast
+// of the anchor at 0, at the incidence and with the heading asked for.
+func TestOrbitAnywhere(t *testing.T) {
+	const seed = 8
+	t.Logf("seed %d", seed)
+	rnd := rand.New(rand.NewPCG(seed, 1))
+	for range 200 {
+		look := NewLook()
+		look.Kind, look.Side = Orbit, []Side{Left, Right}[rnd.IntN(2)]
+		look.Incidence, look.Altitude = Angle(5+60*rnd.Float64())*Degree, 2e5+7e5*rnd.Float64()
+		look.Heading, look.Anchor = Angle(360*rnd.Float64())*Degree, place(360*rnd.Float64()-180, 120*rnd.Float64()-60)
+		p, err := NewPlatform(look, Site{})
+		require.NoError(t, err, "%+v", look)
+		v, seen := p.View(Geodetic{look.Anchor, 0})
+		require.Equal(t, InView, seen, "%+v", look)
+		require.InDelta(t, 0, v.T, 1e-7)
+		require.InDelta(t, float64(look.Incidence), float64(v.Incidence), 1e-10)
+		require.InDelta(t, 0, math.Remainder(float64(Heading(p.State(0))-look.Heading), 2*math.Pi), 1e-9)
+	}
+}
+
+func TestPose(t *testing.T) {
+	p := equatorial(t, 693e3, 39)
+	pose := PoseAt(p, 0)
+	assert.InDelta(t, 693e3*denseA/tableRadius, pose.Foot.Height, 1e-4)
+	assert.InDelta(t, 0, math.Remainder(float64(pose.Heading), 2*math.Pi), 1e-9)
+	assert.InDelta(t, 0, float64(pose.Foot.Lat), 1e-9)
+	// Northward over the equator the ground's speed is across: by Pythagoras.
+	r := denseA + 693e3*denseA/tableRadius
+	w := denseRotation(r, 90-math.Asin(2*math.Pi/86400*math.Sqrt(r*r*r/3.986004418e14))*180/math.Pi)
+	assert.InDelta(t, math.Sqrt(3.986004418e14/r-w*w*r*r), pose.Speed, 0.01)
+	tr, err := NewPlatform(tripodLook(10.5, 46), flatGround(1800))
+	require.NoError(t, err)
+	pose = PoseAt(tr, float64(100*Degree))
+	assert.InDelta(t, 10, pose.Heading.Degrees(), 1e-9)
+	assert.InDelta(t, 1802.5, pose.Foot.Height, 1e-6)
+}
