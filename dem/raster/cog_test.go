@@ -48,9 +48,12 @@ var testClasses = []ClassEntry{
 	{41, "dark", "Dark", "", "#0b2a3c"},
 }
 
+// awkward is text that XML, and a careless escape, would change.
+const awkward = "Grünsee & \"co\" <1>\nsecond line\t'tab' ]]> &amp; %d"
+
 func classLayer() Layer {
 	return Layer{Name: "sea", Title: "Sea", Description: "state of the sea", Classes: testClasses,
-		Metadata: map[string]string{"command": `tool --look "a=1" <x>`, "AREA_OR_POINT": "Point"}}
+		Metadata: map[string]string{"command": `tool --look "a=1" <x>`, "AREA_OR_POINT": "Point", "note": awkward}}
 }
 
 func floatLayer() Layer {
@@ -391,6 +394,7 @@ func TestClassRaster(t *testing.T) {
 	assert.Equal(t, "Point", md["AREA_OR_POINT"])
 	assert.Equal(t, `tool --look "a=1" <x>`, md["command"])
 	assert.Equal(t, "Sea", md["title"])
+	assert.Equal(t, awkward, md["note"])
 
 	b := band(t, doc, 0)
 	assert.Equal(t, "Byte", b["type"])

@@ -67,6 +67,7 @@ func reason(err error) string {
 		{syscall.EACCES, "no permission to write there; choose another output folder"},
 		{syscall.EPERM, "no permission to write there; choose another output folder"},
 		{syscall.ENOTDIR, "a part of the path is a file, not a folder"},
+		{syscall.EXDEV, "it is on another file system than the output folder; choose another output folder"},
 		{syscall.ENAMETOOLONG, "the name is too long for the file system; shorten it"},
 	} {
 		if errors.Is(err, known.errno) || strings.Contains(strings.ToLower(text), known.errno.Error()) {
