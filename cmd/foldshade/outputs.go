@@ -76,7 +76,11 @@ func (o *outputs) write(look int, chosen []mask.Layer, t *mask.Tile) error {
 
 // finish makes the rasters and the catalogue entries, still under hidden names.
 func (o *outputs) finish(ctx context.Context, j *layersJob, grid *dem.Grid, window dem.Window, chosen []mask.Layer) error {
-	if err := o.set.Finish(ctx); err != nil {
+	bar := newProgress(j.stderr, "writing  ")
+	o.set.Progress = bar.update
+	err := o.set.Finish(ctx)
+	bar.close()
+	if err != nil {
 		return err
 	}
 	for i := range o.looks {
