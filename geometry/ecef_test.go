@@ -33,6 +33,12 @@ func TestECEF(t *testing.T) {
 		{"equator", Geodetic{place(0, 0), 0}, ECEF{6378137, 0, 0}, 1e-9},
 		{"east", Geodetic{place(90, 0), 100}, ECEF{0, 6378237, 0}, 1e-9},
 		{"pole", Geodetic{place(0, 90), 0}, ECEF{0, 0, 6356752.3142}, 1e-4},
+		// PROJ 9.1 cs2cs, longlat to geocent on WGS84.
+		{"proj 10.5 0", Geodetic{place(10.5, 0), 2500}, ECEF{6273792.643634, 1162778.736670, 0.000000}, 2e-6},
+		{"proj -71.25 46", Geodetic{place(-71.25, 46), 4000}, ECEF{1427544.404082, -4205410.204197, 4568124.900034}, 2e-6},
+		{"proj 25.75 70", Geodetic{place(25.75, 70), 1234.5}, ECEF{1971042.877764, 950718.223930, 5972200.057659}, 2e-6},
+		{"proj 120.125 -46", Geodetic{place(120.125, -46), 0}, ECEF{-2227540.413103, 3838847.361994, -4565247.540833}, 2e-6},
+		{"proj 179.9 88.5", Geodetic{place(179.9, 88.5), -50}, ECEF{-167519.880721, 292.377645, 6354509.358073}, 2e-6},
 		{"south pole", Geodetic{place(0, -90), -50}, ECEF{0, 0, -6356702.3142}, 1e-4},
 	}
 	for _, r := range rows {

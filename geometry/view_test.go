@@ -104,8 +104,19 @@ const (
 	angleTol = 0.00005
 )
 
-func requireView(t *testing.T, want dense, got View, timeTol float64, about string) {
+// differences are the largest between two solutions, metres and degrees.
+type differences struct{ slant, incidence, look, azimuth float64 }
+
+func (d *differences) String() string {
+	return fmt.Sprintf("slant range %.1g m, incidence %.1g, look angle %.1g, look azimuth %.1g degrees", d.slant, d.incidence, d.look, d.azimuth)
+}
+
+func (d *differences) require(t *testing.T, want dense, got View, timeTol float64, about string) {
 	t.Helper()
+	d.slant = max(d.slant, math.Abs(want.slant-got.SlantRange))
+	d.incidence = max(d.incidence, math.Abs(want.incidence-got.Incidence.Degrees()))
+	d.look = max(d.look, math.Abs(want.look-got.LookAngle.Degrees()))
+	d.azimuth = max(d.azimuth, math.Abs(math.Remainder(want.azimuth-got.LookAzimuth.Degrees(), 360)))
 	require.InDelta(t, want.t, got.T, timeTol, about)
 	require.InDelta(t, want.slant, got.SlantRange, slantTol, about)
 	require.InDelta(t, want.incidence, got.Incidence.Degrees(), angleTol, about)
@@ -139,7 +150,7 @@ func TestOrbitAgainstDenseSolution(t *testing.T) {
 	const seed = 404
 	t.Logf("seed %d", seed)
 	rnd := rand.New(rand.NewPCG(seed, 1))
-	worst := map[string]float64{}
+	var worst differences
 	for _, lat := range []float64{0, 46, 70, -46} {
 		for _, side := range []Side{Left, Right} {
 			for _, course := range []string{"ascending", "descending", "heading"} {
@@ -195,14 +206,12 @@ func TestOrbitAgainstDenseSolution(t *testing.T) {
 					require.Equal(t, (want.right > 0) == (side == Right), seen == InView, about)
 					// The difference quotient's own bias is step^2/6 times the
 					// third over the second derivative of distance, 1e-6 s.
-					requireView(t, want, got, 2e-6, about)
-					worst["slant"] = max(worst["slant"], math.Abs(want.slant-got.SlantRange))
-					worst["incidence"] = max(worst["incidence"], math.Abs(want.incidence-got.Incidence.Degrees()))
+					worst.require(t, want, got, 2e-6, about)
 				}
 			}
 		}
 	}
-	t.Logf("largest differences: slant range %.2g m, incidence %.2g degrees", worst["slant"], worst["incidence"])
+	t.Logf("largest differences: %s", &worst)
 }
 
 // For a heading of 0 over the equator the range plane is the equatorial plane,
