@@ -11,6 +11,7 @@ import (
 	"sync"
 	"testing"
 
+	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 
 	"foldshade/dem"
@@ -46,6 +47,7 @@ type walker struct {
 	hole            []bool
 	lowest, ceiling float64
 	openEdge        bool
+	perCell         float64 // steps a cell
 
 	sin, cos, cot, tan float64
 	sinAz, cosAz       float64
@@ -54,12 +56,16 @@ type walker struct {
 	metre              []float64 // ground metres of (dCol, dRow), per cell
 }
 
-// stepsPerCell is the tenth of a cell.
-const stepsPerCell = 10
+// The walk takes steps of a tenth of a cell; a failure says what steps of a
+// thousandth find.
+const (
+	stepsPerCell     = 10
+	fineStepsPerCell = 1000
+)
 
 func newWalker(m *dem.Memory, r dem.Range, look geometry.Look, o mask.Options) *walker {
 	g := m.Frame
-	w := &walker{grid: g, rows: g.Rows, cols: g.Cols, lowest: r.Min, ceiling: r.Max, openEdge: o.OpenEdge}
+	w := &walker{grid: g, rows: g.Rows, cols: g.Cols, lowest: r.Min, ceiling: r.Max, openEdge: o.OpenEdge, perCell: stepsPerCell}
 	if !math.IsNaN(o.Ceiling) {
 		w.ceiling = o.Ceiling
 	}
@@ -140,7 +146,7 @@ func (w *walker) line(to []sample, row, col int, sign float64) []sample {
 	here := w.grid.At(float64(row), float64(col))
 	cell := min(math.Hypot(here.ColE, here.ColN), math.Hypot(here.RowE, here.RowN))
 	r, c, s := float64(row), float64(col), 0.0
-	step := sign * cell / stepsPerCell
+	step := sign * cell / w.perCell
 	if !w.parallel {
 		step /= w.metre[row*w.cols+col]
 	}
@@ -386,76 +392,84 @@ func (r *raster) take(tile *mask.Tile, seen []uint8) error {
 
 // tally compares kinds over many cells.
 type tally struct {
-	cells, determined, differ, unsure int64 // unsure: undetermined on one side only
-	lone                              []string
+	cells, determined int64
+	differ            int64 // determined on both sides, of another kind
+	timid, guessed    int64 // undetermined in the engine only, in the walk only
+	lone              []string
 }
 
 func (c *tally) add(o tally) {
-	c.cells, c.determined = c.cells+o.cells, c.determined+o.determined
-	c.differ, c.unsure = c.differ+o.differ, c.unsure+o.unsure
+	c.cells, c.determined, c.differ = c.cells+o.cells, c.determined+o.determined, c.differ+o.differ
+	c.timid, c.guessed = c.timid+o.timid, c.guessed+o.guessed
 	c.lone = append(c.lone, o.lone...)
 }
 
 func (c tally) String() string {
-	return fmt.Sprintf("%d cells, %d determined, %d of another kind (%.4f %%), %d undetermined on one side only (%.4f %%), %d alone",
-		c.cells, c.determined, c.differ, 100*float64(c.differ)/float64(max(c.determined, 1)),
-		c.unsure, 100*float64(c.unsure)/float64(max(c.cells, 1)), len(c.lone))
+	share := func(n, of int64) float64 { return 100 * float64(n) / float64(max(of, 1)) }
+	return fmt.Sprintf("%d cells, %d determined, %d of another kind (%.4f %%), undetermined in the engine only %d (%.4f %%), in the walk only %d (%.4f %%), %d alone",
+		c.cells, c.determined, c.differ, share(c.differ, c.determined), c.timid, share(c.timid, c.cells), c.guessed, share(c.guessed, c.cells), len(c.lone))
 }
 
 // compare counts the differing cells among those walked. A differing cell is
 // alone when neither it nor any of its eight neighbours has in the walk the
 // kind that the engine gives it: then no shift of a boundary explains it.
-// walked tells which answers are there; missing neighbours are walked here.
+// Where there is no cell, nothing is known: ground that touches a hole or an
+// edge may be undetermined. walked tells which answers are there; missing
+// neighbours are walked here.
 func compare(w *walker, got *raster, walked func(i int) bool, answers []answer) tally {
 	var c tally
 	var buf [16384]sample
-	wantAt := func(i int) answer {
+	want := func(i int) answer {
 		if walked(i) {
 			return answers[i]
 		}
 		return w.at(i/w.cols, i%w.cols, buf[:])
 	}
-	for i := range answers {
+	for i, a := range answers {
 		if !walked(i) || w.hole[i] {
 			continue
 		}
 		row, col := i/w.cols, i%w.cols
-		c.cells++
-		if answers[i].kind != kindUnsure {
-			c.determined++
-		}
-		for _, l := range []mask.Layer{mask.LayoverLayer, mask.ShadowLayer} {
-			of := func(a answer) int {
-				if l == mask.ShadowLayer {
-					return a.shadowKind
-				}
-				return a.kind
-			}
-			have, want := got.kind(l, row, col), of(answers[i])
-			if have == want {
-				continue
-			}
-			switch {
-			case l == mask.ShadowLayer: // counted in the other layer already
-			case have == kindUnsure || want == kindUnsure:
-				c.unsure++
-			default:
-				c.differ++
-			}
-			if !nearby(w, row, col, func(j int) bool { return of(wantAt(j)) == have }) {
-				c.lone = append(c.lone, fmt.Sprintf("row %d, column %d of %s: engine %d, walk %d (M %+.4g m above the largest nearer, R %+.4g m from overlap)",
-					row, col, l, have, want, answers[i].m, answers[i].r))
-			}
+		have := answer{kind: got.kind(mask.LayoverLayer, row, col), shadowKind: got.kind(mask.ShadowLayer, row, col)}
+		c.count(have.kind, a.kind)
+		if have.kind != a.kind && !nearby(w, row, col, have.kind, func(j int) int { return want(j).kind }) ||
+			have.shadowKind != a.shadowKind && !nearby(w, row, col, have.shadowKind, func(j int) int { return want(j).shadowKind }) {
+			fine := *w
+			fine.perCell = fineStepsPerCell
+			f := fine.at(row, col, nil)
+			c.lone = append(c.lone, fmt.Sprintf("row %d, column %d: engine %d, shadow layer %d; walk %d, %d (%+.4g m clear, %+.4g m from a fold); walk in thousandths %d, %d (%+.4g, %+.4g)",
+				row, col, have.kind, have.shadowKind, a.kind, a.shadowKind, a.m, a.r, f.kind, f.shadowKind, f.m, f.r))
 		}
 	}
 	return c
 }
 
-// nearby reports whether a cell or one of its eight neighbours holds.
-func nearby(w *walker, row, col int, holds func(i int) bool) bool {
-	for r := max(row-1, 0); r <= min(row+1, w.rows-1); r++ {
-		for c := max(col-1, 0); c <= min(col+1, w.cols-1); c++ {
-			if holds(r*w.cols + c) {
+func (c *tally) count(have, want int) {
+	c.cells++
+	if want != kindUnsure {
+		c.determined++
+	}
+	switch {
+	case have == want:
+	case have == kindUnsure:
+		c.timid++
+	case want == kindUnsure:
+		c.guessed++
+	default:
+		c.differ++
+	}
+}
+
+// nearby reports whether a cell or one of its eight neighbours is of a kind.
+func nearby(w *walker, row, col, kind int, of func(i int) int) bool {
+	for r := row - 1; r <= row+1; r++ {
+		for c := col - 1; c <= col+1; c++ {
+			outside := r < 0 || c < 0 || r >= w.rows || c >= w.cols
+			if outside || w.hole[r*w.cols+c] {
+				if kind == kindUnsure && !(outside && w.openEdge) {
+					return true
+				}
+			} else if of(r*w.cols+c) == kind {
 				return true
 			}
 		}
@@ -471,19 +485,18 @@ type scene struct {
 	options mask.Options
 }
 
-// randomScene draws a grid of up to 40 x 60 cells, or of one row or column:
-// rolling, rough and white terrain, terraces and lone walls, without and with
+// randomScene draws a grid of 2 x 2 to 40 x 60 cells: rolling, rough and white terrain, terraces and lone walls, without and with
 // holes, on square and oblong cells, projected and geographic.
 func randomScene(rng *rand.Rand) scene {
 	var s scene
-	rows, cols := 1+rng.IntN(40), 1+rng.IntN(60)
+	rows, cols := 2+rng.IntN(39), 2+rng.IntN(59)
 	switch rng.IntN(12) {
 	case 0:
-		rows = 1
+		rows = 2
 	case 1:
-		cols = 1
+		cols = 2
 	case 2:
-		rows, cols = 1+rng.IntN(4), 1+rng.IntN(4)
+		rows, cols = 2+rng.IntN(4), 2+rng.IntN(4)
 	}
 	cell := 5 * math.Exp2(4*rng.Float64())
 	var g *dem.Grid
@@ -569,18 +582,20 @@ func (s scene) check(t testing.TB) (tally, *raster, []answer) {
 	return compare(w, &got[0], anyCell, answers), &got[0], answers
 }
 
-// Shares of cells that may differ over all random grids. The boundary between
-// two kinds is a line; a lane crosses it up to a tenth of a cell from where
-// the walk's samples do. On terrain this rough every fifth cell or so touches
-// a boundary, and the walk's own step moves a boundary by a twentieth of a
-// cell on average, so 1 % of the cells may fall between the two answers.
+// Shares of cells that may differ over all random grids. On terrain this rough
+// every fifth cell or so touches a boundary between two kinds, and the walk's
+// own step moves a boundary by a twentieth of a cell on average, so 1 % of the
+// cells may fall between the two answers. The edge of the undetermined ground
+// may lie a cell farther on the safe side: on grids of 20 x 30 cells its
+// length is some 5 % of the cells.
 const (
-	randomDiffer = 0.01
-	randomUnsure = 0.01
+	randomDiffer  = 0.01
+	randomGuessed = 0.01
+	randomTimid   = 0.05
 )
 
 func TestRandomGridsAgainstWalk(t *testing.T) {
-	scenes := 1500
+	scenes := 600
 	if *walkFull {
 		scenes *= 10
 	}
@@ -596,8 +611,9 @@ func TestRandomGridsAgainstWalk(t *testing.T) {
 		}
 	}
 	t.Logf("seed %d, %d grids: %v", *walkSeed, scenes, all)
-	require.Less(t, float64(all.differ), randomDiffer*float64(all.determined), "cells of another kind")
-	require.Less(t, float64(all.unsure), randomUnsure*float64(all.cells), "cells undetermined on one side only")
+	assert.Less(t, float64(all.differ), randomDiffer*float64(all.determined), "cells of another kind")
+	assert.Less(t, float64(all.guessed), randomGuessed*float64(all.cells), "cells undetermined in the walk only")
+	assert.Less(t, float64(all.timid), randomTimid*float64(all.cells), "cells undetermined in the engine only")
 }
 
 // short keeps the failure readable.

@@ -18,8 +18,8 @@ import (
 const deg = geometry.Degree
 
 // The closed forms stand on 10 m cells. Cells are judged within 900 m of the
-// middle along the range line and 250 m across it; the rectangle fits into
-// the grid of 2 km at every azimuth (hypot(900, 250) = 934), so the grid's
+// middle along the range line and 130 m across it; the rectangle fits into
+// the grid of 2 km at every azimuth (hypot(900, 130) = 909), so the grid's
 // edges hold no part of any answer: the longest shadow or fold of the 150 m
 // surfaces is 150 cot 20 = 412 m.
 const (
@@ -27,7 +27,7 @@ const (
 	formRows   = 203
 	formCols   = 205
 	formAlong  = 900.0
-	formAcross = 250.0
+	formAcross = 130.0
 	formTop    = 150.0
 )
 
@@ -150,7 +150,7 @@ func (c formCase) wrong(kind func(row, col int) int) (cells int, wrong []string)
 }
 
 // formCases lists every form under every incidence, each at the next azimuth
-// and grid direction in turn, so that all azimuths serve all forms.
+// and grid direction in turn.
 func formCases() []formCase {
 	var all []formCase
 	o := mask.DefaultOptions()
@@ -163,7 +163,7 @@ func formCases() []formCase {
 		for a, azimuth := range formAzimuths {
 			g := grids[(a/2+k)%2]
 			for n, f := range forms(i, azimuth) {
-				if (n+k)%len(formAzimuths) != a && (n+k+3)%len(formAzimuths) != a {
+				if (n+k)%len(formAzimuths) != a {
 					continue
 				}
 				name := fmt.Sprintf("%s, incidence %.0f, azimuth %.1f", f.name, i.Degrees(), azimuth.Degrees())
@@ -200,9 +200,12 @@ func TestClosedForms(t *testing.T) {
 }
 
 // TestClosedFormsByWalk: the walk that judges the engine elsewhere meets the
-// closed forms too. One cell in 97 is walked.
+// closed forms too. One cell in 97 is walked, on every second form.
 func TestClosedFormsByWalk(t *testing.T) {
-	for _, c := range formCases() {
+	for k, c := range formCases() {
+		if k%2 > 0 && !*walkFull {
+			continue
+		}
 		span, err := dem.Scan(context.Background(), c.terrain)
 		require.NoError(t, err)
 		w := newWalker(c.terrain, span, c.look, c.options)
@@ -235,7 +238,7 @@ func marginCases() []marginCase {
 	for k, i := range formIncidences {
 		for n, azimuth := range []geometry.Angle{21 * deg, 111 * deg, 201 * deg, 291 * deg, 143 * deg, 338.2 * deg} {
 			for m, p := range ridges(azimuth) {
-				if (k+n+m)%2 > 0 {
+				if (k+n+m)%3 > 0 {
 					continue
 				}
 				c := marginCase{formCase{

@@ -1,6 +1,7 @@
 package mask_test
 
 import (
+	"context"
 	"fmt"
 	"math"
 	"math/rand/v2"
@@ -28,7 +29,7 @@ func TestFlatIsOpen(t *testing.T) {
 	for _, g := range []*dem.Grid{
 		testterrain.Metric(37, 23, 10, 10, 0), testterrain.Metric(21, 44, 30, 12, 33*deg),
 		testterrain.Geographic(30, 41, 0.0003, 0.0002, 8, 61), testterrain.Transverse(25, 31, 30, 650000, 5.1e6, -123),
-		testterrain.Metric(1, 1, 10, 10, 0), testterrain.Metric(1, 17, 10, 10, 0), testterrain.Metric(17, 1, 10, 10, 0),
+		testterrain.Metric(2, 2, 10, 10, 0), testterrain.Metric(2, 17, 10, 10, 0), testterrain.Metric(17, 2, 10, 10, 0),
 	} {
 		m := testterrain.Sample(g, func(_, _ float64) float64 { return 1234.5 })
 		for _, incidence := range []geometry.Angle{20, 38, 70} {
@@ -251,8 +252,7 @@ func TestResultsDoNotDependOnTheCut(t *testing.T) {
 		}
 	}
 	looks := []geometry.Look{
-		fixedLook(23*deg, 12*deg), fixedLook(39*deg, 77*deg), fixedLook(50*deg, 135*deg), fixedLook(35*deg, 203*deg),
-		fixedLook(61*deg, 270*deg), fixedLook(44*deg, 301*deg),
+		fixedLook(23*deg, 12*deg), fixedLook(39*deg, 77*deg), fixedLook(50*deg, 135*deg), fixedLook(61*deg, 270*deg),
 	}
 	for name, g := range map[string]*dem.Grid{
 		"projected":  testterrain.Transverse(rows, cols, 20, 690000, 5.1e6, -123),
@@ -265,6 +265,9 @@ func TestResultsDoNotDependOnTheCut(t *testing.T) {
 			o.Threads = 1
 			whole := march(t, m, g.Whole(), plainLayers, o, looks...)
 			for k, cut := range cuts(rng, rows, cols) {
+				if open && k%3 > 0 {
+					continue
+				}
 				cut.options.OpenEdge = open
 				part := march(t, m, cut.window, plainLayers, cut.options, looks...)
 				for l := range looks {
@@ -333,4 +336,18 @@ func TestBesideTies(t *testing.T) {
 	assert.Equal(t, kindOpen, at(facing, 35*deg+little))
 	assert.Equal(t, kindOpen, at(lee, 55*deg-little))
 	assert.Equal(t, kindHidden, at(lee, 55*deg+little))
+}
+
+// A grid of one row or column has no bilinear surface: it is refused, and
+// nothing is delivered.
+func TestSliversAreRefused(t *testing.T) {
+	for _, size := range [][2]int{{1, 1}, {1, 2}, {1, 40}, {2, 1}, {40, 1}} {
+		m := testterrain.Sample(testterrain.Metric(size[0], size[1], 10, 10, 0), func(_, _ float64) float64 { return 0 })
+		_, err := mask.Run(context.Background(), mask.Job{
+			Source: m, Range: dem.Range{Valid: int64(size[0] * size[1])}, Looks: []geometry.Look{fixedLook(38*deg, 77*deg)},
+			Layers: marginLayers, Window: m.Frame.Whole(), Options: mask.DefaultOptions(),
+			Emit: func(int, *mask.Tile) error { t.Error("a tile was delivered"); return nil },
+		})
+		assert.ErrorContains(t, err, fmt.Sprintf("%d x %d", size[0], size[1]))
+	}
 }

@@ -2,6 +2,7 @@ package mask_test
 
 import (
 	"context"
+	"fmt"
 	"image"
 	"image/png"
 	"math"
@@ -64,15 +65,17 @@ var mountainLooks = []struct{ incidence, azimuth geometry.Angle }{
 
 // The bounds of the project's main requirement: of the determined cells at
 // least 99.9 % of the same kind, at every look, no differing cell alone. The
-// cells that only one side calls undetermined lie along a line too; the same
-// share is allowed.
+// same share may be determined where the walk is not. On the safe side the
+// edge of the undetermined ground may lie a cell farther: it is about as long
+// as the grid's outline, 1 % of the cells, and at most half of it is taken.
 const (
-	mountainDiffer = 0.001
-	mountainUnsure = 0.001
+	mountainDiffer  = 0.001
+	mountainGuessed = 0.001
+	mountainTimid   = 0.005
 )
 
-// TestMountainAgainstWalk compares every eleventh cell (eleven does not divide
-// the rows, so all columns are met), or every cell with -walk.full.
+// TestMountainAgainstWalk compares one cell in 23 (23 does not divide the
+// length of the rows, so all columns are met), or every cell with -walk.full.
 func TestMountainAgainstWalk(t *testing.T) {
 	m := mountain(t)
 	geographic := &dem.Memory{Frame: testterrain.Geographic(468, 327, 1./3600, 1./3600, -122.25, 46.25), Heights: m.Heights}
@@ -80,7 +83,7 @@ func TestMountainAgainstWalk(t *testing.T) {
 	open.OpenEdge = true
 	span, err := dem.Scan(context.Background(), m)
 	require.NoError(t, err)
-	wanted := func(i int) bool { return *walkFull || i%11 == 0 }
+	wanted := func(i int) bool { return *walkFull || i%23 == 0 }
 	for k, l := range mountainLooks {
 		look := fixedLook(l.incidence*deg, l.azimuth*deg)
 		options, terrain := mask.DefaultOptions(), m
@@ -94,8 +97,10 @@ func TestMountainAgainstWalk(t *testing.T) {
 		got := march(t, terrain, terrain.Frame.Whole(), marginLayers, options, look)
 		c := compare(w, &got[0], wanted, w.every(wanted))
 		t.Logf("incidence %v, azimuth %v: %v", float64(l.incidence), float64(l.azimuth), c)
-		assert.LessOrEqual(t, float64(c.differ), mountainDiffer*float64(c.determined), "incidence %v, azimuth %v: cells of another kind", float64(l.incidence), float64(l.azimuth))
-		assert.LessOrEqual(t, float64(c.unsure), mountainUnsure*float64(c.cells), "incidence %v, azimuth %v: cells undetermined on one side only", float64(l.incidence), float64(l.azimuth))
-		assert.Empty(t, c.lone, "incidence %v, azimuth %v: differing cells alone", float64(l.incidence), float64(l.azimuth))
+		where := fmt.Sprintf("incidence %v, azimuth %v", float64(l.incidence), float64(l.azimuth))
+		assert.LessOrEqual(t, float64(c.differ), mountainDiffer*float64(c.determined), "%s: cells of another kind", where)
+		assert.LessOrEqual(t, float64(c.guessed), mountainGuessed*float64(c.cells), "%s: cells undetermined in the walk only", where)
+		assert.LessOrEqual(t, float64(c.timid), mountainTimid*float64(c.cells), "%s: cells undetermined in the engine only", where)
+		assert.Empty(t, c.lone, "%s: differing cells alone", where)
 	}
 }

@@ -144,13 +144,14 @@ func (p Ridge) Kind(s float64, i geometry.Angle) int {
 	return Open
 }
 
-// Clearance is the height of the ground above the shadow boundary that the
-// ground at least one cell nearer casts: the smaller of M - M(crest) (behind
-// the crest) and M - M(one cell nearer).
+// Clearance is the height of the ground above the shadow boundary: below it
+// behind the crest, M - M(crest); lit, above the one that the ground at least
+// one cell nearer casts, the smaller of M - M(crest) and M - M(one cell
+// nearer).
 func (p Ridge) Clearance(s, cell float64, i geometry.Angle) float64 {
 	m := func(s float64) float64 { return p.Profile(s) + s/i.Tan() }
 	c := m(s) - m(s-cell)
-	if s > 0 {
+	if s >= cell || p.Kind(s, i) == Hidden {
 		c = min(c, m(s)-p.Top)
 	}
 	return c
