@@ -209,12 +209,6 @@ func list(s string) []string {
 	return parts
 }
 
-// given reports whether the user wrote the flag.
-func given(cmd *cobra.Command, name string) bool {
-	f := cmd.Flags().Lookup(name)
-	return f != nil && f.Changed
-}
-
 // newFlags returns the flag set of a command in the order of definition.
 func newFlags(cmd *cobra.Command) *pflag.FlagSet {
 	cmd.Flags().SortFlags = false

@@ -1,16 +1,12 @@
 package main
 
 import (
-	"context"
-	"errors"
 	"fmt"
 	"io"
-	"strings"
 
 	"github.com/spf13/cobra"
 
 	"foldshade/cmd/internal/lookfile"
-	"foldshade/dem"
 	"foldshade/dem/raster"
 	"foldshade/geometry"
 )
@@ -39,15 +35,6 @@ func (d *demFlags) open(name string, hold int64) (*raster.DEM, error) {
 		return nil, err
 	}
 	return src, nil
-}
-
-// survey reads all heights once.
-func survey(ctx context.Context, src *raster.DEM) (dem.Range, error) {
-	found, err := src.Survey(ctx)
-	if err != nil {
-		return dem.Range{}, err
-	}
-	return found, nil
 }
 
 // warn prints warnings, one a line.
@@ -104,18 +91,4 @@ func fixedOnly(looks []geometry.Look) error {
 		}
 	}
 	return nil
-}
-
-// isInterrupt reports whether an error says that the work was called off.
-func isInterrupt(err error) bool {
-	return errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded)
-}
-
-// joinNames writes names in a row.
-func joinNames[T ~string](names []T) string {
-	words := make([]string, len(names))
-	for i, n := range names {
-		words[i] = string(n)
-	}
-	return strings.Join(words, ", ")
 }

@@ -28,7 +28,7 @@ var storages = map[mask.Layer]storage{
 	mask.SlantRange:       {quantum: 1.0 / 64},
 	mask.Clearance:        {quantum: 1.0 / 64},
 	mask.FoldMargin:       {quantum: 1.0 / 64},
-	mask.Foreshortening:   {quantum: 1.0 / 4096},
+	mask.Foreshortening:   {quantum: 1.0 / 2048},
 	mask.LineOfSight:      {quantum: 1.0 / (1 << 16)},
 	mask.Downslope:        {quantum: 1.0 / (1 << 14)},
 	mask.GroundResolution: {quantum: 1.0 / 1024, nearest: true},
