@@ -22,6 +22,8 @@ import (
 	"foldshade/cmd/internal/lookfile"
 	"foldshade/dem"
 	"foldshade/dem/raster"
+	"foldshade/geometry"
+	"foldshade/mask"
 )
 
 // Variables that make the test binary be the program itself, for what can
@@ -161,6 +163,89 @@ func TestLayersWritesEverything(t *testing.T) {
 	for file := range listing(t, dir) {
 		assert.NotContains(t, file, ".foldshade", "a hidden folder was left")
 	}
+}
+
+// TestRastersExplainThemselves reads the outputs with GDAL's own program: the
+// command, the look, units, palette and storage are in the files, and the
+// catalogue entry says the same.
+func TestRastersExplainThemselves(t *testing.T) {
+	dir := t.TempDir()
+	name := hill(t, dir, 60, 80)
+	out := filepath.Join(dir, "my layers")
+	const look = "name=b,incidence=30.5,heading=200,side=right,slant_range_km=820,frequency_ghz=5.4,bandwidth_mhz=60"
+	got := call(t.Context(), "layers", name, "--look", look, "--out", out, "--only", "all", "--ceiling", "900")
+	require.Equal(t, exitDone, got.code, got.errOut)
+	type band struct {
+		Type          string
+		NoDataValue   any
+		Unit          string
+		Offset, Scale float64
+		ColorTable    struct{ Entries [][4]int }
+	}
+	type info struct {
+		Size     [2]int
+		Metadata map[string]map[string]string
+		Bands    []band
+	}
+	for _, l := range mask.Layers {
+		file := filepath.Join(out, "b", string(l.Layer)+".tif")
+		if len(mask.Lacks(l.Layer, oneLook(t, look))) > 0 {
+			assert.NoFileExists(t, file, "the look gives no baseline")
+			continue
+		}
+		text, err := exec.Command("gdalinfo", "-json", file).Output()
+		require.NoError(t, err, file)
+		var i info
+		require.NoError(t, json.Unmarshal(text, &i))
+		items := i.Metadata[""]
+		assert.Equal(t, "COG", i.Metadata["IMAGE_STRUCTURE"]["LAYOUT"])
+		assert.Equal(t, [2]int{80, 60}, i.Size)
+		assert.Contains(t, items["command"], "foldshade layers "+name+" --look name=b,")
+		assert.Contains(t, items["command"], "--out '"+out+"'")
+		assert.Equal(t, "900 m", items["ceiling"])
+		assert.Contains(t, items["look"], "incidence=30.5")
+		assert.Equal(t, l.Title, items["title"])
+		require.Len(t, i.Bands, len(l.Bands))
+		for _, b := range i.Bands {
+			assert.Equal(t, l.Unit, b.Unit)
+			if !l.IsClass {
+				continue
+			}
+			assert.Equal(t, "Byte", b.Type)
+			assert.Equal(t, 0.0, b.NoDataValue)
+			for _, c := range mask.Classes[1:] {
+				e := b.ColorTable.Entries[c.Code]
+				assert.Equal(t, c.Color, fmt.Sprintf("#%02x%02x%02x", e[0], e[1], e[2]))
+			}
+		}
+	}
+	text, err := os.ReadFile(filepath.Join(out, "b", itemName))
+	require.NoError(t, err)
+	var item struct {
+		ID         string
+		Properties map[string]any
+		Assets     map[string]struct{ Roles []string }
+	}
+	require.NoError(t, json.Unmarshal(text, &item))
+	assert.Equal(t, "b", item.ID)
+	// Right-looking azimuth = heading + 90; fields of the view and sar
+	// extensions, gigahertz and degrees.
+	for key, want := range map[string]any{
+		"view:incidence_angle": 30.5, "view:azimuth": 290.0, "sar:center_frequency": 5.4, "sar:bandwidth": 0.06,
+		"sar:observation_direction": "right",
+	} {
+		assert.Equal(t, want, item.Properties[key], key)
+	}
+	assert.Equal(t, []string{"data", "local-incidence-angle"}, item.Assets["local-incidence"].Roles)
+	assert.Len(t, item.Assets, len(mask.Layers)-1)
+}
+
+// oneLook reads the text of a --look flag.
+func oneLook(t *testing.T, text string) geometry.Look {
+	t.Helper()
+	look, err := lookfile.Flag(text)
+	require.NoError(t, err)
+	return look
 }
 
 // TestAreaIsAWindow: a box gives the same cells that the whole grid has there,
