@@ -7,6 +7,7 @@ import (
 	"math"
 	"path"
 	"slices"
+	"strconv"
 	"strings"
 	"time"
 
@@ -143,10 +144,18 @@ func (w *Writer) bandFields(i int) map[string]any {
 	s := w.physical(w.stats[i])
 	stats := map[string]any{"count": s.All, "valid_percent": 100 * float64(s.Valid) / float64(s.All)}
 	if s.Valid > 0 {
-		stats["minimum"], stats["maximum"], stats["mean"], stats["stddev"] = s.Min, s.Max, s.Mean, s.StdDev
+		stats["minimum"], stats["maximum"] = tidy(s.Min), tidy(s.Max)
+		stats["mean"], stats["stddev"] = tidy(s.Mean), tidy(s.StdDev)
 	}
 	f["statistics"] = stats
 	return f
+}
+
+// tidy rounds to ten significant digits: more than the cells have, and few
+// enough to hide that 0.005 times a whole number is not exact.
+func tidy(v float64) float64 {
+	short, _ := strconv.ParseFloat(strconv.FormatFloat(v, 'g', 10, 64), 64) // reads what it wrote
+	return short
 }
 
 func classObjects(classes []ClassEntry) []map[string]any {
