@@ -57,6 +57,9 @@ func (b box) window(g *dem.Grid) (dem.Window, error) {
 		if b.degrees() && !e.degrees() {
 			return dem.Window{}, hint(err, "the numbers look like longitude and latitude; give the box in the units of the DEM's CRS")
 		}
+		if e.degrees() && !b.degrees() {
+			return dem.Window{}, hint(err, "the DEM's CRS counts degrees, and the numbers look like metres")
+		}
 		if flip := (box{b.minY, b.minX, b.maxY, b.maxX}); flip.overlaps(e) {
 			return dem.Window{}, hint(err, "with x and y swapped it would; the order is minx,miny,maxx,maxy")
 		}

@@ -66,6 +66,7 @@ func badPlace(t *testing.T) string {
 	asciiGrid(t, "nocrs.asc", 5, 5, 600000, 5200000, 25, one)
 	asciiGrid(t, "tiny.asc", 2, 2, 600000, 5200000, 25, one)
 	asciiGrid(t, "holes.asc", 5, 5, 600000, 5200000, 25, func(int) string { return "-9999" })
+	asciiGrid(t, "degrees.asc", 5, 5, 10, 46, 0.001, one)
 	asciiGrid(t, "swapped.asc", 5, 5, 46, 100, 0.001, one)
 	asciiGrid(t, "seam.asc", 5, 5, 179.998, 10, 0.001, one)
 	asciiGrid(t, "pole.asc", 5, 5, 10, 89.997, 0.001, one)
@@ -209,6 +210,7 @@ func TestBadInput(t *testing.T) {
 		{"area turned round", layers("hill.tif", "--area", "601000,5199500,600500,5199900"), exitUsage, []string{"--area", "empty"}},
 		{"area elsewhere", layers("hill.tif", "--area", "700000,5199000,700500,5199500"), exitUsage, []string{"--area", "does not overlap", "600000"}},
 		{"area in degrees", layers("hill.tif", "--area", "10.3,46.9,10.4,47"), exitUsage, []string{"--area", "longitude and latitude"}},
+		{"area in metres", layers("degrees.asc", "--crs", "EPSG:4326", "--area", "600100,5199200,600900,5199900"), exitUsage, []string{"--area", "metres"}},
 		{"area swapped", layers("hill.tif", "--area", "5199200,600100,5199900,600900"), exitUsage, []string{"--area", "swapped"}},
 		{"area between centres", layers("hill.tif", "--area", "600026,5199951,600030,5199960"), exitUsage, []string{"--area", "centre"}},
 		{"switch with a word", layers("hill.tif", "--json=perhaps"), exitUsage, []string{"--json", "perhaps"}},

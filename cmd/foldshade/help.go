@@ -8,6 +8,8 @@ import (
 
 	"github.com/spf13/cobra"
 	"github.com/spf13/pflag"
+
+	"foldshade/geometry"
 )
 
 func newHelp() *cobra.Command {
@@ -42,6 +44,12 @@ func printHelp(cmd *cobra.Command, _ []string) {
 		printFlags(w, group, flagsOf(cmd, group))
 	}
 	printFlags(w, "Other", flagsOf(cmd, ""))
+	if cmd.Flags().Lookup("look") != nil {
+		fmt.Fprintf(w, "\nKeys of a look:\n")
+		for line := range strings.Lines(geometry.KeyHelp(geometry.Fixed)) {
+			printWrapped(w, strings.TrimSpace(line))
+		}
+	}
 	if !cmd.HasParent() {
 		fmt.Fprint(w, "\n"+exitStatus)
 	}
@@ -51,6 +59,24 @@ func printHelp(cmd *cobra.Command, _ []string) {
 	if !cmd.HasParent() {
 		fmt.Fprint(w, "\n`foldshade COMMAND --help` describes a command, `foldshade completion --help` the\ncompletion scripts for shells.\n")
 	}
+}
+
+// printWrapped writes a word and the text after it in two columns of a page of
+// 80.
+func printWrapped(w io.Writer, line string) {
+	const first, page = 16, 80
+	name, text, _ := strings.Cut(line, " ")
+	used := 0
+	fmt.Fprintf(w, "  %-*s", first, name)
+	for _, word := range strings.Fields(text) {
+		if used > 0 && 2+first+used+1+len(word) > page {
+			fmt.Fprintf(w, "\n  %*s", first, "")
+			used = 0
+		}
+		n, _ := fmt.Fprintf(w, " %s", word)
+		used += n
+	}
+	fmt.Fprintln(w)
 }
 
 const exitStatus = `Exit status:
