@@ -11,6 +11,10 @@ import (
 // doubtful, since lanes sample the surface about once a cell.
 const settleShare = 0.25
 
+// roughShare is the part of the difference between two lanes by which the slack
+// grows.
+const roughShare = 0.5
+
 // foldUnknown is the raw code of a lit cell that is folded or not depending on
 // terrain that the DEM does not show. It never leaves the package.
 const foldUnknown Class = 51
@@ -26,8 +30,6 @@ type sheet struct {
 	raw       []uint8 // class codes before the cells' own slopes are looked at
 	clear     []float32
 	fold      []float32
-	lanes     []int32   // lane below each column of one marching row
-	weights   []float32 // and the weight of the next
 	wantClear bool
 	wantFold  bool
 }
@@ -94,9 +96,10 @@ func difference(a, mid, b float32, hasA, hasB bool) float32 {
 	return float32(nan)
 }
 
-// classify marches, interpolates the lanes' margins to the cells, settles the doubtful
-// ones and leaves the raw codes, with the margins when they are wanted.
-func (t *sheet) classify(f *field, wk *walker) {
+// classify marches the field strip by strip, interpolates the lanes' margins to
+// the cells, settles the doubtful ones and leaves the raw codes, with the
+// margins when they are wanted.
+func (t *sheet) classify(f *field, p *strip, wk *walker) {
 	n := t.w.Rows * t.w.Cols
 	if t.wantClear {
 		t.clear = resize(t.clear, n)
@@ -104,70 +107,54 @@ func (t *sheet) classify(f *field, wk *walker) {
 	if t.wantFold {
 		t.fold = resize(t.fold, n)
 	}
-	f.forward()
-	f.backward(func(u int) { t.classifyRow(f, wk, u) })
+	first := (f.k0 - f.ln.first) / laneStep
+	for j := range f.strips {
+		if p.setUp(f, first+j) {
+			p.forward()
+			p.backward(func(u int) { t.classifyRow(p, wk, u) })
+		}
+	}
 }
 
-// place returns the index in the sheet of marching position (u, v0) and the
+// place returns the index in the sheet of marching position (u, v) and the
 // stride of v.
-func (t *sheet) place(f *field, u int) (at, stride int) {
+func (t *sheet) place(f *field, u, v int) (at, stride int) {
 	o := f.ln.orient
 	a := u
 	if o.flip {
 		a = o.u - 1 - u
 	}
 	if o.transposed {
-		return (f.v0-t.w.Row)*t.w.Cols + a - t.w.Col, t.w.Cols
+		return (v-t.w.Row)*t.w.Cols + a - t.w.Col, t.w.Cols
 	}
-	return (a-t.w.Row)*t.w.Cols + f.v0 - t.w.Col, 1
+	return (a-t.w.Row)*t.w.Cols + v - t.w.Col, 1
 }
 
-// locate fills the lane below each cell of the row and the weight of the next.
-func (t *sheet) locate(f *field, u int) {
-	n := f.v1 - f.v0
-	t.lanes, t.weights = resize(t.lanes, n), resize(t.weights, n)
-	for j := range t.lanes {
-		k := f.ln.lane(float64(u), float64(f.v0+j))
-		whole := math.Floor(k)
-		t.lanes[j], t.weights[j] = int32(int(whole)-f.k0), float32(k-whole)
-	}
-}
-
-// classifyRow classifies the cells of row u, at which the backward march
+// classifyRow classifies the strip's cells of row u, at which the backward march
 // stands.
-func (t *sheet) classifyRow(f *field, wk *walker, u int) {
-	ln := f.ln
-	slack := slacks{float32(settleShare * ln.minDS * ln.cot), float32(settleShare * ln.minDS * ln.sin)}
-	from := (u - f.u0) * f.nk
-	rows := marginRows{clear: f.clear[from : from+f.nk], near: f.near0[from : from+f.nk], far: f.far0[:f.nk]}
+func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
+	f, ln := p.f, p.f.ln
+	slack := slacks{float32(settleShare * ln.rowM), float32(settleShare * ln.rowR)}
+	from := (u - p.u0) * stripLanes
+	rows := marginRows{clear: p.clear[from:][:stripLanes], near: p.near[from:][:stripLanes], far: p.far[:]}
 	if !f.sure {
-		rows.clearU, rows.nearU, rows.farU = f.clearU[from:from+f.nk], f.near0U[from:from+f.nk], f.far0U[:f.nk]
+		rows.clearU, rows.nearU, rows.farU = p.clearU[from:][:stripLanes], p.nearU[from:][:stripLanes], p.farU[:]
 	}
-	at, stride := t.place(f, u)
-	var first int
-	var weight float32
-	if ln.uniform {
-		k := ln.lane(float64(u), float64(f.v0))
-		whole := math.Floor(k)
-		first, weight = int(whole)-f.k0, float32(k-whole)
-	} else {
-		t.locate(f, u)
-	}
-	z := f.z[(u-f.ua)*f.width+f.v0-f.at[u-f.ua]:]
-	for j := range f.v1 - f.v0 {
-		k, w := first+j, weight
-		if !ln.uniform {
-			k, w = int(t.lanes[j]), t.weights[j]
-		}
+	va, vb := p.cells(u)
+	at, stride := t.place(f, u, va)
+	z := f.z[(u-f.ua)*f.width+va-f.at[u-f.ua]:]
+	for j := range vb - va {
 		i := at + j*stride
 		if z[j] != z[j] {
 			t.raw[i] = uint8(NoData)
 			t.keep(i, float32(nan), float32(nan))
 			continue
 		}
-		m, doubt := rows.at(k, w, slack)
-		if doubt {
-			m = t.settle(f, wk, u, f.v0+j, m, slack)
+		x := (float64(va+j) - p.v0) / p.dv
+		k := min(int(x), laneStep-1)
+		m, doubt := rows.at(k, float32(x-float64(k)), slack)
+		if doubt.clear || doubt.near || doubt.far {
+			m = t.settle(f, wk, u, va+j, m, doubt, slack)
 		}
 		t.raw[i] = uint8(m.raw())
 		if t.wantClear || t.wantFold {
@@ -188,40 +175,46 @@ type slacks struct{ m, r float32 }
 // unknown terrain is within reach.
 type marginRows struct{ clear, near, far, clearU, nearU, farU []float32 }
 
+// doubts says which margins are doubtful.
+type doubts struct{ clear, near, far bool }
+
 // at returns the margins at weight w between lanes k and k+1, and whether they
 // are doubtful: a margin that decides is missing or small against one row's
 // worth of ground, or the two lanes disagree about it.
-func (r *marginRows) at(k int, w float32, slack slacks) (m lane, doubt bool) {
-	m.clear, doubt = between2(r.clear, k, w, slack.m)
+func (r *marginRows) at(k int, w float32, slack slacks) (m lane, d doubts) {
+	m.clear, d.clear = between2(r.clear, k, w, slack.m)
 	m.clearU, m.near, m.far = m.clear, 0, 0
-	if m.clear < 0 && !doubt {
-		return m, false
+	if m.clear < 0 && !d.clear {
+		return m, d
 	}
-	var dn, df bool
-	m.near, dn = between2(r.near, k, w, slack.r)
-	m.far, df = between2(r.far, k, w, slack.r)
+	m.near, d.near = between2(r.near, k, w, slack.r)
+	m.far, d.far = between2(r.far, k, w, slack.r)
 	m.nearU, m.farU = m.near, m.far
-	doubt = doubt || dn || df
 	if r.clearU != nil {
-		var dc bool
-		m.clearU, dc = between2(r.clearU, k, w, slack.m)
-		m.nearU, dn = between2(r.nearU, k, w, slack.r)
-		m.farU, df = between2(r.farU, k, w, slack.r)
-		doubt = doubt || dc || dn || df
+		var c, n, f bool
+		m.clearU, c = between2(r.clearU, k, w, slack.m)
+		m.nearU, n = between2(r.nearU, k, w, slack.r)
+		m.farU, f = between2(r.farU, k, w, slack.r)
+		d = doubts{d.clear || c, d.near || n, d.far || f}
 	}
-	return m, doubt
+	return m, d
 }
 
 // between2 interpolates a margin between two lanes. At weight 0 the second does
-// not count, also when it is NaN.
-func between2(a []float32, k int, w, slack float32) (x float32, doubt bool) {
-	x = a[k]
+// not count, also when it is NaN. The slack grows by the difference of the
+// lanes, which shows how rough the ground is that decides.
+func between2(a []float32, k int, w, slack float32) (m float32, doubt bool) {
+	x := a[k]
 	if w == 0 {
 		return x, !(x > slack || x < -slack)
 	}
-	y := a[k+1]
-	m := x + w*(y-x)
-	return m, !(m > slack && x > 0 && y > 0 || m < -slack && x <= 0 && y <= 0)
+	d := a[k+1] - x
+	m = x + w*d
+	if d < 0 {
+		d = -d
+	}
+	slack += roughShare * d
+	return m, !(m > slack || m < -slack)
 }
 
 func (t *sheet) keep(i int, clear, fold float32) {
@@ -236,36 +229,38 @@ func (t *sheet) keep(i int, clear, fold float32) {
 // lane holds margins as the lanes keep them.
 type lane struct{ clear, near, far, clearU, nearU, farU float32 }
 
-// settle replaces lane margins by those of an exact walk wherever the walk
-// finds them below the slack.
-func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, slack slacks) lane {
-	sm, sr := float64(slack.m), float64(slack.r)
-	all := m.clear + m.near + m.far
-	if !f.sure {
-		all += m.clearU + m.nearU + m.farU
+// settle replaces doubtful lane margins by those of an exact walk: their signs
+// are then the walk's, their sizes the lanes' wherever the signs agree.
+func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, d doubts, slack slacks) lane {
+	ask := question{clear: d.clear || d.near, near: d.near, far: d.far, slackM: float64(slack.m), slackR: float64(slack.r), signs: true}
+	if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum != sum {
+		// No lane margins here: walk the whole reach.
+		ask = question{clear: true, near: true, far: true, slackM: math.Inf(1), slackR: math.Inf(1)}
 	}
-	if all != all { // no lane margins: walk the whole reach
-		sm, sr = math.Inf(1), math.Inf(1)
-	}
-	x := wk.settle(f, u, v, sm, sr)
+	x := wk.settle(f, u, v, ask)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
-	above, below := (f.lim.high-h)*f.ln.cos, (h-f.lim.low)*f.ln.cos
-	pick := func(lane float32, walked, slack, most float64) float32 {
-		if walked < slack || lane != lane {
+	most, above, below := f.caps(h)
+	pick := func(asked bool, lane float32, walked, slack, most float64) float32 {
+		switch {
+		case lane != lane:
 			return float32(min(walked, most))
+		case !asked || (walked > 0) == (lane > 0):
+			return lane
+		case walked > slack:
+			return float32(slack)
 		}
-		return max(lane, float32(slack))
+		return float32(walked)
 	}
 	out := lane{
-		clear: pick(m.clear, x.clear, sm, h-f.lim.low),
-		near:  pick(m.near, x.near, sr, above),
-		far:   pick(m.far, x.far, sr, below),
+		clear: pick(ask.clear, m.clear, x.clear, ask.slackM, most),
+		near:  pick(ask.near, m.near, x.near, ask.slackR, above),
+		far:   pick(ask.far, m.far, x.far, ask.slackR, below),
 	}
 	out.clearU, out.nearU, out.farU = out.clear, out.near, out.far
 	if !f.sure {
-		out.clearU = pick(m.clearU, x.clearU, sm, h-f.lim.low)
-		out.nearU = pick(m.nearU, x.nearU, sr, above)
-		out.farU = pick(m.farU, x.farU, sr, below)
+		out.clearU = pick(ask.clear, m.clearU, x.clearU, ask.slackM, most)
+		out.nearU = pick(ask.near, m.nearU, x.nearU, ask.slackR, above)
+		out.farU = pick(ask.far, m.farU, x.farU, ask.slackR, below)
 	}
 	return out
 }

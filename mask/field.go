@@ -40,6 +40,7 @@ type field struct {
 	near, far      int // reach towards the radar and away from it, rows
 	ua, ub         int // rows with heights: the cells' and the halo
 	k0, nk         int // lanes k0 ... k0+nk-1
+	strips         int // strips of lanes from k0 on
 
 	width int       // stored columns a row
 	at    []int     // first stored column of each row
@@ -47,22 +48,7 @@ type field struct {
 	tops  tops
 	sure  bool // no unknown terrain within reach: the U margins are not kept
 
-	// By row from u0 to ub and lane: NaN where the lane is hidden or has no
-	// height; else how much less slant range than the sample's own the lit
-	// ground begins with, and negative, -0 included, where unknown terrain may
-	// hide it.
-	dip []float32
-	// By row of the cells and lane: the margins that the forward march finds.
-	clear, near0   []float32
-	clearU, near0U []float32 // counting terrain that the DEM does not show
-	// The margins that the backward march finds, of the row it stands at.
-	far0, far0U []float32
-
-	c           crossing
-	h, s, m, rr []float64 // of the row that is sampled, by lane
-	fwd         forwardState
-	bwd         backwardState
-	row         []float32 // scratch for reading
+	row []float32 // scratch for reading
 }
 
 // setUp sizes the field for a rectangle of cells.
@@ -76,21 +62,20 @@ func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
 		a = math.Min(a, ln.lane(float64(u), float64(v0)))
 		b = math.Max(b, ln.lane(float64(u), float64(v1-1)))
 	}
-	f.k0 = int(math.Floor(a))
-	f.nk = int(math.Floor(b)) + 2 - f.k0
+	j := (int(math.Floor(a)) - ln.first) / laneStep
+	f.k0 = ln.first + laneStep*j
+	f.strips = (int(math.Floor(b))-f.k0)/laneStep + 1
+	f.nk = laneStep*f.strips + 1
 	rows := f.ub - f.ua
 	f.at = resize(f.at, rows)
 	f.width = 0
 	for i := range rows {
 		u := float64(f.ua + i)
-		f.at[i] = int(math.Floor(ln.vAt(u, float64(f.k0)))) - 1
-		end := int(math.Floor(ln.vAt(u, float64(f.k0+f.nk-1)))) + 3
+		f.at[i] = int(math.Floor(ln.vAt(u, float64(f.k0)))) - 2
+		end := int(math.Floor(ln.vAt(u, float64(f.k0+f.nk-1)))) + 4
 		f.width = max(f.width, end-f.at[i])
 	}
 	f.z = resize(f.z, rows*f.width)
-	for _, a := range []*[]float64{&f.h, &f.s, &f.m, &f.rr} {
-		*a = resize(*a, f.nk)
-	}
 }
 
 // resize returns a slice of length n, reusing a's memory when it can. The
@@ -177,79 +162,6 @@ func (f *field) place(a, b, lo, hi int) {
 			continue
 		}
 		copy(dst[from-at:to-at], f.row[i*(hi-lo)+from-lo:i*(hi-lo)+to-lo])
-	}
-}
-
-// span is a range of lanes [a, b), counted from the field's first.
-type span struct{ a, b int }
-
-// spanAt returns the lanes that matter at row u: those that meet a cell no
-// farther than the halo from here, as far as they lie in the DEM.
-func (f *field) spanAt(u int) span {
-	ln := f.ln
-	l := span{f.nk, 0}
-	for _, w := range [2]int{u - f.far, u + f.near} {
-		w := float64(min(max(w, f.u0), f.u1-1))
-		l.a = min(l.a, int(math.Floor(ln.lane(w, float64(f.v0))))-f.k0)
-		l.b = max(l.b, int(math.Floor(ln.lane(w, float64(f.v1-1))))+2-f.k0)
-	}
-	l.a, l.b = max(l.a, 0), min(l.b, f.nk)
-	for l.a < l.b && !f.inside(u, l.a) {
-		l.a++
-	}
-	for l.a < l.b && !f.inside(u, l.b-1) {
-		l.b--
-	}
-	return l
-}
-
-// inside reports whether lane k's column at row u lies in the DEM.
-func (f *field) inside(u, k int) bool {
-	v := f.ln.vAt(float64(u), float64(f.k0+k))
-	return u >= 0 && u < f.ln.orient.u && v >= 0 && v <= float64(f.ln.orient.v-1)
-}
-
-// sample fills f.h with the heights and f.s with the ground distances of the
-// lanes at row u, then f.rr and, when withM is set, f.m. Only lanes of the span
-// are filled.
-func (f *field) sample(u int, l span, withM bool) {
-	ln := f.ln
-	ln.cross(u, f.k0+l.a, f.k0+l.b, &f.c)
-	z := f.z[(u-f.ua)*f.width : (u-f.ua+1)*f.width]
-	at := f.at[u-f.ua]
-	if ln.uniform && l.a < l.b {
-		v := float64(f.k0+l.a) + float64(ln.slope*float64(u))
-		i := math.Floor(v)
-		heightsAt(f.h[l.a:l.b], z[int(i)-at:], v-i)
-	}
-	for k := l.a; k < l.b; {
-		j := (f.k0 + k - ln.first) / laneStep
-		kb := ln.first + laneStep*j - f.k0
-		end := min(l.b, kb+laneStep)
-		s0, ds := f.c.s[j], (f.c.s[j+1]-f.c.s[j])/laneStep
-		s := f.s[k:end]
-		for i := range s {
-			s[i] = s0 + float64(ds*float64(k+i-kb))
-		}
-		if !ln.uniform {
-			v0, dv := f.c.v[j], (f.c.v[j+1]-f.c.v[j])/laneStep
-			for i := k; i < end; i++ {
-				f.h[i] = lerp(z, v0+float64(dv*float64(i-kb))-float64(at))
-			}
-		}
-		k = end
-	}
-	h := f.h[l.a:l.b]
-	r, s := f.rr[l.a:l.b], f.s[l.a:l.b]
-	sin, cos := ln.sin, ln.cos
-	for k, h := range h {
-		r[k] = float64(sin*s[k]) - float64(cos*h)
-	}
-	if withM {
-		m, cot := f.m[l.a:l.b], ln.cot
-		for k, h := range h {
-			m[k] = h + float64(cot*s[k])
-		}
 	}
 }
 

@@ -106,6 +106,9 @@ type lanes struct {
 	// at a place of the grid, away from the radar.
 	ahead func(l *dem.Local) (e, n float64)
 	minDS float64 // least ground distance of one row along a lane, metres
+	// rowM and rowR are what one row of level ground is worth: metres of m and
+	// of r.
+	rowM, rowR float64
 	lens
 }
 
@@ -164,6 +167,7 @@ func fixedLanes(g *dem.Grid, look geometry.Look) *lanes {
 	ln.slope = slope(0, 0)
 	ln.layOut(slope)
 	ln.measure(g, slope)
+	ln.rowM, ln.rowR = ln.minDS*ln.cot, ln.minDS*ln.sin
 	return ln
 }
 
@@ -327,30 +331,6 @@ func bilinear(a []float64, n int, p, q float64) float64 {
 	top := a[0] + float64(p*(a[n]-a[0]))
 	end := a[1] + float64(p*(a[n+1]-a[1]))
 	return top + float64(q*(end-top))
-}
-
-// crossing is the lattice seen along one row: column and ground distance of
-// the node lanes at that row.
-type crossing struct {
-	v, s []float64 // by node lane; only the nodes asked for are filled
-}
-
-// cross fills c for row u with the nodes that lanes [ka, kb) lie between.
-func (ln *lanes) cross(u, ka, kb int, c *crossing) {
-	if len(c.s) != ln.nk {
-		c.v, c.s = make([]float64, ln.nk), make([]float64, ln.nk)
-	}
-	from := max((ka-ln.first)/laneStep, 0)
-	to := min((kb-ln.first)/laneStep+2, ln.nk)
-	i := min(u/laneStep, ln.nu-2)
-	p := float64(u-laneStep*i) / laneStep
-	for j := from; j < to; j++ {
-		n := i*ln.nk + j
-		c.s[j] = ln.s[n] + float64(p*(ln.s[n+ln.nk]-ln.s[n]))
-		if !ln.uniform {
-			c.v[j] = ln.v[n] + float64(p*(ln.v[n+ln.nk]-ln.v[n]))
-		}
-	}
 }
 
 // locate returns the lattice cell (i, j) that holds a marching position, which

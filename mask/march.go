@@ -2,27 +2,178 @@ package mask
 
 import "math"
 
-// forwardState is the march away from the radar, by lane.
-type forwardState struct {
-	top     []float64 // largest m so far
-	topU    []float64 // the same of unknown terrain at the ceiling
-	most    []float64 // largest slant range of surely lit ground so far
-	mostU   []float64 // the same of all ground that may be lit
-	m, r    []float64 // the row before
-	hid     []bool    // the row before was hidden
-	unknown []bool    // the row before was unknown terrain
+// strip is a bundle of neighbouring lanes of a field that are marched together:
+// few enough that all it touches stays in a processor's cache, also while
+// single cells are settled. It takes one column of the lane lattice, so its
+// lanes are first ... first+laneStep, the last shared with the next strip.
+type strip struct {
+	f      *field
+	j      int // column of the lattice
+	k0     int // first lane
+	ua, ub int // rows that are marched
+	u0, u1 int // rows with cells
+
+	// At the row that is sampled: column and ground distance of lane k0, and
+	// their change for one lane.
+	v0, dv, s0, ds float64
+	h, m, r        [stripLanes]float64
+
+	// By row from u0 to ub and lane: NaN where the lane is hidden or has no
+	// height; else how much less slant range than the sample's own the lit
+	// ground begins with, and negative, -0 included, where unknown terrain may
+	// hide it.
+	dip []float32
+	// By row of the cells and lane: the margins that the forward march finds;
+	// those ending in U count terrain that the DEM does not show.
+	clear, near, clearU, nearU []float32
+	// The margins that the backward march finds, of the row it stands at.
+	far, farU [stripLanes]float32
+
+	fwd forwardState
+	bwd backwardState
 }
 
-func (st *forwardState) reset(n int) {
-	for _, a := range []*[]float64{&st.top, &st.topU, &st.most, &st.mostU, &st.m, &st.r} {
-		*a = resize(*a, n)
-		for i := range *a {
-			(*a)[i] = math.Inf(-1)
+const stripLanes = laneStep + 1
+
+// span is a range of lanes [a, b) of a strip.
+type span struct{ a, b int }
+
+// setUp makes the strip of lattice column j; it returns false when no cell of
+// the field lies between its lanes.
+func (p *strip) setUp(f *field, j int) bool {
+	p.f, p.j, p.k0 = f, j, f.ln.first+laneStep*j
+	p.u0, p.u1 = f.u1, f.u0
+	for u := f.u0; u < f.u1; u++ {
+		if va, vb := p.cells(u); va < vb {
+			p.u0, p.u1 = min(p.u0, u), u+1
 		}
 	}
-	st.hid, st.unknown = resize(st.hid, n), resize(st.unknown, n)
-	for i := range n {
-		st.hid[i], st.unknown[i] = false, false
+	if p.u0 >= p.u1 {
+		return false
+	}
+	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
+	p.dip = resize(p.dip, (p.ub-p.u0)*stripLanes)
+	n := (p.u1 - p.u0) * stripLanes
+	p.clear, p.near = resize(p.clear, n), resize(p.near, n)
+	if !f.sure {
+		p.clearU, p.nearU = resize(p.clearU, n), resize(p.nearU, n)
+	}
+	return true
+}
+
+// cells stands at row u and returns the columns [va, vb) of the field's cells
+// that lie between the strip's lanes.
+func (p *strip) cells(u int) (va, vb int) {
+	p.stand(u)
+	va = int(math.Ceil(p.v0))
+	vb = int(math.Ceil(p.v0 + float64(p.dv*laneStep)))
+	return max(va, p.f.v0), min(vb, p.f.v1)
+}
+
+// stand takes columns and distances of the lanes at row u from the lattice.
+func (p *strip) stand(u int) {
+	ln := p.f.ln
+	i := min(u/laneStep, ln.nu-2)
+	q := float64(u-laneStep*i) / laneStep
+	n := i*ln.nk + p.j
+	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+ln.nk]-a[n])) }
+	p.s0 = at(ln.s, n)
+	p.ds = (at(ln.s, n+1) - p.s0) / laneStep
+	if ln.uniform {
+		p.v0, p.dv = float64(p.k0)+float64(ln.slope*float64(u)), 1
+		return
+	}
+	p.v0 = at(ln.v, n)
+	p.dv = (at(ln.v, n+1) - p.v0) / laneStep
+}
+
+// inDEM returns the lanes whose column at the row where the strip stands lies
+// in the DEM.
+func (p *strip) inDEM() span {
+	last := float64(p.f.ln.orient.v - 1)
+	v := func(k int) float64 { return p.v0 + float64(p.dv*float64(k)) }
+	l := span{0, stripLanes}
+	if v(0) < 0 {
+		l.a = min(int(math.Ceil(-p.v0/p.dv)), stripLanes)
+		for l.a > 0 && v(l.a-1) >= 0 {
+			l.a--
+		}
+		for l.a < stripLanes && v(l.a) < 0 {
+			l.a++
+		}
+	}
+	if v(stripLanes-1) > last {
+		l.b = max(int((last-p.v0)/p.dv)+1, 0)
+		for l.b < stripLanes && v(l.b) <= last {
+			l.b++
+		}
+		for l.b > 0 && v(l.b-1) > last {
+			l.b--
+		}
+	}
+	l.b = max(l.a, l.b)
+	return l
+}
+
+// sample stands at row u and fills h, m and r for the lanes in the DEM, which
+// it returns.
+func (p *strip) sample(u int) span {
+	p.stand(u)
+	l := p.inDEM()
+	f, ln := p.f, p.f.ln
+	z, at := f.z[(u-f.ua)*f.width:(u-f.ua+1)*f.width], f.at[u-f.ua]
+	h := p.h[l.a:l.b]
+	if ln.uniform && len(h) > 0 {
+		v := p.v0 + float64(l.a)
+		i := math.Floor(v)
+		heightsAt(h, z[int(i)-at:], v-i)
+	} else {
+		v := p.v0 - float64(at)
+		for i := range h {
+			h[i] = lerp(z, v+float64(p.dv*float64(l.a+i)))
+		}
+	}
+	m, r := p.m[l.a:l.b], p.r[l.a:l.b]
+	sin, cos, cot := ln.sin, ln.cos, ln.cot
+	for k, h := range h {
+		s := p.s0 + float64(p.ds*float64(l.a+k))
+		m[k] = h + float64(cot*s)
+		r[k] = float64(sin*s) - float64(cos*h)
+	}
+	return l
+}
+
+// forwardState is the march away from the radar, by lane.
+type forwardState struct {
+	top     [stripLanes]float64 // largest m so far
+	topU    [stripLanes]float64 // the same of unknown terrain at the ceiling
+	most    [stripLanes]float64 // largest slant range of surely lit ground so far
+	mostU   [stripLanes]float64 // the same of all ground that may be lit
+	m, r    [stripLanes]float64 // the row before, where it was hidden
+	hid     [stripLanes]bool    // the row before was hidden
+	unknown [stripLanes]bool    // the row before was unknown terrain
+}
+
+func (st *forwardState) reset() {
+	*st = forwardState{}
+	for k := range stripLanes {
+		st.top[k], st.topU[k] = math.Inf(-1), math.Inf(-1)
+		st.most[k], st.mostU[k] = math.Inf(-1), math.Inf(-1)
+	}
+}
+
+// entering marks the lanes that are in the DEM at row u, where they are l, but
+// not one row back in direction dir, where the strip is made to stand.
+func (p *strip) entering(l span, u, dir int, unknown *[stripLanes]bool) {
+	before := span{}
+	if back := u + dir; back >= 0 && back < p.f.ln.orient.u {
+		p.stand(back)
+		before = p.inDEM()
+	}
+	for k := l.a; k < l.b; k++ {
+		if k < before.a || k >= before.b {
+			unknown[k] = true
+		}
 	}
 }
 
@@ -31,185 +182,160 @@ func (st *forwardState) reset(n int) {
 // how much farther the field happens to extend. A tie counts against the point:
 // a look angle equal to the largest so far is hidden, an equal slant range is
 // folded.
-func (f *field) forward() {
-	f.dip = resize(f.dip, (f.ub-f.u0)*f.nk)
-	n := (f.u1 - f.u0) * f.nk
-	f.clear, f.near0 = resize(f.clear, n), resize(f.near0, n)
-	if !f.sure {
-		f.clearU, f.near0U = resize(f.clearU, n), resize(f.near0U, n)
-	}
-	st := &f.fwd
-	st.reset(f.nk)
-	prev := span{f.nk, f.nk}
-	for u := f.ua; u < f.ub; u++ {
-		l := f.spanAt(u)
-		f.sample(u, l, true)
-		if !f.sure && !f.lim.openEdge {
-			f.enter(l, prev, u, -1, func(k int) { st.unknown[k] = true })
+func (p *strip) forward() {
+	f := p.f
+	p.fwd.reset()
+	for u := p.ua; u < p.ub; u++ {
+		l := p.sample(u)
+		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < stripLanes || u == p.ua) {
+			p.entering(l, u, -1, &p.fwd.unknown)
 		}
-		f.blank(u, l)
+		var r forwardRow
+		if u >= p.u0 {
+			at := (u - p.u0) * stripLanes
+			r.dip = p.dip[at : at+stripLanes]
+			if u < p.u1 {
+				r.clear, r.near = p.clear[at:at+stripLanes], p.near[at:at+stripLanes]
+				if !f.sure {
+					r.clearU, r.nearU = p.clearU[at:at+stripLanes], p.nearU[at:at+stripLanes]
+				}
+			}
+			r.blank(l)
+		}
 		if f.sure {
-			f.forwardSure(u, l)
+			p.forwardSure(&r, l)
 		} else {
-			f.forwardRow(u, l)
+			p.forwardUnsure(&r, l)
 		}
-		st.m, f.m = f.m, st.m
-		st.r, f.rr = f.rr, st.r
-		prev = l
 	}
 }
 
-// enter calls mark for each lane of the span l, new since prev, that enters the
-// DEM at row u; dir points back along the march.
-func (f *field) enter(l, prev span, u, dir int, mark func(k int)) {
-	for k := l.a; k < l.b; k++ {
-		if k >= prev.a && k < prev.b {
-			k = prev.b - 1
-		} else if !f.inside(u+dir, k) {
-			mark(k)
-		}
-	}
-}
+// forwardRow is where the forward march leaves what it finds; nil for what is
+// not kept.
+type forwardRow struct{ dip, clear, near, clearU, nearU []float32 }
 
 // blank says of the lanes outside the span that nothing is known.
-func (f *field) blank(u int, l span) {
-	if u < f.u0 {
+func (r *forwardRow) blank(l span) {
+	if l.a == 0 && l.b == stripLanes {
 		return
 	}
-	at := (u - f.u0) * f.nk
-	for _, p := range [2]span{{0, l.a}, {max(l.a, l.b), f.nk}} {
-		fillWith(f.dip[at+p.a:at+p.b], float32(nan))
-		if u < f.u1 {
-			fillWith(f.clear[at+p.a:at+p.b], float32(nan))
-			fillWith(f.near0[at+p.a:at+p.b], float32(nan))
-			if !f.sure {
-				fillWith(f.clearU[at+p.a:at+p.b], float32(nan))
-				fillWith(f.near0U[at+p.a:at+p.b], float32(nan))
-			}
+	for _, a := range [][]float32{r.dip, r.clear, r.near, r.clearU, r.nearU} {
+		if a != nil {
+			fillWith(a[:l.a], float32(nan))
+			fillWith(a[l.b:], float32(nan))
 		}
 	}
 }
 
-// forwardSure is forwardRow where no unknown terrain is within reach and no
+// caps are the largest margins that the field can vouch for: a row's worth of
+// ground more than terrain at the edge of the reach can leave.
+func (f *field) caps(h float64) (clear, near, far float64) {
+	ln := f.ln
+	return h - f.lim.low + ln.rowM, (f.lim.high-h)*ln.cos + ln.rowR, (h-f.lim.low)*ln.cos + ln.rowR
+}
+
+// forwardSure marches one row where no unknown terrain is within reach and no
 // height is missing.
-func (f *field) forwardSure(u int, l span) {
-	st := &f.fwd
-	n := l.b - l.a
-	if n <= 0 {
-		return
-	}
-	h, m, r := f.h[l.a:][:n], f.m[l.a:][:n], f.rr[l.a:][:n]
-	top, most, pm, pr, hid := st.top[l.a:][:n], st.most[l.a:][:n], st.m[l.a:][:n], st.r[l.a:][:n], st.hid[l.a:][:n]
-	if u >= f.u0 && u < f.u1 {
-		at := (u-f.u0)*f.nk + l.a
-		clear, near := f.clear[at:][:n], f.near0[at:][:n]
-		low, high, cos := f.lim.low, f.lim.high, f.ln.cos
-		for k, h := range h {
-			c, a := m[k]-top[k], r[k]-most[k]
-			if most := h - low; c > most {
-				c = most
-			}
-			if most := (high - h) * cos; a > most {
-				a = most
-			}
-			clear[k], near[k] = float32(c), float32(a)
+func (p *strip) forwardSure(row *forwardRow, l span) {
+	st, f := &p.fwd, p.f
+	if row.clear != nil {
+		for k := l.a; k < l.b; k++ {
+			c, a, _ := f.caps(p.h[k])
+			row.clear[k] = float32(lesser(p.m[k]-st.top[k], c))
+			row.near[k] = float32(lesser(p.r[k]-st.most[k], a))
 		}
 	}
-	var dip []float32
-	if u >= f.u0 {
-		dip = f.dip[(u-f.u0)*f.nk+l.a:][:n]
-	}
-	for k, mk := range m {
-		tk, rk := top[k], r[k]
+	for k := l.a; k < l.b; k++ {
+		mk, rk, tk := p.m[k], p.r[k], st.top[k]
 		if mk <= tk {
-			hid[k] = true
-			if dip != nil {
-				dip[k] = float32(nan)
+			st.hid[k] = true
+			st.m[k], st.r[k] = mk, rk
+			if row.dip != nil {
+				row.dip[k] = float32(nan)
 			}
 			continue
 		}
 		best, d := rk, 0.0
-		if hid[k] {
-			edge := pr[k] + (tk-pm[k])/(mk-pm[k])*(rk-pr[k])
-			if edge > rk {
-				best = edge
-			} else {
-				d = rk - edge
-			}
-			hid[k] = false
+		if st.hid[k] {
+			best, d = st.edge(k, mk, rk)
 		}
-		top[k] = mk
-		if best > most[k] {
-			most[k] = best
+		st.top[k] = mk
+		if best > st.most[k] {
+			st.most[k] = best
 		}
-		if dip != nil {
-			dip[k] = float32(d)
+		if row.dip != nil {
+			row.dip[k] = float32(d)
 		}
 	}
 }
 
-// forwardRow marches one row where terrain may be unknown.
-func (f *field) forwardRow(u int, l span) {
-	st, ln, lim := &f.fwd, f.ln, f.lim
-	keep, cells := u >= f.u0, u >= f.u0 && u < f.u1
-	at := (u - f.u0) * f.nk
+// edge returns, for lane k that was hidden at the row before and is lit at m,
+// r, the largest slant range of the lit ground between the two rows, and how
+// much below r the smallest lies.
+func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
+	st.hid[k] = false
+	edge := st.r[k] + (st.top[k]-st.m[k])/(m-st.m[k])*(r-st.r[k])
+	if edge > r {
+		return edge, 0
+	}
+	return r, r - edge
+}
+
+// forwardUnsure marches one row where terrain may be unknown.
+func (p *strip) forwardUnsure(row *forwardRow, l span) {
+	st, f, lim := &p.fwd, p.f, &p.f.lim
+	cos := f.ln.cos
 	for k := l.a; k < l.b; k++ {
-		mk, h, rk := f.m[k], f.h[k], f.rr[k]
+		mk, h, rk := p.m[k], p.h[k], p.r[k]
 		if mk != mk {
 			st.unknown[k], st.hid[k] = true, false
-			if keep {
-				f.dip[at+k] = float32(nan)
-			}
-			if cells {
-				f.clear[at+k], f.near0[at+k] = float32(nan), float32(nan)
-				f.clearU[at+k], f.near0U[at+k] = float32(nan), float32(nan)
-			}
+			row.blank1(k)
 			continue
 		}
 		if st.unknown[k] {
 			// Unknown terrain ends somewhere between the rows: at worst here.
 			st.unknown[k] = false
 			st.topU[k] = max(st.topU[k], mk+(lim.ceiling-h))
-			st.mostU[k] = max(st.mostU[k], rk+(h-lim.low)*ln.cos)
+			st.mostU[k] = max(st.mostU[k], rk+(h-lim.low)*cos)
 		}
 		tk := st.top[k]
-		if cells {
-			below, above := h-lim.low, (lim.high-h)*ln.cos
-			f.clear[at+k] = float32(lesser(mk-tk, below))
-			f.clearU[at+k] = float32(lesser(mk-st.topU[k], below))
-			f.near0[at+k] = float32(lesser(rk-st.most[k], above))
-			f.near0U[at+k] = float32(lesser(rk-st.mostU[k], above))
+		if row.clear != nil {
+			c, a, _ := f.caps(h)
+			row.clear[k] = float32(lesser(mk-tk, c))
+			row.near[k] = float32(lesser(rk-st.most[k], a))
+			row.clearU[k] = float32(lesser(mk-st.topU[k], c))
+			row.nearU[k] = float32(lesser(rk-st.mostU[k], a))
 		}
 		if mk <= tk {
 			st.hid[k] = true
-			if keep {
-				f.dip[at+k] = float32(nan)
+			st.m[k], st.r[k] = mk, rk
+			if row.dip != nil {
+				row.dip[k] = float32(nan)
 			}
 			continue
 		}
 		best, d := rk, 0.0
 		if st.hid[k] {
-			edge := st.r[k] + (tk-st.m[k])/(mk-st.m[k])*(rk-st.r[k])
-			if edge > rk {
-				best = edge
-			} else {
-				d = rk - edge
-			}
-			st.hid[k] = false
+			best, d = st.edge(k, mk, rk)
 		}
 		st.top[k] = mk
-		if best > st.mostU[k] {
-			st.mostU[k] = best
-		}
+		st.mostU[k] = max(st.mostU[k], best)
 		if mk > st.topU[k] {
-			if best > st.most[k] {
-				st.most[k] = best
-			}
+			st.most[k] = max(st.most[k], best)
 		} else {
 			d = math.Copysign(d, -1)
 		}
-		if keep {
-			f.dip[at+k] = float32(d)
+		if row.dip != nil {
+			row.dip[k] = float32(d)
+		}
+	}
+}
+
+// blank1 says of lane k that nothing is known.
+func (r *forwardRow) blank1(k int) {
+	for _, a := range [5][]float32{r.dip, r.clear, r.near, r.clearU, r.nearU} {
+		if a != nil {
+			a[k] = float32(nan)
 		}
 	}
 }
@@ -224,90 +350,83 @@ func lesser(a, b float64) float64 {
 
 // backwardState is the march towards the radar, by lane.
 type backwardState struct {
-	least, leastU []float64 // smallest slant range of lit ground so far
-	unknown       []bool
+	least, leastU [stripLanes]float64 // smallest slant range of lit ground so far
+	unknown       [stripLanes]bool
 }
 
 // backward walks from far range to near range over what forward left. When it
 // has reached a row of cells, with the margins to the ground farther away, it
 // hands the row to cells.
-func (f *field) backward(cells func(u int)) {
-	st := &f.bwd
-	n := f.nk
-	st.least, st.leastU, st.unknown = resize(st.least, n), resize(st.leastU, n), resize(st.unknown, n)
-	f.far0, f.far0U = resize(f.far0, n), resize(f.far0U, n)
-	for k := range n {
-		st.least[k], st.leastU[k], st.unknown[k] = math.Inf(1), math.Inf(1), false
+func (p *strip) backward(cells func(u int)) {
+	f, st := p.f, &p.bwd
+	*st = backwardState{}
+	for k := range stripLanes {
+		st.least[k], st.leastU[k] = math.Inf(1), math.Inf(1)
 	}
-	prev := span{n, n}
-	for u := f.ub - 1; u >= f.u0; u-- {
-		l := f.spanAt(u)
-		f.sample(u, l, false)
-		if !f.sure && !f.lim.openEdge {
-			f.enter(l, prev, u, 1, func(k int) { st.unknown[k] = true })
+	for u := p.ub - 1; u >= p.u0; u-- {
+		l := p.sample(u)
+		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < stripLanes || u == p.ub-1) {
+			p.entering(l, u, 1, &st.unknown)
 		}
-		for _, p := range [2]span{{0, l.a}, {max(l.a, l.b), n}} {
-			fillWith(f.far0[p.a:p.b], float32(nan))
-			fillWith(f.far0U[p.a:p.b], float32(nan))
+		if u < p.u1 && (l.a > 0 || l.b < stripLanes) {
+			for k := range stripLanes {
+				p.far[k], p.farU[k] = float32(nan), float32(nan)
+			}
 		}
+		at := (u - p.u0) * stripLanes
+		dip := p.dip[at : at+stripLanes]
 		if f.sure {
-			f.backwardSure(u, l, cells)
+			p.backwardSure(u, l, dip, cells)
 		} else {
-			f.backwardRow(u, l, cells)
+			p.backwardUnsure(u, l, dip, cells)
 		}
-		prev = l
 	}
 }
 
-func (f *field) backwardSure(u int, l span, cells func(u int)) {
-	n := max(l.b-l.a, 0)
-	least := f.bwd.least[l.a:][:n]
-	r, h := f.rr[l.a:][:n], f.h[l.a:][:n]
-	if u < f.u1 {
-		far := f.far0[l.a:][:n]
-		low, cos := f.lim.low, f.ln.cos
-		for k, rk := range r {
-			far[k] = float32(lesser(least[k]-rk, (h[k]-low)*cos))
+func (p *strip) backwardSure(u int, l span, dip []float32, cells func(u int)) {
+	st := &p.bwd
+	if u < p.u1 {
+		for k := l.a; k < l.b; k++ {
+			_, _, far := p.f.caps(p.h[k])
+			p.far[k] = float32(lesser(st.least[k]-p.r[k], far))
 		}
 		cells(u)
 	}
-	at := (u-f.u0)*f.nk + l.a
-	for k, d := range f.dip[at:][:n] {
-		if d == d {
-			if e := r[k] - float64(d); e < least[k] {
-				least[k] = e
+	for k := l.a; k < l.b; k++ {
+		if d := dip[k]; d == d {
+			if e := p.r[k] - float64(d); e < st.least[k] {
+				st.least[k] = e
 			}
 		}
 	}
 }
 
-func (f *field) backwardRow(u int, l span, cells func(u int)) {
-	st, ln, lim := &f.bwd, f.ln, f.lim
-	at := (u - f.u0) * f.nk
+func (p *strip) backwardUnsure(u int, l span, dip []float32, cells func(u int)) {
+	st, f, lim := &p.bwd, p.f, &p.f.lim
 	for k := l.a; k < l.b; k++ {
-		rk, h := f.rr[k], f.h[k]
+		rk, h := p.r[k], p.h[k]
 		if rk != rk {
 			st.unknown[k] = true
-			f.far0[k], f.far0U[k] = float32(nan), float32(nan)
+			p.far[k], p.farU[k] = float32(nan), float32(nan)
 			continue
 		}
 		if st.unknown[k] {
 			st.unknown[k] = false
-			st.leastU[k] = min(st.leastU[k], rk-(lim.ceiling-h)*ln.cos)
+			st.leastU[k] = min(st.leastU[k], rk-(lim.ceiling-h)*f.ln.cos)
 		}
-		below := (h - lim.low) * ln.cos
-		f.far0[k] = float32(lesser(st.least[k]-rk, below))
-		f.far0U[k] = float32(lesser(st.leastU[k]-rk, below))
+		_, _, far := f.caps(h)
+		p.far[k] = float32(lesser(st.least[k]-rk, far))
+		p.farU[k] = float32(lesser(st.leastU[k]-rk, far))
 	}
-	if u < f.u1 {
+	if u < p.u1 {
 		cells(u)
 	}
 	for k := l.a; k < l.b; k++ {
-		d := f.dip[at+k]
+		d := dip[k]
 		if d != d {
 			continue
 		}
-		e := f.rr[k] - math.Abs(float64(d))
+		e := p.r[k] - math.Abs(float64(d))
 		st.leastU[k] = min(st.leastU[k], e)
 		if !math.Signbit(float64(d)) {
 			st.least[k] = min(st.least[k], e)

@@ -248,6 +248,7 @@ type worker struct {
 	*runner
 	sheet sheet
 	field field
+	strip strip
 	walk  walker
 	tileBuffers
 }
@@ -284,7 +285,7 @@ func (w *worker) look(i int, win dem.Window) error {
 	if err := f.load(w.job.Source); err != nil {
 		return err
 	}
-	w.sheet.classify(f, &w.walk)
+	w.sheet.classify(f, &w.strip, &w.walk)
 	t := w.fill(i)
 	w.locks[i].Lock()
 	defer w.locks[i].Unlock()

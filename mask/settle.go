@@ -63,38 +63,45 @@ func (t *tops) over(b int, x0, x1 float64) (low, high float64) {
 }
 
 // ray is the range line through one point: at row u it is at column v and
-// ground distance s.
+// ground distance s, both straight between two rows of the lattice.
 type ray struct {
 	ln             *lanes
 	k              float64
-	u0, v0         int // the point itself, met without rounding
-	i              int // lattice row below, -1 at first
-	va, vb, sa, sb float64
+	u0, v0         int     // the point itself, met without rounding
+	from, to       int     // the rows for which the following hold
+	va, dv, sa, ds float64 // at row from, and the change for one row
+}
+
+func newRay(ln *lanes, u, v int) ray {
+	return ray{ln: ln, k: ln.lane(float64(u), float64(v)), u0: u, v0: v, from: -1, to: -2}
 }
 
 func (y *ray) at(u int) (v, s float64) {
+	if u < y.from || u > y.to {
+		y.enter(u)
+	}
+	d := float64(u - y.from)
+	v, s = y.va+float64(y.dv*d), y.sa+float64(y.ds*d)
+	if u == y.u0 {
+		v = float64(y.v0)
+	}
+	return v, s
+}
+
+// enter makes ready for the lattice rows around u.
+func (y *ray) enter(u int) {
 	ln := y.ln
 	i := min(u/laneStep, ln.nu-2)
-	if i != y.i {
-		y.i = i
-		j := min(max((int(math.Floor(y.k))-ln.first)/laneStep, 0), ln.nk-2)
-		q := (y.k - float64(ln.first+laneStep*j)) / laneStep
-		n := i*ln.nk + j
-		y.sa = ln.s[n] + float64(q*(ln.s[n+1]-ln.s[n]))
-		y.va = ln.v[n] + float64(q*(ln.v[n+1]-ln.v[n]))
-		n += ln.nk
-		y.sb = ln.s[n] + float64(q*(ln.s[n+1]-ln.s[n]))
-		y.vb = ln.v[n] + float64(q*(ln.v[n+1]-ln.v[n]))
-	}
-	p := float64(u-laneStep*i) / laneStep
-	s = y.sa + float64(p*(y.sb-y.sa))
-	if u == y.u0 {
-		return float64(y.v0), s
-	}
+	y.from, y.to = laneStep*i, laneStep*(i+1)
+	j := min(max((int(math.Floor(y.k))-ln.first)/laneStep, 0), ln.nk-2)
+	q := (y.k - float64(ln.first+laneStep*j)) / laneStep
+	n := i*ln.nk + j
+	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+1]-a[n])) }
+	y.sa, y.va = at(ln.s, n), at(ln.v, n)
+	y.ds, y.dv = (at(ln.s, n+ln.nk)-y.sa)/laneStep, (at(ln.v, n+ln.nk)-y.va)/laneStep
 	if ln.uniform {
-		return y.k + float64(ln.slope*float64(u)), s
+		y.va, y.dv = y.k+float64(ln.slope*float64(y.from)), ln.slope
 	}
-	return y.va + float64(p*(y.vb-y.va)), s
 }
 
 // point is a point of the surface on a range line, or unknown terrain.
@@ -117,22 +124,36 @@ type walker struct {
 	pieces []point // the samples of one row step
 }
 
-// settle returns the exact margins of the cell (u, v), wherever they are
-// below the slacks (metres of height, metres of range); larger ones may come
-// out larger than they are. The cell must have a height.
-func (w *walker) settle(f *field, u, v int, slackM, slackR float64) margins {
+// settle returns the exact margins of the cell (u, v) that are asked for,
+// wherever they are below the slacks; larger ones, and those not asked for, may
+// come out larger than they are. The cell must have a height. A hidden cell has
+// no margins of range.
+func (w *walker) settle(f *field, u, v int, ask question) margins {
 	w.f = f
-	w.y = ray{ln: f.ln, k: f.ln.lane(float64(u), float64(v)), u0: u, v0: v, i: -1}
+	w.y = newRay(f.ln, u, v)
 	_, s := w.y.at(u)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	m, r := f.ln.at(s, h)
-	near := w.towards(u, m, r, slackM, slackR)
-	if near.clear <= 0 {
-		near.far, near.farU = math.Inf(1), math.Inf(1)
-		return near
+	inf := math.Inf(1)
+	x := margins{inf, inf, inf, inf, inf, inf}
+	if ask.clear || ask.near {
+		x = w.towards(u, m, r, ask)
 	}
-	near.far, near.farU = w.away(u, m, r, slackR)
-	return near
+	x.far, x.farU = inf, inf
+	if ask.far && x.clear > 0 {
+		x.far, x.farU = w.away(u, m, r, ask)
+	}
+	return x
+}
+
+// question says what a walk is to find out.
+type question struct {
+	clear, near, far bool
+	// slackM and slackR are the margins, metres of height and of range, from
+	// which on they need not be exact.
+	slackM, slackR float64
+	// signs asks for the signs only: the walk ends where the answer is certain.
+	signs bool
 }
 
 // height returns the bilinear height at a column of row u.
@@ -165,38 +186,47 @@ func (w *walker) stretch(u, dir int) (low, high float64, next int, ok bool) {
 	return low, high, next, true
 }
 
-// towards walks from row u towards the radar.
-func (w *walker) towards(u0 int, m, r, slackM, slackR float64) margins {
+// towards walks from row u0 towards the radar.
+func (w *walker) towards(u0 int, m, r float64, ask question) margins {
 	f, lim, ln := w.f, w.f.lim, w.f.ln
 	w.seq, w.stack = w.seq[:0], w.stack[:0]
 	topClose, topFar, topU := math.Inf(-1), math.Inf(-1), math.Inf(-1)
 	mostU := math.Inf(-1)
-	floorM := m - slackM
+	// Ground matters when it reaches floorM, or slant range floorR.
+	floorM, floorR := m-ask.slackM, r-ask.slackR
+	if !ask.near {
+		floorR = math.Inf(1)
+	}
+	roof := max(lim.high, lim.ceiling)
+	pass := func(s, low, high float64) bool {
+		return high+ln.cot*s <= floorM && ln.sin*s-ln.cos*low < floorR
+	}
+	gap := point{m: math.Inf(-1), r: math.Inf(-1), unknown: true}
 	u := u0
 	for u > f.ua {
-		_, s := w.y.at(u)
-		if top, _ := ln.at(s, max(lim.high, lim.ceiling)); top <= floorM {
-			if _, reach := ln.at(s, lim.low); reach < r-slackR {
-				break // nothing nearer can matter
-			}
+		va, s := w.y.at(u)
+		if pass(s, lim.low, roof) {
+			break // nothing nearer can matter
 		}
-		if low, high, next, ok := w.stretch(u, -1); ok {
-			top, _ := ln.at(s, high)
-			_, reach := ln.at(s, low)
-			if top <= floorM && reach < r-slackR {
-				w.seq = append(w.seq, point{m: math.Inf(-1), r: math.Inf(-1), unknown: true})
-				u = next
-				continue
-			}
+		if low, high, next, ok := w.stretch(u, -1); ok && pass(s, low, high) {
+			w.seq = append(w.seq, gap)
+			u = next
+			continue
 		}
-		w.step(u, -1)
+		vb, sb := w.y.at(u - 1)
+		if low, high := w.around(u, -1, va, vb); pass(s, low, high) {
+			w.seq = append(w.seq, gap)
+			u--
+			continue
+		}
+		w.step(u, -1, va, vb, s, sb)
 		for i := range w.pieces {
 			q := w.pieces[i]
 			q.close = q.close && u == u0
 			if q.unknown {
 				topU, mostU = max(topU, q.m), max(mostU, q.r)
 				w.doubt(q.m)
-				w.seq = append(w.seq, point{m: math.Inf(-1), r: math.Inf(-1), unknown: true})
+				w.seq = append(w.seq, gap)
 				continue
 			}
 			if q.close {
@@ -204,10 +234,15 @@ func (w *walker) towards(u0 int, m, r, slackM, slackR float64) margins {
 			} else {
 				topFar = max(topFar, q.m)
 			}
-			if q.r >= r-slackR {
-				floorM = min(floorM, q.m)
+			if ask.near {
+				if q.r >= floorR {
+					floorM = min(floorM, q.m)
+				}
+				w.push(q)
 			}
-			w.push(q)
+		}
+		if ask.signs && max(topClose, topFar) >= m {
+			return margins{clear: m - max(topClose, topFar), clearU: m - topU, near: math.Inf(1), nearU: math.Inf(1)}
 		}
 		u--
 	}
@@ -218,12 +253,38 @@ func (w *walker) towards(u0 int, m, r, slackM, slackR float64) margins {
 		topU, mostU = max(topU, um), max(mostU, ur)
 		w.doubt(um)
 	}
-	out := margins{clear: m - topFar, clearU: m - topU}
+	out := margins{clear: m - topFar, clearU: m - topU, near: math.Inf(1), nearU: math.Inf(1)}
 	if topClose >= m {
 		out.clear = m - max(topClose, topFar)
 	}
-	out.near, out.nearU = w.nearest(r, mostU)
+	if ask.near {
+		out.near, out.nearU = w.nearest(r, mostU)
+	}
 	return out
+}
+
+// around returns bounds of the heights on the path from row u, column va, to
+// the next row in direction dir, column vb: infinite where one is missing.
+func (w *walker) around(u, dir int, va, vb float64) (low, high float64) {
+	f := w.f
+	if va > vb {
+		va, vb = vb, va
+	}
+	a, b := int(math.Floor(va)), int(math.Ceil(vb))
+	i := u - f.ua
+	x := f.z[i*f.width+a-f.at[i]:][:b-a+1]
+	lo, hi := x[0], x[0]
+	for _, h := range x[1:] {
+		lo, hi = min(lo, h), max(hi, h)
+	}
+	i += dir
+	for _, h := range f.z[i*f.width+a-f.at[i]:][:b-a+1] {
+		lo, hi = min(lo, h), max(hi, h)
+	}
+	if hi != hi {
+		return math.Inf(-1), math.Inf(1)
+	}
+	return float64(lo), float64(hi)
 }
 
 // push adds a sample to the sequence and keeps on the stack those that it does
@@ -276,26 +337,33 @@ func (w *walker) nearest(r, mostU float64) (sure, possible float64) {
 
 // away walks from row u away from the radar and returns the margins to the lit
 // ground there.
-func (w *walker) away(u0 int, m, r, slackR float64) (sure, possible float64) {
+func (w *walker) away(u0 int, m, r float64, ask question) (sure, possible float64) {
 	f, lim, ln := w.f, w.f.lim, w.f.ln
 	top, topU := m, math.Inf(-1)
 	closeR, farR, any := math.Inf(1), math.Inf(1), math.Inf(1)
 	prev, hidden := point{m: m, r: r}, false
+	limit := r + ask.slackR
+	pass := func(s, high float64) bool { return ln.sin*s-ln.cos*high > limit }
+	roof := max(lim.high, lim.ceiling)
 	u := u0
 	for u < f.ub-1 {
-		_, s := w.y.at(u)
-		if _, least := ln.at(s, max(lim.high, lim.ceiling)); least > r+slackR {
+		va, s := w.y.at(u)
+		if pass(s, roof) {
 			break // nothing farther can matter
 		}
-		if _, high, next, ok := w.stretch(u, 1); ok {
-			// Ground beyond the slack cannot hide any that is within it: it
-			// lies below the line of equal range, the other above.
-			if _, least := ln.at(s, high); least > r+slackR {
-				u, hidden, prev = next, false, point{unknown: true}
-				continue
-			}
+		// Ground beyond the slack cannot hide any that is within it: it lies
+		// below the line of equal range, the other above.
+		if _, high, next, ok := w.stretch(u, 1); ok && pass(s, high) {
+			u, hidden, prev = next, false, point{unknown: true}
+			continue
 		}
-		w.step(u, 1)
+		vb, sb := w.y.at(u + 1)
+		if _, high := w.around(u, 1, va, vb); pass(s, high) {
+			u++
+			hidden, prev = false, point{unknown: true}
+			continue
+		}
+		w.step(u, 1, va, vb, s, sb)
 		for _, q := range w.pieces {
 			q.close = q.close && u == u0
 			if q.unknown {
@@ -325,6 +393,9 @@ func (w *walker) away(u0 int, m, r, slackR float64) (sure, possible float64) {
 			}
 			prev = q
 		}
+		if ask.signs && min(closeR, farR) <= r {
+			break
+		}
 		u++
 	}
 	if u == f.ln.orient.u-1 && !lim.openEdge {
@@ -338,14 +409,22 @@ func (w *walker) away(u0 int, m, r, slackR float64) (sure, possible float64) {
 	return farR - r, any - r
 }
 
+// ownGround is the part of a row next to a point that counts as the point
+// itself: on curved ground an overlap or a shadow may begin right at the point,
+// millimetres deep, which no DEM can tell.
+const ownGround = 0.1
+
 // step fills w.pieces with the samples between row u, excluded, and the next
 // row in direction dir, included, in the order of the walk.
-func (w *walker) step(u, dir int) {
+func (w *walker) step(u, dir int, va, vb, sa, sb float64) {
 	w.pieces = w.pieces[:0]
-	va, sa := w.y.at(u)
-	vb, sb := w.y.at(u + dir)
 	a, b := math.Floor(va), math.Floor(vb)
 	t0 := 0.0
+	if u == w.y.u0 {
+		// Ground this close counts as the point itself.
+		t0 = ownGround
+		w.piece(u, dir, va, vb, sa, sb, t0, t0)
+	}
 	if a == b || va == vb {
 		w.piece(u, dir, va, vb, sa, sb, 0, 1)
 		return
