@@ -133,28 +133,32 @@ func (t *sheet) place(f *field, u, v int) (at, stride int) {
 // classifyRow classifies the strip's cells of row u, at which the backward march
 // stands.
 func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
-	f, ln := p.f, p.f.ln
-	slack := slacks{float32(settleShare * ln.rowM), float32(settleShare * ln.rowR)}
-	from := (u - p.u0) * stripLanes
-	rows := marginRows{clear: p.clear[from:][:stripLanes], near: p.near[from:][:stripLanes], far: p.far[:]}
-	if !f.sure {
-		rows.clearU, rows.nearU, rows.farU = p.clearU[from:][:stripLanes], p.nearU[from:][:stripLanes], p.farU[:]
-	}
+	f := p.f
 	va, vb := p.cells(u)
+	if va >= vb {
+		return
+	}
 	at, stride := t.place(f, u, va)
-	z := f.z[(u-f.ua)*f.width+va-f.at[u-f.ua]:]
-	for j := range vb - va {
+	z := f.z[(u-f.ua)*f.width+va-f.at[u-f.ua]:][:vb-va]
+	sure := p.sure[u-p.ua] == 3
+	var rows laneMargins
+	rows.fill(p, u, sure)
+	for j, h := range z {
 		i := at + j*stride
-		if z[j] != z[j] {
+		if h != h {
 			t.raw[i] = uint8(NoData)
 			t.keep(i, float32(nan), float32(nan))
 			continue
 		}
 		x := (float64(va+j) - p.v0) / p.dv
 		k := min(int(x), laneStep-1)
-		m, doubt := rows.at(k, float32(x-float64(k)), slack)
-		if doubt.clear || doubt.near || doubt.far {
-			m = t.settle(f, wk, u, va+j, m, doubt, slack)
+		m, doubt := rows.at(k, float32(x-float64(k)))
+		if doubt != 0 {
+			if sure && m.clear == m.clear && m.near == m.near && m.far == m.far {
+				wk.quick(p, u, va+j, k, &m, doubt)
+			} else {
+				m = t.settle(f, wk, u, va+j, m, doubt)
+			}
 		}
 		t.raw[i] = uint8(m.raw())
 		if t.wantClear || t.wantFold {
@@ -167,48 +171,99 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	}
 }
 
-// slacks are the margins, in metres of height and of slant range, under which
-// a cell is doubtful.
-type slacks struct{ m, r float32 }
+// laneMargins are the lanes' margins along one row.
+type laneMargins struct {
+	clear, near, far    [stripLanes]float32
+	clearU, nearU, farU [stripLanes]float32
+	sure                bool // the U margins are those without
+	slackM, slackR      float32
+}
 
-// marginRows are the lanes' margins along one row; the U rows are nil where no
-// unknown terrain is within reach.
-type marginRows struct{ clear, near, far, clearU, nearU, farU []float32 }
+// fill takes the margins from the lines and the heights of the row that the
+// strip has sampled.
+func (r *laneMargins) fill(p *strip, u int, sure bool) {
+	ln := p.f.ln
+	r.slackM, r.slackR = float32(settleShare*ln.rowM), float32(settleShare*ln.rowR)
+	r.sure = sure
+	cos := float32(ln.cos)
+	l := p.inDEM()
+	for k, x := range p.row(u) {
+		h := float32(p.h[k])
+		if k < l.a || k >= l.b {
+			h = float32(nan)
+		}
+		r.clear[k] = h - x.shade
+		r.near[k] = (x.nearer - h) * cos
+		r.far[k] = (h - x.farther) * cos
+	}
+	if sure {
+		return
+	}
+	bits := p.sure[u-p.ua]
+	for k, x := range p.unsureRow(u) {
+		h := float32(p.h[k])
+		r.clearU[k], r.nearU[k], r.farU[k] = r.clear[k], r.near[k], r.far[k]
+		if bits&1 == 0 {
+			r.clearU[k] = h - x.shade
+			r.nearU[k] = (x.nearer - h) * cos
+		}
+		if bits&2 == 0 {
+			r.farU[k] = (h - x.farther) * cos
+		}
+	}
+}
 
 // doubts says which margins are doubtful.
-type doubts struct{ clear, near, far bool }
+type doubts uint8
 
-// at returns the margins at weight w between lanes k and k+1, and whether they
-// are doubtful: a margin that decides is missing or small against one row's
-// worth of ground, or the two lanes disagree about it.
-func (r *marginRows) at(k int, w float32, slack slacks) (m lane, d doubts) {
-	m.clear, d.clear = between2(r.clear, k, w, slack.m)
-	m.clearU, m.near, m.far = m.clear, 0, 0
-	if m.clear < 0 && !d.clear {
+const (
+	doubtClear doubts = 1 << iota
+	doubtNear
+	doubtFar
+)
+
+// at returns the margins at weight w between lanes k and k+1, and which are
+// doubtful: missing, or small against one row's worth of ground and the
+// roughness of the ground that decides.
+func (r *laneMargins) at(k int, w float32) (m lane, d doubts) {
+	var doubt bool
+	m.clear, doubt = blend(r.clear[k], r.clear[k+1], w, r.slackM)
+	if doubt {
+		d = doubtClear
+	} else if m.clear < 0 {
+		m.clearU = m.clear
+		return m, 0
+	}
+	if m.near, doubt = blend(r.near[k], r.near[k+1], w, r.slackR); doubt {
+		d |= doubtNear
+	}
+	if m.far, doubt = blend(r.far[k], r.far[k+1], w, r.slackR); doubt {
+		d |= doubtFar
+	}
+	m.clearU, m.nearU, m.farU = m.clear, m.near, m.far
+	if r.sure {
 		return m, d
 	}
-	m.near, d.near = between2(r.near, k, w, slack.r)
-	m.far, d.far = between2(r.far, k, w, slack.r)
-	m.nearU, m.farU = m.near, m.far
-	if r.clearU != nil {
-		var c, n, f bool
-		m.clearU, c = between2(r.clearU, k, w, slack.m)
-		m.nearU, n = between2(r.nearU, k, w, slack.r)
-		m.farU, f = between2(r.farU, k, w, slack.r)
-		d = doubts{d.clear || c, d.near || n, d.far || f}
+	if m.clearU, doubt = blend(r.clearU[k], r.clearU[k+1], w, r.slackM); doubt {
+		d |= doubtClear
+	}
+	if m.nearU, doubt = blend(r.nearU[k], r.nearU[k+1], w, r.slackR); doubt {
+		d |= doubtNear
+	}
+	if m.farU, doubt = blend(r.farU[k], r.farU[k+1], w, r.slackR); doubt {
+		d |= doubtFar
 	}
 	return m, d
 }
 
-// between2 interpolates a margin between two lanes. At weight 0 the second does
+// blend interpolates a margin between two lanes. At weight 0 the second does
 // not count, also when it is NaN. The slack grows by the difference of the
 // lanes, which shows how rough the ground is that decides.
-func between2(a []float32, k int, w, slack float32) (m float32, doubt bool) {
-	x := a[k]
+func blend(x, y, w, slack float32) (m float32, doubt bool) {
 	if w == 0 {
 		return x, !(x > slack || x < -slack)
 	}
-	d := a[k+1] - x
+	d := y - x
 	m = x + w*d
 	if d < 0 {
 		d = -d
@@ -217,29 +272,24 @@ func between2(a []float32, k int, w, slack float32) (m float32, doubt bool) {
 	return m, !(m > slack || m < -slack)
 }
 
-func (t *sheet) keep(i int, clear, fold float32) {
-	if t.wantClear {
-		t.clear[i] = clear
-	}
-	if t.wantFold {
-		t.fold[i] = fold
-	}
-}
-
 // lane holds margins as the lanes keep them.
 type lane struct{ clear, near, far, clearU, nearU, farU float32 }
 
 // settle replaces doubtful lane margins by those of an exact walk: their signs
 // are then the walk's, their sizes the lanes' wherever the signs agree.
-func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, d doubts, slack slacks) lane {
-	ask := question{clear: d.clear || d.near, near: d.near, far: d.far, slackM: float64(slack.m), slackR: float64(slack.r), signs: true}
+func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, d doubts) lane {
+	ask := question{
+		clear: d&(doubtClear|doubtNear) != 0, near: d&doubtNear != 0, far: d&doubtFar != 0,
+		slackM: settleShare * f.ln.rowM, slackR: settleShare * f.ln.rowR, signs: true,
+	}
 	if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum != sum {
 		// No lane margins here: walk the whole reach.
 		ask = question{clear: true, near: true, far: true, slackM: math.Inf(1), slackR: math.Inf(1)}
 	}
 	x := wk.settle(f, u, v, ask)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
-	most, above, below := f.caps(h)
+	shade, nearer, farther := f.limitLines()
+	most, above, below := h-shade, (nearer-h)*f.ln.cos, (h-farther)*f.ln.cos
 	pick := func(asked bool, lane float32, walked, slack, most float64) float32 {
 		switch {
 		case lane != lane:
@@ -257,7 +307,7 @@ func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, d doubts, slack s
 		far:   pick(ask.far, m.far, x.far, ask.slackR, below),
 	}
 	out.clearU, out.nearU, out.farU = out.clear, out.near, out.far
-	if !f.sure {
+	if m.clearU != m.clear || m.nearU != m.near || m.farU != m.far {
 		out.clearU = pick(ask.clear, m.clearU, x.clearU, ask.slackM, most)
 		out.nearU = pick(ask.near, m.nearU, x.nearU, ask.slackR, above)
 		out.farU = pick(ask.far, m.farU, x.farU, ask.slackR, below)
@@ -307,4 +357,14 @@ func shadowClass(raw Class, f geometry.Facet) Class {
 		return raw
 	}
 	return Open
+}
+
+// keep stores the margins that layers ask for.
+func (t *sheet) keep(i int, clear, fold float32) {
+	if t.wantClear {
+		t.clear[i] = clear
+	}
+	if t.wantFold {
+		t.fold[i] = fold
+	}
 }

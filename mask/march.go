@@ -18,22 +18,36 @@ type strip struct {
 	v0, dv, s0, ds float64
 	h, m, r        [stripLanes]float64
 
-	// By row from u0 to ub and lane: NaN where the lane is hidden or has no
-	// height; else how much less slant range than the sample's own the lit
-	// ground begins with, and negative, -0 included, where unknown terrain may
-	// hide it.
-	dip []float32
-	// By row of the cells and lane: the margins that the forward march finds;
-	// those ending in U count terrain that the DEM does not show.
-	clear, near, clearU, nearU []float32
-	// The margins that the backward march finds, of the row it stands at.
-	far, farU [stripLanes]float32
+	// What the marches find, by row from ua to ub and lane.
+	lines  []lines
+	unsure []unsureLines // nil where no unknown terrain is within reach
+	// sure says of each row from ua on that no unknown terrain is in reach of
+	// it: bit 0 towards the radar, bit 1 away from it.
+	sure []uint8
 
 	fwd forwardState
 	bwd backwardState
 }
 
 const stripLanes = laneStep + 1
+
+// lines are the limits that other ground sets at one sample of a lane, as
+// heights there: ground above shade is lit, ground below nearer shares no slant
+// range with lit ground nearer to the radar, ground above farther shares none
+// with lit ground farther away.
+//
+// dip is NaN where the sample is hidden or has no height; else how much less
+// slant range than the sample's own the lit ground begins with, and negative,
+// -0 included, where unknown terrain may hide it.
+type lines struct{ shade, nearer, farther, dip float32 }
+
+// unsureLines are the same limits when unknown terrain counts at its worst.
+type unsureLines struct{ shade, nearer, farther float32 }
+
+var (
+	noLines  = lines{float32(nan), float32(nan), float32(nan), float32(nan)}
+	noUnsure = unsureLines{float32(nan), float32(nan), float32(nan)}
+)
 
 // span is a range of lanes [a, b) of a strip.
 type span struct{ a, b int }
@@ -52,13 +66,25 @@ func (p *strip) setUp(f *field, j int) bool {
 		return false
 	}
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
-	p.dip = resize(p.dip, (p.ub-p.u0)*stripLanes)
-	n := (p.u1 - p.u0) * stripLanes
-	p.clear, p.near = resize(p.clear, n), resize(p.near, n)
+	n := (p.ub - p.ua) * stripLanes
+	p.lines = resize(p.lines, n)
+	p.sure = resize(p.sure, p.ub-p.ua)
+	p.unsure = p.unsure[:0]
 	if !f.sure {
-		p.clearU, p.nearU = resize(p.clearU, n), resize(p.nearU, n)
+		p.unsure = resize(p.unsure, n)
 	}
 	return true
+}
+
+// row returns the lines of row u.
+func (p *strip) row(u int) []lines { return p.lines[(u-p.ua)*stripLanes:][:stripLanes] }
+
+// unsureRow returns the unsure lines of row u, nil where there are none.
+func (p *strip) unsureRow(u int) []unsureLines {
+	if len(p.unsure) == 0 {
+		return nil
+	}
+	return p.unsure[(u-p.ua)*stripLanes:][:stripLanes]
 }
 
 // cells stands at row u and returns the columns [va, vb) of the field's cells
@@ -163,8 +189,9 @@ func (st *forwardState) reset() {
 }
 
 // entering marks the lanes that are in the DEM at row u, where they are l, but
-// not one row back in direction dir, where the strip is made to stand.
-func (p *strip) entering(l span, u, dir int, unknown *[stripLanes]bool) {
+// not one row back in direction dir, and reports whether there are any. The
+// strip is made to stand at that row.
+func (p *strip) entering(l span, u, dir int, unknown *[stripLanes]bool) (any bool) {
 	before := span{}
 	if back := u + dir; back >= 0 && back < p.f.ln.orient.u {
 		p.stand(back)
@@ -172,100 +199,99 @@ func (p *strip) entering(l span, u, dir int, unknown *[stripLanes]bool) {
 	}
 	for k := l.a; k < l.b; k++ {
 		if k < before.a || k >= before.b {
-			unknown[k] = true
+			unknown[k], any = true, true
 		}
 	}
+	return any
 }
 
-// forward walks from near range to far range. The margins are capped at what
-// terrain at the edge of the reach could leave, so that they do not depend on
-// how much farther the field happens to extend. A tie counts against the point:
+// limitLines are the lowest shade and farther line and the highest nearer line
+// that the field can vouch for: a row's worth of ground beyond what terrain at
+// the edge of the reach can set. Lines are brought within them, so that they
+// do not depend on how much farther the field happens to extend.
+func (f *field) limitLines() (shade, nearer, farther float64) {
+	ln := f.ln
+	return f.lim.low - ln.rowM, f.lim.high + ln.rowR/ln.cos, f.lim.low - ln.rowR/ln.cos
+}
+
+// forward walks from near range to far range. A tie counts against the point:
 // a look angle equal to the largest so far is hidden, an equal slant range is
 // folded.
 func (p *strip) forward() {
 	f := p.f
 	p.fwd.reset()
+	last := p.ua - f.near - 1 // last row at which terrain was unknown
 	for u := p.ua; u < p.ub; u++ {
 		l := p.sample(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < stripLanes || u == p.ua) {
-			p.entering(l, u, -1, &p.fwd.unknown)
+			if p.entering(l, u, -1, &p.fwd.unknown) {
+				last = u
+			}
 		}
-		var r forwardRow
-		if u >= p.u0 {
-			at := (u - p.u0) * stripLanes
-			r.dip = p.dip[at : at+stripLanes]
-			if u < p.u1 {
-				r.clear, r.near = p.clear[at:at+stripLanes], p.near[at:at+stripLanes]
-				if !f.sure {
-					r.clearU, r.nearU = p.clearU[at:at+stripLanes], p.nearU[at:at+stripLanes]
+		row, unsure := p.row(u), p.unsureRow(u)
+		for k := range stripLanes {
+			if k < l.a || k >= l.b {
+				row[k] = noLines
+			}
+		}
+		if !f.sure {
+			for k := l.a; k < l.b; k++ {
+				if h := p.h[k]; h != h {
+					last = u
 				}
 			}
-			r.blank(l)
 		}
-		if f.sure {
-			p.forwardSure(&r, l)
-		} else {
-			p.forwardUnsure(&r, l)
+		if p.sure[u-p.ua] = 0; u-last > f.near {
+			p.sure[u-p.ua] = 1
+			p.forwardSure(row, l)
+			continue
 		}
-	}
-}
-
-// forwardRow is where the forward march leaves what it finds; nil for what is
-// not kept.
-type forwardRow struct{ dip, clear, near, clearU, nearU []float32 }
-
-// blank says of the lanes outside the span that nothing is known.
-func (r *forwardRow) blank(l span) {
-	if l.a == 0 && l.b == stripLanes {
-		return
-	}
-	for _, a := range [][]float32{r.dip, r.clear, r.near, r.clearU, r.nearU} {
-		if a != nil {
-			fillWith(a[:l.a], float32(nan))
-			fillWith(a[l.b:], float32(nan))
+		for k := range unsure {
+			if k < l.a || k >= l.b {
+				unsure[k] = noUnsure
+			}
 		}
+		p.forwardUnsure(row, unsure, l)
 	}
-}
-
-// caps are the largest margins that the field can vouch for: a row's worth of
-// ground more than terrain at the edge of the reach can leave.
-func (f *field) caps(h float64) (clear, near, far float64) {
-	ln := f.ln
-	return h - f.lim.low + ln.rowM, (f.lim.high-h)*ln.cos + ln.rowR, (h-f.lim.low)*ln.cos + ln.rowR
 }
 
 // forwardSure marches one row where no unknown terrain is within reach and no
 // height is missing.
-func (p *strip) forwardSure(row *forwardRow, l span) {
-	st, f := &p.fwd, p.f
-	if row.clear != nil {
-		for k := l.a; k < l.b; k++ {
-			c, a, _ := f.caps(p.h[k])
-			row.clear[k] = float32(lesser(p.m[k]-st.top[k], c))
-			row.near[k] = float32(lesser(p.r[k]-st.most[k], a))
+func (p *strip) forwardSure(row []lines, l span) {
+	st, ln := &p.fwd, p.f.ln
+	minShade, maxNearer, _ := p.f.limitLines()
+	perCos := 1 / ln.cos
+	n := l.b - l.a
+	row = row[l.a:][:n]
+	h, m, r := p.h[l.a:][:n], p.m[l.a:][:n], p.r[l.a:][:n]
+	top, most, hid := st.top[l.a:][:n], st.most[l.a:][:n], st.hid[l.a:][:n]
+	for k := range row {
+		mk, rk, tk := m[k], r[k], top[k]
+		shade := h[k] + (tk - mk)
+		if shade < minShade {
+			shade = minShade
 		}
-	}
-	for k := l.a; k < l.b; k++ {
-		mk, rk, tk := p.m[k], p.r[k], st.top[k]
+		nearer := h[k] + (rk-most[k])*perCos
+		if nearer > maxNearer {
+			nearer = maxNearer
+		}
+		c := &row[k]
+		c.shade, c.nearer = float32(shade), float32(nearer)
 		if mk <= tk {
-			st.hid[k] = true
-			st.m[k], st.r[k] = mk, rk
-			if row.dip != nil {
-				row.dip[k] = float32(nan)
-			}
+			hid[k] = true
+			st.m[l.a+k], st.r[l.a+k] = mk, rk
+			c.dip = float32(nan)
 			continue
 		}
 		best, d := rk, 0.0
-		if st.hid[k] {
-			best, d = st.edge(k, mk, rk)
+		if hid[k] {
+			best, d = st.edge(l.a+k, mk, rk)
 		}
-		st.top[k] = mk
-		if best > st.most[k] {
-			st.most[k] = best
+		top[k] = mk
+		if best > most[k] {
+			most[k] = best
 		}
-		if row.dip != nil {
-			row.dip[k] = float32(d)
-		}
+		c.dip = float32(d)
 	}
 }
 
@@ -282,14 +308,15 @@ func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
 }
 
 // forwardUnsure marches one row where terrain may be unknown.
-func (p *strip) forwardUnsure(row *forwardRow, l span) {
+func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 	st, f, lim := &p.fwd, p.f, &p.f.lim
 	cos := f.ln.cos
+	minShade, maxNearer, _ := f.limitLines()
 	for k := l.a; k < l.b; k++ {
 		mk, h, rk := p.m[k], p.h[k], p.r[k]
 		if mk != mk {
 			st.unknown[k], st.hid[k] = true, false
-			row.blank1(k)
+			row[k], unsure[k] = noLines, noUnsure
 			continue
 		}
 		if st.unknown[k] {
@@ -299,19 +326,14 @@ func (p *strip) forwardUnsure(row *forwardRow, l span) {
 			st.mostU[k] = max(st.mostU[k], rk+(h-lim.low)*cos)
 		}
 		tk := st.top[k]
-		if row.clear != nil {
-			c, a, _ := f.caps(h)
-			row.clear[k] = float32(lesser(mk-tk, c))
-			row.near[k] = float32(lesser(rk-st.most[k], a))
-			row.clearU[k] = float32(lesser(mk-st.topU[k], c))
-			row.nearU[k] = float32(lesser(rk-st.mostU[k], a))
-		}
+		row[k].shade = float32(max(h+(tk-mk), minShade))
+		row[k].nearer = float32(min(h+(rk-st.most[k])/cos, maxNearer))
+		unsure[k].shade = float32(max(h+(st.topU[k]-mk), minShade))
+		unsure[k].nearer = float32(min(h+(rk-st.mostU[k])/cos, maxNearer))
 		if mk <= tk {
 			st.hid[k] = true
 			st.m[k], st.r[k] = mk, rk
-			if row.dip != nil {
-				row.dip[k] = float32(nan)
-			}
+			row[k].dip = float32(nan)
 			continue
 		}
 		best, d := rk, 0.0
@@ -325,27 +347,8 @@ func (p *strip) forwardUnsure(row *forwardRow, l span) {
 		} else {
 			d = math.Copysign(d, -1)
 		}
-		if row.dip != nil {
-			row.dip[k] = float32(d)
-		}
+		row[k].dip = float32(d)
 	}
-}
-
-// blank1 says of lane k that nothing is known.
-func (r *forwardRow) blank1(k int) {
-	for _, a := range [5][]float32{r.dip, r.clear, r.near, r.clearU, r.nearU} {
-		if a != nil {
-			a[k] = float32(nan)
-		}
-	}
-}
-
-// lesser is min for numbers that are not NaN, in fewer instructions.
-func lesser(a, b float64) float64 {
-	if a > b {
-		return b
-	}
-	return a
 }
 
 // backwardState is the march towards the radar, by lane.
@@ -355,81 +358,92 @@ type backwardState struct {
 }
 
 // backward walks from far range to near range over what forward left. When it
-// has reached a row of cells, with the margins to the ground farther away, it
-// hands the row to cells.
+// has reached a row of cells, with the line that the ground farther away sets,
+// it hands the row to cells.
 func (p *strip) backward(cells func(u int)) {
 	f, st := p.f, &p.bwd
 	*st = backwardState{}
 	for k := range stripLanes {
 		st.least[k], st.leastU[k] = math.Inf(1), math.Inf(1)
 	}
+	last := p.ub + f.far + 1 // last row at which terrain was unknown or unsure
 	for u := p.ub - 1; u >= p.u0; u-- {
 		l := p.sample(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < stripLanes || u == p.ub-1) {
-			p.entering(l, u, 1, &st.unknown)
-		}
-		if u < p.u1 && (l.a > 0 || l.b < stripLanes) {
-			for k := range stripLanes {
-				p.far[k], p.farU[k] = float32(nan), float32(nan)
+			if p.entering(l, u, 1, &st.unknown) {
+				last = u
 			}
 		}
-		at := (u - p.u0) * stripLanes
-		dip := p.dip[at : at+stripLanes]
-		if f.sure {
-			p.backwardSure(u, l, dip, cells)
+		row := p.row(u)
+		if !f.sure {
+			for k := l.a; k < l.b; k++ {
+				if d := row[k].dip; p.h[k] != p.h[k] || math.Signbit(float64(d)) && d == d {
+					last = u
+				}
+			}
+		}
+		if last-u > f.far {
+			p.sure[u-p.ua] |= 2
+			p.backwardSure(row, l)
 		} else {
-			p.backwardUnsure(u, l, dip, cells)
+			p.backwardUnsure(row, p.unsureRow(u), l)
 		}
+		if u < p.u1 {
+			cells(u)
+		}
+		p.backwardMove(row, l)
 	}
 }
 
-func (p *strip) backwardSure(u int, l span, dip []float32, cells func(u int)) {
+func (p *strip) backwardSure(row []lines, l span) {
 	st := &p.bwd
-	if u < p.u1 {
-		for k := l.a; k < l.b; k++ {
-			_, _, far := p.f.caps(p.h[k])
-			p.far[k] = float32(lesser(st.least[k]-p.r[k], far))
+	_, _, minFarther := p.f.limitLines()
+	perCos := 1 / p.f.ln.cos
+	n := l.b - l.a
+	row = row[l.a:][:n]
+	h, r, least := p.h[l.a:][:n], p.r[l.a:][:n], st.least[l.a:][:n]
+	for k := range row {
+		farther := h[k] - (least[k]-r[k])*perCos
+		if farther < minFarther {
+			farther = minFarther
 		}
-		cells(u)
-	}
-	for k := l.a; k < l.b; k++ {
-		if d := dip[k]; d == d {
-			if e := p.r[k] - float64(d); e < st.least[k] {
-				st.least[k] = e
-			}
-		}
+		row[k].farther = float32(farther)
 	}
 }
 
-func (p *strip) backwardUnsure(u int, l span, dip []float32, cells func(u int)) {
-	st, f, lim := &p.bwd, p.f, &p.f.lim
+// backwardMove takes the lit ground of a row into account.
+func (p *strip) backwardMove(row []lines, l span) {
+	st := &p.bwd
 	for k := l.a; k < l.b; k++ {
-		rk, h := p.r[k], p.h[k]
-		if rk != rk {
-			st.unknown[k] = true
-			p.far[k], p.farU[k] = float32(nan), float32(nan)
-			continue
-		}
-		if st.unknown[k] {
-			st.unknown[k] = false
-			st.leastU[k] = min(st.leastU[k], rk-(lim.ceiling-h)*f.ln.cos)
-		}
-		_, _, far := f.caps(h)
-		p.far[k] = float32(lesser(st.least[k]-rk, far))
-		p.farU[k] = float32(lesser(st.leastU[k]-rk, far))
-	}
-	if u < p.u1 {
-		cells(u)
-	}
-	for k := l.a; k < l.b; k++ {
-		d := dip[k]
+		d := row[k].dip
 		if d != d {
 			continue
 		}
 		e := p.r[k] - math.Abs(float64(d))
-		st.leastU[k] = min(st.leastU[k], e)
-		if !math.Signbit(float64(d)) {
-			st.least[k] = min(st.least[k], e)
+		if e < st.leastU[k] {
+			st.leastU[k] = e
 		}
+		if e < st.least[k] && !math.Signbit(float64(d)) {
+			st.least[k] = e
+		}
+	}
+}
+
+func (p *strip) backwardUnsure(row []lines, unsure []unsureLines, l span) {
+	st, f, lim := &p.bwd, p.f, &p.f.lim
+	_, _, minFarther := f.limitLines()
+	cos := f.ln.cos
+	for k := l.a; k < l.b; k++ {
+		rk, h := p.r[k], p.h[k]
+		if rk != rk {
+			st.unknown[k] = true
+			continue
+		}
+		if st.unknown[k] {
+			st.unknown[k] = false
+			st.leastU[k] = min(st.leastU[k], rk-(lim.ceiling-h)*cos)
+		}
+		row[k].farther = float32(max(h-(st.least[k]-rk)/cos, minFarther))
+		unsure[k].farther = float32(max(h-(st.leastU[k]-rk)/cos, minFarther))
 	}
 }
