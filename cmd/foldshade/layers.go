@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"runtime/debug"
 	"slices"
 	"strings"
 
@@ -238,6 +239,8 @@ func (j *layersJob) compute(ctx context.Context, src *raster.DEM, looks []geomet
 	}
 	warnings := src.Warnings()
 	warn(j.stderr, warnings)
+	// GDAL makes the rasters: give it the room that the marching took.
+	debug.FreeOSMemory()
 	if err := out.finish(ctx, j, src.Grid(), window, chosen); err != nil {
 		return nil, err
 	}
