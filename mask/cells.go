@@ -30,6 +30,7 @@ type sheet struct {
 	raw       []uint8 // class codes before the cells' own slopes are looked at
 	clear     []float32
 	fold      []float32
+	margins   laneMargins
 	wantClear bool
 	wantFold  bool
 }
@@ -49,6 +50,7 @@ func (t *sheet) load(src dem.Source, w dem.Window) error {
 		r := w.Row + i - p.Row
 		from := r*p.Cols + w.Col - p.Col
 		row := t.pad[from : from+w.Cols]
+		copy(t.z[i*w.Cols:], row)
 		above, below := row, row // itself where there is no row
 		if r > 0 {
 			above = t.pad[from-p.Cols:][:w.Cols]
@@ -57,20 +59,29 @@ func (t *sheet) load(src dem.Source, w dem.Window) error {
 			below = t.pad[from+p.Cols:][:w.Cols]
 		}
 		zc, zr := t.zc[i*w.Cols:(i+1)*w.Cols], t.zr[i*w.Cols:(i+1)*w.Cols]
-		copy(t.z[i*w.Cols:], row)
-		for j := range row {
-			zr[j] = difference(above[j], row[j], below[j], r > 0, r < p.Rows-1)
+		for j, h := range row {
+			if r > 0 && r < p.Rows-1 {
+				if d := (below[j] - above[j]) / 2; d == d && h == h {
+					zr[j] = d
+					continue
+				}
+			}
+			zr[j] = difference(above[j], h, below[j], r > 0, r < p.Rows-1)
 		}
-		for j := range row {
-			left, right := row[j], row[j]
+		for j, h := range row {
 			hasL, hasR := w.Col+j > 0, w.Col+j < g.Cols-1
+			left, right := h, h
 			if hasL {
 				left = t.pad[from+j-1]
 			}
 			if hasR {
 				right = t.pad[from+j+1]
 			}
-			zc[j] = difference(left, row[j], right, hasL, hasR)
+			if d := (right - left) / 2; hasL && hasR && d == d && h == h {
+				zc[j] = d
+				continue
+			}
+			zc[j] = difference(left, h, right, hasL, hasR)
 		}
 	}
 	return nil
@@ -140,35 +151,55 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	}
 	at, stride := t.place(f, u, va)
 	z := f.z[(u-f.ua)*f.width+va-f.at[u-f.ua]:][:vb-va]
-	sure := p.sure[u-p.ua] == 3
-	var rows laneMargins
-	rows.fill(p, u, sure)
+	r := &t.margins
+	r.fill(p, u, p.sure[u-p.ua] == 3)
+	per := 1 / p.dv
+	x := (float64(va) - p.v0) * per
 	for j, h := range z {
 		i := at + j*stride
+		if p.dv != 1 {
+			x = (float64(va+j) - p.v0) * per
+		}
+		k := min(int(x), laneStep-1)
+		w := float32(x - float64(k))
+		x++
+		// Most cells are clearly open: all margins are wide.
+		c, n, g := mix(r.clear[k], r.clear[k+1], w), mix(r.near[k], r.near[k+1], w), mix(r.far[k], r.far[k+1], w)
+		if r.sure && c > r.slackM+r.roughM[k] && n > r.slackR+r.roughN[k] && g > r.slackR+r.roughF[k] {
+			t.raw[i] = uint8(Open)
+			t.keep(i, c, min(n, g))
+			continue
+		}
 		if h != h {
 			t.raw[i] = uint8(NoData)
 			t.keep(i, float32(nan), float32(nan))
 			continue
 		}
-		x := (float64(va+j) - p.v0) / p.dv
-		k := min(int(x), laneStep-1)
-		m, doubt := rows.at(k, float32(x-float64(k)))
-		if doubt != 0 {
-			if sure && m.clear == m.clear && m.near == m.near && m.far == m.far {
-				wk.quick(p, u, va+j, k, &m, doubt)
-			} else {
-				m = t.settle(f, wk, u, va+j, m, doubt)
-			}
-		}
-		t.raw[i] = uint8(m.raw())
-		if t.wantClear || t.wantFold {
-			fold := float32(nan)
-			if m.clear > 0 {
-				fold = min(m.near, m.far)
-			}
-			t.keep(i, m.clear, fold)
+		t.classifyCell(p, wk, u, va+j, k, w, i)
+	}
+}
+
+// mix interpolates between two lanes.
+func mix(x, y, w float32) float32 { return x + w*(y-x) }
+
+func abs32(x float32) float32 { return math.Float32frombits(math.Float32bits(x) &^ (1 << 31)) }
+
+// classifyCell classifies the cell (u, v) between lanes k and k+1.
+func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w float32, i int) {
+	m, doubt := t.margins.at(k, w)
+	if doubt != 0 {
+		if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum == sum {
+			wk.quick(p, u, v, k, &m, doubt)
+		} else {
+			m = t.settle(p.f, wk, u, v, m)
 		}
 	}
+	t.raw[i] = uint8(m.raw())
+	fold := float32(nan)
+	if m.clear > 0 {
+		fold = min(m.near, m.far)
+	}
+	t.keep(i, m.clear, fold)
 }
 
 // laneMargins are the lanes' margins along one row.
@@ -176,7 +207,9 @@ type laneMargins struct {
 	clear, near, far    [stripLanes]float32
 	clearU, nearU, farU [stripLanes]float32
 	sure                bool // the U margins are those without
-	slackM, slackR      float32
+	// The slack, and how much roughness widens it between a lane and the next.
+	slackM, slackR         float32
+	roughM, roughN, roughF [stripLanes]float32
 }
 
 // fill takes the margins from the lines and the heights of the row that the
@@ -196,6 +229,9 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		r.near[k] = (x.nearer - h) * cos
 		r.far[k] = (h - x.farther) * cos
 	}
+	roughness(&r.clear, &r.roughM)
+	roughness(&r.near, &r.roughN)
+	roughness(&r.far, &r.roughF)
 	if sure {
 		return
 	}
@@ -213,6 +249,28 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	}
 }
 
+// roughness fills rough with the largest difference of neighbouring lanes among
+// those around each gap: it shows how much the ground that decides varies within
+// a cell.
+func roughness(a, rough *[stripLanes]float32) {
+	before, here := float32(0), abs32(a[1]-a[0])
+	for k := range laneStep {
+		next := float32(0)
+		if k+2 < stripLanes {
+			next = abs32(a[k+2] - a[k+1])
+		}
+		m := here
+		if before > m {
+			m = before
+		}
+		if next > m {
+			m = next
+		}
+		rough[k] = roughShare * m
+		before, here = here, next
+	}
+}
+
 // doubts says which margins are doubtful.
 type doubts uint8
 
@@ -220,99 +278,57 @@ const (
 	doubtClear doubts = 1 << iota
 	doubtNear
 	doubtFar
+	doubtClearU
+	doubtNearU
+	doubtFarU
 )
 
 // at returns the margins at weight w between lanes k and k+1, and which are
 // doubtful: missing, or small against one row's worth of ground and the
 // roughness of the ground that decides.
 func (r *laneMargins) at(k int, w float32) (m lane, d doubts) {
-	var doubt bool
-	m.clear, doubt = blend(r.clear[k], r.clear[k+1], w, r.slackM)
-	if doubt {
-		d = doubtClear
-	} else if m.clear < 0 {
-		m.clearU = m.clear
+	blend := func(a *[stripLanes]float32, rough *[stripLanes]float32, slack float32, bit doubts) float32 {
+		x := a[k]
+		if w != 0 { // at weight 0 the second does not count, also when it is NaN
+			x += w * (a[k+1] - x)
+			slack += rough[k]
+		}
+		if !(x > slack || x < -slack) {
+			d |= bit
+		}
+		return x
+	}
+	m.clear = blend(&r.clear, &r.roughM, r.slackM, doubtClear)
+	m.clearU = m.clear
+	if m.clear < 0 && d == 0 {
 		return m, 0
 	}
-	if m.near, doubt = blend(r.near[k], r.near[k+1], w, r.slackR); doubt {
-		d |= doubtNear
-	}
-	if m.far, doubt = blend(r.far[k], r.far[k+1], w, r.slackR); doubt {
-		d |= doubtFar
-	}
-	m.clearU, m.nearU, m.farU = m.clear, m.near, m.far
-	if r.sure {
-		return m, d
-	}
-	if m.clearU, doubt = blend(r.clearU[k], r.clearU[k+1], w, r.slackM); doubt {
-		d |= doubtClear
-	}
-	if m.nearU, doubt = blend(r.nearU[k], r.nearU[k+1], w, r.slackR); doubt {
-		d |= doubtNear
-	}
-	if m.farU, doubt = blend(r.farU[k], r.farU[k+1], w, r.slackR); doubt {
-		d |= doubtFar
+	m.near = blend(&r.near, &r.roughN, r.slackR, doubtNear)
+	m.far = blend(&r.far, &r.roughF, r.slackR, doubtFar)
+	m.nearU, m.farU = m.near, m.far
+	if !r.sure {
+		m.clearU = blend(&r.clearU, &r.roughM, r.slackM, doubtClearU)
+		m.nearU = blend(&r.nearU, &r.roughN, r.slackR, doubtNearU)
+		m.farU = blend(&r.farU, &r.roughF, r.slackR, doubtFarU)
 	}
 	return m, d
-}
-
-// blend interpolates a margin between two lanes. At weight 0 the second does
-// not count, also when it is NaN. The slack grows by the difference of the
-// lanes, which shows how rough the ground is that decides.
-func blend(x, y, w, slack float32) (m float32, doubt bool) {
-	if w == 0 {
-		return x, !(x > slack || x < -slack)
-	}
-	d := y - x
-	m = x + w*d
-	if d < 0 {
-		d = -d
-	}
-	slack += roughShare * d
-	return m, !(m > slack || m < -slack)
 }
 
 // lane holds margins as the lanes keep them.
 type lane struct{ clear, near, far, clearU, nearU, farU float32 }
 
-// settle replaces doubtful lane margins by those of an exact walk: their signs
-// are then the walk's, their sizes the lanes' wherever the signs agree.
-func (t *sheet) settle(f *field, wk *walker, u, v int, m lane, d doubts) lane {
-	ask := question{
-		clear: d&(doubtClear|doubtNear) != 0, near: d&doubtNear != 0, far: d&doubtFar != 0,
-		slackM: settleShare * f.ln.rowM, slackR: settleShare * f.ln.rowR, signs: true,
-	}
-	if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum != sum {
-		// No lane margins here: walk the whole reach.
-		ask = question{clear: true, near: true, far: true, slackM: math.Inf(1), slackR: math.Inf(1)}
-	}
-	x := wk.settle(f, u, v, ask)
+// settle returns the margins of a cell where a lane has none, by a walk over
+// the whole reach.
+func (t *sheet) settle(f *field, wk *walker, u, v int, m lane) lane {
+	x := wk.settle(f, u, v)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	shade, nearer, farther := f.limitLines()
 	most, above, below := h-shade, (nearer-h)*f.ln.cos, (h-farther)*f.ln.cos
-	pick := func(asked bool, lane float32, walked, slack, most float64) float32 {
-		switch {
-		case lane != lane:
-			return float32(min(walked, most))
-		case !asked || (walked > 0) == (lane > 0):
-			return lane
-		case walked > slack:
-			return float32(slack)
-		}
-		return float32(walked)
+	return lane{
+		clear: float32(min(x.clear, most)), clearU: float32(min(x.clearU, most)),
+		near: float32(min(x.near, above)), nearU: float32(min(x.nearU, above)),
+		far: float32(min(x.far, below)), farU: float32(min(x.farU, below)),
 	}
-	out := lane{
-		clear: pick(ask.clear, m.clear, x.clear, ask.slackM, most),
-		near:  pick(ask.near, m.near, x.near, ask.slackR, above),
-		far:   pick(ask.far, m.far, x.far, ask.slackR, below),
-	}
-	out.clearU, out.nearU, out.farU = out.clear, out.near, out.far
-	if m.clearU != m.clear || m.nearU != m.near || m.farU != m.far {
-		out.clearU = pick(ask.clear, m.clearU, x.clearU, ask.slackM, most)
-		out.nearU = pick(ask.near, m.nearU, x.nearU, ask.slackR, above)
-		out.farU = pick(ask.far, m.farU, x.farU, ask.slackR, below)
-	}
-	return out
 }
 
 // raw returns the code that the margins give, before the cell's own slope.

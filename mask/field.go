@@ -45,8 +45,7 @@ type field struct {
 	width int       // stored columns a row
 	at    []int     // first stored column of each row
 	z     []float32 // heights, NaN where there is none
-	tops  tops
-	sure  bool // no unknown terrain within reach: the U margins are not kept
+	sure  bool      // no unknown terrain within reach: the U margins are not kept
 
 	row []float32 // scratch for reading
 }
@@ -115,7 +114,6 @@ func (f *field) load(src dem.Source) error {
 		f.fillHoles(f.row)
 		f.place(a, b, lo, hi)
 	}
-	f.tops.build(f)
 	return nil
 }
 

@@ -92,12 +92,14 @@ const laneStep = 32
 // frame. Lane k crosses row u at column v(u, k); s(u, k) is the ground
 // distance along it. Both are exact at the nodes of a lattice that covers the
 // DEM and is anchored to it and to the look, never to a tile, and bilinear
-// between. Lane k passes column k at row 0.
+// between. Lane k passes column k at the middle row, so that a turned or mirrored
+// DEM has the turned or mirrored lanes.
 type lanes struct {
 	orient
-	// uniform lanes are straight and parallel: v = k + slope u, exactly.
+	// uniform lanes are straight and parallel: v = k + slope (u - mid), exactly.
 	uniform bool
 	slope   float64
+	mid     float64 // the middle row, a half where their number is even
 
 	first  int // lane of the lattice's first column, a multiple of laneStep
 	nu, nk int // nodes along u and along the lanes
@@ -184,45 +186,50 @@ func indexDirection(l dem.Local, azimuth geometry.Angle) (dr, dc float64) {
 }
 
 // layOut finds the lanes' columns at the lattice rows by following dv/du =
-// slope(u, v) from row 0 with the classical Runge-Kutta method, four steps
-// between two nodes.
+// slope(u, v) from the middle row with the classical Runge-Kutta method.
 func (ln *lanes) layOut(slope func(u, v float64) float64) {
 	ln.nu = (ln.orient.u-1)/laneStep + 2
+	ln.mid = float64(ln.orient.u-1) / 2
 	last := float64(laneStep * (ln.nu - 1))
 	lo, hi := 0.0, float64(ln.orient.v-1)
-	for _, v := range []float64{lo, hi} {
-		for u := 0.0; u <= last; u += laneStep {
-			k := ln.back(slope, u, v)
+	for _, v := range [2]float64{lo, hi} {
+		for _, u := range [2]float64{0, last} {
+			k := ln.trace(slope, u, v, ln.mid)
 			lo, hi = math.Min(lo, k), math.Max(hi, k)
 		}
 	}
 	ln.first = laneStep * (int(math.Floor(lo/laneStep)) - 1)
 	ln.nk = (int(math.Ceil(hi))-ln.first)/laneStep + 3
 	ln.v = make([]float64, ln.nu*ln.nk)
+	middle := int(ln.mid) / laneStep
 	for j := range ln.nk {
 		k := float64(ln.first + laneStep*j)
-		v := k
-		for i := range ln.nu {
-			u := float64(laneStep * i)
-			if ln.uniform {
-				v = k + float64(ln.slope*u)
-			} else if i > 0 {
-				v = follow(slope, u-laneStep, v, laneStep)
-			}
-			ln.v[i*ln.nk+j] = v
+		u, v := ln.mid, k
+		for i := middle; i >= 0; i-- {
+			to := float64(laneStep * i)
+			v = ln.trace(slope, u, v, to)
+			u, ln.v[i*ln.nk+j] = to, v
+		}
+		u, v = ln.mid, k
+		for i := middle + 1; i < ln.nu; i++ {
+			to := float64(laneStep * i)
+			v = ln.trace(slope, u, v, to)
+			u, ln.v[i*ln.nk+j] = to, v
 		}
 	}
 }
 
-// back returns the lane through a marching position.
-func (ln *lanes) back(slope func(u, v float64) float64, u, v float64) float64 {
+// trace follows a range line from a marching position to another row.
+func (ln *lanes) trace(slope func(u, v float64) float64, u, v, to float64) float64 {
 	if ln.uniform {
-		return v - ln.slope*u
+		return v + float64(ln.slope*(to-u))
 	}
-	for ; u > 0; u -= laneStep {
-		v = follow(slope, u, v, -laneStep)
+	for math.Abs(to-u) > laneStep {
+		step := math.Copysign(laneStep, to-u)
+		v = follow(slope, u, v, step)
+		u += step
 	}
-	return v
+	return follow(slope, u, v, to-u)
 }
 
 // follow integrates dv/du = slope(u, v) over a distance in u.
@@ -317,7 +324,7 @@ func (ln *lanes) measure(g *dem.Grid, slope func(u, v float64) float64) {
 // row u, which may be fractional.
 func (ln *lanes) vAt(u, k float64) float64 {
 	if ln.uniform {
-		return k + float64(ln.slope*u)
+		return k + float64(ln.slope*(u-ln.mid))
 	}
 	i := min(max(int(u)/laneStep, 0), ln.nu-2)
 	j := min(max((int(math.Floor(k))-ln.first)/laneStep, 0), ln.nk-2)
@@ -355,7 +362,7 @@ func (ln *lanes) locate(u, v float64) (i, j int, p, q float64) {
 // lane returns the fractional lane through a marching position.
 func (ln *lanes) lane(u, v float64) float64 {
 	if ln.uniform {
-		return v - float64(ln.slope*u)
+		return v - float64(ln.slope*(u-ln.mid))
 	}
 	_, j, _, q := ln.locate(u, v)
 	return float64(ln.first+laneStep*j) + laneStep*q

@@ -106,7 +106,7 @@ func (p *strip) stand(u int) {
 	p.s0 = at(ln.s, n)
 	p.ds = (at(ln.s, n+1) - p.s0) / laneStep
 	if ln.uniform {
-		p.v0, p.dv = float64(p.k0)+float64(ln.slope*float64(u)), 1
+		p.v0, p.dv = float64(p.k0)+float64(ln.slope*(float64(u)-ln.mid)), 1
 		return
 	}
 	p.v0 = at(ln.v, n)

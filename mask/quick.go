@@ -2,40 +2,58 @@ package mask
 
 import "math"
 
-// atLimit is the size of a margin whose sign the lanes had wrong: it is small,
-// and no more is known of it. Metres.
-const atLimit = 0.001
+// atLimit is the size, as a part of a row's worth of ground, of a margin whose
+// sign the lanes had wrong: it is small, and no more is known of it.
+const atLimit = 1. / (1 << 14)
 
-// quick settles a doubtful cell between lanes k and k+1 of a strip where no
-// unknown terrain is in reach. It walks from the cell's own centre over the
-// bilinear surface, as settle does, but only as far as the lines of the two
-// lanes do not decide the rest with a slack of their own.
+// quick settles a doubtful cell between lanes k and k+1 of a strip. It walks
+// from the cell's own centre over the bilinear surface, as settle does, but only
+// as far as the lines of the two lanes do not decide the rest with a slack of
+// their own.
 func (w *walker) quick(p *strip, u, v, k int, m *lane, doubt doubts) {
 	w.f = p.f
 	w.y = newRay(p.f.ln, u, v)
-	q := quickWalk{walker: w, p: p, u: u, k: k, slackM: settleShare * p.f.ln.rowM, slackR: settleShare * p.f.ln.rowR}
+	ln := p.f.ln
+	q := quickWalk{walker: w, p: p, u: u, k: k, slackM: settleShare * ln.rowM, slackR: settleShare * ln.rowR}
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
-	q.m, q.r = p.f.ln.at(s, h)
-	sign := func(margin *float32, positive bool) {
-		if positive && !(*margin > 0) {
-			*margin = atLimit
-		} else if !positive && *margin > 0 {
-			*margin = -atLimit
-		}
-	}
+	q.m, q.r = ln.at(s, h)
+	tinyM, tinyR := float32(atLimit*ln.rowM), float32(atLimit*ln.rowR)
 	if doubt&doubtClear != 0 {
-		sign(&m.clear, q.lit())
+		m.clear = signed(m.clear, q.lit(false), tinyM)
 	}
-	if m.clear > 0 {
-		if doubt&doubtNear != 0 {
-			sign(&m.near, !q.foldedNearer())
-		}
-		if doubt&doubtFar != 0 {
-			sign(&m.far, !q.foldedFarther())
-		}
+	if doubt&doubtClearU != 0 {
+		m.clearU = signed(m.clearU, q.lit(true), tinyM)
 	}
-	m.clearU, m.nearU, m.farU = m.clear, m.near, m.far
+	if !(m.clear > 0 && m.clearU > 0) {
+		return
+	}
+	if doubt&doubtNear != 0 {
+		m.near = signed(m.near, !q.foldedNearer(false), tinyR)
+	}
+	if doubt&doubtFar != 0 {
+		m.far = signed(m.far, !q.foldedFarther(false), tinyR)
+	}
+	if m.near <= 0 || m.far <= 0 {
+		return
+	}
+	if doubt&doubtNearU != 0 {
+		m.nearU = signed(m.nearU, !q.foldedNearer(true), tinyR)
+	}
+	if doubt&doubtFarU != 0 {
+		m.farU = signed(m.farU, !q.foldedFarther(true), tinyR)
+	}
+}
+
+// signed returns the margin with the sign that it must have.
+func signed(margin float32, positive bool, tiny float32) float32 {
+	switch {
+	case positive && !(margin > 0):
+		return tiny
+	case !positive && margin > 0:
+		return -tiny
+	}
+	return margin
 }
 
 // quickWalk is one cell that is being settled: m and r are the point's own.
@@ -47,125 +65,221 @@ type quickWalk struct {
 	slackM, slackR float64
 }
 
-// beyond returns, at row u of the walk and ground distance s, the bounds of m
-// that the two lanes give for the shade there, and of the slant range for one
-// of the fold lines.
-func (q *quickWalk) shade(u int, s float64) (low, high float64) {
-	row := q.p.row(u)
-	a, b := float64(row[q.k].shade), float64(row[q.k+1].shade)
+// bounds are what the two lanes say of a line at one place, with a slack for
+// the roughness that their difference shows.
+type bounds struct{ low, high float64 }
+
+var never = bounds{math.Inf(-1), math.Inf(-1)}
+
+// shade returns bounds of the m that ground nearer than row u reaches; of
+// unknown terrain when unknown is set.
+func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
+	var a, b float64
+	if unknown {
+		row := q.p.unsureRow(u)
+		if row == nil || q.p.sure[u-q.p.ua]&1 != 0 {
+			return never
+		}
+		a, b = float64(row[q.k].shade), float64(row[q.k+1].shade)
+	} else {
+		row := q.p.row(u)
+		a, b = float64(row[q.k].shade), float64(row[q.k+1].shade)
+	}
+	a, _ = q.f.ln.at(s, a)
+	b, _ = q.f.ln.at(s, b)
+	return around(a, b)
+}
+
+func around(a, b float64) bounds {
 	if a > b {
 		a, b = b, a
 	}
-	low, _ = q.f.ln.at(s, a)
-	high, _ = q.f.ln.at(s, b)
 	rough := roughShare * (b - a)
-	return low - rough, high + rough
+	return bounds{a - rough, b + rough}
 }
 
-func (q *quickWalk) fold(a, b, s float64) (low, high float64) {
-	if a > b {
-		a, b = b, a
+// nearer returns bounds of the slant range that lit ground nearer than row u
+// reaches, counting ground that may be lit when possible is set.
+func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
+	row := q.p.row(u)
+	a, b := row[q.k].nearer, row[q.k+1].nearer
+	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
+		a, b = unsure[q.k].nearer, unsure[q.k+1].nearer
 	}
-	_, high = q.f.ln.at(s, a)
-	_, low = q.f.ln.at(s, b)
-	rough := roughShare * (high - low)
-	return low - rough, high + rough
+	return q.ranges(a, b, s)
 }
 
-// lit reports whether no ground towards the radar reaches the point's m.
-func (q *quickWalk) lit() bool {
+// farther is nearer for the ground farther than row u, and for the least slant
+// range there.
+func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
+	row := q.p.row(u)
+	a, b := row[q.k].farther, row[q.k+1].farther
+	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
+		a, b = unsure[q.k].farther, unsure[q.k+1].farther
+	}
+	return q.ranges(a, b, s)
+}
+
+func (q *quickWalk) ranges(a, b float32, s float64) bounds {
+	_, x := q.f.ln.at(s, float64(a))
+	_, y := q.f.ln.at(s, float64(b))
+	return around(x, y)
+}
+
+// highest returns a bound of the heights on the path from row u, column va, to
+// the next row in direction dir, column vb, NaN where one is missing.
+func (w *walker) highest(u, dir int, va, vb float64) float64 {
+	f := w.f
+	if va > vb {
+		va, vb = vb, va
+	}
+	a, b := int(math.Floor(va)), int(math.Ceil(vb))
+	i := u - f.ua
+	x := f.z[i*f.width+a-f.at[i]:][:b-a+1]
+	hi := x[0]
+	for _, h := range x[1:] {
+		hi = max(hi, h)
+	}
+	i += dir
+	for _, h := range f.z[i*f.width+a-f.at[i]:][:b-a+1] {
+		hi = max(hi, h)
+	}
+	return float64(hi)
+}
+
+// lit reports whether no ground towards the radar reaches the point's m: none
+// that the DEM shows, or no unknown terrain.
+func (q *quickWalk) lit(unknown bool) bool {
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
-		if _, high := q.around(u, -1, va, vb); high+q.f.ln.cot*sa >= q.m {
+		if high := q.highest(u, -1, va, vb); !(high+q.f.ln.cot*sa < q.m) {
 			q.step(u, -1, va, vb, sa, sb)
 			for i := range q.pieces {
-				if q.pieces[i].m >= q.m {
+				if g := &q.pieces[i]; g.m >= q.m && g.unknown == unknown {
 					return false
 				}
 			}
 		}
-		low, high := q.shade(u-1, sb)
-		if high < q.m-q.slackM {
+		b := q.shade(u-1, sb, unknown)
+		if b.high < q.m-q.slackM {
 			return true
 		}
-		if low > q.m+q.slackM {
+		if b.low > q.m+q.slackM {
 			return false
 		}
 	}
-	return true
+	return !(unknown && q.edge(0) && q.edgePoint(0, q.f.lim.ceiling).m >= q.m)
+}
+
+// edge reports whether unknown terrain lies beyond row u of the DEM.
+func (q *quickWalk) edge(u int) bool {
+	return !q.f.lim.openEdge && (u == 0 && q.p.ua == 0 || u > 0 && q.p.ub == q.f.ln.orient.u)
+}
+
+// edgePoint is the walk's point at row u with a height.
+func (q *quickWalk) edgePoint(u int, h float64) (g point) {
+	_, s := q.y.at(u)
+	g.m, g.r = q.f.ln.at(s, h)
+	return g
 }
 
 // foldedNearer reports whether lit ground towards the radar reaches the point's
-// slant range. best is the largest m of such ground that nothing hides so far.
-func (q *quickWalk) foldedNearer() bool {
-	best := math.Inf(-1)
+// slant range; when possible is set, whether ground that may be lit, or unknown
+// terrain, does. best is the largest m of such ground that nothing hides so far.
+func (q *quickWalk) foldedNearer(possible bool) bool {
+	none := math.Inf(-1)
+	best := none
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
 		q.step(u, -1, va, vb, sa, sb)
 		for i := range q.pieces {
-			if g := &q.pieces[i]; g.m >= best {
-				best = math.Inf(-1)
+			g := &q.pieces[i]
+			switch {
+			case g.unknown && possible:
 				if g.r >= q.r {
+					return true
+				}
+			case g.m >= best:
+				best = none
+				if g.r >= q.r && !g.unknown {
 					best = g.m
 				}
 			}
 		}
-		if !math.IsInf(best, -1) {
-			low, high := q.shade(u-1, sb)
-			if high < best-q.slackM {
+		if best != none {
+			b := q.shade(u-1, sb, false)
+			if !possible {
+				c := q.shade(u-1, sb, true)
+				b = bounds{max(b.low, c.low), max(b.high, c.high)}
+			}
+			if b.high < best-q.slackM {
 				return true
 			}
-			if !(low > best+q.slackM) {
+			if !(b.low > best+q.slackM) {
 				continue
 			}
-			best = math.Inf(-1)
+			best = none
 		}
-		row := q.p.row(u - 1)
-		low, high := q.fold(float64(row[q.k].nearer), float64(row[q.k+1].nearer), sb)
-		if high < q.r-q.slackR {
+		b := q.nearer(u-1, sb, possible)
+		if b.high < q.r-q.slackR {
 			return false
 		}
-		if low > q.r+q.slackR {
+		if b.low > q.r+q.slackR {
 			return true
 		}
 	}
-	return !math.IsInf(best, -1)
+	if q.edge(0) {
+		if possible {
+			return best != none || q.edgePoint(0, q.f.lim.low).r >= q.r
+		}
+		return best > q.edgePoint(0, q.f.lim.ceiling).m
+	}
+	return best != none
 }
 
 // foldedFarther reports whether lit ground away from the radar comes down to
-// the point's slant range.
-func (q *quickWalk) foldedFarther() bool {
-	top, prev, hidden := q.m, point{m: q.m, r: q.r}, false
+// the point's slant range; when possible is set, whether ground that may be
+// lit, or unknown terrain, does.
+func (q *quickWalk) foldedFarther(possible bool) bool {
+	top, topU, prev, hidden := q.m, math.Inf(-1), point{m: q.m, r: q.r}, false
 	for u := q.u; u < q.p.ub-1; u++ {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u + 1)
 		q.step(u, 1, va, vb, sa, sb)
 		for i := range q.pieces {
 			g := q.pieces[i]
+			if g.unknown {
+				if possible && g.r <= q.r {
+					return true
+				}
+				topU, hidden = max(topU, g.m), false
+				continue
+			}
 			if g.m > top {
 				best := g.r
 				if hidden {
 					best = min(best, prev.r+(top-prev.m)/(g.m-prev.m)*(g.r-prev.r))
 				}
-				if best <= q.r {
+				if best <= q.r && (possible || g.m > topU) {
 					return true
 				}
-				top, hidden = g.m, false
+				top = g.m
+				hidden = false
 			} else {
 				hidden = true
 			}
 			prev = g
 		}
-		row := q.p.row(u + 1)
-		low, high := q.fold(float64(row[q.k].farther), float64(row[q.k+1].farther), sb)
-		if low > q.r+q.slackR {
+		b := q.farther(u+1, sb, possible)
+		if b.low > q.r+q.slackR {
 			return false
 		}
-		if high < q.r-q.slackR {
+		if b.high < q.r-q.slackR {
 			return true
 		}
 	}
-	return false
+	last := q.f.ln.orient.u - 1
+	return possible && q.edge(last) && q.edgePoint(last, q.f.lim.ceiling).r <= q.r
 }

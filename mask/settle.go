@@ -11,57 +11,6 @@ type margins struct {
 	clearU, nearU, farU float64
 }
 
-// tops holds the highest and the lowest height of blocks of the field, so that
-// a walk can pass over ground that cannot matter. A block spans topStep rows
-// and stored columns and shares its last row and column with its neighbour,
-// so that it covers the whole bilinear surface between its corners.
-type tops struct {
-	cols      int
-	high, low []float32
-}
-
-const topStep = 8
-
-func (t *tops) build(f *field) {
-	rows := f.ub - f.ua
-	nr := (rows + topStep - 1) / topStep
-	t.cols = (f.width + topStep - 1) / topStep
-	t.high, t.low = resize(t.high, nr*t.cols), resize(t.low, nr*t.cols)
-	inf := float32(math.Inf(1))
-	for b := range nr {
-		hi, lo := t.high[b*t.cols:(b+1)*t.cols], t.low[b*t.cols:(b+1)*t.cols]
-		fillWith(hi, -inf)
-		fillWith(lo, inf)
-		for i := b * topStep; i < min((b+1)*topStep+1, rows); i++ {
-			z := f.z[i*f.width : (i+1)*f.width]
-			for c := range t.cols {
-				h, l := hi[c], lo[c]
-				for _, x := range z[c*topStep : min((c+1)*topStep+1, f.width)] {
-					h, l = max(h, x), min(l, x) // NaN stays
-				}
-				hi[c], lo[c] = h, l
-			}
-		}
-		for c := range hi {
-			if hi[c] != hi[c] { // something is missing: never pass over it
-				hi[c], lo[c] = inf, -inf
-			}
-		}
-	}
-}
-
-// over returns bounds of the heights on a path through block row b whose
-// stored columns lie in [x0, x1].
-func (t *tops) over(b int, x0, x1 float64) (low, high float64) {
-	c0 := max(int(x0)/topStep, 0)
-	c1 := min(int(x1)/topStep, t.cols-1)
-	high, low = math.Inf(-1), math.Inf(1)
-	for i := b*t.cols + c0; i <= b*t.cols+c1; i++ {
-		high, low = max(high, float64(t.high[i])), min(low, float64(t.low[i]))
-	}
-	return low, high
-}
-
 // ray is the range line through one point: at row u it is at column v and
 // ground distance s, both straight between two rows of the lattice.
 type ray struct {
@@ -100,7 +49,7 @@ func (y *ray) enter(u int) {
 	y.sa, y.va = at(ln.s, n), at(ln.v, n)
 	y.ds, y.dv = (at(ln.s, n+ln.nk)-y.sa)/laneStep, (at(ln.v, n+ln.nk)-y.va)/laneStep
 	if ln.uniform {
-		y.va, y.dv = y.k+float64(ln.slope*float64(y.from)), ln.slope
+		y.va, y.dv = y.k+float64(ln.slope*(float64(y.from)-ln.mid)), ln.slope
 	}
 }
 
@@ -124,36 +73,21 @@ type walker struct {
 	pieces []point // the samples of one row step
 }
 
-// settle returns the exact margins of the cell (u, v) that are asked for,
-// wherever they are below the slacks; larger ones, and those not asked for, may
-// come out larger than they are. The cell must have a height. A hidden cell has
-// no margins of range.
-func (w *walker) settle(f *field, u, v int, ask question) margins {
+// settle returns the exact margins of the cell (u, v), as far as the field's
+// rows reach. The cell must have a height. A hidden cell has no margins of
+// range.
+func (w *walker) settle(f *field, u, v int) margins {
 	w.f = f
 	w.y = newRay(f.ln, u, v)
 	_, s := w.y.at(u)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	m, r := f.ln.at(s, h)
-	inf := math.Inf(1)
-	x := margins{inf, inf, inf, inf, inf, inf}
-	if ask.clear || ask.near {
-		x = w.towards(u, m, r, ask)
-	}
-	x.far, x.farU = inf, inf
-	if ask.far && x.clear > 0 {
-		x.far, x.farU = w.away(u, m, r, ask)
+	x := w.towards(u, m, r)
+	x.far, x.farU = math.Inf(1), math.Inf(1)
+	if x.clear > 0 {
+		x.far, x.farU = w.away(u, m, r)
 	}
 	return x
-}
-
-// question says what a walk is to find out.
-type question struct {
-	clear, near, far bool
-	// slackM and slackR are the margins, metres of height and of range, from
-	// which on they need not be exact.
-	slackM, slackR float64
-	// signs asks for the signs only: the walk ends where the answer is certain.
-	signs bool
 }
 
 // height returns the bilinear height at a column of row u.
@@ -161,130 +95,48 @@ func (f *field) height(u int, v float64) float64 {
 	return lerp(f.z[(u-f.ua)*f.width:(u-f.ua+1)*f.width], v-float64(f.at[u-f.ua]))
 }
 
-// stretch returns the bounds of heights over the block of rows that the walk
-// enters at row u going in direction dir, when u is the block's edge; ok is
-// false inside a block. next is the block's other edge.
-func (w *walker) stretch(u, dir int) (low, high float64, next int, ok bool) {
-	f := w.f
-	i := u - f.ua
-	if i%topStep != 0 {
-		return 0, 0, 0, false
-	}
-	b := i / topStep
-	next = u + topStep
-	if dir < 0 {
-		b--
-		next = u - topStep
-	}
-	if next < f.ua || next >= f.ub {
-		return 0, 0, 0, false
-	}
-	va, _ := w.y.at(u)
-	vb, _ := w.y.at(next)
-	xa, xb := va-float64(f.at[i]), vb-float64(f.at[next-f.ua])
-	low, high = f.tops.over(b, min(xa, xb)-2, max(xa, xb)+3)
-	return low, high, next, true
-}
-
 // towards walks from row u0 towards the radar.
-func (w *walker) towards(u0 int, m, r float64, ask question) margins {
+func (w *walker) towards(u0 int, m, r float64) margins {
 	f, lim, ln := w.f, w.f.lim, w.f.ln
 	w.seq, w.stack = w.seq[:0], w.stack[:0]
 	topClose, topFar, topU := math.Inf(-1), math.Inf(-1), math.Inf(-1)
 	mostU := math.Inf(-1)
-	// Ground matters when it reaches floorM, or slant range floorR.
-	floorM, floorR := m-ask.slackM, r-ask.slackR
-	if !ask.near {
-		floorR = math.Inf(1)
-	}
-	roof := max(lim.high, lim.ceiling)
-	pass := func(s, low, high float64) bool {
-		return high+ln.cot*s <= floorM && ln.sin*s-ln.cos*low < floorR
-	}
-	gap := point{m: math.Inf(-1), r: math.Inf(-1), unknown: true}
-	u := u0
-	for u > f.ua {
-		va, s := w.y.at(u)
-		if pass(s, lim.low, roof) {
-			break // nothing nearer can matter
-		}
-		if low, high, next, ok := w.stretch(u, -1); ok && pass(s, low, high) {
-			w.seq = append(w.seq, gap)
-			u = next
-			continue
-		}
+	for u := u0; u > f.ua; u-- {
+		va, sa := w.y.at(u)
 		vb, sb := w.y.at(u - 1)
-		if low, high := w.around(u, -1, va, vb); pass(s, low, high) {
-			w.seq = append(w.seq, gap)
-			u--
-			continue
-		}
-		w.step(u, -1, va, vb, s, sb)
-		for i := range w.pieces {
-			q := w.pieces[i]
+		w.step(u, -1, va, vb, sa, sb)
+		for _, q := range w.pieces {
 			q.close = q.close && u == u0
-			if q.unknown {
+			switch {
+			case q.unknown:
 				topU, mostU = max(topU, q.m), max(mostU, q.r)
 				w.doubt(q.m)
-				w.seq = append(w.seq, gap)
+				w.seq = append(w.seq, point{m: math.Inf(-1), r: math.Inf(-1), unknown: true})
 				continue
-			}
-			if q.close {
+			case q.close:
 				topClose = max(topClose, q.m)
-			} else {
+			default:
 				topFar = max(topFar, q.m)
 			}
-			if ask.near {
-				if q.r >= floorR {
-					floorM = min(floorM, q.m)
-				}
-				w.push(q)
-			}
+			w.push(q)
 		}
-		if ask.signs && max(topClose, topFar) >= m {
-			return margins{clear: m - max(topClose, topFar), clearU: m - topU, near: math.Inf(1), nearU: math.Inf(1)}
+		if w.outside(vb) {
+			break
 		}
-		u--
 	}
-	if u == 0 && !lim.openEdge {
+	if f.ua == 0 && !lim.openEdge { // no worse than where the walk left the DEM
 		_, s := w.y.at(0)
 		um, _ := ln.at(s, lim.ceiling)
 		_, ur := ln.at(s, lim.low)
 		topU, mostU = max(topU, um), max(mostU, ur)
 		w.doubt(um)
 	}
-	out := margins{clear: m - topFar, clearU: m - topU, near: math.Inf(1), nearU: math.Inf(1)}
+	out := margins{clear: m - topFar, clearU: m - topU}
 	if topClose >= m {
 		out.clear = m - max(topClose, topFar)
 	}
-	if ask.near {
-		out.near, out.nearU = w.nearest(r, mostU)
-	}
+	out.near, out.nearU = w.nearest(r, mostU)
 	return out
-}
-
-// around returns bounds of the heights on the path from row u, column va, to
-// the next row in direction dir, column vb: infinite where one is missing.
-func (w *walker) around(u, dir int, va, vb float64) (low, high float64) {
-	f := w.f
-	if va > vb {
-		va, vb = vb, va
-	}
-	a, b := int(math.Floor(va)), int(math.Ceil(vb))
-	i := u - f.ua
-	x := f.z[i*f.width+a-f.at[i]:][:b-a+1]
-	lo, hi := x[0], x[0]
-	for _, h := range x[1:] {
-		lo, hi = min(lo, h), max(hi, h)
-	}
-	i += dir
-	for _, h := range f.z[i*f.width+a-f.at[i]:][:b-a+1] {
-		lo, hi = min(lo, h), max(hi, h)
-	}
-	if hi != hi {
-		return math.Inf(-1), math.Inf(1)
-	}
-	return float64(lo), float64(hi)
 }
 
 // push adds a sample to the sequence and keeps on the stack those that it does
@@ -335,35 +187,23 @@ func (w *walker) nearest(r, mostU float64) (sure, possible float64) {
 	return r - farR, r - any
 }
 
-// away walks from row u away from the radar and returns the margins to the lit
+// outside reports whether column v lies outside the DEM: a walk that gets there
+// does not come back, since range lines drift one way only.
+func (w *walker) outside(v float64) bool {
+	return v < 0 || v > float64(w.f.ln.orient.v-1)
+}
+
+// away walks from row u0 away from the radar and returns the margins to the lit
 // ground there.
-func (w *walker) away(u0 int, m, r float64, ask question) (sure, possible float64) {
+func (w *walker) away(u0 int, m, r float64) (sure, possible float64) {
 	f, lim, ln := w.f, w.f.lim, w.f.ln
 	top, topU := m, math.Inf(-1)
 	closeR, farR, any := math.Inf(1), math.Inf(1), math.Inf(1)
 	prev, hidden := point{m: m, r: r}, false
-	limit := r + ask.slackR
-	pass := func(s, high float64) bool { return ln.sin*s-ln.cos*high > limit }
-	roof := max(lim.high, lim.ceiling)
-	u := u0
-	for u < f.ub-1 {
-		va, s := w.y.at(u)
-		if pass(s, roof) {
-			break // nothing farther can matter
-		}
-		// Ground beyond the slack cannot hide any that is within it: it lies
-		// below the line of equal range, the other above.
-		if _, high, next, ok := w.stretch(u, 1); ok && pass(s, high) {
-			u, hidden, prev = next, false, point{unknown: true}
-			continue
-		}
+	for u := u0; u < f.ub-1; u++ {
+		va, sa := w.y.at(u)
 		vb, sb := w.y.at(u + 1)
-		if _, high := w.around(u, 1, va, vb); pass(s, high) {
-			u++
-			hidden, prev = false, point{unknown: true}
-			continue
-		}
-		w.step(u, 1, va, vb, s, sb)
+		w.step(u, 1, va, vb, sa, sb)
 		for _, q := range w.pieces {
 			q.close = q.close && u == u0
 			if q.unknown {
@@ -371,35 +211,32 @@ func (w *walker) away(u0 int, m, r float64, ask question) (sure, possible float6
 				prev, hidden = point{unknown: true}, false
 				continue
 			}
-			if q.m > top {
-				best := q.r
-				if hidden && !prev.unknown {
-					best = min(best, prev.r+(top-prev.m)/(q.m-prev.m)*(q.r-prev.r))
-				}
-				if !q.close || best <= r {
-					any = min(any, best)
-				}
-				switch {
-				case q.m <= topU:
-				case q.close:
-					closeR = min(closeR, best)
-				default:
-					farR = min(farR, best)
-				}
-				top = q.m
-				hidden = false
-			} else {
-				hidden = true
+			if q.m <= top {
+				prev, hidden = q, true
+				continue
 			}
-			prev = q
+			best := q.r
+			if hidden && !prev.unknown {
+				best = min(best, prev.r+(top-prev.m)/(q.m-prev.m)*(q.r-prev.r))
+			}
+			if !q.close || best <= r {
+				any = min(any, best)
+			}
+			switch {
+			case q.m <= topU:
+			case q.close:
+				closeR = min(closeR, best)
+			default:
+				farR = min(farR, best)
+			}
+			top, prev, hidden = q.m, q, false
 		}
-		if ask.signs && min(closeR, farR) <= r {
+		if w.outside(vb) {
 			break
 		}
-		u++
 	}
-	if u == f.ln.orient.u-1 && !lim.openEdge {
-		_, s := w.y.at(u)
+	if f.ub == ln.orient.u && !lim.openEdge {
+		_, s := w.y.at(f.ub - 1)
 		_, ur := ln.at(s, lim.ceiling)
 		any = min(any, ur)
 	}
