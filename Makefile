@@ -7,8 +7,14 @@ FUZZTIME ?= 20s
 # to fail the build.
 VCS := $(shell git -C '$(CURDIR)' status >/dev/null 2>&1 && echo auto || echo false)
 
-PURE   := ./geometry/... ./dem ./mask/...
-SHARED := ./mask/... ./dem/raster/...
+PURE := ./geometry/... ./dem ./mask/...
+
+empty :=
+space := $(empty) $(empty)
+
+# What the race detector runs beside all of dem/raster: it costs a factor of
+# ten, so of mask and the program the tests that share work among goroutines.
+CONCURRENT := TestResultsDoNotDependOnTheCut TestLayersWritesEverything TestRepeats TestCalledOff
 
 .PHONY: help setup build demo test check unit pure race bench fuzz clean
 
@@ -49,8 +55,10 @@ pure:
 
 # The concurrent parts, with the race detector and the strict check of
 # pointers passed to C.
+race: export GOEXPERIMENT = cgocheck2
 race:
-	GOEXPERIMENT=cgocheck2 $(GO) test -race -short $(SHARED)
+	$(GO) test -race ./dem/raster/...
+	$(GO) test -race -run '^($(subst $(space),|,$(CONCURRENT)))$$' ./mask ./cmd/foldshade
 
 bench: setup
 	$(GO) test -run '^$$' -bench . -benchmem ./...

@@ -3,6 +3,7 @@ package main
 import (
 	"go/ast"
 	"os"
+	"path/filepath"
 	"regexp"
 	"strconv"
 	"strings"
@@ -64,5 +65,27 @@ func TestReadmeTables(t *testing.T) {
 	for _, line := range strings.Split(strings.TrimSpace(exitStatus), "\n")[1:] {
 		code, meaning, _ := strings.Cut(strings.TrimSpace(line), " ")
 		assert.Contains(t, plain, "| "+code+" | "+strings.TrimSpace(meaning)+" |")
+	}
+}
+
+// TestRaceTargets: the race detector's tests, which the Makefile names, exist; a
+// name that matches nothing would pass.
+func TestRaceTargets(t *testing.T) {
+	text, err := os.ReadFile(root + "/Makefile")
+	require.NoError(t, err)
+	list := regexp.MustCompile(`(?m)^CONCURRENT := (.+)$`).FindSubmatch(text)
+	require.NotNil(t, list)
+	tests := ""
+	for _, dir := range []string{"/mask", "/cmd/foldshade"} {
+		files, err := filepath.Glob(root + dir + "/*_test.go")
+		require.NoError(t, err)
+		for _, file := range files {
+			content, err := os.ReadFile(file)
+			require.NoError(t, err)
+			tests += string(content)
+		}
+	}
+	for _, name := range strings.Fields(string(list[1])) {
+		assert.Contains(t, tests, "\nfunc "+name+"(t *testing.T)")
 	}
 }
