@@ -118,9 +118,8 @@ func (t *sheet) classify(f *field, p *strip, wk *walker) {
 	if t.wantFold {
 		t.fold = resize(t.fold, n)
 	}
-	first := (f.k0 - f.ln.first) / laneStep
 	for j := range f.strips {
-		if p.setUp(f, first+j) {
+		if p.setUp(f, f.first+j) {
 			p.forward()
 			p.backward(func(u int) { t.classifyRow(p, wk, u) })
 		}
@@ -160,7 +159,7 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 		if p.dv != 1 {
 			x = (float64(va+j) - p.v0) * per
 		}
-		k := min(int(x), laneStep-1)
+		k := min(max(int(x), 1), laneStep)
 		w := float32(x - float64(k))
 		x++
 		// Most cells are clearly open: all margins are wide.
@@ -204,12 +203,12 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w float32, i int
 
 // laneMargins are the lanes' margins along one row.
 type laneMargins struct {
-	clear, near, far    [stripLanes]float32
-	clearU, nearU, farU [stripLanes]float32
+	clear, near, far    [marchLanes]float32
+	clearU, nearU, farU [marchLanes]float32
 	sure                bool // the U margins are those without
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
-	roughM, roughN, roughF [stripLanes]float32
+	roughM, roughN, roughF [marchLanes]float32
 }
 
 // fill takes the margins from the lines and the heights of the row that the
@@ -252,13 +251,10 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 // roughness fills rough with the largest difference of neighbouring lanes among
 // those around each gap: it shows how much the ground that decides varies within
 // a cell.
-func roughness(a, rough *[stripLanes]float32) {
-	before, here := float32(0), abs32(a[1]-a[0])
-	for k := range laneStep {
-		next := float32(0)
-		if k+2 < stripLanes {
-			next = abs32(a[k+2] - a[k+1])
-		}
+func roughness(a, rough *[marchLanes]float32) {
+	before, here := abs32(a[1]-a[0]), abs32(a[2]-a[1])
+	for k := 1; k <= laneStep; k++ {
+		next := abs32(a[k+2] - a[k+1])
 		m := here
 		if before > m {
 			m = before
@@ -287,7 +283,7 @@ const (
 // doubtful: missing, or small against one row's worth of ground and the
 // roughness of the ground that decides.
 func (r *laneMargins) at(k int, w float32) (m lane, d doubts) {
-	blend := func(a *[stripLanes]float32, rough *[stripLanes]float32, slack float32, bit doubts) float32 {
+	blend := func(a *[marchLanes]float32, rough *[marchLanes]float32, slack float32, bit doubts) float32 {
 		x := a[k]
 		if w != 0 { // at weight 0 the second does not count, also when it is NaN
 			x += w * (a[k+1] - x)

@@ -39,8 +39,8 @@ type field struct {
 	u0, u1, v0, v1 int // the cells
 	near, far      int // reach towards the radar and away from it, rows
 	ua, ub         int // rows with heights: the cells' and the halo
-	k0, nk         int // lanes k0 ... k0+nk-1
-	strips         int // strips of lanes from k0 on
+	first, strips  int // columns of the lane lattice that the cells lie in
+	k0             int // lane of the first of these columns
 
 	width int       // stored columns a row
 	at    []int     // first stored column of each row
@@ -61,17 +61,18 @@ func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
 		a = math.Min(a, ln.lane(float64(u), float64(v0)))
 		b = math.Max(b, ln.lane(float64(u), float64(v1-1)))
 	}
-	j := (int(math.Floor(a)) - ln.first) / laneStep
-	f.k0 = ln.first + laneStep*j
-	f.strips = (int(math.Floor(b))-f.k0)/laneStep + 1
-	f.nk = laneStep*f.strips + 1
+	// A cell on the line between two strips may fall to either by rounding.
+	f.first = (int(math.Floor(a-1e-6)) - ln.first) / laneStep
+	f.strips = (int(math.Floor(b+1e-6))-ln.first)/laneStep + 1 - f.first
+	f.k0 = ln.first + laneStep*f.first
+	k0, k1 := f.k0-1, f.k0+laneStep*f.strips+1
 	rows := f.ub - f.ua
 	f.at = resize(f.at, rows)
 	f.width = 0
 	for i := range rows {
 		u := float64(f.ua + i)
-		f.at[i] = int(math.Floor(ln.vAt(u, float64(f.k0)))) - 2
-		end := int(math.Floor(ln.vAt(u, float64(f.k0+f.nk-1)))) + 4
+		f.at[i] = int(math.Floor(ln.vAt(u, float64(k0)))) - 2
+		end := int(math.Floor(ln.vAt(u, float64(k1)))) + 4
 		f.width = max(f.width, end-f.at[i])
 	}
 	f.z = resize(f.z, rows*f.width)

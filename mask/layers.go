@@ -25,6 +25,8 @@ const (
 	OrientationShift Layer = "orientation-shift"
 	CriticalBaseline Layer = "critical-baseline"
 	AmbiguityHeight  Layer = "ambiguity-height"
+	WindowLow        Layer = "window-low"
+	WindowHigh       Layer = "window-high"
 )
 
 // LayerInfo is what files and tables say of a layer.
@@ -59,7 +61,14 @@ var Layers = []LayerInfo{
 	{OrientationShift, "Orientation shift", "degree", "polarisation orientation shift from the azimuth slope", false, []string{"orientation-shift"}},
 	{CriticalBaseline, "Critical baseline", "m", "perpendicular baseline at which the spectra of two passes no longer overlap", false, []string{"critical-baseline"}},
 	{AmbiguityHeight, "Ambiguity height", "m", "height difference of one interferometric fringe", false, []string{"ambiguity-height"}},
+	{WindowLow, "Window low", "degree", "incidence above which the cell is not folded, for the azimuth of the look, 5 to 85", false, windowBands},
+	{WindowHigh, "Window high", "degree", "incidence below which the cell is not hidden, for the azimuth of the look, 5 to 85", false, windowBands},
 }
+
+// windowBands are the bands of the two window layers: by the terrain that the
+// DEM shows, and with what may stand where it shows none at its worst. At the
+// incidences between the two the cell is undetermined.
+var windowBands = []string{"shown", "worst"}
 
 // Info returns the description of a layer; ok is false for an unknown name.
 func Info(l Layer) (info LayerInfo, ok bool) {
@@ -89,6 +98,9 @@ func Lacks(l Layer, look geometry.Look) []string {
 	case AmbiguityHeight:
 		need(look.Wavelength, "frequency_ghz")
 		need(look.Baseline, "baseline")
+	}
+	if (l == WindowLow || l == WindowHigh) && look.Kind != geometry.Fixed {
+		missing = append(missing, "azimuth") // one everywhere: a fixed look's
 	}
 	if (l == CriticalBaseline || l == AmbiguityHeight) && look.Kind == geometry.Fixed {
 		need(look.SlantRange, "slant_range_km")

@@ -4,19 +4,21 @@ import "math"
 
 // strip is a bundle of neighbouring lanes of a field that are marched together:
 // few enough that all it touches stays in a processor's cache, also while
-// single cells are settled. It takes one column of the lane lattice, so its
-// lanes are first ... first+laneStep, the last shared with the next strip.
+// single cells are settled. It takes one column of the lane lattice: the cells
+// between its lanes 1 and 1+laneStep, and one lane more on each side that shows
+// how rough the ground is.
 type strip struct {
 	f      *field
 	j      int // column of the lattice
-	k0     int // first lane
+	k0     int // lane 0
 	ua, ub int // rows that are marched
 	u0, u1 int // rows with cells
 
 	// At the row that is sampled: column and ground distance of lane k0, and
 	// their change for one lane.
 	v0, dv, s0, ds float64
-	h, m, r        [stripLanes]float64
+	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
+	h, m, r        [marchLanes]float64
 
 	// What the marches find, by row from ua to ub and lane.
 	lines  []lines
@@ -29,7 +31,7 @@ type strip struct {
 	bwd backwardState
 }
 
-const stripLanes = laneStep + 1
+const marchLanes = laneStep + 3
 
 // lines are the limits that other ground sets at one sample of a lane, as
 // heights there: ground above shade is lit, ground below nearer shares no slant
@@ -55,7 +57,7 @@ type span struct{ a, b int }
 // setUp makes the strip of lattice column j; it returns false when no cell of
 // the field lies between its lanes.
 func (p *strip) setUp(f *field, j int) bool {
-	p.f, p.j, p.k0 = f, j, f.ln.first+laneStep*j
+	p.f, p.j, p.k0 = f, j, f.ln.first+laneStep*j-1
 	p.u0, p.u1 = f.u1, f.u0
 	for u := f.u0; u < f.u1; u++ {
 		if va, vb := p.cells(u); va < vb {
@@ -66,7 +68,7 @@ func (p *strip) setUp(f *field, j int) bool {
 		return false
 	}
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
-	n := (p.ub - p.ua) * stripLanes
+	n := (p.ub - p.ua) * marchLanes
 	p.lines = resize(p.lines, n)
 	p.sure = resize(p.sure, p.ub-p.ua)
 	p.unsure = p.unsure[:0]
@@ -77,22 +79,22 @@ func (p *strip) setUp(f *field, j int) bool {
 }
 
 // row returns the lines of row u.
-func (p *strip) row(u int) []lines { return p.lines[(u-p.ua)*stripLanes:][:stripLanes] }
+func (p *strip) row(u int) []lines { return p.lines[(u-p.ua)*marchLanes:][:marchLanes] }
 
 // unsureRow returns the unsure lines of row u, nil where there are none.
 func (p *strip) unsureRow(u int) []unsureLines {
 	if len(p.unsure) == 0 {
 		return nil
 	}
-	return p.unsure[(u-p.ua)*stripLanes:][:stripLanes]
+	return p.unsure[(u-p.ua)*marchLanes:][:marchLanes]
 }
 
 // cells stands at row u and returns the columns [va, vb) of the field's cells
 // that lie between the strip's lanes.
 func (p *strip) cells(u int) (va, vb int) {
 	p.stand(u)
-	va = int(math.Ceil(p.v0))
-	vb = int(math.Ceil(p.v0 + float64(p.dv*laneStep)))
+	va = int(math.Ceil(p.edgeA))
+	vb = int(math.Ceil(p.edgeB))
 	return max(va, p.f.v0), min(vb, p.f.v1)
 }
 
@@ -103,14 +105,18 @@ func (p *strip) stand(u int) {
 	q := float64(u-laneStep*i) / laneStep
 	n := i*ln.nk + p.j
 	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+ln.nk]-a[n])) }
-	p.s0 = at(ln.s, n)
-	p.ds = (at(ln.s, n+1) - p.s0) / laneStep
+	s := at(ln.s, n)
+	p.ds = (at(ln.s, n+1) - s) / laneStep
+	p.s0 = s - p.ds
 	if ln.uniform {
-		p.v0, p.dv = float64(p.k0)+float64(ln.slope*(float64(u)-ln.mid)), 1
+		drift := float64(ln.slope * (float64(u) - ln.mid))
+		p.v0, p.dv = float64(p.k0)+drift, 1
+		p.edgeA, p.edgeB = float64(p.k0+1)+drift, float64(p.k0+1+laneStep)+drift
 		return
 	}
-	p.v0 = at(ln.v, n)
-	p.dv = (at(ln.v, n+1) - p.v0) / laneStep
+	p.edgeA, p.edgeB = at(ln.v, n), at(ln.v, n+1)
+	p.dv = (p.edgeB - p.edgeA) / laneStep
+	p.v0 = p.edgeA - p.dv
 }
 
 // inDEM returns the lanes whose column at the row where the strip stands lies
@@ -118,19 +124,19 @@ func (p *strip) stand(u int) {
 func (p *strip) inDEM() span {
 	last := float64(p.f.ln.orient.v - 1)
 	v := func(k int) float64 { return p.v0 + float64(p.dv*float64(k)) }
-	l := span{0, stripLanes}
+	l := span{0, marchLanes}
 	if v(0) < 0 {
-		l.a = min(int(math.Ceil(-p.v0/p.dv)), stripLanes)
+		l.a = min(int(math.Ceil(-p.v0/p.dv)), marchLanes)
 		for l.a > 0 && v(l.a-1) >= 0 {
 			l.a--
 		}
-		for l.a < stripLanes && v(l.a) < 0 {
+		for l.a < marchLanes && v(l.a) < 0 {
 			l.a++
 		}
 	}
-	if v(stripLanes-1) > last {
+	if v(marchLanes-1) > last {
 		l.b = max(int((last-p.v0)/p.dv)+1, 0)
-		for l.b < stripLanes && v(l.b) <= last {
+		for l.b < marchLanes && v(l.b) <= last {
 			l.b++
 		}
 		for l.b > 0 && v(l.b-1) > last {
@@ -171,18 +177,18 @@ func (p *strip) sample(u int) span {
 
 // forwardState is the march away from the radar, by lane.
 type forwardState struct {
-	top     [stripLanes]float64 // largest m so far
-	topU    [stripLanes]float64 // the same of unknown terrain at the ceiling
-	most    [stripLanes]float64 // largest slant range of surely lit ground so far
-	mostU   [stripLanes]float64 // the same of all ground that may be lit
-	m, r    [stripLanes]float64 // the row before, where it was hidden
-	hid     [stripLanes]bool    // the row before was hidden
-	unknown [stripLanes]bool    // the row before was unknown terrain
+	top     [marchLanes]float64 // largest m so far
+	topU    [marchLanes]float64 // the same of unknown terrain at the ceiling
+	most    [marchLanes]float64 // largest slant range of surely lit ground so far
+	mostU   [marchLanes]float64 // the same of all ground that may be lit
+	m, r    [marchLanes]float64 // the row before, where it was hidden
+	hid     [marchLanes]bool    // the row before was hidden
+	unknown [marchLanes]bool    // the row before was unknown terrain
 }
 
 func (st *forwardState) reset() {
 	*st = forwardState{}
-	for k := range stripLanes {
+	for k := range marchLanes {
 		st.top[k], st.topU[k] = math.Inf(-1), math.Inf(-1)
 		st.most[k], st.mostU[k] = math.Inf(-1), math.Inf(-1)
 	}
@@ -191,7 +197,7 @@ func (st *forwardState) reset() {
 // entering marks the lanes that are in the DEM at row u, where they are l, but
 // not one row back in direction dir, and reports whether there are any. The
 // strip is made to stand at that row.
-func (p *strip) entering(l span, u, dir int, unknown *[stripLanes]bool) (any bool) {
+func (p *strip) entering(l span, u, dir int, unknown *[marchLanes]bool) (any bool) {
 	before := span{}
 	if back := u + dir; back >= 0 && back < p.f.ln.orient.u {
 		p.stand(back)
@@ -223,13 +229,13 @@ func (p *strip) forward() {
 	last := p.ua - f.near - 1 // last row at which terrain was unknown
 	for u := p.ua; u < p.ub; u++ {
 		l := p.sample(u)
-		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < stripLanes || u == p.ua) {
+		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ua) {
 			if p.entering(l, u, -1, &p.fwd.unknown) {
 				last = u
 			}
 		}
 		row, unsure := p.row(u), p.unsureRow(u)
-		for k := range stripLanes {
+		for k := range marchLanes {
 			if k < l.a || k >= l.b {
 				row[k] = noLines
 			}
@@ -353,8 +359,8 @@ func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 
 // backwardState is the march towards the radar, by lane.
 type backwardState struct {
-	least, leastU [stripLanes]float64 // smallest slant range of lit ground so far
-	unknown       [stripLanes]bool
+	least, leastU [marchLanes]float64 // smallest slant range of lit ground so far
+	unknown       [marchLanes]bool
 }
 
 // backward walks from far range to near range over what forward left. When it
@@ -363,13 +369,13 @@ type backwardState struct {
 func (p *strip) backward(cells func(u int)) {
 	f, st := p.f, &p.bwd
 	*st = backwardState{}
-	for k := range stripLanes {
+	for k := range marchLanes {
 		st.least[k], st.leastU[k] = math.Inf(1), math.Inf(1)
 	}
 	last := p.ub + f.far + 1 // last row at which terrain was unknown or unsure
 	for u := p.ub - 1; u >= p.u0; u-- {
 		l := p.sample(u)
-		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < stripLanes || u == p.ub-1) {
+		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ub-1) {
 			if p.entering(l, u, 1, &st.unknown) {
 				last = u
 			}

@@ -22,7 +22,11 @@ func (w *walker) quick(p *strip, u, v, k int, m *lane, doubt doubts) {
 	if doubt&doubtClear != 0 {
 		m.clear = signed(m.clear, q.lit(false), tinyM)
 	}
-	if doubt&doubtClearU != 0 {
+	sure := p.sure[u-p.ua]
+	switch {
+	case sure&1 != 0:
+		m.clearU = m.clear
+	case doubt&doubtClearU != 0:
 		m.clearU = signed(m.clearU, q.lit(true), tinyM)
 	}
 	if !(m.clear > 0 && m.clearU > 0) {
@@ -37,10 +41,16 @@ func (w *walker) quick(p *strip, u, v, k int, m *lane, doubt doubts) {
 	if m.near <= 0 || m.far <= 0 {
 		return
 	}
-	if doubt&doubtNearU != 0 {
+	switch {
+	case sure&1 != 0:
+		m.nearU = m.near
+	case doubt&doubtNearU != 0:
 		m.nearU = signed(m.nearU, !q.foldedNearer(true), tinyR)
 	}
-	if doubt&doubtFarU != 0 {
+	switch {
+	case sure&2 != 0:
+		m.farU = m.far
+	case doubt&doubtFarU != 0:
 		m.farU = signed(m.farU, !q.foldedFarther(true), tinyR)
 	}
 }

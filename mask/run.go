@@ -251,6 +251,7 @@ type worker struct {
 	strip strip
 	walk  walker
 	tileBuffers
+	windower windower
 }
 
 func (r *runner) newWorker() *worker {
@@ -287,6 +288,9 @@ func (w *worker) look(i int, win dem.Window) error {
 	}
 	w.sheet.classify(f, &w.strip, &w.walk)
 	t := w.fill(i)
+	if err := w.windows(i, t); err != nil {
+		return err
+	}
 	w.locks[i].Lock()
 	defer w.locks[i].Unlock()
 	for _, c := range w.verdict {

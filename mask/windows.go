@@ -1,0 +1,566 @@
+package mask
+
+import (
+	"math"
+
+	"foldshade/dem"
+	"foldshade/geometry"
+)
+
+// Incidence windows. For a plane wave of one azimuth, three slopes of a point's
+// range line decide every incidence i at once; s is ground distance away from
+// the radar, h height, and the point is at s0, h0:
+//
+//	shade   the largest (h - h0) / (s0 - s) of nearer ground: the tangent of the
+//	        horizon towards the radar. Hidden when cot i <= shade.
+//	fold    the largest (h0 - h) / (s0 - s) of nearer ground and
+//	        (h - h0) / (s - s0) of farther ground: the steepest descent towards
+//	        the radar and the horizon away from it. Folded when tan i <= fold.
+//
+// Here any ground can be a partner; the masks count lit ground only.
+//
+// All three are tangents from a point to a convex hull, which a march along the
+// lanes keeps at a constant cost a sample. The lanes say where the tangents
+// touch; the slopes are then taken on the cell's own range line.
+
+// The incidences outside which the window layers say no more than the bound.
+const (
+	WindowFrom = 5 * geometry.Degree
+	WindowTo   = 85 * geometry.Degree
+)
+
+// windowLanes lays out the range lines of an azimuth for windows between two
+// incidences.
+func windowLanes(g *dem.Grid, azimuth, from, to geometry.Angle) *lanes {
+	look := geometry.NewLook()
+	look.Kind, look.Incidence, look.Azimuth = geometry.Fixed, 45*geometry.Degree, azimuth
+	ln := fixedLanes(g, look)
+	// Of the lens only the reach is asked for: ground beyond relief / slope
+	// cannot have a slope that counts. reach takes cot for ground farther away
+	// and cot + tan for nearer ground.
+	fold, shade := 1/from.Tan(), to.Tan()
+	ln.lens = lens{cot: fold, tan: math.Max(shade-fold, 0)}
+	return ln
+}
+
+// windower finds the slopes of the cells of one rectangle for one azimuth. The
+// slices are row-major over the rectangle, NaN where there is no height; no
+// slope is below its bound. Those ending in U count also what may stand where
+// the DEM shows nothing.
+type windower struct {
+	shade, shadeU []float32
+	fold, foldU   []float32
+
+	minShade, minFold float64 // the bounds: cot and tan of the limiting incidences
+	win               dem.Window
+	field             field
+	strip             windowStrip
+}
+
+// windowLaneCount is the number of lanes of a windowStrip.
+const windowLaneCount = laneStep + 1
+
+// windowStripe is the most columns that are held at once. Stripes along the
+// lanes cost nothing: the halo lies at their ends.
+const windowStripe = 256
+
+// run fills the slices for a window of the grid. The results do not depend on
+// the window: heights and distances are rounded so that hulls are exact, slopes
+// at the bound are the bound, and ground that is out of reach is below it.
+func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.Angle, win dem.Window) error {
+	n := win.Rows * win.Cols
+	x.win = win
+	x.minShade, x.minFold = 1/to.Tan(), from.Tan()
+	for _, a := range []*[]float32{&x.shade, &x.shadeU, &x.fold, &x.foldU} {
+		*a = resize(*a, n)
+	}
+	x.strip.round(ln, lim)
+	u0, u1, v0, v1 := ln.window(win)
+	for v := v0; v < v1; v += windowStripe {
+		x.field.setUp(ln, lim, u0, u1, v, min(v+windowStripe, v1))
+		if err := x.field.load(src); err != nil {
+			return err
+		}
+		for j := range x.field.strips {
+			if x.strip.setUp(&x.field, x.field.first+j) {
+				x.strip.march(x.minShade, x.minFold)
+				x.cells()
+			}
+		}
+	}
+	return nil
+}
+
+// standing says where a strip's lanes cross a row: lane k of the strip is at
+// column v + dv k and ground distance s + ds k. end is where the next strip
+// begins, to the last bit.
+type standing struct{ v, end, dv, s, ds float64 }
+
+// windowStrip is a bundle of neighbouring lanes, see strip, by lane and row:
+// lane k's sample of row u is at k * rows + u - ua.
+type windowStrip struct {
+	f              *field
+	j, k0          int
+	u0, u1, ua, ub int
+	at             []standing // by row
+	s, h           []float64  // rounded; NaN where there is no height
+	// The rows, from ua, at which the tangents touch; -1 where the slope is
+	// not above the bound.
+	shade, nearer, farther []int32
+	// Ground distance to the nearest unknown terrain towards the radar and away
+	// from it, infinite where there is none.
+	before, behind []float32
+
+	neg             []float64 // of one lane: heights upside down
+	link            []int32
+	roundS, roundH  float64
+	rows            int
+	anyUnknown      bool
+	edgeLo, edgeHi  float64 // columns of the DEM
+	nearEnd, farEnd bool    // the strip reaches the DEM's first, last row
+}
+
+// The bits that differences of height and of distance may take, so that their
+// products are exact in a float64.
+const (
+	heightBits   = 24
+	distanceBits = 29
+)
+
+// round chooses the steps to which heights and distances are rounded: powers of
+// two, the same for all tiles. For 2000 m of relief that is 0.1 mm.
+func (p *windowStrip) round(ln *lanes, lim limits) {
+	step := func(extent float64, bits int) float64 {
+		return math.Exp2(math.Ceil(math.Log2(math.Max(extent, 1))) - float64(bits))
+	}
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for _, s := range ln.s {
+		lo, hi = math.Min(lo, s), math.Max(hi, s)
+	}
+	// Adding and taking away 1.5 * 2^52 steps rounds to whole steps.
+	const magic = 3 << 51
+	p.roundS = magic * step(hi-lo, distanceBits)
+	p.roundH = magic * step(lim.high-lim.low, heightBits)
+}
+
+func (p *windowStrip) setUp(f *field, j int) bool {
+	ln := f.ln
+	p.f, p.j, p.k0 = f, j, ln.first+laneStep*j
+	p.u0, p.u1 = f.u1, f.u0
+	for u := f.u0; u < f.u1; u++ {
+		st := p.stand(u)
+		if va, vb := p.columns(&st); va < vb {
+			p.u0, p.u1 = min(p.u0, u), u+1
+		}
+	}
+	if p.u0 >= p.u1 {
+		return false
+	}
+	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
+	p.rows = p.ub - p.ua
+	p.at = resize(p.at, p.rows)
+	for i := range p.at {
+		p.at[i] = p.stand(p.ua + i)
+	}
+	n := p.rows * windowLaneCount
+	p.s, p.h, p.neg, p.link = resize(p.s, n), resize(p.h, n), resize(p.neg, p.rows), resize(p.link, p.rows)
+	p.shade, p.nearer, p.farther = resize(p.shade, n), resize(p.nearer, n), resize(p.farther, n)
+	p.edgeLo, p.edgeHi = 0, float64(ln.orient.v-1)
+	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
+	p.anyUnknown = !f.sure
+	if p.anyUnknown {
+		p.before, p.behind = resize(p.before, n), resize(p.behind, n)
+	}
+	return true
+}
+
+// stand takes columns and distances of the lanes at row u from the lattice.
+func (p *windowStrip) stand(u int) standing {
+	ln := p.f.ln
+	i := min(u/laneStep, ln.nu-2)
+	q := float64(u-laneStep*i) / laneStep
+	n := i*ln.nk + p.j
+	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+ln.nk]-a[n])) }
+	st := standing{v: ln.vAt(float64(u), float64(p.k0)), end: ln.vAt(float64(u), float64(p.k0+laneStep)), dv: 1}
+	if !ln.uniform {
+		st.dv = (st.end - st.v) / laneStep
+	}
+	st.s = at(ln.s, n)
+	st.ds = (at(ln.s, n+1) - st.s) / laneStep
+	return st
+}
+
+// columns returns the columns [va, vb) of the field's cells between the strip's
+// lanes.
+func (p *windowStrip) columns(st *standing) (va, vb int) {
+	va = int(math.Ceil(st.v))
+	vb = int(math.Ceil(st.end))
+	return max(va, p.f.v0), min(vb, p.f.v1)
+}
+
+// march samples the lanes and finds where the tangents touch.
+func (p *windowStrip) march(minShade, minFold float64) {
+	for i := range p.at {
+		p.sample(i)
+	}
+	for k := range windowLaneCount {
+		part := func(a []int32) []int32 { return a[k*p.rows:][:p.rows] }
+		s, h := p.s[k*p.rows:][:p.rows], p.h[k*p.rows:][:p.rows]
+		for i, x := range h {
+			p.neg[i] = -x
+		}
+		tangents(s, h, 1, minShade, p.link, part(p.shade))
+		tangents(s, p.neg, 1, minFold, p.link, part(p.nearer))
+		tangents(s, p.neg, -1, minFold, p.link, part(p.farther))
+		if p.anyUnknown {
+			p.unknown(k, s, h)
+		}
+	}
+}
+
+// sample takes the heights and distances of row ua + i.
+func (p *windowStrip) sample(i int) {
+	st := &p.at[i]
+	z, at := p.f.z[(p.ua+i-p.f.ua)*p.f.width:][:p.f.width], float64(p.f.at[p.ua+i-p.f.ua])
+	v := st.v - at
+	for k, n := 0, i; k < windowLaneCount; k, n = k+1, n+p.rows {
+		p.h[n] = (lerp(z, v+float64(st.dv*float64(k))) + p.roundH) - p.roundH
+		p.s[n] = (st.s + float64(st.ds*float64(k)) + p.roundS) - p.roundS
+	}
+}
+
+// tangents finds for every sample of a lane, in the order of the march, the
+// sample passed before that the tangent to their upper hull touches: the one
+// with the largest slope
+//
+//	(h[j] - h[i]) / (s[i] - s[j])
+//
+// touch is its index, or -1 where the slope is not above least. Products are
+// exact, so that the answer is the true hull's; where several samples lie on
+// the tangent, the slope is that of each of them, to the last bit.
+//
+// Forward with heights upside down the slope is the steepest descent towards
+// the radar, backward so the horizon away from it. link is scratch: the hull,
+// from each sample to the next.
+func tangents(s, h []float64, dir int, least float64, link, touch []int32) {
+	n := len(h)
+	from, to := 0, n
+	if dir < 0 {
+		from, to = n-1, -1
+	}
+	last := int32(-1)
+	for i := from; i != to; i += dir {
+		hi, si := h[i], s[i]
+		touch[i] = -1
+		if hi != hi {
+			continue
+		}
+		j := last
+		last = int32(i)
+		if j < 0 {
+			link[i] = -1
+			continue
+		}
+		hj, sj := h[j], s[j]
+		for {
+			k := link[j]
+			if k < 0 {
+				break
+			}
+			hk, sk := h[k], s[k]
+			if float64((hj-hk)*(si-sj)) > float64((hi-hj)*(sj-sk)) {
+				break
+			}
+			j, hj, sj = k, hk, sk
+		}
+		link[i] = j
+		if (hj-hi)/(si-sj) > least {
+			touch[i] = j
+		}
+	}
+}
+
+// unknown fills the distances of lane k to unknown terrain. Where it ends
+// between two rows it reaches, at worst, the row that is known.
+func (p *windowStrip) unknown(k int, s, h []float64) {
+	open := p.f.lim.openEdge
+	inf := math.Inf(1)
+	counts := func(i int) bool {
+		v := p.at[i].v + float64(p.at[i].dv*float64(k))
+		return !open || v >= p.edgeLo && v <= p.edgeHi
+	}
+	walk := func(out []float32, from, to, dir int, edge bool) {
+		place, after := inf, edge && !open
+		for i := from; i != to; i += dir {
+			if h[i] != h[i] {
+				after = after || counts(i)
+				continue
+			}
+			if after {
+				place, after = s[i], false
+			}
+			out[i] = float32(math.Abs(place - s[i]))
+		}
+	}
+	walk(p.before[k*p.rows:][:p.rows], 0, p.rows, 1, p.nearEnd)
+	walk(p.behind[k*p.rows:][:p.rows], p.rows-1, -1, -1, p.farEnd)
+}
+
+// cells takes the slopes of the strip's cells.
+func (x *windower) cells() {
+	p := &x.strip
+	f := p.f
+	o := f.ln.orient
+	for u := p.u0; u < p.u1; u++ {
+		st := &p.at[u-p.ua]
+		va, vb := p.columns(st)
+		row, col := o.cell(float64(u), float64(va))
+		at, stride := (int(row)-x.win.Row)*x.win.Cols+int(col)-x.win.Col, 1
+		if o.transposed {
+			stride = x.win.Cols
+		}
+		for v := va; v < vb; v, at = v+1, at+stride {
+			c := x.cell(u, v)
+			x.shade[at], x.shadeU[at] = float32(c.shade), float32(c.shadeU)
+			x.fold[at], x.foldU[at] = float32(c.fold), float32(c.foldU)
+		}
+	}
+}
+
+// slopes are those of one cell.
+type slopes struct{ shade, fold, shadeU, foldU float64 }
+
+// cell finds the slopes of one cell: on its own range line the next row on both
+// sides, and the places where the tangents of the lanes beside it touch.
+func (x *windower) cell(u, v int) slopes {
+	p := &x.strip
+	i := u - p.ua
+	st := &p.at[i]
+	own := ownLine{p: p, i: i, k: (float64(v) - st.v) / st.dv, v: v}
+	own.s = st.s + float64(st.ds*own.k)
+	own.h = float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
+	if own.h != own.h {
+		return slopes{nan, nan, nan, nan}
+	}
+	out := slopes{shade: x.minShade, fold: x.minFold}
+	k := min(int(own.k), laneStep-1)
+	a := k*p.rows + i
+	b := a
+	if float64(k) != own.k {
+		b += p.rows
+	}
+	if p.h[a] != p.h[a] || p.h[b] != p.h[b] {
+		return x.walk(&own)
+	}
+	own.step(&out)
+	touch := func(rows []int32, sign float64, most *float64) {
+		j := rows[a]
+		if j >= 0 {
+			own.around(int(j), sign, most)
+		}
+		if l := rows[b]; l >= 0 && l != j {
+			own.around(int(l), sign, most)
+		}
+	}
+	touch(p.shade, 1, &out.shade)
+	touch(p.nearer, -1, &out.fold)
+	touch(p.farther, 1, &out.fold)
+	out.shadeU, out.foldU = out.shade, out.fold
+	if p.anyUnknown {
+		x.worst(&out, own.h, float64(min(p.before[a], p.before[b])), float64(min(p.behind[a], p.behind[b])))
+	}
+	return out
+}
+
+// worst counts unknown terrain at distances towards the radar and away from it.
+func (x *windower) worst(c *slopes, h, before, behind float64) {
+	lim := &x.field.lim
+	over := func(rise, distance float64, least *float64) {
+		if distance == 0 {
+			*least = math.Inf(1)
+		} else if m := rise / distance; m > *least {
+			*least = m
+		}
+	}
+	over(lim.ceiling-h, before, &c.shadeU)
+	over(h-lim.low, before, &c.foldU)
+	over(lim.ceiling-h, behind, &c.foldU)
+}
+
+// ownLine is the range line through one cell.
+type ownLine struct {
+	p       *windowStrip
+	i, v    int
+	k, s, h float64
+}
+
+// step counts the ground up to the next row on both sides, from ownGround on.
+// Between two rows the surface along the line is a parabola that starts in the
+// cell, so the slopes to it are largest at one of the ends.
+func (o *ownLine) step(out *slopes) {
+	if d, b, ok := o.beside(-1); ok {
+		near, end := b+ownGround*d, b+d
+		ds := o.s - o.distance(o.i-1)
+		if m := max(near, end) / ds; m > out.shade {
+			out.shade = m
+		}
+		if m := -min(near, end) / ds; m > out.fold {
+			out.fold = m
+		}
+	}
+	if d, b, ok := o.beside(1); ok {
+		if m := max(b+ownGround*d, b+d) / (o.distance(o.i+1) - o.s); m > out.fold {
+			out.fold = m
+		}
+	}
+}
+
+// beside returns the surface between the cell and the next row in a direction:
+// h + b t + d t^2, t from 0 to 1. ok is false where a height is missing.
+func (o *ownLine) beside(dir int) (d, b float64, ok bool) {
+	p := o.p
+	r := o.i + dir
+	if r < 0 || r >= p.rows {
+		return 0, 0, false
+	}
+	f := p.f
+	here, next := o.i+p.ua-f.ua, r+p.ua-f.ua
+	n := next*f.width + o.v - f.at[next]
+	q := float64(f.z[n])
+	dx := p.at[r].v + float64(p.at[r].dv*o.k) - float64(o.v)
+	b = q - o.h
+	if dx != 0 {
+		side := 1
+		if dx < 0 {
+			side, dx = -1, -dx
+		}
+		rise := float64(f.z[here*f.width+o.v-f.at[here]+side]) - o.h
+		b += rise * dx
+		d = (float64(f.z[n+side]) - q - rise) * dx
+	}
+	return d, b, b+d == b+d
+}
+
+func (o *ownLine) distance(row int) float64 { return o.p.at[row].s + float64(o.p.at[row].ds*o.k) }
+
+// height returns the height and the distance of the line at a row.
+func (o *ownLine) height(row int) (h, s float64) {
+	p := o.p
+	f := p.f
+	st := &p.at[row]
+	i := row + p.ua - f.ua
+	return lerp(f.z[i*f.width:(i+1)*f.width], st.v+float64(st.dv*o.k)-float64(f.at[i])), st.s + float64(st.ds*o.k)
+}
+
+// around counts the slopes to the line's ground at a row and up to the next
+// rows on both sides: most becomes the largest of sign (h - h0) / distance that
+// is above it.
+func (o *ownLine) around(row int, sign float64, most *float64) {
+	h, s := o.height(row)
+	if m := sign * (h - o.h) / math.Abs(s-o.s); m > *most {
+		*most = m
+	}
+	for dir := -1; dir <= 1; dir += 2 {
+		if next := row + dir; next >= 0 && next < o.p.rows && next != o.i && row != o.i {
+			o.between(row, next, sign, most)
+		}
+	}
+}
+
+// between counts the slopes to the ground between two neighbouring rows. The
+// surface is a parabola on each side of the column that the line crosses.
+func (o *ownLine) between(row, next int, sign float64, most *float64) {
+	p, f := o.p, o.p.f
+	va, vb := p.at[row].v+float64(p.at[row].dv*o.k), p.at[next].v+float64(p.at[next].dv*o.k)
+	if va == vb {
+		return // straight
+	}
+	ca, cb := math.Floor(va), math.Floor(vb)
+	i, j := row+p.ua-f.ua, next+p.ua-f.ua
+	za, zb := f.z[i*f.width:], f.z[j*f.width:]
+	sa := o.distance(row)
+	ds := o.distance(next) - sa
+	// On the bilinear surface of the cell from column c on: h = a + b t + d t^2.
+	piece := func(c, t0, t1 float64) {
+		k, l := int(c)-f.at[i], int(c)-f.at[j]
+		p0, q0 := float64(za[k]), float64(zb[l])
+		ep, eq := float64(za[k+1])-p0, float64(zb[l+1])-q0
+		x, dx := va-c, vb-va
+		a, b, d := p0+ep*x, q0-p0+ep*dx+(eq-ep)*x, (eq-ep)*dx
+		count := func(t float64) {
+			if m := sign * (a + t*(b+t*d) - o.h) / math.Abs(sa+t*ds-o.s); m > *most {
+				*most = m
+			}
+		}
+		count(t1)
+		if sign*d >= 0 {
+			return // no height above the ends
+		}
+		// The ground farthest above the steepest line so far; twice, since that
+		// line is then steeper.
+		away := math.Copysign(ds, ds*(sa-o.s)) // change of distance to the cell for t
+		for range 2 {
+			t := (sign**most*away - b) / (2 * d)
+			if !(t > t0 && t < t1) {
+				return
+			}
+			count(t)
+		}
+	}
+	if ca == cb {
+		piece(ca, 0, 1)
+		return
+	}
+	c := math.Max(ca, cb)
+	t := (c - va) / (vb - va)
+	piece(ca, 0, t)
+	piece(cb, t, 1)
+}
+
+// walk finds the slopes of a cell beside which a lane has no height, beside an
+// edge or a hole, row by row.
+func (x *windower) walk(o *ownLine) slopes {
+	p := o.p
+	lim := &p.f.lim
+	out := slopes{shade: x.minShade, fold: x.minFold}
+	o.step(&out)
+	rise := max(lim.high, lim.ceiling) - lim.low
+	enough := rise / min(x.minShade, x.minFold) // beyond it nothing counts
+	side := func(dir int, edge bool) (unknown float64) {
+		unknown = math.Inf(1)
+		note := func(s float64) { unknown = min(unknown, math.Abs(s-o.s)) }
+		last := o.s
+		for r := o.i + dir; r >= 0 && r < p.rows; r += dir {
+			h, s := o.height(r)
+			d := math.Abs(s - o.s)
+			if d > enough {
+				return unknown
+			}
+			v := p.at[r].v + float64(p.at[r].dv*o.k)
+			switch {
+			case h == h:
+				last = s
+			case !lim.openEdge || v >= p.edgeLo && v <= p.edgeHi:
+				note(last)
+			}
+			m := (h - o.h) / d
+			if dir < 0 {
+				if m > out.shade {
+					out.shade = m
+				}
+				m = -m
+			}
+			if m > out.fold {
+				out.fold = m
+			}
+		}
+		if edge && !lim.openEdge {
+			note(last)
+		}
+		return unknown
+	}
+	before, behind := side(-1, p.nearEnd), side(1, p.farEnd)
+	out.shadeU, out.foldU = out.shade, out.fold
+	x.worst(&out, o.h, before, behind)
+	return out
+}
