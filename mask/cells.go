@@ -164,7 +164,8 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 		x++
 		// Most cells are clearly open: all margins are wide.
 		c, n, g := mix(r.clear[k], r.clear[k+1], w), mix(r.near[k], r.near[k+1], w), mix(r.far[k], r.far[k+1], w)
-		if r.sure && c > r.slackM+r.roughM[k] && n > r.slackR+r.roughN[k] && g > r.slackR+r.roughF[k] {
+		bump := abs32(h - mix(r.h[k], r.h[k+1], w))
+		if r.sure && c > r.slackM+bump+r.roughM[k] && n > r.slackR+bump+r.roughN[k] && g > r.slackR+bump+r.roughF[k] {
 			t.raw[i] = uint8(Open)
 			t.keep(i, c, min(n, g))
 			continue
@@ -174,7 +175,7 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 			t.keep(i, float32(nan), float32(nan))
 			continue
 		}
-		t.classifyCell(p, wk, u, va+j, k, w, i)
+		t.classifyCell(p, wk, u, va+j, k, w, bump, i)
 	}
 }
 
@@ -184,8 +185,8 @@ func mix(x, y, w float32) float32 { return x + w*(y-x) }
 func abs32(x float32) float32 { return math.Float32frombits(math.Float32bits(x) &^ (1 << 31)) }
 
 // classifyCell classifies the cell (u, v) between lanes k and k+1.
-func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w float32, i int) {
-	m, doubt := t.margins.at(k, w)
+func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, bump float32, i int) {
+	m, doubt := t.margins.at(k, w, bump)
 	if doubt != 0 {
 		if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum == sum {
 			wk.quick(p, u, v, k, &m, doubt)
@@ -205,7 +206,8 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w float32, i int
 type laneMargins struct {
 	clear, near, far    [marchLanes]float32
 	clearU, nearU, farU [marchLanes]float32
-	sure                bool // the U margins are those without
+	h                   [marchLanes]float32 // heights
+	sure                bool                // the U margins are those without
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
 	roughM, roughN, roughF [marchLanes]float32
@@ -224,6 +226,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		if k < l.a || k >= l.b {
 			h = float32(nan)
 		}
+		r.h[k] = h
 		r.clear[k] = h - x.shade
 		r.near[k] = (x.nearer - h) * cos
 		r.far[k] = (h - x.farther) * cos
@@ -281,13 +284,14 @@ const (
 
 // at returns the margins at weight w between lanes k and k+1, and which are
 // doubtful: missing, or small against one row's worth of ground and the
-// roughness of the ground that decides.
-func (r *laneMargins) at(k int, w float32) (m lane, d doubts) {
+// roughness of the ground that decides. bump is how far the cell itself lies
+// above or below the ground between the lanes, metres.
+func (r *laneMargins) at(k int, w, bump float32) (m lane, d doubts) {
 	blend := func(a *[marchLanes]float32, rough *[marchLanes]float32, slack float32, bit doubts) float32 {
 		x := a[k]
 		if w != 0 { // at weight 0 the second does not count, also when it is NaN
 			x += w * (a[k+1] - x)
-			slack += rough[k]
+			slack += bump + rough[k]
 		}
 		if !(x > slack || x < -slack) {
 			d |= bit
