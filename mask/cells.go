@@ -4,7 +4,6 @@ import (
 	"math"
 
 	"foldshade/dem"
-	"foldshade/geometry"
 )
 
 // settleShare is the part of one row's worth of ground under which a margin is
@@ -253,19 +252,14 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 
 // roughness fills rough with the largest difference of neighbouring lanes among
 // those around each gap: it shows how much the ground that decides varies within
-// a cell.
+// a cell. NaN, which a missing lane brings, counts as the largest.
 func roughness(a, rough *[marchLanes]float32) {
-	before, here := abs32(a[1]-a[0]), abs32(a[2]-a[1])
+	// The bits of numbers that are not negative order as the numbers do.
+	gap := func(k int) uint32 { return math.Float32bits(a[k+1]-a[k]) &^ (1 << 31) }
+	before, here := gap(0), gap(1)
 	for k := 1; k <= laneStep; k++ {
-		next := abs32(a[k+2] - a[k+1])
-		m := here
-		if before > m {
-			m = before
-		}
-		if next > m {
-			m = next
-		}
-		rough[k] = roughShare * m
+		next := gap(k + 1)
+		rough[k] = roughShare * math.Float32frombits(max(before, here, next))
 		before, here = here, next
 	}
 }
@@ -350,14 +344,15 @@ func (m *lane) raw() Class {
 	return Open
 }
 
-// The three class rasters of a cell, from its raw code and its facet.
-func layoverClass(raw Class, f geometry.Facet) Class {
+// layoverClass returns the class in the layover raster, from the raw code and
+// the turns of the facet.
+func layoverClass(raw Class, turns int) Class {
 	switch {
 	case raw == CastShadow:
-		return shadowClass(raw, f)
+		return shadowClass(raw, turns)
 	case raw == NoData || raw == Undetermined:
 		return raw
-	case f.ActiveLayover():
+	case turns&turnLayover != 0:
 		return ActiveLayover
 	case raw == foldUnknown:
 		return Undetermined
@@ -365,9 +360,10 @@ func layoverClass(raw Class, f geometry.Facet) Class {
 	return raw
 }
 
-func shadowClass(raw Class, f geometry.Facet) Class {
+// shadowClass is layoverClass for the shadow raster.
+func shadowClass(raw Class, turns int) Class {
 	switch {
-	case raw == CastShadow && f.SelfShadow():
+	case raw == CastShadow && turns&turnShadow != 0:
 		return SelfShadow
 	case raw == CastShadow || raw == NoData || raw == Undetermined:
 		return raw

@@ -8,14 +8,15 @@ import (
 
 // tileBuffers holds the results of one tile while they are computed.
 type tileBuffers struct {
-	out       *Tile
-	verdict   []uint8
-	left      view
-	right     view
-	facets    []geometry.Facet // of one row
-	ups       [][3]float64     // of one row: up components of the sights
-	views     []view           // of one row, when a layer asks for more
-	wantViews bool
+	out                   *Tile
+	verdict               []uint8
+	left                  view
+	right                 view
+	turns                 []uint8          // of one row
+	facets                []geometry.Facet // of one row
+	ups                   [][3]float64     // of one row: up components of the sights
+	views                 []view           // of one row, when a layer asks for more
+	wantViews, wantFacets bool
 }
 
 // fill turns the raw codes and the differences of height of the sheet into the
@@ -24,7 +25,10 @@ func (w *worker) fill(i int) *Tile {
 	t := w.newTile()
 	ln, look := w.looks[i], &w.job.Looks[i]
 	win := w.sheet.w
-	w.facets, w.ups = resize(w.facets, win.Cols), resize(w.ups, win.Cols)
+	w.turns = resize(w.turns, win.Cols)
+	if w.wantFacets {
+		w.facets, w.ups = resize(w.facets, win.Cols), resize(w.ups, win.Cols)
+	}
 	if w.wantViews {
 		w.views = resize(w.views, win.Cols)
 	}
@@ -66,37 +70,66 @@ func (w *worker) newTile() *Tile {
 	return t
 }
 
-// see fills the sights and facets of one row of the sheet, and its views when
-// a layer asks for more.
+// see fills the turns of one row of the sheet, its facets and sights when a
+// layer of values is wanted, and its views when a layer asks for more.
 func (w *worker) see(ln *lanes, row, col, at int) {
-	n := len(w.facets)
+	n := w.sheet.w.Cols
 	zc, zr := w.sheet.zc[at:at+n], w.sheet.zr[at:at+n]
 	block := col / viewStep * viewStep
 	w.right = ln.viewOf(w.grid, float64(row), float64(block), w.wantViews)
 	for j := 0; j < n; block += viewStep {
 		w.left, w.right = w.right, ln.viewOf(w.grid, float64(row), float64(block+viewStep), w.wantViews)
-		var d view
-		for i := range 3 {
-			d.up[i] = w.right.up[i] - w.left.up[i]
-			d.c[i] = w.right.c[i] - w.left.c[i]
-			d.r[i] = w.right.r[i] - w.left.r[i]
+		end := min(n, block+viewStep-col)
+		w.seeBlock(zc[j:end], zr[j:end], j, col+j-block)
+		j = end
+	}
+}
+
+// The turns of a facet.
+const (
+	turnLayover    = 1 << iota // slant range falls away from the radar
+	turnShadow                 // the facet turns its back
+	turnCompressed             // foreshortening below the limit
+)
+
+// seeBlock is see for the columns from j on that lie between two views, first
+// columns from the left one.
+func (w *worker) seeBlock(zc, zr []float32, j, first int) {
+	a, b := &w.left, &w.right
+	var d view
+	for i := range 3 {
+		d.up[i], d.c[i], d.r[i] = b.up[i]-a.up[i], b.c[i]-a.c[i], b.r[i]-a.r[i]
+	}
+	limit := w.job.Options.CompressedBelow
+	turns := w.turns[j : j+len(zc)]
+	for i := range zc {
+		t := float64(first+i) * (1. / viewStep)
+		c, r := float64(zc[i]), float64(zr[i])
+		up0, up1 := a.up[0]+float64(t*d.up[0]), a.up[1]+float64(t*d.up[1])
+		along := up0 + float64(c*(a.c[0]+float64(t*d.c[0]))) + float64(r*(a.r[0]+float64(t*d.r[0])))
+		above := up1 + float64(c*(a.c[1]+float64(t*d.c[1]))) + float64(r*(a.r[1]+float64(t*d.r[1])))
+		turn := uint8(0)
+		if above < limit*up1 { // level range planes; leaning ones follow below
+			turn = turnCompressed
+			if above <= 0 {
+				turn |= turnLayover
+			}
 		}
-		a := &w.left
-		first := col + j - block
-		for m := min(n-j, viewStep-first); m > 0; m-- {
-			t := float64(col+j-block) / viewStep
-			c, r := float64(zc[j]), float64(zr[j])
-			up0, up1, up2 := a.up[0]+float64(t*d.up[0]), a.up[1]+float64(t*d.up[1]), a.up[2]+float64(t*d.up[2])
-			w.facets[j] = geometry.Facet{
-				Along:  up0 + float64(c*(a.c[0]+float64(t*d.c[0]))) + float64(r*(a.r[0]+float64(t*d.r[0]))),
-				Above:  up1 + float64(c*(a.c[1]+float64(t*d.c[1]))) + float64(r*(a.r[1]+float64(t*d.r[1]))),
-				Across: up2 + float64(c*(a.c[2]+float64(t*d.c[2]))) + float64(r*(a.r[2]+float64(t*d.r[2]))),
-			}
-			w.ups[j] = [3]float64{up0, up1, up2}
-			if w.wantViews {
-				w.views[j] = between(a, &w.right, t)
-			}
-			j++
+		if along <= 0 {
+			turn |= turnShadow
+		}
+		turns[i] = turn
+		if !w.wantFacets {
+			continue
+		}
+		up2 := a.up[2] + float64(t*d.up[2])
+		w.ups[j+i] = [3]float64{up0, up1, up2}
+		w.facets[j+i] = geometry.Facet{
+			Along: along, Above: above,
+			Across: up2 + float64(c*(a.c[2]+float64(t*d.c[2]))) + float64(r*(a.r[2]+float64(t*d.r[2]))),
+		}
+		if w.wantViews {
+			w.views[j+i] = between(a, b, t)
 		}
 	}
 }
@@ -116,34 +149,44 @@ func (w *worker) sight(j int) *geometry.Sight {
 func (w *worker) classRow(t *Tile, row int) {
 	n := t.Window.Cols
 	raw := w.sheet.raw[row*n : (row+1)*n]
+	for j, h := range w.sheet.z[row*n : (row+1)*n] {
+		if h != h { // also where a hole height was given
+			raw[j] = uint8(NoData)
+		}
+	}
+	turns := w.turns[:n]
 	verdict := w.verdict[row*n : (row+1)*n]
-	limit := w.job.Options.CompressedBelow
-	z := w.sheet.z[row*n : (row+1)*n]
 	for j, c := range raw {
-		if z[j] != z[j] { // also where a hole height was given
-			raw[j], verdict[j] = uint8(NoData), uint8(NoData)
-			continue
-		}
-		f := w.facets[j]
-		k := layoverClass(Class(c), f)
-		if k == Open && w.sight(j).Foreshortening(f) < limit {
-			k = Compressed
-		}
-		verdict[j] = uint8(k)
+		verdict[j] = verdictOf[turns[j]&7][c&63]
 	}
 	if out := t.Classes[LayoverLayer]; out != nil {
 		out = out[row*n : (row+1)*n]
 		for j, c := range raw {
-			out[j] = uint8(layoverClass(Class(c), w.facets[j]))
+			out[j] = layoverOf[turns[j]&3][c&63]
 		}
 	}
 	if out := t.Classes[ShadowLayer]; out != nil {
 		out = out[row*n : (row+1)*n]
 		for j, c := range raw {
-			out[j] = uint8(shadowClass(Class(c), w.facets[j]))
+			out[j] = shadowOf[turns[j]&3][c&63]
 		}
 	}
 }
+
+// The classes by the turns of the facet and the raw code.
+var layoverOf, shadowOf, verdictOf = func() (layover, shadow [4][64]uint8, verdict [8][64]uint8) {
+	for turns := range verdict {
+		for raw := range verdict[turns] {
+			l := layoverClass(Class(raw), turns)
+			layover[turns&3][raw], shadow[turns&3][raw] = uint8(l), uint8(shadowClass(Class(raw), turns))
+			if l == Open && turns&turnCompressed != 0 {
+				l = Compressed
+			}
+			verdict[turns][raw] = uint8(l)
+		}
+	}
+	return layover, shadow, verdict
+}()
 
 // valueRow writes one row of one layer of values.
 func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *geometry.Look) {
@@ -180,9 +223,9 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	case RangeIncidence:
 		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.RangeIncidence().Degrees() })
 	case Clearance:
-		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return float64(w.sheet.clear[row*n+j]) })
+		known(out, w.sheet.clear[row*n:], z)
 	case FoldMargin:
-		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return float64(w.sheet.fold[row*n+j]) })
+		known(out, w.sheet.fold[row*n:], z)
 	case LineOfSight:
 		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
 		out = bands[1][row*n : (row+1)*n]
@@ -206,6 +249,16 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 		each(func(j int, _ geometry.Facet, s *geometry.Sight) float64 {
 			return geometry.AmbiguityHeight(look.Wavelength, slant(j), s.Above.Up, look.Baseline)
 		})
+	}
+}
+
+// known copies values where the DEM has a height, also where a hole height made
+// more of them.
+func known(dst, src, z []float32) {
+	for j, h := range z {
+		if dst[j] = src[j]; h != h {
+			dst[j] = float32(nan)
+		}
 	}
 }
 

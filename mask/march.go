@@ -165,15 +165,24 @@ func (p *strip) sample(u int) span {
 			h[i] = lerp(z, v+float64(p.dv*float64(l.a+i)))
 		}
 	}
-	m, r := p.m[l.a:l.b], p.r[l.a:l.b]
-	sin, cos, cot := ln.sin, ln.cos, ln.cot
+	m, r, number := p.m[l.a:l.b], p.r[l.a:l.b], laneNumbers[l.a:l.b]
+	m0, dm := float64(ln.cot*p.s0), float64(ln.cot*p.ds)
+	r0, dr := float64(ln.sin*p.s0), float64(ln.sin*p.ds)
+	cos := ln.cos
 	for k, h := range h {
-		s := p.s0 + float64(p.ds*float64(l.a+k))
-		m[k] = h + float64(cot*s)
-		r[k] = float64(sin*s) - float64(cos*h)
+		m[k] = h + (m0 + float64(dm*number[k]))
+		r[k] = (r0 + float64(dr*number[k])) - float64(cos*h)
 	}
 	return l
 }
+
+// laneNumbers holds the numbers of the lanes.
+var laneNumbers = func() (n [marchLanes]float64) {
+	for k := range n {
+		n[k] = float64(k)
+	}
+	return n
+}()
 
 // forwardState is the march away from the radar, by lane.
 type forwardState struct {

@@ -258,6 +258,10 @@ func (r *runner) newWorker() *worker {
 	w := &worker{runner: r}
 	has := func(l Layer) bool { return slices.Contains(r.job.Layers, l) }
 	w.wantViews = has(SlantRange) || has(LineOfSight) || has(CriticalBaseline) || has(AmbiguityHeight)
+	for _, l := range r.job.Layers {
+		info, _ := Info(l)
+		w.wantFacets = w.wantFacets || !info.IsClass && l != Clearance && l != FoldMargin
+	}
 	w.sheet.wantClear, w.sheet.wantFold = has(Clearance), has(FoldMargin)
 	return w
 }

@@ -1,0 +1,107 @@
+package main
+
+import (
+	"context"
+	"syscall"
+	"testing"
+
+	"github.com/airbusgeo/godal"
+	"github.com/stretchr/testify/require"
+
+	"foldshade/dem"
+	"foldshade/dem/raster"
+	"foldshade/geometry"
+	"foldshade/mask"
+)
+
+// benchSide is the side of the benchmark's DEM in cells.
+const benchSide = 3600
+
+// mirrored reads the real mountain of testdata and mirrors its inner part, free
+// of holes, across a square of benchSide cells: alpine terrain with the
+// roughness of a real 30 m DEM.
+func mirrored(b testing.TB) *dem.Memory {
+	d, err := raster.Open("../../testdata/sthelens_30m_utm10_nad27.tif", raster.Options{})
+	require.NoError(b, err)
+	defer d.Close()
+	g := d.Grid()
+	const edge = 16
+	rows, cols := g.Rows-2*edge, g.Cols-2*edge
+	part := make([]float32, rows*cols)
+	require.NoError(b, d.Read(dem.Window{Row: edge, Col: edge, Rows: rows, Cols: cols}, part))
+	fold := func(i, n int) int {
+		if i %= 2 * n; i >= n {
+			i = 2*n - 1 - i
+		}
+		return i
+	}
+	z := make([]float32, benchSide*benchSide)
+	for i := range z {
+		z[i] = part[fold(i/benchSide, rows)*cols+fold(i%benchSide, cols)]
+	}
+	frame, err := dem.NewGrid(benchSide, benchSide, g.Transform, g.CRS, func(x, y []float64) error {
+		for i := range x { // a plane patch at the equator: true metres
+			x[i] = (x[i] - g.Transform[0]) / (geometry.SemiMajor * float64(geometry.Degree))
+			y[i] = (y[i] - g.Transform[3]) / (geometry.MeridianRadius(0) * float64(geometry.Degree))
+		}
+		return nil
+	})
+	require.NoError(b, err)
+	return &dem.Memory{Frame: frame, Heights: z}
+}
+
+// cpuSeconds returns the processor time the process has used: a measure that
+// other work on the machine disturbs less than the clock.
+func cpuSeconds() float64 {
+	var u syscall.Rusage
+	if err := syscall.Getrusage(syscall.RUSAGE_SELF, &u); err != nil {
+		panic(err)
+	}
+	return float64(u.Utime.Nano()) / 1e9
+}
+
+// BenchmarkMasksAgainstSlope measures shadow, layover and both margins, settled,
+// against GDAL's Zevenbergen-Thorne slope of the same heights in memory, turn by
+// turn, each on one thread; it reports the ratio of their processor times.
+func BenchmarkMasksAgainstSlope(b *testing.B) {
+	src := mirrored(b)
+	rng, err := dem.Scan(context.Background(), src)
+	require.NoError(b, err)
+	godal.RegisterAll()
+	ds, err := godal.Create(godal.Memory, "", 1, godal.Float32, benchSide, benchSide)
+	require.NoError(b, err)
+	defer ds.Close()
+	require.NoError(b, ds.SetGeoTransform([6]float64{0, 30, 0, 0, 0, -30}))
+	require.NoError(b, ds.Write(0, 0, src.Heights, benchSide, benchSide))
+	for _, l := range []struct {
+		name               string
+		incidence, azimuth geometry.Angle
+	}{{"39-78", 39, 78}, {"39-282", 39, 282}, {"33-191", 33, 191}, {"45-45", 45, 45}, {"23-78", 23, 78}, {"60-300", 60, 300}} {
+		b.Run(l.name, func(b *testing.B) {
+			look := geometry.NewLook()
+			look.Name, look.Kind = "a", geometry.Fixed
+			look.Incidence, look.Azimuth = l.incidence*geometry.Degree, l.azimuth*geometry.Degree
+			options := mask.DefaultOptions()
+			options.Threads = 1
+			var slope, masks float64
+			for b.Loop() {
+				t0 := cpuSeconds()
+				out, err := ds.Dem("", "slope", "", []string{"-of", "MEM", "-alg", "ZevenbergenThorne"})
+				require.NoError(b, err)
+				require.NoError(b, out.Close())
+				t1 := cpuSeconds()
+				_, err = mask.Run(context.Background(), mask.Job{
+					Source: src, Range: rng, Looks: []geometry.Look{look}, Window: src.Frame.Whole(), Options: options,
+					Layers: []mask.Layer{mask.LayoverLayer, mask.ShadowLayer, mask.Clearance, mask.FoldMargin},
+				})
+				require.NoError(b, err)
+				slope += t1 - t0
+				masks += cpuSeconds() - t1
+			}
+			cells := float64(b.N) * benchSide * benchSide
+			b.ReportMetric(slope/cells*1e9, "slope-ns/cell")
+			b.ReportMetric(masks/cells*1e9, "masks-ns/cell")
+			b.ReportMetric(masks/slope, "ratio")
+		})
+	}
+}
