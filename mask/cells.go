@@ -11,7 +11,7 @@ import (
 const settleShare = 0.25
 
 // roughShare is the part of the difference between two lanes by which the slack
-// grows.
+// grows at least.
 const roughShare = 0.5
 
 // foldUnknown is the raw code of a lit cell that is folded or not depending on
@@ -230,9 +230,9 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		r.near[k] = (x.nearer - h) * cos
 		r.far[k] = (h - x.farther) * cos
 	}
-	roughness(&r.clear, &r.roughM)
-	roughness(&r.near, &r.roughN)
-	roughness(&r.far, &r.roughF)
+	roughness(&r.clear, &r.roughM, float32(1/ln.rowM))
+	roughness(&r.near, &r.roughN, float32(1/ln.rowR))
+	roughness(&r.far, &r.roughF, float32(1/ln.rowR))
 	if sure {
 		return
 	}
@@ -252,14 +252,16 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 
 // roughness fills rough with the largest difference of neighbouring lanes among
 // those around each gap: it shows how much the ground that decides varies within
-// a cell. NaN, which a missing lane brings, counts as the largest.
-func roughness(a, rough *[marchLanes]float32) {
+// a cell, and counts for more where it exceeds a row's worth of ground. NaN,
+// which a missing lane brings, counts as the largest.
+func roughness(a, rough *[marchLanes]float32, perRow float32) {
 	// The bits of numbers that are not negative order as the numbers do.
 	gap := func(k int) uint32 { return math.Float32bits(a[k+1]-a[k]) &^ (1 << 31) }
 	before, here := gap(0), gap(1)
 	for k := 1; k <= laneStep; k++ {
 		next := gap(k + 1)
-		rough[k] = roughShare * math.Float32frombits(max(before, here, next))
+		d := math.Float32frombits(max(before, here, next))
+		rough[k] = d * (roughShare + d*perRow)
 		before, here = here, next
 	}
 }

@@ -89,12 +89,12 @@ var formIncidences = []geometry.Angle{23 * deg, 35 * deg, 39 * deg, 47 * deg, 58
 
 // settled reports whether a cell lies farther than its eight neighbours reach
 // from every boundary: 16 points one diagonal away have its kind. The cells on
-// the crease at the foot of a cone or the rim of a pit are left out too: the
+// the crease at the foot of a cone or the rim of a pit, and at its tip, are left out too: the
 // bilinear surface on whole cells is a saw there, with teeth of up to
 // tan(slope) * diagonal / 4, where the form is a circle.
 func (f form) settled(s, y float64) bool {
 	const diagonal = formCell * math.Sqrt2
-	if f.crease > 0 && math.Abs(math.Hypot(s, y)-f.crease) < diagonal {
+	if r := math.Hypot(s, y); f.crease > 0 && (math.Abs(r-f.crease) < diagonal || r < diagonal) {
 		return false
 	}
 	want := f.kind(s, y)

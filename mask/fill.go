@@ -226,6 +226,11 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 		known(out, w.sheet.clear[row*n:], z)
 	case FoldMargin:
 		known(out, w.sheet.fold[row*n:], z)
+		for j, x := range out { // active layover overlaps itself
+			if w.turns[j]&turnLayover != 0 && x > 0 {
+				out[j] = 0
+			}
+		}
 	case LineOfSight:
 		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
 		out = bands[1][row*n : (row+1)*n]

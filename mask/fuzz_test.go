@@ -45,11 +45,17 @@ func fuzzScene(bytes []byte, width uint8, incidence, azimuth uint16, flags uint8
 		g = testterrain.Metric(rows, cols, cell, 3*cell, 17*deg)
 	}
 	heights := make([]float32, rows*cols)
+	some := false
 	for i := range heights {
 		heights[i] = float32(bytes[i]) * cell / 4
 		if bytes[i] == 255 {
 			heights[i] = float32(math.NaN())
+		} else {
+			some = true
 		}
+	}
+	if !some { // refused
+		return scene{}, false
 	}
 	s := scene{name: "fuzz", terrain: &dem.Memory{Frame: g, Heights: heights}, options: mask.DefaultOptions()}
 	s.options.OpenEdge = flags&2 > 0

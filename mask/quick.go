@@ -97,14 +97,14 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 	}
 	a, _ = q.f.ln.at(s, a)
 	b, _ = q.f.ln.at(s, b)
-	return around(a, b)
+	return around(a, b, 1/q.f.ln.rowM)
 }
 
-func around(a, b float64) bounds {
+func around(a, b, perRow float64) bounds {
 	if a > b {
 		a, b = b, a
 	}
-	rough := roughShare * (b - a)
+	rough := (b - a) * (roughShare + (b-a)*perRow)
 	return bounds{a - rough, b + rough}
 }
 
@@ -133,7 +133,7 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 func (q *quickWalk) ranges(a, b float32, s float64) bounds {
 	_, x := q.f.ln.at(s, float64(a))
 	_, y := q.f.ln.at(s, float64(b))
-	return around(x, y)
+	return around(x, y, 1/q.f.ln.rowR)
 }
 
 // highest returns a bound of the heights on the path from row u, column va, to
