@@ -24,6 +24,8 @@ var storages = map[mask.Layer]storage{
 	mask.Incidence:        {scale: angleStep, offset: 90},
 	mask.RangeIncidence:   {scale: angleStep, offset: 45}, // -90 to 180
 	mask.OrientationShift: {scale: angleStep},             // -90 to 90
+	mask.WindowLow:        {scale: angleStep, offset: 45}, // 5 to 85
+	mask.WindowHigh:       {scale: angleStep, offset: 45},
 
 	mask.SlantRange:       {quantum: 1.0 / 64},
 	mask.Clearance:        {quantum: 1.0 / 64},

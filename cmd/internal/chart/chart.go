@@ -259,7 +259,8 @@ func (d *drawing) arc(p *vg.Path, from, to, incidence float64, first bool) {
 // frame draws the rings and spokes with their degrees.
 func (d *drawing) frame() {
 	step := tick((d.top - d.base) / 5)
-	for inc := math.Ceil(d.Incidences[0]/step) * step; inc <= d.top+1e-9; inc += step {
+	last := d.top - 0.04*(d.top-d.base) // closer to the rim there is no room
+	for inc := math.Ceil(d.Incidences[0]/step) * step; inc <= last; inc += step {
 		d.ring(inc, 1, color.NRGBA{paper.R, paper.G, paper.B, 0x60})
 		d.ring(inc, 0.5, color.NRGBA{ink.R, ink.G, ink.B, 0x90})
 	}
@@ -296,7 +297,7 @@ func (d *drawing) frame() {
 	p.Close()
 	d.SetColor(ink)
 	d.Fill(p)
-	for inc := math.Ceil(d.Incidences[0]/step) * step; inc <= d.top+1e-9; inc += step {
+	for inc := math.Ceil(d.Incidences[0]/step) * step; inc <= last; inc += step {
 		at := d.at(0, inc)
 		d.haloed(float64(at.X), float64(at.Y)-3.2, 9, 0.5, fmt.Sprintf("%g°", inc))
 	}
