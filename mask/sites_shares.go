@@ -1,0 +1,116 @@
+package mask
+
+import (
+	"math"
+
+	"foldshade/dem"
+)
+
+// shares fills the shares of a site's cells or footprint. The result's own
+// class is filled.
+func (w *sitesWorker) shares(i, k int, res *SiteResult) error {
+	s := &w.job.Sites[i]
+	if len(s.Cells) > 0 {
+		return w.cellShares(s.Cells, k, &res.Shares)
+	}
+	res.Shares = Shares{}
+	if s.Footprint == 0 || res.Where != OnGround {
+		res.Shares[res.Class.Kind()] = 1
+		return nil
+	}
+	w.footprint(i, k, &res.Shares)
+	return nil
+}
+
+// shareStep is the side of the squares that a site's cells are taken in.
+const shareStep = 64
+
+// cellShares tallies the verdict layer over cells.
+func (w *sitesWorker) cellShares(cells []Cell, k int, out *Shares) error {
+	squares := map[Cell][]Cell{}
+	var order []Cell
+	for _, c := range cells {
+		q := Cell{c.Row / shareStep, c.Col / shareStep}
+		if squares[q] == nil {
+			order = append(order, q)
+		}
+		squares[q] = append(squares[q], c)
+	}
+	var count [6]int
+	for _, q := range order {
+		win := dem.Window{}
+		for _, c := range squares[q] {
+			win = join(win, dem.Window{Row: c.Row, Col: c.Col, Rows: 1, Cols: 1})
+		}
+		t, err := w.cells(k, win)
+		if err != nil {
+			return err
+		}
+		for _, c := range squares[q] {
+			count[Class(t.Classes[VerdictLayer][(c.Row-win.Row)*win.Cols+c.Col-win.Col]).Kind()]++
+		}
+	}
+	for n, c := range count {
+		out[n] = float64(c) / float64(len(cells))
+	}
+	return nil
+}
+
+// footprintPoints is about how many points across a footprint are looked at.
+const footprintPoints = 9
+
+// spacing returns the distance between the points of a footprint, metres: half
+// a cell, but not so wide that a small footprint has one point only nor so
+// narrow that a large one has thousands.
+func (w *sitesWorker) spacing(i int) float64 {
+	l, radius := &w.sites[i].local, w.job.Sites[i].Footprint
+	cell := min(math.Hypot(l.ColE, l.ColN), math.Hypot(l.RowE, l.RowN))
+	return min(max(cell/2, 2*radius/footprintPoints), radius/2)
+}
+
+// footprintCells returns the radius of a site's footprint in rows and columns.
+func (w *sitesWorker) footprintCells(i int) (rows, cols float64) {
+	l, radius := &w.sites[i].local, w.job.Sites[i].Footprint
+	det := math.Abs(l.ColE*l.RowN - l.ColN*l.RowE)
+	return radius * math.Hypot(l.ColE, l.ColN) / det, radius * math.Hypot(l.RowE, l.RowN) / det
+}
+
+// footprint tallies the class of the target's height over points of a square
+// lattice about the site, the site among them.
+func (w *sitesWorker) footprint(i, k int, out *Shares) {
+	p, s := &w.sites[i], &w.job.Sites[i]
+	d := w.spacing(i)
+	n := int(s.Footprint / d)
+	l := &p.local
+	det := l.ColE*l.RowN - l.ColN*l.RowE
+	var count [6]int
+	all := 0
+	for a := -n; a <= n; a++ {
+		for b := -n; b <= n; b++ {
+			e, nn := float64(a)*d, float64(b)*d
+			if math.Hypot(e, nn) > s.Footprint {
+				continue
+			}
+			row, col := p.row+(l.ColE*nn-l.ColN*e)/det, p.col+(e*l.RowN-nn*l.RowE)/det
+			count[w.classAt(k, row, col, s.Height).Kind()]++
+			all++
+		}
+	}
+	for n, c := range count {
+		out[n] = float64(c) / float64(all)
+	}
+}
+
+// classAt returns the class of a target over a place near those of the bundle.
+func (w *sitesWorker) classAt(k int, row, col, height float64) Class {
+	p, err := groundAt(w.job.Source, &w.sheet, row, col)
+	if err != nil || p.where != OnGround || !w.trace(p.row, p.col) {
+		return NoData
+	}
+	_, facet, sight := w.look(k, &p)
+	f := w.judge.of(&w.line, height, w.field.ln.cos)
+	m := f.lane(&w.field, p.z, p.z+height)
+	var res SiteResult
+	w.classes(&m, facet, &sight, &res)
+	return res.Class
+}
