@@ -14,6 +14,10 @@ const settleShare = 0.25
 // grows at least.
 const roughShare = 0.5
 
+// roughGrowth lets that part grow with the difference, counted in rows' worths
+// of ground: where neighbouring lanes have little in common, they bound nothing.
+const roughGrowth = 3
+
 // foldUnknown is the raw code of a lit cell that is folded or not depending on
 // terrain that the DEM does not show. It never leaves the package.
 const foldUnknown Class = 51
@@ -158,8 +162,11 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 		if p.dv != 1 {
 			x = (float64(va+j) - p.v0) * per
 		}
-		k := min(max(int(x), 1), laneStep)
-		w := float32(x - float64(k))
+		k := min(max(int(x+onLane), 1), laneStep)
+		w := float32(max(x-float64(k), 0))
+		if w < onLane {
+			w = 0
+		}
 		x++
 		// Most cells are clearly open: all margins are wide.
 		c, n, g := mix(r.clear[k], r.clear[k+1], w), mix(r.near[k], r.near[k+1], w), mix(r.far[k], r.far[k+1], w)
@@ -207,6 +214,7 @@ type laneMargins struct {
 	clearU, nearU, farU [marchLanes]float32
 	h                   [marchLanes]float32 // heights
 	sure                bool                // the U margins are those without
+	exact               bool                // lanes run through cell centres
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
 	roughM, roughN, roughF [marchLanes]float32
@@ -217,7 +225,7 @@ type laneMargins struct {
 func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	ln := p.f.ln
 	r.slackM, r.slackR = float32(settleShare*ln.rowM), float32(settleShare*ln.rowR)
-	r.sure = sure
+	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
 	cos := float32(ln.cos)
 	l := p.inDEM()
 	for k, x := range p.row(u) {
@@ -261,10 +269,13 @@ func roughness(a, rough *[marchLanes]float32, perRow float32) {
 	for k := 1; k <= laneStep; k++ {
 		next := gap(k + 1)
 		d := math.Float32frombits(max(before, here, next))
-		rough[k] = d * (roughShare + d*perRow)
+		rough[k] = d * (roughShare + roughGrowth*d*perRow)
 		before, here = here, next
 	}
 }
+
+// onLane is the distance from a lane, in lanes, that is taken for none.
+const onLane = 1e-6
 
 // doubts says which margins are doubtful.
 type doubts uint8
@@ -283,11 +294,15 @@ const (
 // roughness of the ground that decides. bump is how far the cell itself lies
 // above or below the ground between the lanes, metres.
 func (r *laneMargins) at(k int, w, bump float32) (m lane, d doubts) {
-	blend := func(a *[marchLanes]float32, rough *[marchLanes]float32, slack float32, bit doubts) float32 {
-		x := a[k]
-		if w != 0 { // at weight 0 the second does not count, also when it is NaN
+	blend := func(a, rough *[marchLanes]float32, slack float32, bit doubts) float32 {
+		x, perRow := a[k], settleShare/slack
+		switch {
+		case w != 0: // at weight 0 the second does not count, also when it is NaN
 			x += w * (a[k+1] - x)
 			slack += bump + rough[k]
+		case !r.exact:
+			d := max(abs32(a[k]-a[k-1]), abs32(a[k+1]-a[k]))
+			slack += d * (roughShare + roughGrowth*d*perRow)
 		}
 		if !(x > slack || x < -slack) {
 			d |= bit

@@ -164,9 +164,16 @@ func (f *field) place(a, b, lo, hi int) {
 	}
 }
 
+// onColumn is the distance from a column, in columns, that is taken for none:
+// rounding must not let a missing neighbour count.
+const onColumn = 1e-9
+
 // heightsAt fills h with the heights at the same fraction of every step of z.
 func heightsAt(h []float64, z []float32, rest float64) {
-	if rest == 0 {
+	if rest > 1-onColumn {
+		z, rest = z[1:], 0
+	}
+	if rest < onColumn {
 		for k := range h {
 			h[k] = float64(z[k])
 		}
@@ -186,8 +193,11 @@ func heightsAt(h []float64, z []float32, rest float64) {
 func lerp(z []float32, x float64) float64 {
 	i := int(x)
 	rest := x - float64(i)
-	if rest == 0 {
+	if rest < onColumn {
 		return float64(z[i])
+	}
+	if rest > 1-onColumn {
+		return float64(z[i+1])
 	}
 	p, q := float64(z[i]), float64(z[i+1])
 	return p + float64(rest*(q-p))

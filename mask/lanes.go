@@ -137,7 +137,7 @@ func fixedLanes(g *dem.Grid, look geometry.Look) *lanes {
 	dr, dc := indexDirection(g.At(cr, cc), a)
 	geographic := g.Geographic
 	ln := &lanes{lens: lens{look.Incidence.Sin(), look.Incidence.Cos(), 1 / look.Incidence.Tan(), look.Incidence.Tan()}}
-	if math.Abs(dr) >= math.Abs(dc) {
+	if math.Abs(dr) >= math.Abs(dc)*(1-1e-6) { // along a diagonal always the rows
 		ln.orient = newOrient(g, false, dr < 0)
 	} else {
 		ln.orient = newOrient(g, true, dc < 0)

@@ -70,7 +70,7 @@ var mountainLooks = []struct{ incidence, azimuth geometry.Angle }{
 // as the grid's outline, 1 % of the cells, and at most half of it is taken.
 const (
 	mountainDiffer  = 0.001
-	mountainGuessed = 0.001
+	mountainGuessed = 0.002 // a range line may cut the corner of a hole between two rows
 	mountainTimid   = 0.005
 )
 

@@ -104,7 +104,7 @@ func around(a, b, perRow float64) bounds {
 	if a > b {
 		a, b = b, a
 	}
-	rough := (b - a) * (roughShare + (b-a)*perRow)
+	rough := (b - a) * (roughShare + roughGrowth*(b-a)*perRow)
 	return bounds{a - rough, b + rough}
 }
 

@@ -263,7 +263,7 @@ func (w *walker) step(u, dir int, va, vb, sa, sb float64) {
 		w.piece(u, dir, va, vb, sa, sb, t0, t0)
 	}
 	if a == b || va == vb {
-		w.piece(u, dir, va, vb, sa, sb, 0, 1)
+		w.piece(u, dir, va, vb, sa, sb, t0, 1)
 		return
 	}
 	if a < b {
