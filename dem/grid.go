@@ -183,6 +183,25 @@ func split(p float64, n int) (node int, rest float64) {
 	return node, p - float64(node)
 }
 
+// Find returns the fractional cell position of a place, the inverse of At, by
+// Newton's method; ok is false outside the grid.
+func (g *Grid) Find(lon, lat geometry.Angle) (row, col float64, ok bool) {
+	row, col = float64(g.Rows-1)/2, float64(g.Cols-1)/2
+	for range 20 {
+		l := g.At(row, col)
+		e := wrap((lon - l.Lon).Degrees()) * float64(geometry.Degree) * geometry.PrimeVerticalRadius(l.Lat) * l.Lat.Cos()
+		n := float64(lat-l.Lat) * geometry.MeridianRadius(l.Lat)
+		det := l.ColE*l.RowN - l.ColN*l.RowE
+		dr, dc := (l.ColE*n-l.ColN*e)/det, (e*l.RowN-n*l.RowE)/det
+		row, col = row+dr, col+dc
+		if math.Abs(dr)+math.Abs(dc) < 1e-6 {
+			break
+		}
+	}
+	ok = row >= 0 && row <= float64(g.Rows-1) && col >= 0 && col <= float64(g.Cols-1)
+	return row, col, ok
+}
+
 // Window is a rectangle of cells.
 type Window struct{ Row, Col, Rows, Cols int }
 

@@ -195,7 +195,7 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, bump float32,
 	m, doubt := t.margins.at(k, w, bump)
 	if doubt != 0 {
 		if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum == sum {
-			wk.quick(p, u, v, k, &m, doubt)
+			wk.quick(p, u, v, k, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 		} else {
 			m = t.settle(p.f, wk, u, v, m)
 		}
@@ -224,9 +224,15 @@ type laneMargins struct {
 // strip has sampled.
 func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	ln := p.f.ln
-	r.slackM, r.slackR = float32(settleShare*ln.rowM), float32(settleShare*ln.rowR)
+	sin, cosine := ln.sin, ln.cos
+	if ln.places != nil {
+		mid := p.place(1 + laneStep/2)
+		sin, cosine = ln.angle(&mid, p.middleHeight())
+	}
+	row := ln.minDS * sin
+	r.slackM, r.slackR = float32(settleShare*row*cosine/(sin*sin)), float32(settleShare*row)
 	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
-	cos := float32(ln.cos)
+	cos := float32(cosine)
 	l := p.inDEM()
 	for k, x := range p.row(u) {
 		h := float32(p.h[k])
@@ -238,9 +244,9 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		r.near[k] = (x.nearer - h) * cos
 		r.far[k] = (h - x.farther) * cos
 	}
-	roughness(&r.clear, &r.roughM, float32(1/ln.rowM))
-	roughness(&r.near, &r.roughN, float32(1/ln.rowR))
-	roughness(&r.far, &r.roughF, float32(1/ln.rowR))
+	roughness(&r.clear, &r.roughM, settleShare/r.slackM)
+	roughness(&r.near, &r.roughN, settleShare/r.slackR)
+	roughness(&r.far, &r.roughF, settleShare/r.slackR)
 	if sure {
 		return
 	}

@@ -24,7 +24,7 @@ func (ln *lanes) reach(lim limits) (near, far int) {
 	rows := func(metres float64) int {
 		return int(math.Min(metres/ln.minDS, float64(ln.orient.u))) + 2
 	}
-	return rows(relief * (ln.cot + ln.tan)), rows(relief * ln.cot)
+	return rows(relief * (ln.cotMost + ln.tanMost)), rows(relief * ln.cotMost)
 }
 
 // field is the part of the DEM that the cells [u0, u1) x [v0, v1) of one look

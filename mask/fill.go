@@ -16,6 +16,7 @@ type tileBuffers struct {
 	facets                []geometry.Facet // of one row
 	ups                   [][3]float64     // of one row: up components of the sights
 	views                 []view           // of one row, when a layer asks for more
+	unseen                []bool           // of one row: cells that the look does not see
 	wantViews, wantFacets bool
 }
 
@@ -32,8 +33,14 @@ func (w *worker) fill(i int) *Tile {
 	if w.wantViews {
 		w.views = resize(w.views, win.Cols)
 	}
+	w.unseen = resize(w.unseen, win.Cols)
+	clear(w.unseen)
 	for r := range win.Rows {
-		w.see(ln, win.Row+r, win.Col, r*win.Cols)
+		if ln.places == nil {
+			w.see(ln, win.Row+r, win.Col, r*win.Cols)
+		} else {
+			w.seeAbreast(ln, look, win.Row+r, win.Col, r*win.Cols)
+		}
 		w.classRow(t, r)
 		for l, bands := range t.Values {
 			w.valueRow(l, bands, r, ln, look)
@@ -150,7 +157,7 @@ func (w *worker) classRow(t *Tile, row int) {
 	n := t.Window.Cols
 	raw := w.sheet.raw[row*n : (row+1)*n]
 	for j, h := range w.sheet.z[row*n : (row+1)*n] {
-		if h != h { // also where a hole height was given
+		if h != h || w.unseen[j] { // also where a hole height was given
 			raw[j] = uint8(NoData)
 		}
 	}
@@ -195,7 +202,7 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	out := bands[0][row*n : (row+1)*n]
 	each := func(f func(j int, fc geometry.Facet, s *geometry.Sight) float64) {
 		for j := range out {
-			if z[j] != z[j] {
+			if z[j] != z[j] || w.unseen[j] {
 				out[j] = float32(nan)
 				continue
 			}
@@ -203,6 +210,9 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 		}
 	}
 	slant := func(j int) float64 {
+		if ln.places != nil {
+			return w.views[j].s
+		}
 		_, r := ln.at(w.views[j].s, float64(z[j]))
 		if look.SlantRange == look.SlantRange {
 			r += look.SlantRange
@@ -223,9 +233,9 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	case RangeIncidence:
 		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.RangeIncidence().Degrees() })
 	case Clearance:
-		known(out, w.sheet.clear[row*n:], z)
+		w.known(out, w.sheet.clear[row*n:], z)
 	case FoldMargin:
-		known(out, w.sheet.fold[row*n:], z)
+		w.known(out, w.sheet.fold[row*n:], z)
 		for j, x := range out { // active layover overlaps itself
 			if w.turns[j]&turnLayover != 0 && x > 0 {
 				out[j] = 0
@@ -257,11 +267,11 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	}
 }
 
-// known copies values where the DEM has a height, also where a hole height made
-// more of them.
-func known(dst, src, z []float32) {
+// known copies values where the DEM has a height, no hole height counted, and
+// the look sees the cell.
+func (w *worker) known(dst, src, z []float32) {
 	for j, h := range z {
-		if dst[j] = src[j]; h != h {
+		if dst[j] = src[j]; h != h || w.unseen[j] {
 			dst[j] = float32(nan)
 		}
 	}

@@ -104,6 +104,9 @@ type lanes struct {
 	first  int // lane of the lattice's first column, a multiple of laneStep
 	nu, nk int // nodes along u and along the lanes
 	v, s   []float64
+	// Of a platform: the places of the nodes in their range planes.
+	places   []place
+	platform geometry.Platform
 	// ahead returns the unit ground vector, east and north, of the range line
 	// at a place of the grid, away from the radar.
 	ahead func(l *dem.Local) (e, n float64)
@@ -120,8 +123,14 @@ type lanes struct {
 //
 //	m = h + s cot(i)        r = s sin(i) - h cos(i)
 //
-// A difference of m is metres of height; a difference of r metres of range.
-type lens struct{ sin, cos, cot, tan float64 }
+// A difference of m is metres of height; a difference of r metres of range. For
+// a platform see view; sin, cos, cot and tan are then those at the middle of
+// the DEM.
+type lens struct {
+	sin, cos, cot, tan float64
+	cotMost, tanMost   float64 // the largest anywhere
+	datum, scale       float64 // of a platform: height of reference, metres of height for one of m
+}
 
 func (l *lens) at(s, h float64) (m, r float64) {
 	return h + float64(l.cot*s), float64(l.sin*s) - float64(l.cos*h)
@@ -136,7 +145,8 @@ func fixedLanes(g *dem.Grid, look geometry.Look) *lanes {
 	cr, cc := float64(g.Rows-1)/2, float64(g.Cols-1)/2
 	dr, dc := indexDirection(g.At(cr, cc), a)
 	geographic := g.Geographic
-	ln := &lanes{lens: lens{look.Incidence.Sin(), look.Incidence.Cos(), 1 / look.Incidence.Tan(), look.Incidence.Tan()}}
+	ln := &lanes{lens: lens{sin: look.Incidence.Sin(), cos: look.Incidence.Cos(), cot: 1 / look.Incidence.Tan(), tan: look.Incidence.Tan()}}
+	ln.cotMost, ln.tanMost = ln.cot, ln.tan
 	if math.Abs(dr) >= math.Abs(dc)*(1-1e-6) { // along a diagonal always the rows
 		ln.orient = newOrient(g, false, dr < 0)
 	} else {

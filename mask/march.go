@@ -18,6 +18,7 @@ type strip struct {
 	// their change for one lane.
 	v0, dv, s0, ds float64
 	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
+	p0, dp         place   // of a platform: place of lane 0, change for one lane
 	h, m, r        [marchLanes]float64
 
 	// What the marches find, by row from ua to ub and lane.
@@ -108,6 +109,12 @@ func (p *strip) stand(u int) {
 	s := at(ln.s, n)
 	p.ds = (at(ln.s, n+1) - s) / laneStep
 	p.s0 = s - p.ds
+	if ln.places != nil {
+		place := func(n int) place { return ln.places[n].plus(ln.places[n+ln.nk].minus(ln.places[n]), q) }
+		a, b := place(n), place(n+1)
+		p.dp = a.minus(a).plus(b.minus(a), 1./laneStep)
+		p.p0 = a.minus(p.dp)
+	}
 	if ln.uniform {
 		drift := float64(ln.slope * (float64(u) - ln.mid))
 		p.v0, p.dv = float64(p.k0)+drift, 1
@@ -165,6 +172,9 @@ func (p *strip) sample(u int) span {
 			h[i] = lerp(z, v+float64(p.dv*float64(l.a+i)))
 		}
 	}
+	if ln.places != nil {
+		return p.viewLanes(l)
+	}
 	m, r, number := p.m[l.a:l.b], p.r[l.a:l.b], laneNumbers[l.a:l.b]
 	m0, dm := float64(ln.cot*p.s0), float64(ln.cot*p.ds)
 	r0, dr := float64(ln.sin*p.s0), float64(ln.sin*p.ds)
@@ -174,6 +184,67 @@ func (p *strip) sample(u int) span {
 		r[k] = (r0 + float64(dr*number[k])) - float64(cos*h)
 	}
 	return l
+}
+
+// place returns the place of lane k at the row where the strip stands.
+func (p *strip) place(k int) place { return p.p0.plus(p.dp, float64(k)) }
+
+// middleHeight returns a height of the row that is sampled: that of its middle
+// lane, or of the datum where that has none.
+func (p *strip) middleHeight() float64 {
+	l := p.inDEM()
+	if h := p.h[(l.a+l.b)/2%marchLanes]; l.a < l.b && h == h {
+		return h
+	}
+	return p.f.ln.datum
+}
+
+// viewLanes fills m and r as a platform sees them and returns the lanes that
+// count: ground under the track and beyond it is none of the look's.
+func (p *strip) viewLanes(l span) span {
+	ln := p.f.ln
+	for l.a < l.b && p.place(l.a).x <= 0 {
+		l.a++
+	}
+	for l.a < l.b && p.place(l.b-1).x <= 0 {
+		l.b--
+	}
+	for k := l.a; k < l.b; k++ {
+		q := p.place(k)
+		p.m[k], p.r[k] = ln.view(&q, p.h[k])
+	}
+	return l
+}
+
+// seen returns m and r of a height at lane k of the row that is sampled.
+func (p *strip) seen(k int, h float64) (m, r float64) {
+	if p.f.ln.places == nil {
+		d := h - p.h[k]
+		return p.m[k] + d, p.r[k] - float64(d*p.f.ln.cos)
+	}
+	q := p.place(k)
+	return p.f.ln.view(&q, h)
+}
+
+// shade returns the height at which lane k reaches top.
+func (p *strip) shade(k int, top float64) float64 {
+	if p.f.ln.places == nil || math.IsInf(top, -1) {
+		return p.h[k] + (top - p.m[k])
+	}
+	q := p.place(k)
+	return p.f.ln.shadeHeight(&q, top)
+}
+
+// equalRange returns the height at which lane k has slant range r.
+func (p *strip) equalRange(k int, r float64) float64 {
+	if p.f.ln.places == nil || math.IsInf(r, 0) {
+		return p.h[k] + (p.r[k]-r)/p.f.ln.cos
+	}
+	q := p.place(k)
+	if h := p.f.ln.rangeHeight(&q, r); h == h {
+		return h
+	}
+	return math.Inf(1)
 }
 
 // laneNumbers holds the numbers of the lanes.
@@ -274,6 +345,9 @@ func (p *strip) forward() {
 // height is missing.
 func (p *strip) forwardSure(row []lines, l span) {
 	st, ln := &p.fwd, p.f.ln
+	if ln.places != nil {
+		p.forwardLines(row, l)
+	}
 	minShade, maxNearer, _ := p.f.limitLines()
 	perCos := 1 / ln.cos
 	n := l.b - l.a
@@ -291,7 +365,9 @@ func (p *strip) forwardSure(row []lines, l span) {
 			nearer = maxNearer
 		}
 		c := &row[k]
-		c.shade, c.nearer = float32(shade), float32(nearer)
+		if ln.places == nil {
+			c.shade, c.nearer = float32(shade), float32(nearer)
+		}
 		if mk <= tk {
 			hid[k] = true
 			st.m[l.a+k], st.r[l.a+k] = mk, rk
@@ -310,6 +386,16 @@ func (p *strip) forwardSure(row []lines, l span) {
 	}
 }
 
+// forwardLines fills the lines of one row that the forward march sets.
+func (p *strip) forwardLines(row []lines, l span) {
+	st := &p.fwd
+	minShade, maxNearer, _ := p.f.limitLines()
+	for k := l.a; k < l.b; k++ {
+		row[k].shade = float32(max(p.shade(k, st.top[k]), minShade))
+		row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
+	}
+}
+
 // edge returns, for lane k that was hidden at the row before and is lit at m,
 // r, the largest slant range of the lit ground between the two rows, and how
 // much below r the smallest lies.
@@ -325,10 +411,9 @@ func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
 // forwardUnsure marches one row where terrain may be unknown.
 func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 	st, f, lim := &p.fwd, p.f, &p.f.lim
-	cos := f.ln.cos
 	minShade, maxNearer, _ := f.limitLines()
 	for k := l.a; k < l.b; k++ {
-		mk, h, rk := p.m[k], p.h[k], p.r[k]
+		mk, rk := p.m[k], p.r[k]
 		if mk != mk {
 			st.unknown[k], st.hid[k] = true, false
 			row[k], unsure[k] = noLines, noUnsure
@@ -337,14 +422,16 @@ func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 		if st.unknown[k] {
 			// Unknown terrain ends somewhere between the rows: at worst here.
 			st.unknown[k] = false
-			st.topU[k] = max(st.topU[k], mk+(lim.ceiling-h))
-			st.mostU[k] = max(st.mostU[k], rk+(h-lim.low)*cos)
+			high, _ := p.seen(k, lim.ceiling)
+			_, far := p.seen(k, lim.low)
+			st.topU[k] = max(st.topU[k], high)
+			st.mostU[k] = max(st.mostU[k], far)
 		}
 		tk := st.top[k]
-		row[k].shade = float32(max(h+(tk-mk), minShade))
-		row[k].nearer = float32(min(h+(rk-st.most[k])/cos, maxNearer))
-		unsure[k].shade = float32(max(h+(st.topU[k]-mk), minShade))
-		unsure[k].nearer = float32(min(h+(rk-st.mostU[k])/cos, maxNearer))
+		row[k].shade = float32(max(p.shade(k, tk), minShade))
+		row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
+		unsure[k].shade = float32(max(p.shade(k, st.topU[k]), minShade))
+		unsure[k].nearer = float32(min(p.equalRange(k, st.mostU[k]), maxNearer))
 		if mk <= tk {
 			st.hid[k] = true
 			st.m[k], st.r[k] = mk, rk
@@ -415,6 +502,12 @@ func (p *strip) backwardSure(row []lines, l span) {
 	_, _, minFarther := p.f.limitLines()
 	perCos := 1 / p.f.ln.cos
 	n := l.b - l.a
+	if p.f.ln.places != nil {
+		for k := l.a; k < l.b; k++ {
+			row[k].farther = float32(max(p.equalRange(k, st.least[k]), minFarther))
+		}
+		return
+	}
 	row = row[l.a:][:n]
 	h, r, least := p.h[l.a:][:n], p.r[l.a:][:n], st.least[l.a:][:n]
 	for k := range row {
@@ -447,18 +540,17 @@ func (p *strip) backwardMove(row []lines, l span) {
 func (p *strip) backwardUnsure(row []lines, unsure []unsureLines, l span) {
 	st, f, lim := &p.bwd, p.f, &p.f.lim
 	_, _, minFarther := f.limitLines()
-	cos := f.ln.cos
 	for k := l.a; k < l.b; k++ {
-		rk, h := p.r[k], p.h[k]
-		if rk != rk {
+		if rk := p.r[k]; rk != rk {
 			st.unknown[k] = true
 			continue
 		}
 		if st.unknown[k] {
 			st.unknown[k] = false
-			st.leastU[k] = min(st.leastU[k], rk-(lim.ceiling-h)*cos)
+			_, near := p.seen(k, lim.ceiling)
+			st.leastU[k] = min(st.leastU[k], near)
 		}
-		row[k].farther = float32(max(h-(st.least[k]-rk)/cos, minFarther))
-		unsure[k].farther = float32(max(h-(st.leastU[k]-rk)/cos, minFarther))
+		row[k].farther = float32(max(p.equalRange(k, st.least[k]), minFarther))
+		unsure[k].farther = float32(max(p.equalRange(k, st.leastU[k]), minFarther))
 	}
 }

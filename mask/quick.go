@@ -10,15 +10,14 @@ const atLimit = 1. / (1 << 14)
 // from the cell's own centre over the bilinear surface, as settle does, but only
 // as far as the lines of the two lanes do not decide the rest with a slack of
 // their own.
-func (w *walker) quick(p *strip, u, v, k int, m *lane, doubt doubts) {
+func (w *walker) quick(p *strip, u, v, k int, m *lane, doubt doubts, slackM, slackR float64) {
 	w.f = p.f
 	w.y = newRay(p.f.ln, u, v)
-	ln := p.f.ln
-	q := quickWalk{walker: w, p: p, u: u, k: k, slackM: settleShare * ln.rowM, slackR: settleShare * ln.rowR}
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
-	q.m, q.r = ln.at(s, h)
-	tinyM, tinyR := float32(atLimit*ln.rowM), float32(atLimit*ln.rowR)
+	q := quickWalk{walker: w, p: p, u: u, k: k, slackM: slackM * w.y.gain(s, h), slackR: slackR}
+	q.m, q.r = w.y.see(s, h)
+	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
 	if doubt&doubtClear != 0 {
 		m.clear = signed(m.clear, q.lit(false), tinyM)
 	}
@@ -95,9 +94,9 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		row := q.p.row(u)
 		a, b = float64(row[q.k].shade), float64(row[q.k+1].shade)
 	}
-	a, _ = q.f.ln.at(s, a)
-	b, _ = q.f.ln.at(s, b)
-	return around(a, b, 1/q.f.ln.rowM)
+	a, _ = q.y.see(s, a)
+	b, _ = q.y.see(s, b)
+	return around(a, b, settleShare/q.slackM)
 }
 
 func around(a, b, perRow float64) bounds {
@@ -131,9 +130,9 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 }
 
 func (q *quickWalk) ranges(a, b float32, s float64) bounds {
-	_, x := q.f.ln.at(s, float64(a))
-	_, y := q.f.ln.at(s, float64(b))
-	return around(x, y, 1/q.f.ln.rowR)
+	_, x := q.y.see(s, float64(a))
+	_, y := q.y.see(s, float64(b))
+	return around(x, y, settleShare/q.slackR)
 }
 
 // highest returns a bound of the heights on the path from row u, column va, to
@@ -163,7 +162,7 @@ func (q *quickWalk) lit(unknown bool) bool {
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
-		if high := q.highest(u, -1, va, vb); !(high+q.f.ln.cot*sa < q.m) {
+		if top, _ := q.y.see(sa, q.highest(u, -1, va, vb)); !(top < q.m) {
 			q.step(u, -1, va, vb, sa, sb)
 			for i := range q.pieces {
 				if g := &q.pieces[i]; g.m >= q.m && g.unknown == unknown {
@@ -190,7 +189,7 @@ func (q *quickWalk) edge(u int) bool {
 // edgePoint is the walk's point at row u with a height.
 func (q *quickWalk) edgePoint(u int, h float64) (g point) {
 	_, s := q.y.at(u)
-	g.m, g.r = q.f.ln.at(s, h)
+	g.m, g.r = q.y.see(s, h)
 	return g
 }
 

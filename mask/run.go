@@ -156,10 +156,7 @@ func newRunner(job Job) (*runner, error) {
 		r.threads = runtime.GOMAXPROCS(0)
 	}
 	for _, look := range job.Looks {
-		if look.Kind != geometry.Fixed {
-			return nil, fmt.Errorf("look %q: kind %q cannot be marched", look.Name, look.Kind)
-		}
-		if !(look.Incidence > 0 && look.Incidence < 90*geometry.Degree) || !look.Azimuth.Given() {
+		if look.Kind == geometry.Fixed && !(look.Incidence > 0 && look.Incidence < 90*geometry.Degree) || !look.Azimuth.Given() {
 			return nil, fmt.Errorf("look %q: needs an incidence between 0 and 90 degrees and an azimuth", look.Name)
 		}
 		for _, l := range job.Layers {
@@ -170,11 +167,72 @@ func newRunner(job Job) (*runner, error) {
 				return nil, fmt.Errorf("look %q: layer %q needs %v", look.Name, l, lacks)
 			}
 		}
-		r.looks = append(r.looks, fixedLanes(g, look))
+		ln, err := lanesOf(job.Source, look, job.Range)
+		if err != nil {
+			return nil, err
+		}
+		r.looks = append(r.looks, ln)
 	}
 	r.locks = make([]sync.Mutex, len(job.Looks))
 	r.tally = make([][256]int64, len(job.Looks))
 	return r, nil
+}
+
+// lanesOf lays out the range lines of a look.
+func lanesOf(src dem.Source, look geometry.Look, rng dem.Range) (*lanes, error) {
+	g := src.Grid()
+	switch look.Kind {
+	case geometry.Fixed:
+		return fixedLanes(g, look), nil
+	case geometry.Tripod:
+		return nil, fmt.Errorf("look %q: kind %q cannot be marched", look.Name, look.Kind)
+	}
+	p, err := PlatformOf(src, look)
+	if err != nil {
+		return nil, err
+	}
+	far := p
+	if more := extended(g, look, p); more.Kind == geometry.Flight {
+		if far, err = geometry.NewPlatform(more, geometry.Site{}); err != nil {
+			return nil, err
+		}
+	}
+	ln, err := trackLanes(g, look, far, rng)
+	if err != nil {
+		return nil, err
+	}
+	ln.platform = p
+	return ln, nil
+}
+
+// PlatformOf resolves a look that is not a plane wave over a DEM: anchored at
+// its centre, over its ground.
+func PlatformOf(src dem.Source, look geometry.Look) (geometry.Platform, error) {
+	g := src.Grid()
+	c := g.At(float64(g.Rows-1)/2, float64(g.Cols-1)/2)
+	return geometry.NewPlatform(look, geometry.Site{
+		Centre: geometry.Place{Lon: c.Lon, Lat: c.Lat},
+		Ground: func(p geometry.Place) float64 { return heightAt(src, p) },
+	})
+}
+
+// heightAt returns the bilinear height at a place, NaN outside the DEM and
+// where a height is missing or cannot be read.
+func heightAt(src dem.Source, p geometry.Place) float64 {
+	g := src.Grid()
+	row, col, ok := g.Find(p.Lon, p.Lat)
+	if !ok {
+		return nan
+	}
+	r, c := min(int(row), g.Rows-2), min(int(col), g.Cols-2)
+	var z [4]float32
+	if r < 0 || c < 0 || src.Read(dem.Window{Row: r, Col: c, Rows: 2, Cols: 2}, z[:]) != nil {
+		return nan
+	}
+	u, v := row-float64(r), col-float64(c)
+	a := float64(z[0]) + v*float64(z[1]-z[0])
+	b := float64(z[2]) + v*float64(z[3]-z[2])
+	return a + u*(b-a)
 }
 
 // tileSize returns the cells a side of a work tile: as large as memory allows,

@@ -19,6 +19,7 @@ type ray struct {
 	u0, v0         int     // the point itself, met without rounding
 	from, to       int     // the rows for which the following hold
 	va, dv, sa, ds float64 // at row from, and the change for one row
+	pa, dp         place   // of a platform, the same
 }
 
 func newRay(ln *lanes, u, v int) ray {
@@ -48,9 +49,59 @@ func (y *ray) enter(u int) {
 	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+1]-a[n])) }
 	y.sa, y.va = at(ln.s, n), at(ln.v, n)
 	y.ds, y.dv = (at(ln.s, n+ln.nk)-y.sa)/laneStep, (at(ln.v, n+ln.nk)-y.va)/laneStep
+	if ln.places != nil {
+		node := func(n int) place { return ln.places[n].plus(ln.places[n+1].minus(ln.places[n]), q) }
+		y.pa = node(n)
+		y.dp = place{}.plus(node(n+ln.nk).minus(y.pa), 1./laneStep)
+	}
 	if ln.uniform {
 		y.va, y.dv = y.k+float64(ln.slope*(float64(y.from)-ln.mid)), ln.slope
 	}
+}
+
+// see returns m and r of a height at ground distance s on the ray.
+func (y *ray) see(s, h float64) (m, r float64) {
+	if y.ln.places == nil {
+		return y.ln.at(s, h)
+	}
+	p := y.place(s)
+	return y.ln.view(&p, h)
+}
+
+// place returns the place at ground distance s.
+func (y *ray) place(s float64) place {
+	d := (s - y.sa) / y.ds
+	for range 2 { // s may lie between other rows of the lattice than before
+		u := y.from + int(math.Floor(d))
+		if d >= 0 && u <= y.to || u < 0 || u/laneStep >= y.ln.nu-1 {
+			break
+		}
+		y.enter(u)
+		d = (s - y.sa) / y.ds
+	}
+	return y.pa.plus(y.dp, d)
+}
+
+// worth returns what the way from ground distance sa to sb is worth: metres of
+// height at equal m, and at equal r.
+func (y *ray) worth(sa, sb, h float64) (m, r float64) {
+	if y.ln.places == nil {
+		return y.ln.cot * (sb - sa), y.ln.tan * (sb - sa)
+	}
+	m0, r0 := y.see(sa, h)
+	m1, r1 := y.see(sb, h)
+	up, nearer := y.see(sa, h+1)
+	return (m1 - m0) / (up - m0), (r1 - r0) / (r0 - nearer)
+}
+
+// gain returns the change of m for a metre of height.
+func (y *ray) gain(s, h float64) float64 {
+	if y.ln.places == nil {
+		return 1
+	}
+	a, _ := y.see(s, h)
+	b, _ := y.see(s, h+1)
+	return b - a
 }
 
 // point is a point of the surface on a range line, or unknown terrain.
@@ -81,8 +132,10 @@ func (w *walker) settle(f *field, u, v int) margins {
 	w.y = newRay(f.ln, u, v)
 	_, s := w.y.at(u)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
-	m, r := f.ln.at(s, h)
+	m, r := w.y.see(s, h)
 	x := w.towards(u, m, r)
+	gain := w.y.gain(s, h)
+	x.clear, x.clearU = x.clear/gain, x.clearU/gain
 	x.far, x.farU = math.Inf(1), math.Inf(1)
 	if x.clear > 0 {
 		x.far, x.farU = w.away(u, m, r)
@@ -97,7 +150,7 @@ func (f *field) height(u int, v float64) float64 {
 
 // towards walks from row u0 towards the radar.
 func (w *walker) towards(u0 int, m, r float64) margins {
-	f, lim, ln := w.f, w.f.lim, w.f.ln
+	f, lim := w.f, w.f.lim
 	w.seq, w.stack = w.seq[:0], w.stack[:0]
 	topClose, topFar, topU := math.Inf(-1), math.Inf(-1), math.Inf(-1)
 	mostU := math.Inf(-1)
@@ -126,8 +179,8 @@ func (w *walker) towards(u0 int, m, r float64) margins {
 	}
 	if f.ua == 0 && !lim.openEdge { // no worse than where the walk left the DEM
 		_, s := w.y.at(0)
-		um, _ := ln.at(s, lim.ceiling)
-		_, ur := ln.at(s, lim.low)
+		um, _ := w.y.see(s, lim.ceiling)
+		_, ur := w.y.see(s, lim.low)
 		topU, mostU = max(topU, um), max(mostU, ur)
 		w.doubt(um)
 	}
@@ -237,7 +290,7 @@ func (w *walker) away(u0 int, m, r float64) (sure, possible float64) {
 	}
 	if f.ub == ln.orient.u && !lim.openEdge {
 		_, s := w.y.at(f.ub - 1)
-		_, ur := ln.at(s, lim.ceiling)
+		_, ur := w.y.see(s, lim.ceiling)
 		any = min(any, ur)
 	}
 	if closeR <= r {
@@ -287,7 +340,7 @@ func (w *walker) step(u, dir int, va, vb, sa, sb float64) {
 // piece adds the samples of one stretch between two crossings of the grid, t0
 // excluded and t1 included, t counting from row u to the next.
 func (w *walker) piece(u, dir int, va, vb, sa, sb, t0, t1 float64) {
-	f, ln := w.f, w.f.ln
+	f := w.f
 	tm := (t0 + t1) / 2
 	c := math.Floor(va + tm*(vb-va))
 	z0 := f.z[(u-f.ua)*f.width:]
@@ -310,14 +363,15 @@ func (w *walker) piece(u, dir int, va, vb, sa, sb, t0, t1 float64) {
 	a := p0 + ep*x0
 	ds := sb - sa
 	emit := func(t float64) {
-		m, r := ln.at(sa+t*ds, a+t*(b+t*d))
+		m, r := w.y.see(sa+t*ds, a+t*(b+t*d))
 		w.pieces = append(w.pieces, point{m: m, r: r, close: t < 1})
 	}
 	// The vertices: m' = b + 2 d t + cot ds = 0, r' = sin ds - cos (b + 2 d t) = 0.
 	tv, tr := math.Inf(1), math.Inf(1)
 	if d != 0 {
-		tv = -(b + ln.cot*ds) / (2 * d)
-		tr = (ln.tan*ds - b) / (2 * d)
+		worthM, worthR := w.y.worth(sa, sb, a)
+		tv = -(b + worthM) / (2 * d)
+		tr = (worthR - b) / (2 * d)
 	}
 	if tr < tv {
 		tv, tr = tr, tv
@@ -340,13 +394,13 @@ func (w *walker) missing(u, dir int, va, vb, sa, sb, t0, t1 float64) {
 	if !f.lim.openEdge || mid >= 0 && mid <= last {
 		s := sa + t0*(sb-sa)
 		q := point{unknown: true}
-		q.m, _ = ln.at(s, f.lim.ceiling)
+		q.m, _ = w.y.see(s, f.lim.ceiling)
 		if dir < 0 {
-			_, q.r = ln.at(s, f.lim.low)
+			_, q.r = w.y.see(s, f.lim.low)
 		} else {
 			// The largest m that may hide is at the far end of the stretch.
-			q.m, _ = ln.at(sa+t1*(sb-sa), f.lim.ceiling)
-			_, q.r = ln.at(s, f.lim.ceiling)
+			q.m, _ = w.y.see(sa+t1*(sb-sa), f.lim.ceiling)
+			_, q.r = w.y.see(s, f.lim.ceiling)
 		}
 		w.pieces = append(w.pieces, q)
 	} else {
@@ -354,7 +408,7 @@ func (w *walker) missing(u, dir int, va, vb, sa, sb, t0, t1 float64) {
 	}
 	if t1 == 1 {
 		if h := f.height(u+dir, vb); h == h {
-			m, r := ln.at(sb, h)
+			m, r := w.y.see(sb, h)
 			w.pieces = append(w.pieces, point{m: m, r: r})
 		}
 	}

@@ -83,7 +83,7 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 		}
 		for j := range x.field.strips {
 			if x.strip.setUp(&x.field, x.field.first+j) {
-				x.strip.march(x.minShade, x.minFold)
+				x.strip.march()
 				x.cells()
 			}
 		}
@@ -96,27 +96,30 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 // begins, to the last bit.
 type standing struct{ v, end, dv, s, ds float64 }
 
-// windowStrip is a bundle of neighbouring lanes, see strip, by lane and row:
-// lane k's sample of row u is at k * rows + u - ua.
+// windowStrip is a bundle of neighbouring lanes, see strip. Samples are kept by
+// lane, two a row: lane k's at row u is at k * n + 2 (u - ua), and the next one
+// is halfway to row u + 1. Between its corners the surface may bulge, most where
+// a line runs along a diagonal, and the rows alone would not show it.
 type windowStrip struct {
 	f              *field
 	j, k0          int
 	u0, u1, ua, ub int
 	at             []standing // by row
-	s, h           []float64  // rounded; NaN where there is no height
-	// The rows, from ua, at which the tangents touch; -1 where the slope is
-	// not above the bound.
+	s, h           []float64  // rounded; NaN where there is no height, or halfway where it does not matter
+	// The hulls of what was passed before each sample, itself included, as the
+	// next sample on the hull; -1 at its end: upper and lower on the way away
+	// from the radar, upper on the way back.
 	shade, nearer, farther []int32
 	// Ground distance to the nearest unknown terrain towards the radar and away
 	// from it, infinite where there is none.
 	before, behind []float32
+	gaps           []bool // a height is missing between a row and the next
 
 	neg             []float64 // of one lane: heights upside down
-	link            []int32
 	roundS, roundH  float64
-	rows            int
+	rows, n         int
 	anyUnknown      bool
-	edgeLo, edgeHi  float64 // columns of the DEM
+	last            float64 // column of the DEM
 	nearEnd, farEnd bool    // the strip reaches the DEM's first, last row
 }
 
@@ -162,14 +165,16 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	for i := range p.at {
 		p.at[i] = p.stand(p.ua + i)
 	}
-	n := p.rows * windowLaneCount
-	p.s, p.h, p.neg, p.link = resize(p.s, n), resize(p.h, n), resize(p.neg, p.rows), resize(p.link, p.rows)
+	p.n = 2 * p.rows
+	n := p.n * windowLaneCount
+	p.s, p.h, p.neg = resize(p.s, n), resize(p.h, n), resize(p.neg, p.n)
 	p.shade, p.nearer, p.farther = resize(p.shade, n), resize(p.nearer, n), resize(p.farther, n)
-	p.edgeLo, p.edgeHi = 0, float64(ln.orient.v-1)
+	p.last = float64(ln.orient.v - 1)
 	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
 	p.anyUnknown = !f.sure
 	if p.anyUnknown {
-		p.before, p.behind = resize(p.before, n), resize(p.behind, n)
+		p.before, p.behind = resize(p.before, n/2), resize(p.behind, n/2)
+		p.gaps = resize(p.gaps, n/2)
 	}
 	return true
 }
@@ -198,51 +203,126 @@ func (p *windowStrip) columns(st *standing) (va, vb int) {
 	return max(va, p.f.v0), min(vb, p.f.v1)
 }
 
-// march samples the lanes and finds where the tangents touch.
-func (p *windowStrip) march(minShade, minFold float64) {
+// march samples the lanes and finds their hulls.
+func (p *windowStrip) march() {
 	for i := range p.at {
 		p.sample(i)
 	}
+	for i := range p.rows {
+		p.halfway(i)
+	}
 	for k := range windowLaneCount {
-		part := func(a []int32) []int32 { return a[k*p.rows:][:p.rows] }
-		s, h := p.s[k*p.rows:][:p.rows], p.h[k*p.rows:][:p.rows]
+		part := func(a []int32) []int32 { return a[k*p.n:][:p.n] }
+		s, h := p.s[k*p.n:][:p.n], p.h[k*p.n:][:p.n]
 		for i, x := range h {
 			p.neg[i] = -x
 		}
-		tangents(s, h, 1, minShade, p.link, part(p.shade))
-		tangents(s, p.neg, 1, minFold, p.link, part(p.nearer))
-		tangents(s, p.neg, -1, minFold, p.link, part(p.farther))
+		hull(s, h, 1, part(p.shade))
+		hull(s, p.neg, 1, part(p.nearer))
+		hull(s, p.neg, -1, part(p.farther))
 		if p.anyUnknown {
 			p.unknown(k, s, h)
 		}
 	}
 }
 
+// heights returns the stored heights of row ua + i and the column of the first.
+func (p *windowStrip) heights(i int) (z []float32, at int) {
+	f := p.f
+	r := p.ua + i - f.ua
+	return f.z[r*f.width:][:f.width], f.at[r]
+}
+
 // sample takes the heights and distances of row ua + i.
 func (p *windowStrip) sample(i int) {
 	st := &p.at[i]
-	z, at := p.f.z[(p.ua+i-p.f.ua)*p.f.width:][:p.f.width], float64(p.f.at[p.ua+i-p.f.ua])
-	v := st.v - at
-	for k, n := 0, i; k < windowLaneCount; k, n = k+1, n+p.rows {
+	z, at := p.heights(i)
+	v := st.v - float64(at)
+	for k, n := 0, 2*i; k < windowLaneCount; k, n = k+1, n+p.n {
 		p.h[n] = (lerp(z, v+float64(st.dv*float64(k))) + p.roundH) - p.roundH
 		p.s[n] = (st.s + float64(st.ds*float64(k)) + p.roundS) - p.roundS
 	}
 }
 
-// tangents finds for every sample of a lane, in the order of the march, the
-// sample passed before that the tangent to their upper hull touches: the one
-// with the largest slope
-//
-//	(h[j] - h[i]) / (s[i] - s[j])
-//
-// touch is its index, or -1 where the slope is not above least. Products are
-// exact, so that the answer is the true hull's; where several samples lie on
-// the tangent, the slope is that of each of them, to the last bit.
-//
-// Forward with heights upside down the slope is the steepest descent towards
-// the radar, backward so the horizon away from it. link is scratch: the hull,
-// from each sample to the next.
-func tangents(s, h []float64, dir int, least float64, link, touch []int32) {
+// bulgeShare is the part of the ground distance of a row by which the surface
+// halfway must leave the straight line to count: a tenth of a degree seen from
+// the next cell.
+const bulgeShare = 0.002
+
+// halfway takes the heights and distances between rows ua + i and ua + i + 1,
+// where the surface bulges.
+func (p *windowStrip) halfway(i int) {
+	if i == p.rows-1 {
+		for n := 2*i + 1; n < len(p.h); n += p.n {
+			p.h[n] = nan
+		}
+		return
+	}
+	a, b := &p.at[i], &p.at[i+1]
+	za, ca := p.heights(i)
+	zb, cb := p.heights(i + 1)
+	v, dv := (a.v+b.v)/2, (a.dv+b.dv)/2
+	least := bulgeShare * math.Abs(b.s-a.s)
+	straight := a.v == b.v && a.dv == b.dv
+	for k, n := 0, 2*i+1; k < windowLaneCount; k, n = k+1, n+p.n {
+		p.h[n] = nan
+		if straight {
+			continue
+		}
+		c := v + float64(dv*float64(k))
+		j := math.Floor(c)
+		x, l, m := c-j, int(j)-ca, int(j)-cb
+		h := (lerpAt(za, l, x) + lerpAt(zb, m, x)) / 2
+		if d := h - (p.h[n-1]+p.h[n+1])/2; d > least || d < -least {
+			p.h[n] = (h + p.roundH) - p.roundH
+			p.s[n] = ((p.s[n-1]+p.s[n+1])/2 + p.roundS) - p.roundS
+		}
+	}
+	if p.anyUnknown {
+		p.gapsAt(i)
+	}
+}
+
+// lerpAt is lerp for an index that is already parted.
+func lerpAt(z []float32, i int, rest float64) float64 {
+	a, b := float64(z[i]), float64(z[i+1])
+	return a + float64(rest*(b-a))
+}
+
+// gapsAt notes where the surface is not known between row ua + i and the next.
+func (p *windowStrip) gapsAt(i int) {
+	for k := range windowLaneCount {
+		p.gaps[k*p.rows+i] = p.gap(i, float64(k))
+	}
+}
+
+// gap reports whether the surface along a lane, which may be fractional, is not
+// known somewhere between row ua + i and the next. With an open edge all is
+// known outside.
+func (p *windowStrip) gap(i int, k float64) bool {
+	za, ca := p.heights(i)
+	zb, cb := p.heights(i + 1)
+	va, vb := p.at[i].v+float64(p.at[i].dv*k), p.at[i+1].v+float64(p.at[i+1].dv*k)
+	lo, hi := min(va, vb), max(va, vb)
+	if lo < 0 || hi > p.last {
+		if !p.f.lim.openEdge {
+			return true
+		}
+		lo, hi = max(lo, 0), min(hi, p.last)
+	}
+	for c := int(math.Floor(lo)); c <= int(math.Ceil(hi)); c++ {
+		if za[c-ca] != za[c-ca] || zb[c-cb] != zb[c-cb] {
+			return true
+		}
+	}
+	return false
+}
+
+// hull links every sample of a lane to the next one on the upper hull of what
+// the march passed before it, at a constant cost a sample. Backward with heights
+// upside down the hull is an upper one again, forward so a lower one. Products
+// are exact: no sample is on the hull that does not belong there.
+func hull(s, h []float64, dir int, link []int32) {
 	n := len(h)
 	from, to := 0, n
 	if dir < 0 {
@@ -251,59 +331,74 @@ func tangents(s, h []float64, dir int, least float64, link, touch []int32) {
 	last := int32(-1)
 	for i := from; i != to; i += dir {
 		hi, si := h[i], s[i]
-		touch[i] = -1
 		if hi != hi {
 			continue
 		}
 		j := last
 		last = int32(i)
-		if j < 0 {
-			link[i] = -1
-			continue
-		}
-		hj, sj := h[j], s[j]
-		for {
-			k := link[j]
-			if k < 0 {
-				break
+		if j >= 0 {
+			hj, sj := h[j], s[j]
+			for k := link[j]; k >= 0; k = link[j] {
+				hk, sk := h[k], s[k]
+				if float64((hj-hk)*(si-sj)) > float64((hi-hj)*(sj-sk)) {
+					break
+				}
+				j, hj, sj = k, hk, sk
 			}
-			hk, sk := h[k], s[k]
-			if float64((hj-hk)*(si-sj)) > float64((hi-hj)*(sj-sk)) {
-				break
-			}
-			j, hj, sj = k, hk, sk
 		}
 		link[i] = j
-		if (hj-hi)/(si-sj) > least {
-			touch[i] = j
-		}
 	}
 }
 
-// unknown fills the distances of lane k to unknown terrain. Where it ends
-// between two rows it reaches, at worst, the row that is known.
-func (p *windowStrip) unknown(k int, s, h []float64) {
-	open := p.f.lim.openEdge
-	inf := math.Inf(1)
-	counts := func(i int) bool {
-		v := p.at[i].v + float64(p.at[i].dv*float64(k))
-		return !open || v >= p.edgeLo && v <= p.edgeHi
+// touch returns the sample at which the tangent from a point over row ua + i of
+// lane k, at height h, touches the hull of the lane's ground from ownRows on:
+// the sample with the largest
+//
+//	sign (h[j] - h) / |s[j] - s|
+//
+// It returns -1 where that is not above least. Of samples at the same slope it
+// is the nearest, so that it does not depend on ground out of reach.
+func (p *windowStrip) touch(link []int32, k, i, dir int, sign, h, least float64) int {
+	base := k * p.n
+	s, hs, next := p.s[base:][:p.n], p.h[base:][:p.n], link[base:][:p.n]
+	s0 := s[2*i]
+	j := 2 * (i + ownRows*dir)
+	for j >= 0 && j < p.n && hs[j] != hs[j] {
+		j += dir
 	}
-	walk := func(out []float32, from, to, dir int, edge bool) {
-		place, after := inf, edge && !open
+	if j < 0 || j >= p.n {
+		return -1
+	}
+	rise, away := sign*(hs[j]-h), math.Abs(s[j]-s0)
+	for l := next[j]; l >= 0; l = next[j] {
+		r, a := sign*(hs[l]-h), math.Abs(s[l]-s0)
+		if float64(r*away) <= float64(rise*a) {
+			break
+		}
+		j, rise, away = int(l), r, a
+	}
+	if rise <= least*away {
+		return -1
+	}
+	return j
+}
+
+// unknown fills the distances of lane k to unknown terrain. Where there is some
+// between two rows it reaches, at worst, the row itself.
+func (p *windowStrip) unknown(k int, s, h []float64) {
+	gaps := p.gaps[k*p.rows:][:p.rows]
+	walk := func(out []float32, from, to, dir, gap int, edge bool) {
+		place := math.Inf(1)
+		edge = edge && !p.f.lim.openEdge
 		for i := from; i != to; i += dir {
-			if h[i] != h[i] {
-				after = after || counts(i)
-				continue
+			if i == from && edge || i != from && gaps[i+gap] {
+				place = s[2*i]
 			}
-			if after {
-				place, after = s[i], false
-			}
-			out[i] = float32(math.Abs(place - s[i]))
+			out[i] = float32(math.Abs(place - s[2*i]))
 		}
 	}
-	walk(p.before[k*p.rows:][:p.rows], 0, p.rows, 1, p.nearEnd)
-	walk(p.behind[k*p.rows:][:p.rows], p.rows-1, -1, -1, p.farEnd)
+	walk(p.before[k*p.rows:][:p.rows], 0, p.rows, 1, -1, p.nearEnd)
+	walk(p.behind[k*p.rows:][:p.rows], p.rows-1, -1, -1, 0, p.farEnd)
 }
 
 // cells takes the slopes of the strip's cells.
@@ -344,30 +439,36 @@ func (x *windower) cell(u, v int) slopes {
 	}
 	out := slopes{shade: x.minShade, fold: x.minFold}
 	k := min(int(own.k), laneStep-1)
-	a := k*p.rows + i
+	a := k*p.n + 2*i
 	b := a
 	if float64(k) != own.k {
-		b += p.rows
+		b += p.n
 	}
 	if p.h[a] != p.h[a] || p.h[b] != p.h[b] {
 		return x.walk(&own)
 	}
 	own.step(&out)
-	touch := func(rows []int32, sign float64, most *float64) {
-		j := rows[a]
+	own.beyond(&out)
+	h := (own.h + p.roundH) - p.roundH
+	tangent := func(link []int32, dir int, sign, least float64, most *float64) {
+		j := p.touch(link, k, i, dir, sign, h, least)
 		if j >= 0 {
-			own.around(int(j), sign, most)
+			own.around(j, sign, most)
 		}
-		if l := rows[b]; l >= 0 && l != j {
-			own.around(int(l), sign, most)
+		if b == a {
+			return
+		}
+		if l := p.touch(link, k+1, i, dir, sign, h, least); l >= 0 && l != j {
+			own.around(l, sign, most)
 		}
 	}
-	touch(p.shade, 1, &out.shade)
-	touch(p.nearer, -1, &out.fold)
-	touch(p.farther, 1, &out.fold)
+	tangent(p.shade, -1, 1, x.minShade, &out.shade)
+	tangent(p.nearer, -1, -1, x.minFold, &out.fold)
+	tangent(p.farther, 1, 1, x.minFold, &out.fold)
 	out.shadeU, out.foldU = out.shade, out.fold
 	if p.anyUnknown {
-		x.worst(&out, own.h, float64(min(p.before[a], p.before[b])), float64(min(p.behind[a], p.behind[b])))
+		c, d := k*p.rows+i, (b/p.n)*p.rows+i
+		x.worst(&out, own.h, float64(min(p.before[c], p.before[d])), float64(min(p.behind[c], p.behind[d])))
 	}
 	return out
 }
@@ -452,18 +553,60 @@ func (o *ownLine) height(row int) (h, s float64) {
 	return lerp(f.z[i*f.width:(i+1)*f.width], st.v+float64(st.dv*o.k)-float64(f.at[i])), st.s + float64(st.ds*o.k)
 }
 
-// around counts the slopes to the line's ground at a row and up to the next
-// rows on both sides: most becomes the largest of sign (h - h0) / distance that
-// is above it.
-func (o *ownLine) around(row int, sign float64, most *float64) {
+// ownRows is the number of rows on both sides of a cell that are looked at on its
+// own range line throughout. Farther away the lanes beside it show where to look:
+// there they see the ground under nearly the same angle.
+const ownRows = 1
+
+// beyond counts the rows from the second to ownRows on both sides.
+func (o *ownLine) beyond(out *slopes) {
+	for r := 2; r <= ownRows; r++ {
+		if i := o.i - r; i >= 0 {
+			h, s := o.height(i)
+			m := (h - o.h) / (o.s - s)
+			if m > out.shade {
+				out.shade = m
+			}
+			if -m > out.fold {
+				out.fold = -m
+			}
+		}
+		if i := o.i + r; i < o.p.rows {
+			h, s := o.height(i)
+			if m := (h - o.h) / (s - o.s); m > out.fold {
+				out.fold = m
+			}
+		}
+	}
+}
+
+// around counts the slopes to the line's ground about a sample of a lane: most
+// becomes the largest of sign (h - h0) / distance that is above it.
+func (o *ownLine) around(sample int, sign float64, most *float64) {
+	row := sample / 2
+	if sample%2 == 1 {
+		o.at(row, sign, most)
+		o.at(row+1, sign, most)
+		if row != o.i && row+1 != o.i {
+			o.between(row, row+1, sign, most)
+		}
+		return
+	}
+	o.at(row, sign, most)
+	for next := row - 1; next <= row+1; next += 2 {
+		if next >= 0 && next < o.p.rows && next != o.i {
+			o.between(row, next, sign, most)
+		}
+	}
+}
+
+func (o *ownLine) at(row int, sign float64, most *float64) {
+	if row == o.i {
+		return
+	}
 	h, s := o.height(row)
 	if m := sign * (h - o.h) / math.Abs(s-o.s); m > *most {
 		*most = m
-	}
-	for dir := -1; dir <= 1; dir += 2 {
-		if next := row + dir; next >= 0 && next < o.p.rows && next != o.i && row != o.i {
-			o.between(row, next, sign, most)
-		}
 	}
 }
 
@@ -528,7 +671,6 @@ func (x *windower) walk(o *ownLine) slopes {
 	enough := rise / min(x.minShade, x.minFold) // beyond it nothing counts
 	side := func(dir int, edge bool) (unknown float64) {
 		unknown = math.Inf(1)
-		note := func(s float64) { unknown = min(unknown, math.Abs(s-o.s)) }
 		last := o.s
 		for r := o.i + dir; r >= 0 && r < p.rows; r += dir {
 			h, s := o.height(r)
@@ -536,13 +678,10 @@ func (x *windower) walk(o *ownLine) slopes {
 			if d > enough {
 				return unknown
 			}
-			v := p.at[r].v + float64(p.at[r].dv*o.k)
-			switch {
-			case h == h:
-				last = s
-			case !lim.openEdge || v >= p.edgeLo && v <= p.edgeHi:
-				note(last)
+			if p.anyUnknown && p.gap(min(r, r-dir), o.k) {
+				unknown = min(unknown, math.Abs(last-o.s))
 			}
+			last = s
 			m := (h - o.h) / d
 			if dir < 0 {
 				if m > out.shade {
@@ -555,7 +694,7 @@ func (x *windower) walk(o *ownLine) slopes {
 			}
 		}
 		if edge && !lim.openEdge {
-			note(last)
+			unknown = min(unknown, math.Abs(last-o.s))
 		}
 		return unknown
 	}

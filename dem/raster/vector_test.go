@@ -403,7 +403,9 @@ func TestGeoPackage(t *testing.T) {
 	require.NoError(t, err)
 	columns := []Column{{"site", ""}, {"clearance", 0.0}, {"code", int64(0)}, {"open", false}}
 	rows := [][]any{{`<&"' ü`, 12.25, int64(10), true}, {"b", math.NaN(), nil, false}}
-	require.NoError(t, set.Vectors("out.gpkg", grid, []VectorLayer{
+	file, err := set.VectorFile("out.gpkg")
+	require.NoError(t, err)
+	require.NoError(t, file.Write(grid, []VectorLayer{
 		{Name: "sites", Columns: columns, Rows: 2, Row: func(i int) ([][2]float64, []any) {
 			return [][2]float64{threePlaces[i]}, rows[i]
 		}},
@@ -433,7 +435,8 @@ func TestGeoPackage(t *testing.T) {
 	require.NoError(t, err)
 	defer set.Abort()
 	require.NoError(t, os.WriteFile(filepath.Join(dir, "out.gpkg-wal"), []byte("x"), 0o600))
-	assert.ErrorContains(t, set.Vectors("out.gpkg", grid, nil), "open in another program")
+	_, err = set.VectorFile("out.gpkg")
+	assert.ErrorContains(t, err, "open in another program")
 }
 
 // TestLonLat against gdaltransform, which made threePlaces.

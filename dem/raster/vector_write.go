@@ -34,33 +34,45 @@ type VectorLayer struct {
 	Rows int
 }
 
-// Vectors writes a GeoPackage in the CRS of a grid, to become the file rel of
-// the set. It is complete when Vectors returns. It panics when a row has
-// another number of values than there are columns.
-func (s *Set) Vectors(rel string, grid *dem.Grid, layers []VectorLayer) error {
+// VectorFile is a GeoPackage of a Set whose name is claimed.
+type VectorFile struct {
+	set              *Set
+	rel, path, final string
+}
+
+// VectorFile claims the name of a GeoPackage, relative to the output folder
+// with forward slashes.
+func (s *Set) VectorFile(rel string) (*VectorFile, error) {
 	temp, err := s.claim(rel)
 	if err != nil {
-		return err
+		return nil, err
 	}
 	final := filepath.Join(s.dir, filepath.FromSlash(rel))
 	for _, side := range []string{"-wal", "-journal"} {
 		if info, err := os.Stat(final + side); err == nil && info.Size() > 0 {
-			return &OutputError{Path: final, Text: fmt.Sprintf("seems to be open in another program, since %q stands beside it; close it there or choose another name", filepath.Base(final)+side)}
+			return nil, &OutputError{Path: final, Text: fmt.Sprintf("seems to be open in another program, since %q stands beside it; close it there or choose another name", filepath.Base(final)+side)}
 		}
 	}
-	if err := writeGeoPackage(temp, grid, layers); err != nil {
-		return failed(final, "write", err)
+	return &VectorFile{s, rel, temp, final}, nil
+}
+
+// Write writes the layers in the CRS of a grid, once. The file is complete when
+// Write returns, and gets its name when the set is committed. It panics when a
+// row has another number of values than there are columns.
+func (f *VectorFile) Write(grid *dem.Grid, layers []VectorLayer) error {
+	if err := writeGeoPackage(f.path, grid, layers); err != nil {
+		return failed(f.final, "write", err)
 	}
-	f, err := os.OpenFile(temp, os.O_RDWR, 0)
+	file, err := os.OpenFile(f.path, os.O_RDWR, 0)
 	if err != nil {
-		return failed(final, "write", err)
+		return failed(f.final, "write", err)
 	}
-	if err := errors.Join(f.Sync(), f.Close()); err != nil {
-		return failed(final, "write", err)
+	if err := errors.Join(file.Sync(), file.Close()); err != nil {
+		return failed(f.final, "write", err)
 	}
-	s.mu.Lock()
-	s.files = append(s.files, &File{rel: rel, path: temp, final: final, closed: true})
-	s.mu.Unlock()
+	f.set.mu.Lock()
+	f.set.files = append(f.set.files, &File{rel: f.rel, path: f.path, final: f.final, closed: true})
+	f.set.mu.Unlock()
 	return nil
 }
 

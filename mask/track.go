@@ -1,0 +1,264 @@
+package mask
+
+import (
+	"fmt"
+	"math"
+
+	"foldshade/dem"
+	"foldshade/geometry"
+)
+
+// place is a point of the ground in its range plane, seen from the antenna: x
+// metres of level distance on the side where the radar looks, y metres up, at
+// the height of reference; nx, ny are what a metre of height adds.
+type place struct{ x, y, nx, ny float64 }
+
+func (a place) plus(b place, t float64) place {
+	return place{a.x + float64(t*b.x), a.y + float64(t*b.y), a.nx + float64(t*b.nx), a.ny + float64(t*b.ny)}
+}
+
+func (a place) minus(b place) place {
+	return place{a.x - b.x, a.y - b.y, a.nx - b.nx, a.ny - b.ny}
+}
+
+// view is lens.at for a platform: with h counted from the height of reference
+//
+//	X = x + h nx,  Y = y + h ny,  m = scale Y / X,  r = sqrt(X^2 + Y^2)
+//
+// m is the tangent of the elevation at the antenna, which grows with the look
+// angle, in metres of height at the middle of the DEM.
+func (l *lens) view(p *place, h float64) (m, r float64) {
+	h -= l.datum
+	x, y := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	if x <= 0 { // under the track or beyond it: none of the look's ground
+		return math.Inf(-1), math.Inf(-1)
+	}
+	return l.scale * y / x, math.Sqrt(float64(x*x) + float64(y*y))
+}
+
+// shadeHeight returns the height at which a place has the given m.
+func (l *lens) shadeHeight(p *place, m float64) float64 {
+	t := m / l.scale
+	return l.datum + (float64(t*p.x)-p.y)/(p.ny-float64(t*p.nx))
+}
+
+// rangeHeight returns the height below the antenna at which a place has slant
+// range r; NaN where no height has.
+func (l *lens) rangeHeight(p *place, r float64) float64 {
+	n := p.nx*p.nx + p.ny*p.ny
+	b := p.x*p.nx + p.y*p.ny
+	return l.datum + (-b-math.Sqrt(b*b-n*(p.x*p.x+p.y*p.y-r*r)))/n
+}
+
+// angle returns sine and cosine of the incidence at a place and height.
+func (l *lens) angle(p *place, h float64) (sin, cos float64) {
+	h -= l.datum
+	x, y := p.x+h*p.nx, p.y+h*p.ny
+	cos = -(x*p.nx + y*p.ny) / math.Sqrt((x*x+y*y)*(p.nx*p.nx+p.ny*p.ny))
+	return math.Sqrt(max(1-cos*cos, 0)), cos
+}
+
+// trackLanes lays out the range lines of a platform on a track: lane k is where
+// the range plane through column k of the middle row meets the ground.
+func trackLanes(g *dem.Grid, look geometry.Look, p geometry.Platform, lim dem.Range) (*lanes, error) {
+	tr := tracker{g: g, p: p, datum: (lim.Min + lim.Max) / 2, left: look.Side == geometry.Left}
+	ln := &lanes{lens: lens{datum: tr.datum, scale: 1}, platform: p}
+	cr, cc := float64(g.Rows-1)/2, float64(g.Cols-1)/2
+	v, ok := tr.view(cr, cc)
+	if !ok {
+		return nil, fmt.Errorf("look %q: the track does not come abreast of the DEM's centre", look.Name)
+	}
+	l := g.At(cr, cc)
+	dr, dc := indexDirection(l, v.LookAzimuth)
+	if math.Abs(dr) >= math.Abs(dc)*(1-1e-6) {
+		ln.orient = newOrient(g, false, dr < 0)
+	} else {
+		ln.orient = newOrient(g, true, dc < 0)
+	}
+	tr.ln = ln
+	if err := tr.layOut(dr, dc); err != nil {
+		return nil, fmt.Errorf("look %q: %w", look.Name, err)
+	}
+	tr.bound(lim)
+	return ln, nil
+}
+
+// tracker builds the lanes of a platform.
+type tracker struct {
+	g     *dem.Grid
+	p     geometry.Platform
+	ln    *lanes
+	datum float64
+	left  bool
+}
+
+// point returns the earth-centred point at a grid position and the height of
+// reference.
+func (tr *tracker) point(row, col float64) geometry.Geodetic {
+	l := tr.g.At(row, col)
+	return geometry.Geodetic{Place: geometry.Place{Lon: l.Lon, Lat: l.Lat}, Height: tr.datum}
+}
+
+func (tr *tracker) view(row, col float64) (geometry.View, bool) {
+	v, _ := tr.p.View(tr.point(row, col))
+	return v, v.T == v.T
+}
+
+// abreast returns the parameter of the range plane through a marching position.
+func (tr *tracker) abreast(u, v float64) (t float64, ok bool) {
+	return tr.p.ZeroDoppler(tr.point(tr.ln.cell(u, v)).ECEF())
+}
+
+// layOut finds where the range plane of each node lane crosses each node row,
+// by the secant method along the row, and the places there.
+func (tr *tracker) layOut(dr, dc float64) error {
+	ln := tr.ln
+	ln.nu = (ln.orient.u-1)/laneStep + 2
+	ln.mid = float64(ln.orient.u-1) / 2
+	du, dv := dr, dc
+	if ln.transposed {
+		du, dv = dc, dr
+	}
+	drift := dv / math.Abs(du)
+	// The lanes spread over the DEM's columns at every row; half as much again
+	// covers how range lines turn across it.
+	reach := 1.5*math.Abs(drift)*float64(ln.orient.u)/2 + 2*laneStep
+	ln.first = laneStep * int(math.Floor(-reach/laneStep))
+	ln.nk = (int(math.Ceil(float64(ln.orient.v)+reach))-ln.first)/laneStep + 2
+	n := ln.nu * ln.nk
+	ln.v, ln.s, ln.places = make([]float64, n), make([]float64, n), make([]place, n)
+	for j := range ln.nk {
+		k := float64(ln.first + laneStep*j)
+		t, ok := tr.abreast(ln.mid, k)
+		if !ok {
+			return fmt.Errorf("the track does not come abreast of all of the DEM and its surroundings; a longer track is needed")
+		}
+		pos, vel := tr.p.State(t)
+		plane := newRangePlane(pos, vel, tr.left)
+		middle := int(ln.mid) / laneStep
+		if err := tr.trace(j, k, t, drift, &plane, middle, -1); err != nil {
+			return err
+		}
+		if err := tr.trace(j, k, t, drift, &plane, middle+1, 1); err != nil {
+			return err
+		}
+		tr.measure(j)
+	}
+	return nil
+}
+
+// trace follows one lane from the middle row to the first or the last.
+func (tr *tracker) trace(j int, k, t, drift float64, plane *rangePlane, from, dir int) error {
+	ln := tr.ln
+	v, u := k, ln.mid
+	for i := from; i >= 0 && i < ln.nu; i += dir {
+		to := float64(laneStep * i)
+		a := v + drift*(to-u)
+		ta, ok := tr.abreast(to, a)
+		tb, okB := tr.abreast(to, a+1)
+		if !ok || !okB {
+			return fmt.Errorf("the track does not come abreast of all of the DEM and its surroundings; a longer track is needed")
+		}
+		for range 6 { // t is all but linear in the column
+			step := (t - ta) / (tb - ta)
+			a += step
+			if math.Abs(step) < 1e-7 {
+				break
+			}
+			next, ok := tr.abreast(to, a)
+			if !ok {
+				return fmt.Errorf("the track does not come abreast of all of the DEM and its surroundings; a longer track is needed")
+			}
+			ta, tb = next, next+(tb-ta)
+		}
+		if to != u {
+			drift = (a - v) / (to - u)
+		}
+		u, v = to, a
+		n := i*ln.nk + j
+		ln.v[n] = v
+		ln.places[n] = plane.place(tr.point(ln.cell(u, v)))
+	}
+	return nil
+}
+
+// rangePlane is the frame of a range plane at the antenna.
+type rangePlane struct {
+	origin, level, up geometry.ECEF
+}
+
+// newRangePlane takes the plane at right angles to the earth-fixed velocity; the
+// level axis points to the side of the look.
+func newRangePlane(pos, vel geometry.ECEF, left bool) rangePlane {
+	out := pos.Scale(1 / pos.Norm())
+	along := vel.Scale(1 / vel.Norm())
+	level := along.Cross(out)
+	level = level.Scale(1 / level.Norm())
+	up := level.Cross(along)
+	if left {
+		level = level.Scale(-1)
+	}
+	return rangePlane{pos, level, up}
+}
+
+// place resolves a ground point in the plane.
+func (r *rangePlane) place(g geometry.Geodetic) place {
+	d := g.ECEF().Sub(r.origin)
+	n := g.FromENU(geometry.ENU{Up: 1})
+	return place{d.Dot(r.level), d.Dot(r.up), n.Dot(r.level), n.Dot(r.up)}
+}
+
+// measure fills the ground distances along one lane, from its first row.
+func (tr *tracker) measure(j int) {
+	ln := tr.ln
+	if j == 0 {
+		ln.minDS = math.Inf(1)
+	}
+	for i := 1; i < ln.nu; i++ {
+		n := i*ln.nk + j
+		u, v := float64(laneStep*i)-laneStep/2, (ln.v[n]+ln.v[n-ln.nk])/2
+		ue, un, ve, vn := ln.step(tr.g, u, v)
+		b := (ln.v[n] - ln.v[n-ln.nk]) / laneStep
+		ds := math.Hypot(ue+b*ve, un+b*vn)
+		ln.minDS = math.Min(ln.minDS, ds)
+		ln.s[n] = ln.s[n-ln.nk] + laneStep*ds
+	}
+}
+
+// bound finds the extremes of the incidence over the DEM that the reach and
+// the least worth of a row come from, and the scale of m.
+func (tr *tracker) bound(lim dem.Range) {
+	ln := tr.ln
+	minCos, maxCos := 1.0, -1.0
+	var middle place
+	for i := range ln.nu {
+		for j := range ln.nk {
+			n := i*ln.nk + j
+			if v := ln.v[n]; v < -laneStep || v > float64(ln.orient.v+laneStep) {
+				continue
+			}
+			p := &ln.places[n]
+			for _, h := range [2]float64{lim.Min, lim.Max} {
+				_, cos := ln.angle(p, h)
+				minCos, maxCos = min(minCos, cos), max(maxCos, cos)
+			}
+		}
+	}
+	i, j, p, q := ln.locate(ln.mid, float64(ln.orient.v-1)/2)
+	n := i*ln.nk + j
+	top := ln.places[n].plus(ln.places[n+ln.nk].minus(ln.places[n]), p)
+	end := ln.places[n+1].plus(ln.places[n+1+ln.nk].minus(ln.places[n+1]), p)
+	middle = top.plus(end.minus(top), q)
+	// dm/dh = scale (ny x - nx y) / x^2 is made one there.
+	ln.scale = middle.x * middle.x / (middle.ny*middle.x - middle.nx*middle.y)
+	ln.sin, ln.cos = ln.angle(&middle, tr.datum)
+	ln.cot, ln.tan = ln.cos/ln.sin, ln.sin/ln.cos
+	sinOf := func(cos float64) float64 { return math.Sqrt(max(1-cos*cos, 1e-12)) }
+	ln.cotMost = max(maxCos, 0) / sinOf(maxCos)
+	ln.tanMost = math.Inf(1)
+	if minCos > 1e-3 {
+		ln.tanMost = sinOf(minCos) / minCos
+	}
+	ln.rowM = ln.minDS * max(minCos, 0.01) / sinOf(max(minCos, 0))
+	ln.rowR = ln.minDS * sinOf(maxCos)
+}
