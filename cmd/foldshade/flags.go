@@ -13,14 +13,16 @@ import (
 
 // The headings under which the help lists flags, in its order.
 const (
-	groupInput   = "Input"
-	groupLook    = "Look"
-	groupTerrain = "Terrain that the DEM does not show"
-	groupOutput  = "Output"
-	groupMachine = "Machine"
+	groupInput      = "Input"
+	groupLook       = "Look"
+	groupTerrain    = "Terrain that the DEM does not show"
+	groupConfidence = "Error of the DEM"
+	groupReflector  = "Corner reflector"
+	groupOutput     = "Output"
+	groupMachine    = "Machine"
 )
 
-var groups = []string{groupInput, groupLook, groupTerrain, groupOutput, groupMachine}
+var groups = []string{groupInput, groupLook, groupTerrain, groupConfidence, groupReflector, groupOutput, groupMachine}
 
 // Flag annotations that the help reads: the heading, and the placeholder of
 // the value.
