@@ -46,7 +46,7 @@ func printHelp(cmd *cobra.Command, _ []string) {
 	printFlags(w, "Other", flagsOf(cmd, ""))
 	if cmd.Flags().Lookup("look") != nil {
 		fmt.Fprintf(w, "\nKeys of a look:\n")
-		for line := range strings.Lines(geometry.KeyHelp(geometry.Fixed)) {
+		for line := range strings.Lines(geometry.KeyHelp(kindsOf(cmd)...)) {
 			printWrapped(w, strings.TrimSpace(line))
 		}
 	}
@@ -61,10 +61,21 @@ func printHelp(cmd *cobra.Command, _ []string) {
 	}
 }
 
+// kindsOf returns the kinds of look that a command takes.
+func kindsOf(cmd *cobra.Command) []geometry.Kind {
+	switch cmd.Name() {
+	case "looks":
+		return geometry.Kinds
+	case "layers", "inspect":
+		return geometry.DrivenKinds
+	}
+	return []geometry.Kind{geometry.Fixed}
+}
+
 // printWrapped writes a word and the text after it in two columns of a page of
 // 80.
 func printWrapped(w io.Writer, line string) {
-	const first, page = 16, 80
+	const first, page = 20, 80
 	name, text, _ := strings.Cut(line, " ")
 	used := 0
 	fmt.Fprintf(w, "  %-*s", first, name)

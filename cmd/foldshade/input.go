@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"io"
+	"strings"
 
 	"github.com/spf13/cobra"
 
@@ -52,7 +53,7 @@ type lookFlags struct {
 
 func (l *lookFlags) define(cmd *cobra.Command) {
 	f := newFlags(cmd)
-	f.StringArrayVar(&l.looks, "look", nil, "one look; repeat the flag for more. A fixed look takes\nincidence (degrees at the ground) with azimuth (where the\nradar looks, degrees clockwise from true north), or\nheading with side")
+	f.StringArrayVar(&l.looks, "look", nil, "one look; repeat the flag for more. A fixed look takes\nincidence (degrees at the ground) with azimuth (where the\nradar looks, degrees clockwise from true north), or\nheading with side; docs/looks.md has the other kinds")
 	f.StringVar(&l.file, "looks", "", "file of looks, .yaml, .yml or .csv, with the same keys")
 	inGroup(cmd, groupLook, "look KEY=VALUE,...", "looks FILE")
 }
@@ -83,12 +84,34 @@ func (l *lookFlags) read() ([]geometry.Look, error) {
 	return looks, nil
 }
 
-// fixedOnly refuses the kinds of look that the marching does not serve.
+// fixedOnly refuses looks that are no plane waves, for the jobs that need one
+// direction everywhere.
 func fixedOnly(looks []geometry.Look) error {
 	for _, l := range looks {
 		if l.Kind != geometry.Fixed {
-			return usagef("look %q is of kind %s; this version computes kind fixed", l.Name, l.Kind)
+			return hint(usagef("look %q is of kind %s; this command takes kind fixed", l.Name, l.Kind),
+				"`foldshade layers` takes "+driven()+"; `foldshade looks` shows the angles of any kind")
 		}
 	}
 	return nil
+}
+
+// drivenOnly refuses the kinds of look that the marching does not serve.
+func drivenOnly(looks []geometry.Look) error {
+	for _, l := range looks {
+		if !l.Driven() {
+			return hint(usagef("look %q is of kind %s; layers are computed for %s", l.Name, l.Kind, driven()),
+				"`foldshade looks` shows the geometry of this kind")
+		}
+	}
+	return nil
+}
+
+// driven lists the kinds that the marching serves.
+func driven() string {
+	var names []string
+	for _, kind := range geometry.DrivenKinds {
+		names = append(names, string(kind))
+	}
+	return strings.Join(names, ", ")
 }

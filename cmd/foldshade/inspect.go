@@ -101,7 +101,7 @@ func (j *inspectJob) run(ctx context.Context, name string) (*inspection, error) 
 		if looks, err = j.looks.read(); err != nil {
 			return nil, err
 		}
-		if err := fixedOnly(looks); err != nil {
+		if err := drivenOnly(looks); err != nil {
 			return nil, err
 		}
 	}

@@ -186,7 +186,7 @@ func (j *layersJob) run(ctx context.Context) (*summary, error) {
 	if err != nil {
 		return nil, err
 	}
-	if err := fixedOnly(looks); err != nil {
+	if err := drivenOnly(looks); err != nil {
 		return nil, err
 	}
 	chosen, err := chooseLayers(j.only, looks)
