@@ -229,8 +229,8 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		mid := p.place(1 + laneStep/2)
 		sin, cosine = ln.angle(&mid, p.middleHeight())
 	}
-	row := ln.minDS * sin
-	r.slackM, r.slackR = float32(settleShare*row*cosine/(sin*sin)), float32(settleShare*row)
+	row := ln.minDS * max(sin, levelShare)
+	r.slackM, r.slackR = float32(settleShare*ln.minDS*max(math.Abs(cosine)/sin, levelShare)), float32(settleShare*row)
 	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
 	cos := float32(cosine)
 	l := p.inDEM()
@@ -241,6 +241,10 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		}
 		r.h[k] = h
 		r.clear[k] = h - x.shade
+		if ln.fan != nil && h == h {
+			q := p.place(k)
+			cos = float32(ln.steepness(&q, float64(h)))
+		}
 		r.near[k] = (x.nearer - h) * cos
 		r.far[k] = (h - x.farther) * cos
 	}
@@ -254,6 +258,10 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	for k, x := range p.unsureRow(u) {
 		h := float32(p.h[k])
 		r.clearU[k], r.nearU[k], r.farU[k] = r.clear[k], r.near[k], r.far[k]
+		if ln.fan != nil && h == h {
+			q := p.place(k)
+			cos = float32(ln.steepness(&q, float64(h)))
+		}
 		if bits&1 == 0 {
 			r.clearU[k] = h - x.shade
 			r.nearU[k] = (x.nearer - h) * cos
@@ -392,6 +400,20 @@ func shadowClass(raw Class, turns int) Class {
 		return raw
 	}
 	return Open
+}
+
+// blank says of all cells that nothing is known.
+func (t *sheet) blank() {
+	clear(t.raw)
+	n := t.w.Rows * t.w.Cols
+	if t.wantClear {
+		t.clear = resize(t.clear, n)
+		fillWith(t.clear, float32(nan))
+	}
+	if t.wantFold {
+		t.fold = resize(t.fold, n)
+		fillWith(t.fold, float32(nan))
+	}
 }
 
 // keep stores the margins that layers ask for.

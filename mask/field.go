@@ -55,7 +55,7 @@ func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
 	f.ln, f.lim = ln, lim
 	f.u0, f.u1, f.v0, f.v1 = u0, u1, v0, v1
 	f.near, f.far = ln.reach(lim)
-	f.ua, f.ub = max(u0-f.near, 0), min(u1+f.far, ln.orient.u)
+	f.ua, f.ub = max(u0-f.near, ln.firstRow()), min(u1+f.far, ln.orient.u)
 	a, b := math.Inf(1), math.Inf(-1)
 	for _, u := range [2]int{u0, u1 - 1} { // a lane drifts one way only
 		a = math.Min(a, ln.lane(float64(u), float64(v0)))
@@ -64,6 +64,9 @@ func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
 	// A cell on the line between two strips may fall to either by rounding.
 	f.first = (int(math.Floor(a-1e-6)) - ln.first) / laneStep
 	f.strips = (int(math.Floor(b+1e-6))-ln.first)/laneStep + 1 - f.first
+	last := min(f.first+f.strips, ln.nk-1) // fans have no lanes outside their quarter
+	f.first = max(f.first, 0)
+	f.strips = max(last-f.first, 0)
 	f.k0 = ln.first + laneStep*f.first
 	k0, k1 := f.k0-1, f.k0+laneStep*f.strips+1
 	rows := f.ub - f.ua

@@ -107,6 +107,8 @@ type lanes struct {
 	// Of a platform: the places of the nodes in their range planes.
 	places   []place
 	platform geometry.Platform
+	fan      *fan     // of a tripod
+	more     []*lanes // the other fans of a tripod
 	// ahead returns the unit ground vector, east and north, of the range line
 	// at a place of the grid, away from the radar.
 	ahead func(l *dem.Local) (e, n float64)

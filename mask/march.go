@@ -96,6 +96,9 @@ func (p *strip) cells(u int) (va, vb int) {
 	p.stand(u)
 	va = int(math.Ceil(p.edgeA))
 	vb = int(math.Ceil(p.edgeB))
+	if q := p.f.ln.fan; q != nil {
+		va, vb = q.clip(u, va, vb)
+	}
 	return max(va, p.f.v0), min(vb, p.f.v1)
 }
 
@@ -241,6 +244,9 @@ func (p *strip) equalRange(k int, r float64) float64 {
 		return p.h[k] + (p.r[k]-r)/p.f.ln.cos
 	}
 	q := p.place(k)
+	if p.f.ln.fan != nil {
+		return p.h[k] + (p.r[k]-r)/p.f.ln.steepness(&q, p.h[k])
+	}
 	if h := p.f.ln.rangeHeight(&q, r); h == h {
 		return h
 	}
@@ -291,12 +297,18 @@ func (p *strip) entering(l span, u, dir int, unknown *[marchLanes]bool) (any boo
 	return any
 }
 
+// noLimit is a height beyond any line, small enough to be mixed with others.
+const noLimit = 1e5
+
 // limitLines are the lowest shade and farther line and the highest nearer line
 // that the field can vouch for: a row's worth of ground beyond what terrain at
 // the edge of the reach can set. Lines are brought within them, so that they
 // do not depend on how much farther the field happens to extend.
 func (f *field) limitLines() (shade, nearer, farther float64) {
 	ln := f.ln
+	if ln.fan != nil { // the field holds all that counts
+		return f.lim.low - ln.rowM, noLimit, -noLimit
+	}
 	return f.lim.low - ln.rowM, f.lim.high + ln.rowR/ln.cos, f.lim.low - ln.rowR/ln.cos
 }
 

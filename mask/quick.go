@@ -115,7 +115,7 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
 		a, b = unsure[q.k].nearer, unsure[q.k+1].nearer
 	}
-	return q.ranges(a, b, s)
+	return q.ranges(u, a, b, s)
 }
 
 // farther is nearer for the ground farther than row u, and for the least slant
@@ -126,10 +126,13 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
 		a, b = unsure[q.k].farther, unsure[q.k+1].farther
 	}
-	return q.ranges(a, b, s)
+	return q.ranges(u, a, b, s)
 }
 
-func (q *quickWalk) ranges(a, b float32, s float64) bounds {
+func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
+	if q.f.ln.fan != nil {
+		return around(q.laneRange(u, q.k, a), q.laneRange(u, q.k+1, b), settleShare/q.slackR)
+	}
 	_, x := q.y.see(s, float64(a))
 	_, y := q.y.see(s, float64(b))
 	return around(x, y, settleShare/q.slackR)

@@ -156,7 +156,7 @@ func newRunner(job Job) (*runner, error) {
 		r.threads = runtime.GOMAXPROCS(0)
 	}
 	for _, look := range job.Looks {
-		if look.Kind == geometry.Fixed && !(look.Incidence > 0 && look.Incidence < 90*geometry.Degree) || !look.Azimuth.Given() {
+		if look.Kind == geometry.Fixed && !(look.Incidence > 0 && look.Incidence < 90*geometry.Degree && look.Azimuth.Given()) {
 			return nil, fmt.Errorf("look %q: needs an incidence between 0 and 90 degrees and an azimuth", look.Name)
 		}
 		for _, l := range job.Layers {
@@ -181,15 +181,15 @@ func newRunner(job Job) (*runner, error) {
 // lanesOf lays out the range lines of a look.
 func lanesOf(src dem.Source, look geometry.Look, rng dem.Range) (*lanes, error) {
 	g := src.Grid()
-	switch look.Kind {
-	case geometry.Fixed:
+	if look.Kind == geometry.Fixed {
 		return fixedLanes(g, look), nil
-	case geometry.Tripod:
-		return nil, fmt.Errorf("look %q: kind %q cannot be marched", look.Name, look.Kind)
 	}
 	p, err := PlatformOf(src, look)
 	if err != nil {
 		return nil, err
+	}
+	if look.Kind == geometry.Tripod {
+		return fanLanes(g, look, p, rng)
 	}
 	far := p
 	if more := extended(g, look, p); more.Kind == geometry.Flight {
@@ -342,13 +342,24 @@ func (w *worker) tile(ctx context.Context, win dem.Window) error {
 
 func (w *worker) look(i int, win dem.Window) error {
 	ln := w.looks[i]
-	f := &w.field
-	u0, u1, v0, v1 := ln.window(win)
-	f.setUp(ln, w.lim, u0, u1, v0, v1)
-	if err := f.load(w.job.Source); err != nil {
-		return err
+	if ln.fan != nil {
+		w.sheet.blank() // no fan holds the radar's own place
 	}
-	w.sheet.classify(f, &w.strip, &w.walk)
+	for n := -1; n < len(ln.more); n++ {
+		side := ln
+		if n >= 0 {
+			side = ln.more[n]
+		}
+		u0, u1, v0, v1 := side.window(win)
+		if u0 = max(u0, side.firstRow()); u0 >= u1 {
+			continue
+		}
+		w.field.setUp(side, w.lim, u0, u1, v0, v1)
+		if err := w.field.load(w.job.Source); err != nil {
+			return err
+		}
+		w.sheet.classify(&w.field, &w.strip, &w.walk)
+	}
 	t := w.fill(i)
 	if err := w.windows(i, t); err != nil {
 		return err

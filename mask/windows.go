@@ -35,11 +35,10 @@ func windowLanes(g *dem.Grid, azimuth, from, to geometry.Angle) *lanes {
 	look := geometry.NewLook()
 	look.Kind, look.Incidence, look.Azimuth = geometry.Fixed, 45*geometry.Degree, azimuth
 	ln := fixedLanes(g, look)
-	// Of the lens only the reach is asked for: ground beyond relief / slope
-	// cannot have a slope that counts. reach takes cot for ground farther away
-	// and cot + tan for nearer ground.
+	// The reach: ground beyond relief / slope cannot have a slope that counts.
+	// It takes cot for ground farther away, and cot + tan for nearer ground.
 	fold, shade := 1/from.Tan(), to.Tan()
-	ln.lens = lens{cot: fold, tan: math.Max(shade-fold, 0)}
+	ln.cotMost, ln.tanMost = fold, math.Max(shade-fold, 0)
 	return ln
 }
 
@@ -96,6 +95,10 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 // begins, to the last bit.
 type standing struct{ v, end, dv, s, ds float64 }
 
+// mark is a sample of a lane: ground distance and height, rounded. The height is
+// NaN where there is none, and halfway between rows where it does not matter.
+type mark struct{ s, h float64 }
+
 // windowStrip is a bundle of neighbouring lanes, see strip. Samples are kept by
 // lane, two a row: lane k's at row u is at k * n + 2 (u - ua), and the next one
 // is halfway to row u + 1. Between its corners the surface may bulge, most where
@@ -105,7 +108,7 @@ type windowStrip struct {
 	j, k0          int
 	u0, u1, ua, ub int
 	at             []standing // by row
-	s, h           []float64  // rounded; NaN where there is no height, or halfway where it does not matter
+	ground         []mark
 	// The hulls of what was passed before each sample, itself included, as the
 	// next sample on the hull; -1 at its end: upper and lower on the way away
 	// from the radar, upper on the way back.
@@ -115,7 +118,7 @@ type windowStrip struct {
 	before, behind []float32
 	gaps           []bool // a height is missing between a row and the next
 
-	neg             []float64 // of one lane: heights upside down
+	neg             []mark // of one lane: heights upside down
 	roundS, roundH  float64
 	rows, n         int
 	anyUnknown      bool
@@ -167,7 +170,7 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	}
 	p.n = 2 * p.rows
 	n := p.n * windowLaneCount
-	p.s, p.h, p.neg = resize(p.s, n), resize(p.h, n), resize(p.neg, p.n)
+	p.ground, p.neg = resize(p.ground, n), resize(p.neg, p.n)
 	p.shade, p.nearer, p.farther = resize(p.shade, n), resize(p.nearer, n), resize(p.farther, n)
 	p.last = float64(ln.orient.v - 1)
 	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
@@ -213,15 +216,15 @@ func (p *windowStrip) march() {
 	}
 	for k := range windowLaneCount {
 		part := func(a []int32) []int32 { return a[k*p.n:][:p.n] }
-		s, h := p.s[k*p.n:][:p.n], p.h[k*p.n:][:p.n]
-		for i, x := range h {
-			p.neg[i] = -x
+		g := p.ground[k*p.n:][:p.n]
+		for i, x := range g {
+			p.neg[i] = mark{x.s, -x.h}
 		}
-		hull(s, h, 1, part(p.shade))
-		hull(s, p.neg, 1, part(p.nearer))
-		hull(s, p.neg, -1, part(p.farther))
+		hull(g, 1, part(p.shade))
+		hull(p.neg, 1, part(p.nearer))
+		hull(p.neg, -1, part(p.farther))
 		if p.anyUnknown {
-			p.unknown(k, s, h)
+			p.unknown(k, g)
 		}
 	}
 }
@@ -239,22 +242,24 @@ func (p *windowStrip) sample(i int) {
 	z, at := p.heights(i)
 	v := st.v - float64(at)
 	for k, n := 0, 2*i; k < windowLaneCount; k, n = k+1, n+p.n {
-		p.h[n] = (lerp(z, v+float64(st.dv*float64(k))) + p.roundH) - p.roundH
-		p.s[n] = (st.s + float64(st.ds*float64(k)) + p.roundS) - p.roundS
+		p.ground[n] = mark{
+			(st.s + float64(st.ds*float64(k)) + p.roundS) - p.roundS,
+			(lerp(z, v+float64(st.dv*float64(k))) + p.roundH) - p.roundH,
+		}
 	}
 }
 
 // bulgeShare is the part of the ground distance of a row by which the surface
-// halfway must leave the straight line to count: a tenth of a degree seen from
-// the next cell.
-const bulgeShare = 0.002
+// halfway must leave the straight line to count. The lanes only show where to
+// look, so a coarse measure does.
+const bulgeShare = 0.03
 
 // halfway takes the heights and distances between rows ua + i and ua + i + 1,
 // where the surface bulges.
 func (p *windowStrip) halfway(i int) {
 	if i == p.rows-1 {
-		for n := 2*i + 1; n < len(p.h); n += p.n {
-			p.h[n] = nan
+		for n := 2*i + 1; n < len(p.ground); n += p.n {
+			p.ground[n].h = nan
 		}
 		return
 	}
@@ -265,7 +270,7 @@ func (p *windowStrip) halfway(i int) {
 	least := bulgeShare * math.Abs(b.s-a.s)
 	straight := a.v == b.v && a.dv == b.dv
 	for k, n := 0, 2*i+1; k < windowLaneCount; k, n = k+1, n+p.n {
-		p.h[n] = nan
+		p.ground[n].h = nan
 		if straight {
 			continue
 		}
@@ -273,9 +278,9 @@ func (p *windowStrip) halfway(i int) {
 		j := math.Floor(c)
 		x, l, m := c-j, int(j)-ca, int(j)-cb
 		h := (lerpAt(za, l, x) + lerpAt(zb, m, x)) / 2
-		if d := h - (p.h[n-1]+p.h[n+1])/2; d > least || d < -least {
-			p.h[n] = (h + p.roundH) - p.roundH
-			p.s[n] = ((p.s[n-1]+p.s[n+1])/2 + p.roundS) - p.roundS
+		g, f := &p.ground[n-1], &p.ground[n+1]
+		if d := h - (g.h+f.h)/2; d > least || d < -least {
+			p.ground[n] = mark{((g.s+f.s)/2 + p.roundS) - p.roundS, (h + p.roundH) - p.roundH}
 		}
 	}
 	if p.anyUnknown {
@@ -322,28 +327,29 @@ func (p *windowStrip) gap(i int, k float64) bool {
 // the march passed before it, at a constant cost a sample. Backward with heights
 // upside down the hull is an upper one again, forward so a lower one. Products
 // are exact: no sample is on the hull that does not belong there.
-func hull(s, h []float64, dir int, link []int32) {
-	n := len(h)
+func hull(ground []mark, dir int, link []int32) {
+	n := len(ground)
+	link = link[:n]
 	from, to := 0, n
 	if dir < 0 {
 		from, to = n-1, -1
 	}
 	last := int32(-1)
 	for i := from; i != to; i += dir {
-		hi, si := h[i], s[i]
-		if hi != hi {
+		g := ground[i]
+		if g.h != g.h {
 			continue
 		}
 		j := last
 		last = int32(i)
 		if j >= 0 {
-			hj, sj := h[j], s[j]
+			f := ground[j]
 			for k := link[j]; k >= 0; k = link[j] {
-				hk, sk := h[k], s[k]
-				if float64((hj-hk)*(si-sj)) > float64((hi-hj)*(sj-sk)) {
+				e := ground[k]
+				if float64((f.h-e.h)*(g.s-f.s)) > float64((g.h-f.h)*(f.s-e.s)) {
 					break
 				}
-				j, hj, sj = k, hk, sk
+				j, f = k, e
 			}
 		}
 		link[i] = j
@@ -360,18 +366,19 @@ func hull(s, h []float64, dir int, link []int32) {
 // is the nearest, so that it does not depend on ground out of reach.
 func (p *windowStrip) touch(link []int32, k, i, dir int, sign, h, least float64) int {
 	base := k * p.n
-	s, hs, next := p.s[base:][:p.n], p.h[base:][:p.n], link[base:][:p.n]
-	s0 := s[2*i]
+	ground, next := p.ground[base:][:p.n], link[base:][:p.n]
+	s0 := ground[2*i].s
 	j := 2 * (i + ownRows*dir)
-	for j >= 0 && j < p.n && hs[j] != hs[j] {
+	for j >= 0 && j < p.n && ground[j].h != ground[j].h {
 		j += dir
 	}
 	if j < 0 || j >= p.n {
 		return -1
 	}
-	rise, away := sign*(hs[j]-h), math.Abs(s[j]-s0)
+	rise, away := sign*(ground[j].h-h), math.Abs(ground[j].s-s0)
 	for l := next[j]; l >= 0; l = next[j] {
-		r, a := sign*(hs[l]-h), math.Abs(s[l]-s0)
+		g := &ground[l]
+		r, a := sign*(g.h-h), math.Abs(g.s-s0)
 		if float64(r*away) <= float64(rise*a) {
 			break
 		}
@@ -385,16 +392,16 @@ func (p *windowStrip) touch(link []int32, k, i, dir int, sign, h, least float64)
 
 // unknown fills the distances of lane k to unknown terrain. Where there is some
 // between two rows it reaches, at worst, the row itself.
-func (p *windowStrip) unknown(k int, s, h []float64) {
+func (p *windowStrip) unknown(k int, g []mark) {
 	gaps := p.gaps[k*p.rows:][:p.rows]
 	walk := func(out []float32, from, to, dir, gap int, edge bool) {
 		place := math.Inf(1)
 		edge = edge && !p.f.lim.openEdge
 		for i := from; i != to; i += dir {
 			if i == from && edge || i != from && gaps[i+gap] {
-				place = s[2*i]
+				place = g[2*i].s
 			}
-			out[i] = float32(math.Abs(place - s[2*i]))
+			out[i] = float32(math.Abs(place - g[2*i].s))
 		}
 	}
 	walk(p.before[k*p.rows:][:p.rows], 0, p.rows, 1, -1, p.nearEnd)
@@ -444,7 +451,7 @@ func (x *windower) cell(u, v int) slopes {
 	if float64(k) != own.k {
 		b += p.n
 	}
-	if p.h[a] != p.h[a] || p.h[b] != p.h[b] {
+	if p.ground[a].h != p.ground[a].h || p.ground[b].h != p.ground[b].h {
 		return x.walk(&own)
 	}
 	own.step(&out)

@@ -1,0 +1,139 @@
+package mask
+
+import (
+	"fmt"
+	"math"
+
+	"foldshade/dem"
+	"foldshade/geometry"
+)
+
+// fan is what the lanes of a tripod have beside those of a track: they leave
+// the radar in all directions of a quarter of the compass.
+type fan struct {
+	u, v float64 // marching position of the radar
+	last float64 // rows from the radar to the last row
+	rows bool    // the quarter holds the diagonals
+	pos  geometry.ECEF
+}
+
+// fanLanes lays out the range lines of a tripod: four fans, towards and away
+// along rows and columns, each of straight lines that stand one column apart
+// at its last row. Range planes are the vertical planes through the radar,
+// whose traces on the map are straight to within the small arcs that a DEM of a
+// tripod's range spans.
+func fanLanes(g *dem.Grid, look geometry.Look, p geometry.Platform, lim dem.Range) (*lanes, error) {
+	row, col, ok := g.Find(look.Position.Lon, look.Position.Lat)
+	if !ok {
+		return nil, fmt.Errorf("look %q: position lies outside the DEM", look.Name)
+	}
+	var fans []*lanes
+	for _, transposed := range []bool{false, true} {
+		for _, flip := range []bool{false, true} {
+			ln := &lanes{lens: lens{datum: (lim.Min + lim.Max) / 2, scale: 1, sin: 1, cos: 1}, platform: p}
+			ln.orient = newOrient(g, transposed, flip)
+			pos, _ := p.State(0)
+			u, v := ln.place(row, col)
+			ln.fan = &fan{u: u, v: v, last: float64(ln.orient.u-1) - u, rows: !transposed, pos: pos}
+			if ln.fan.last < 1 {
+				continue // nothing lies on this side
+			}
+			tr := tracker{g: g, p: p, ln: ln, datum: ln.datum}
+			tr.spread()
+			fans = append(fans, ln)
+		}
+	}
+	if len(fans) == 0 {
+		return nil, fmt.Errorf("look %q: position leaves no cell of the DEM to look at", look.Name)
+	}
+	fans[0].more = fans[1:]
+	return fans[0], nil
+}
+
+// firstRow returns the first row that the lanes march: the row after the radar.
+func (ln *lanes) firstRow() int {
+	if ln.fan == nil {
+		return 0
+	}
+	return int(math.Floor(ln.fan.u)) + 1
+}
+
+// clip brings the columns [va, vb) of row u within the fan. The diagonals
+// belong to the fans that march along rows.
+func (q *fan) clip(u, va, vb int) (int, int) {
+	d := float64(u) - q.u
+	if q.rows {
+		return max(va, int(math.Ceil(q.v-d))), min(vb, int(math.Floor(q.v+d))+1)
+	}
+	return max(va, int(math.Floor(q.v-d))+1), min(vb, int(math.Ceil(q.v+d)))
+}
+
+// spread lays out the lanes of a fan, v = radar's v + (u - radar's u) k / K with
+// K lanes for a slope of one, which is bilinear in row and lane.
+func (tr *tracker) spread() {
+	ln, q := tr.ln, tr.ln.fan
+	ln.nu = (ln.orient.u-1)/laneStep + 2
+	ln.mid = float64(ln.orient.u-1) / 2
+	most := math.Ceil(q.last)
+	ln.first = laneStep * (int(math.Floor(-most/laneStep)) - 1)
+	ln.nk = (int(most)-ln.first)/laneStep + 3
+	n := ln.nu * ln.nk
+	ln.v, ln.s, ln.places = make([]float64, n), make([]float64, n), make([]place, n)
+	home := q.pos.Geodetic()
+	up := home.FromENU(geometry.ENU{Up: 1})
+	for j := range ln.nk {
+		slope := float64(ln.first+laneStep*j) / most
+		end := tr.point(ln.cell(q.u+q.last, q.v+q.last*slope)).ECEF().Sub(q.pos)
+		level := end.Sub(up.Scale(end.Dot(up)))
+		plane := rangePlane{q.pos, level.Scale(1 / level.Norm()), up}
+		for i := range ln.nu {
+			u := float64(laneStep * i)
+			v := q.v + (u-q.u)*slope
+			ln.v[i*ln.nk+j] = v
+			ln.places[i*ln.nk+j] = plane.place(tr.point(ln.cell(u, v)))
+		}
+		tr.measure(j)
+	}
+	// Everything between radar and cell may matter, and everything at its range.
+	ln.cotMost, ln.tanMost = 1e9, 1e9
+	i, j, a, b := ln.locate(q.u+q.last/2, q.v)
+	mid := ln.placeAt(i, j, a, b)
+	ln.scale = mid.x * mid.x / (mid.ny*mid.x - mid.nx*mid.y)
+	ln.rowM, ln.rowR = ln.minDS, ln.minDS
+}
+
+// placeAt interpolates the place in a cell of the lattice.
+func (ln *lanes) placeAt(i, j int, p, q float64) place {
+	n := i*ln.nk + j
+	a := ln.places[n].plus(ln.places[n+ln.nk].minus(ln.places[n]), p)
+	b := ln.places[n+1].plus(ln.places[n+1+ln.nk].minus(ln.places[n+1]), p)
+	return a.plus(b.minus(a), q)
+}
+
+// levelShare is the least cosine of the incidence by which ranges are turned
+// into heights: ground at the height of the antenna hardly changes its range
+// when it rises.
+const levelShare = 0.05
+
+// steepness returns by how much a metre of height of a line counts in slant
+// range at a place, the same for every use of the line. Ground above the
+// antenna moves away from it when it rises; the lines turn with it.
+func (l *lens) steepness(p *place, h float64) float64 {
+	_, cos := l.angle(p, h)
+	return max(math.Abs(cos), levelShare)
+}
+
+// laneRange returns the slant range of a line at lane k of row u of a fan.
+func (q *quickWalk) laneRange(u, k int, line float32) float64 {
+	ln := q.f.ln
+	lane := float64(q.p.k0 + k)
+	v := ln.vAt(float64(u), lane)
+	if v < 0 || v > float64(ln.orient.v-1) {
+		return nan
+	}
+	h := q.f.height(u, v)
+	i := min(u/laneStep, ln.nu-2)
+	p := ln.placeAt(i, q.p.j, float64(u-laneStep*i)/laneStep, (lane-float64(q.p.k0+1))/laneStep)
+	_, r := ln.view(&p, h)
+	return r - (float64(line)-h)*ln.steepness(&p, h)
+}
