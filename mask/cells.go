@@ -34,6 +34,9 @@ type sheet struct {
 	clear     []float32
 	fold      []float32
 	margins   laneMargins
+	returns   []float32
+	share     []float32
+	bin       float64 // metres of slant range, 0 when neither is wanted
 	wantClear bool
 	wantFold  bool
 }
@@ -121,6 +124,9 @@ func (t *sheet) classify(f *field, p *strip, wk *walker) {
 	if t.wantFold {
 		t.fold = resize(t.fold, n)
 	}
+	if t.bin > 0 {
+		t.returns, t.share = resize(t.returns, n), resize(t.share, n)
+	}
 	for j := range f.strips {
 		if p.setUp(f, f.first+j) {
 			p.forward()
@@ -174,6 +180,9 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 		if r.sure && c > r.slackM+bump+r.roughM[k] && n > r.slackR+bump+r.roughN[k] && g > r.slackR+bump+r.roughF[k] {
 			t.raw[i] = uint8(Open)
 			t.keep(i, c, min(n, g))
+			if t.bin > 0 {
+				t.count(f, wk, u, va+j, i, min(n, g))
+			}
 			continue
 		}
 		if h != h {
@@ -206,6 +215,25 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, bump float32,
 		fold = min(m.near, m.far)
 	}
 	t.keep(i, m.clear, fold)
+	if t.bin > 0 {
+		if m.clearU > 0 {
+			t.count(p.f, wk, u, v, i, fold)
+		} else {
+			t.returns[i], t.share[i] = float32(nan), float32(nan)
+		}
+	}
+}
+
+// count fills what shares the slant range of a cell. Where nothing comes within
+// a bin, the cell is alone.
+func (t *sheet) count(f *field, wk *walker, u, v, i int, fold float32) {
+	t.returns[i], t.share[i] = 1, 1
+	if fold != fold {
+		t.returns[i], t.share[i] = fold, fold
+	} else if float64(fold) < t.bin {
+		n, share := wk.returns(f, u, v, t.bin)
+		t.returns[i], t.share[i] = float32(n), float32(share)
+	}
 }
 
 // laneMargins are the lanes' margins along one row.
@@ -413,6 +441,11 @@ func (t *sheet) blank() {
 	if t.wantFold {
 		t.fold = resize(t.fold, n)
 		fillWith(t.fold, float32(nan))
+	}
+	if t.bin > 0 {
+		t.returns, t.share = resize(t.returns, n), resize(t.share, n)
+		fillWith(t.returns, float32(nan))
+		fillWith(t.share, float32(nan))
 	}
 }
 

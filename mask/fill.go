@@ -17,6 +17,7 @@ type tileBuffers struct {
 	ups                   [][3]float64     // of one row: up components of the sights
 	views                 []view           // of one row, when a layer asks for more
 	unseen                []bool           // of one row: cells that the look does not see
+	wantReturns           bool
 	wantViews, wantFacets bool
 }
 
@@ -241,6 +242,10 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 				out[j] = 0
 			}
 		}
+	case Returns:
+		w.known(out, w.sheet.returns[row*n:], z)
+	case Share:
+		w.known(out, w.sheet.share[row*n:], z)
 	case LineOfSight:
 		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
 		out = bands[1][row*n : (row+1)*n]

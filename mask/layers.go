@@ -14,6 +14,8 @@ const (
 	SlantRange       Layer = "slant-range"
 	Foreshortening   Layer = "foreshortening"
 	VerdictLayer     Layer = "verdict"
+	Returns          Layer = "returns"
+	Share            Layer = "share"
 	Incidence        Layer = "incidence"
 	RangeIncidence   Layer = "range-incidence"
 	Clearance        Layer = "clearance"
@@ -54,6 +56,8 @@ var Layers = []LayerInfo{
 	{RangeIncidence, "Range incidence", "degree", "incidence less the terrain slope in the range plane: 0 or less in active layover, 90 or more in self shadow", false, []string{"range-incidence"}},
 	{Clearance, "Clearance", "m", "height of the ground above the shadow boundary; negative: the mast that would see the radar", false, []string{"clearance"}},
 	{FoldMargin, "Fold margin", "m", "slant range to the nearest overlap; negative: depth of the overlap", false, []string{"fold-margin"}},
+	{Returns, "Returns", "1", "number of lit points of the range line that share the cell's slant range, itself included", false, []string{"returns"}},
+	{Share, "Share", "1", "the cell's own part of the lit ground in its range bin, by length along the range line", false, []string{"share"}},
 	{LineOfSight, "Line of sight", "1", "unit vector from the ground to the antenna", false, []string{"east", "north", "up"}},
 	{GroundResolution, "Ground resolution", "m", "ground distance along the range line covered by one range resolution cell", false, []string{"ground-resolution"}},
 	{AreaFactor, "Area factor", "1", "illuminated area per slant-range cell relative to flat ground", false, []string{"area-factor"}},
@@ -90,7 +94,7 @@ func Lacks(l Layer, look geometry.Look) []string {
 		}
 	}
 	switch l {
-	case GroundResolution:
+	case GroundResolution, Share:
 		need(look.Bandwidth, "bandwidth_mhz")
 	case CriticalBaseline:
 		need(look.Wavelength, "frequency_ghz")

@@ -178,6 +178,15 @@ func newRunner(job Job) (*runner, error) {
 	return r, nil
 }
 
+// rangeBin returns the slant range resolution of a look; without a bandwidth a
+// millimetre, which leaves the count of equal ranges.
+func rangeBin(look *geometry.Look) float64 {
+	if look.Bandwidth == look.Bandwidth {
+		return geometry.SlantResolution(look.Bandwidth)
+	}
+	return 1e-3
+}
+
 // lanesOf lays out the range lines of a look.
 func lanesOf(src dem.Source, look geometry.Look, rng dem.Range) (*lanes, error) {
 	g := src.Grid()
@@ -320,6 +329,7 @@ func (r *runner) newWorker() *worker {
 		info, _ := Info(l)
 		w.wantFacets = w.wantFacets || !info.IsClass && l != Clearance && l != FoldMargin
 	}
+	w.wantReturns = has(Returns) || has(Share)
 	w.sheet.wantClear, w.sheet.wantFold = has(Clearance), has(FoldMargin)
 	return w
 }
@@ -342,6 +352,9 @@ func (w *worker) tile(ctx context.Context, win dem.Window) error {
 
 func (w *worker) look(i int, win dem.Window) error {
 	ln := w.looks[i]
+	if w.sheet.bin = 0; w.wantReturns {
+		w.sheet.bin = rangeBin(&w.job.Looks[i])
+	}
 	if ln.fan != nil {
 		w.sheet.blank() // no fan holds the radar's own place
 	}

@@ -107,9 +107,10 @@ func (y *ray) gain(s, h float64) float64 {
 // point is a point of the surface on a range line, or unknown terrain.
 type point struct {
 	m, r    float64
-	unknown bool // m, r are then those of unknown terrain at its worst
-	unsure  bool // lit unless unknown terrain hides it
-	close   bool // less than a row away
+	s, h    float64 // ground distance and height
+	unknown bool    // m, r are then those of unknown terrain at its worst
+	unsure  bool    // lit unless unknown terrain hides it
+	close   bool    // less than a row away
 }
 
 // walker settles points by an exact walk along their own range line over the
@@ -363,8 +364,9 @@ func (w *walker) piece(u, dir int, va, vb, sa, sb, t0, t1 float64) {
 	a := p0 + ep*x0
 	ds := sb - sa
 	emit := func(t float64) {
-		m, r := w.y.see(sa+t*ds, a+t*(b+t*d))
-		w.pieces = append(w.pieces, point{m: m, r: r, close: t < 1})
+		q := point{s: sa + t*ds, h: a + t*(b+t*d), close: t < 1}
+		q.m, q.r = w.y.see(q.s, q.h)
+		w.pieces = append(w.pieces, q)
 	}
 	// The vertices: m' = b + 2 d t + cot ds = 0, r' = sin ds - cos (b + 2 d t) = 0.
 	tv, tr := math.Inf(1), math.Inf(1)
@@ -409,7 +411,7 @@ func (w *walker) missing(u, dir int, va, vb, sa, sb, t0, t1 float64) {
 	if t1 == 1 {
 		if h := f.height(u+dir, vb); h == h {
 			m, r := w.y.see(sb, h)
-			w.pieces = append(w.pieces, point{m: m, r: r})
+			w.pieces = append(w.pieces, point{m: m, r: r, s: sb, h: h})
 		}
 	}
 }
