@@ -18,8 +18,23 @@ type judge struct {
 	doubt []bool // of each spot: unknown terrain may hide it
 }
 
-// of returns what a line says of a target that stands mast metres above its
-// point. The rules are walker's. A tie counts against the target; ground less
+// target is what stands over the point of a line.
+type target struct {
+	m, r   float64
+	gain   float64 // change of m for a metre of height
+	drop   float64 // slant range less for a metre of height
+	raised bool    // it stands above the ground
+}
+
+// target returns what stands mast metres above the line's point.
+func (l *line) target(mast float64) target {
+	h := l.here.h + mast
+	m, r := l.y.see(l.here.s, h)
+	up, nearer := l.y.see(l.here.s, h+1)
+	return target{m: m, r: r, gain: up - m, drop: r - nearer, raised: mast > 0}
+}
+
+// of returns what a line says of a target. The rules are walker's. A tie counts against the target; ground less
 // than a row away decides signs but not sizes, since on curved ground an
 // overlap or a shadow may begin right at the point.
 //
@@ -27,11 +42,11 @@ type judge struct {
 // foot. That is its own surroundings and no fold: the ground towards the radar
 // as far as slant range first falls below the target's, unless it reaches the
 // slant range of the foot. The row beyond counts as less than a row away.
-func (j *judge) of(l *line, mast, cos float64) finding {
-	m, r := l.here.m+mast, l.here.r-mast*cos
+func (j *judge) of(l *line, t target) finding {
+	r := t.r
 	f := finding{r: r}
 	own, closeU := 0, l.here.u-1
-	if mast > 0 {
+	if t.raised {
 		last := &l.here
 		for own < len(l.near) && !l.near[own].unknown && l.near[own].r >= r {
 			last = &l.near[own]
@@ -43,7 +58,8 @@ func (j *judge) of(l *line, mast, cos float64) finding {
 			closeU += (last.r - r) / (last.r - next.r) * (next.u - last.u)
 		}
 	}
-	top, topU, mostU := j.towards(l, m, &f)
+	top, topU, mostU := j.towards(l, t.m, &f)
+	f.clear, f.clearU = f.clear/t.gain, f.clearU/t.gain
 	j.nearest(l, own, closeU, mostU, &f)
 	away(l, top, topU, &f)
 	return f

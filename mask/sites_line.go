@@ -72,7 +72,7 @@ func (f *field) between(u int, v float64) float64 {
 }
 
 func (l *line) spot(u, v, s, h float64) spot {
-	m, r := l.f.ln.at(s, h)
+	m, r := l.y.see(s, h)
 	return spot{u: u, v: v, s: s, h: h, m: m, r: r}
 }
 
@@ -104,15 +104,15 @@ func (l *line) walk(dir, end int) {
 
 // unknown returns what may stand from ground distance sa to sb at its worst.
 func (l *line) unknown(dir int, u, v, sa, sb float64) spot {
-	f, ln := l.f, l.f.ln
-	q := spot{u: u, v: v, s: sa, h: f.lim.ceiling, unknown: true}
+	lim := &l.f.lim
+	q := spot{u: u, v: v, s: sa, h: lim.ceiling, unknown: true}
 	if dir < 0 {
-		q.m, _ = ln.at(sa, f.lim.ceiling)
-		_, q.r = ln.at(sa, f.lim.low)
+		q.m, _ = l.y.see(sa, lim.ceiling)
+		_, q.r = l.y.see(sa, lim.low)
 		return q
 	}
-	q.m, _ = ln.at(sb, f.lim.ceiling)
-	_, q.r = ln.at(sa, f.lim.ceiling)
+	q.m, _ = l.y.see(sb, lim.ceiling)
+	_, q.r = l.y.see(sa, lim.ceiling)
 	return q
 }
 
@@ -164,7 +164,7 @@ func insert(ts []float64, t float64) []float64 {
 // included, t counting from a to b. The point's own ground, up to own, has no
 // sample but its end.
 func (l *line) piece(out []spot, dir int, ua, va, sa, ub, vb, sb, t0, t1, own float64) []spot {
-	f, ln := l.f, l.f.ln
+	f := l.f
 	tm := (t0 + t1) / 2
 	du, dv, ds := ub-ua, vb-va, sb-sa
 	row, c := math.Floor(ua+tm*du), math.Floor(va+tm*dv)
@@ -197,7 +197,8 @@ func (l *line) piece(out []spot, dir int, ua, va, sa, ub, vb, sb, t0, t1, own fl
 	}
 	if d != 0 && t1 > own {
 		// The vertices: m' = b + 2 d t + cot ds = 0, r' = sin ds - cos (b + 2 d t) = 0.
-		tv, tr := -(b+ln.cot*ds)/(2*d), (ln.tan*ds-b)/(2*d)
+		worthM, worthR := l.y.worth(sa, sb, a)
+		tv, tr := -(b+worthM)/(2*d), (worthR-b)/(2*d)
 		if tr < tv {
 			tv, tr = tr, tv
 		}

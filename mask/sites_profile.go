@@ -66,7 +66,7 @@ func (w *sitesWorker) profile(distance float64) (*Profile, error) {
 	ln, p := w.looks[0], &w.sites[0]
 	// Every point of the profile needs a reach of its own.
 	win := dem.Window{Row: int(p.row), Col: int(p.col), Rows: 1, Cols: 1}
-	if err := w.load(0, win, distance*ln.tan+w.job.Sites[0].Height); err != nil {
+	if err := w.load(0, win, distance/ln.cotMost+w.job.Sites[0].Height); err != nil {
 		return nil, err
 	}
 	w.trace(p.row, p.col)
@@ -147,7 +147,7 @@ func (w *sitesWorker) unknownFar(q *spot) float64 {
 	if math.IsInf(q.m, -1) {
 		return math.Inf(1)
 	}
-	_, r := w.field.ln.at(q.s, w.field.lim.ceiling)
+	_, r := w.line.y.see(q.s, w.field.lim.ceiling)
 	return r
 }
 

@@ -214,7 +214,8 @@ func (r *sitesRunner) bundles() [][]int {
 type sitesWorker struct {
 	*sitesRunner
 	w     *worker
-	field field // of the places, with room for heights above the ground
+	field *field // of the places: the worker's, or when heights above the ground need more room, wide
+	wide  field
 	line  line
 	judge judge
 	sheet sheet // of a place
@@ -239,7 +240,7 @@ func (w *sitesWorker) bundle(ctx context.Context, sites []int, out []SiteResult)
 				return err
 			}
 		}
-		if places.Rows > 0 {
+		if w.field = &w.w.field; places.Rows > 0 && (places != cells || extra > 0) {
 			if err := w.load(k, places, extra); err != nil {
 				return err
 			}
@@ -250,7 +251,11 @@ func (w *sitesWorker) bundle(ctx context.Context, sites []int, out []SiteResult)
 			if w.sites[i].where == OnGround {
 				w.evaluate(i, k, t, res)
 			}
-			if err := w.shares(i, k, res); err != nil {
+			w.footprint(i, k, res)
+		}
+		for _, i := range sites { // these take the place of t and its field
+			res := &out[i*len(w.looks)+k]
+			if err := w.cellShares(i, k, res); err != nil {
 				return err
 			}
 			w.conclude(res)
@@ -326,6 +331,7 @@ func (w *sitesWorker) load(k int, win dem.Window, extra float64) error {
 	lim := w.lim
 	lim.high += extra
 	lim.ceiling += extra
+	w.field = &w.wide
 	w.field.setUp(w.looks[k], lim, u0, u1, v0, v1)
 	w.field.lim = w.lim
 	return w.field.load(w.job.Source)
@@ -333,7 +339,7 @@ func (w *sitesWorker) load(k int, win dem.Window, extra float64) error {
 
 // trace lays the line through a place of the grid.
 func (w *sitesWorker) trace(row, col float64) bool {
-	f := &w.field
+	f := w.field
 	u, v := f.ln.place(row, col)
 	return w.line.trace(f, u, v, f.near, f.far)
 }
@@ -359,7 +365,7 @@ func (w *sitesWorker) evaluate(i, k int, t *Tile, res *SiteResult) {
 	view, facet, sight := w.look(k, p)
 	w.describe(p, s, k, &view, facet, &sight, res)
 	w.trace(p.row, p.col)
-	f := w.judge.of(&w.line, s.Height, w.field.ln.cos)
+	f := w.judge.of(&w.line, w.line.target(s.Height))
 	res.Blocker, res.Partner = noTerrain, noTerrain
 	if f.blocker != nil {
 		res.Blocker = w.line.terrain(w.grid, f.blocker)
@@ -367,7 +373,7 @@ func (w *sitesWorker) evaluate(i, k int, t *Tile, res *SiteResult) {
 	if f.partner != nil {
 		res.Partner = w.line.terrain(w.grid, f.partner)
 	}
-	m := f.lane(&w.field, p.z, p.z+s.Height)
+	m := f.lane(w.field, p.z, p.z+s.Height)
 	w.classes(&m, facet, &sight, res)
 	if p.centre && s.Height == 0 {
 		w.fromCell(t, p, res)
@@ -472,20 +478,20 @@ func (w *sitesWorker) mastToClear(now float64, res *SiteResult, f *finding) floa
 	} else if k == NoData || k == Undetermined || k == ActiveLayover {
 		return nan
 	}
-	cos := w.field.ln.cos
 	need := max(now-res.Clearance, 0)
 	for range 3 { // above the shadow other ground may fold over it
 		if need > 0 {
 			need += liftAbove
 		}
-		g := w.judge.of(&w.line, need, cos)
+		at := w.line.target(need)
+		g := w.judge.of(&w.line, at)
 		if g.clear > 0 && g.near > 0 && g.far > 0 {
 			return need
 		}
 		if !(g.near > 0) && g.clear > 0 || math.IsInf(g.far, 0) {
 			return nan
 		}
-		need += max(0, -g.clear, -g.far/cos)
+		need += max(0, -g.clear, -g.far/at.drop)
 	}
 	return nan
 }

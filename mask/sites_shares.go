@@ -6,27 +6,15 @@ import (
 	"foldshade/dem"
 )
 
-// shares fills the shares of a site's cells or footprint. The result's own
-// class is filled.
-func (w *sitesWorker) shares(i, k int, res *SiteResult) error {
-	s := &w.job.Sites[i]
-	if len(s.Cells) > 0 {
-		return w.cellShares(s.Cells, k, &res.Shares)
-	}
-	res.Shares = Shares{}
-	if s.Footprint == 0 || res.Where != OnGround {
-		res.Shares[res.Class.Kind()] = 1
-		return nil
-	}
-	w.footprint(i, k, &res.Shares)
-	return nil
-}
-
 // shareStep is the side of the squares that a site's cells are taken in.
 const shareStep = 64
 
-// cellShares tallies the verdict layer over cells.
-func (w *sitesWorker) cellShares(cells []Cell, k int, out *Shares) error {
+// cellShares tallies the verdict layer over the cells of a site that has some.
+func (w *sitesWorker) cellShares(i, k int, res *SiteResult) error {
+	cells := w.job.Sites[i].Cells
+	if len(cells) == 0 {
+		return nil
+	}
 	squares := map[Cell][]Cell{}
 	var order []Cell
 	for _, c := range cells {
@@ -51,7 +39,7 @@ func (w *sitesWorker) cellShares(cells []Cell, k int, out *Shares) error {
 		}
 	}
 	for n, c := range count {
-		out[n] = float64(c) / float64(len(cells))
+		res.Shares[n] = float64(c) / float64(len(cells))
 	}
 	return nil
 }
@@ -76,9 +64,15 @@ func (w *sitesWorker) footprintCells(i int) (rows, cols float64) {
 }
 
 // footprint tallies the class of the target's height over points of a square
-// lattice about the site, the site among them.
-func (w *sitesWorker) footprint(i, k int, out *Shares) {
+// lattice about the site, the site among them. Without a footprint that is the
+// site alone.
+func (w *sitesWorker) footprint(i, k int, res *SiteResult) {
 	p, s := &w.sites[i], &w.job.Sites[i]
+	res.Shares = Shares{}
+	if s.Footprint == 0 || len(s.Cells) > 0 || p.where != OnGround {
+		res.Shares[res.Class.Kind()] = 1
+		return
+	}
 	d := w.spacing(i)
 	n := int(s.Footprint / d)
 	l := &p.local
@@ -97,7 +91,7 @@ func (w *sitesWorker) footprint(i, k int, out *Shares) {
 		}
 	}
 	for n, c := range count {
-		out[n] = float64(c) / float64(all)
+		res.Shares[n] = float64(c) / float64(all)
 	}
 }
 
@@ -108,8 +102,8 @@ func (w *sitesWorker) classAt(k int, row, col, height float64) Class {
 		return NoData
 	}
 	_, facet, sight := w.look(k, &p)
-	f := w.judge.of(&w.line, height, w.field.ln.cos)
-	m := f.lane(&w.field, p.z, p.z+height)
+	f := w.judge.of(&w.line, w.line.target(height))
+	m := f.lane(w.field, p.z, p.z+height)
 	var res SiteResult
 	w.classes(&m, facet, &sight, &res)
 	return res.Class
