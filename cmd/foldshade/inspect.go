@@ -83,12 +83,13 @@ type heights struct {
 // reachRow says how far terrain can matter to a cell, metres of ground.
 type reachRow struct {
 	Look      string   `json:"look,omitempty"`
-	Incidence float64  `json:"incidence"`
+	Kind      string   `json:"kind,omitempty"`
+	Incidence float64  `json:"incidence"` // at the DEM's centre
 	Azimuth   *float64 `json:"azimuth,omitempty"`
 	// Shadow is how far towards the radar terrain may hide a cell, Layover
-	// how far either way it may share the cell's slant range.
-	Shadow  float64 `json:"shadow_reach"`
-	Layover float64 `json:"layover_reach"`
+	// how far either way it may share the cell's slant range; null without end.
+	Shadow  *float64 `json:"shadow_reach"`
+	Layover *float64 `json:"layover_reach"`
 	// Sure is the part of the grid's area farther from every edge than either
 	// reach, 0 to 1.
 	Sure float64 `json:"share_out_of_reach"`
@@ -127,35 +128,72 @@ func (j *inspectJob) run(ctx context.Context, name string) (*inspection, error) 
 		Warnings: append([]string{}, src.Warnings()...),
 	}
 	for _, look := range looks {
-		azimuth := rounded(look.Azimuth.Degrees(), 9)
-		row := reach(src.Grid(), relief, look.Incidence)
-		row.Look, row.Azimuth = look.Name, &azimuth
+		row, err := lookReach(src, look, found, relief)
+		if err != nil {
+			return nil, err
+		}
 		result.Reach = append(result.Reach, row)
 	}
 	if len(looks) == 0 {
 		for _, i := range inspectIncidences {
-			result.Reach = append(result.Reach, reach(src.Grid(), relief, geometry.Angle(i)*geometry.Degree))
+			look := geometry.NewLook()
+			look.Kind, look.Incidence = geometry.Fixed, geometry.Angle(i)*geometry.Degree
+			o := &geometryOf{look: look}
+			v, _ := o.view(geometry.Geodetic{})
+			result.Reach = append(result.Reach, rowOf(src.Grid(), look.Incidence, o.reach(&v, relief)))
 		}
 	}
 	return result, nil
 }
 
-// reach returns how far terrain of a relief can matter to a cell under a plane
-// wave: the ray that grazes the highest ground meets the lowest relief *
-// tan(incidence) behind it, and two points of one slant range lie at most
-// relief * cot(incidence) apart.
-func reach(g *dem.Grid, relief float64, incidence geometry.Angle) reachRow {
-	row := reachRow{
-		Incidence: rounded(incidence.Degrees(), 9),
-		Shadow:    rounded(relief*incidence.Tan(), 3),
-		Layover:   rounded(relief/incidence.Tan(), 3),
+// lookReach returns the row of a look: the incidence at the DEM's centre and
+// the longest reach anywhere on it.
+func lookReach(src dem.Source, look geometry.Look, found dem.Range, relief float64) (reachRow, error) {
+	o, err := overDEM(src, look)
+	if err != nil {
+		return reachRow{}, err
 	}
+	g := src.Grid()
+	centre := position(src, float64(g.Rows-1)/2, float64(g.Cols-1)/2, found.Min)
+	v, _ := o.view(centre)
+	s := o.over(g, found.Min, found.Max, relief)
+	if s.seen == 0 || math.IsNaN(v.T) && o.platform != nil {
+		_, seen := o.view(centre)
+		return reachRow{}, hint(fmt.Errorf("look %q does not see the DEM: %s", look.Name, o.why(centre, &v, seen)), "`foldshade looks --dem` shows the geometry of a look")
+	}
+	row := rowOf(g, v.Incidence, s.reach)
+	azimuth := rounded(v.LookAzimuth.Degrees(), 9)
+	row.Look, row.Kind, row.Azimuth = look.Name, string(look.Kind), &azimuth
+	return row, nil
+}
+
+// rowOf makes a row of a reach over a grid.
+func rowOf(g *dem.Grid, incidence geometry.Angle, r reach) reachRow {
+	layover := math.Max(r.towards, r.away)
+	row := reachRow{Incidence: rounded(incidence.Degrees(), 9), Shadow: finite(r.shadow, 3), Layover: finite(layover, 3)}
 	l := g.At(float64(g.Rows-1)/2, float64(g.Cols-1)/2)
 	width := float64(g.Cols) * math.Hypot(l.ColE, l.ColN)
 	height := float64(g.Rows) * math.Hypot(l.RowE, l.RowN)
-	rim := 2 * math.Max(row.Shadow, row.Layover)
+	rim := 2 * math.Max(r.shadow, layover)
 	row.Sure = rounded(math.Max(0, 1-rim/width)*math.Max(0, 1-rim/height), 6)
 	return row
+}
+
+// finite rounds a number for JSON, which has none for NaN and infinity: null.
+func finite(v float64, decimals int) *float64 {
+	if math.IsNaN(v) || math.IsInf(v, 0) {
+		return nil
+	}
+	v = rounded(v, decimals)
+	return &v
+}
+
+// text writes a number for a table, a dash for null.
+func text(v *float64, format string) string {
+	if v == nil {
+		return "-"
+	}
+	return fmt.Sprintf(format, *v)
 }
 
 // rounded rounds to a number of decimals.
@@ -195,7 +233,7 @@ func (p *inspection) print(w io.Writer) {
 	}
 	var rows [][]string
 	for _, r := range p.Reach {
-		row := []string{strconv.FormatFloat(r.Incidence, 'g', 6, 64), fmt.Sprintf("%.0f", r.Shadow), fmt.Sprintf("%.0f", r.Layover), fmt.Sprintf("%.1f %%", 100*r.Sure)}
+		row := []string{strconv.FormatFloat(r.Incidence, 'g', 6, 64), text(r.Shadow, "%.0f"), text(r.Layover, "%.0f"), fmt.Sprintf("%.1f %%", 100*r.Sure)}
 		if named {
 			row = append([]string{r.Look}, row...)
 		}

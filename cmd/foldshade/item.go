@@ -26,8 +26,12 @@ var assetRoles = map[mask.Layer]string{
 }
 
 // writeItem writes the catalogue entry of a look whose rasters are finished.
-func (o *outputs) writeItem(i int, j *layersJob, grid *dem.Grid, window dem.Window, chosen []mask.Layer) error {
-	look := o.looks[i]
+func (o *outputs) writeItem(i int, j *layersJob, src dem.Source, window dem.Window, chosen []mask.Layer) error {
+	look, grid := o.looks[i], src.Grid()
+	scene, err := sceneOf(src, look)
+	if err != nil {
+		return err
+	}
 	item := raster.Item{
 		ID:          look.Name,
 		Title:       "Look " + look.Name,
@@ -39,7 +43,11 @@ func (o *outputs) writeItem(i int, j *layersJob, grid *dem.Grid, window dem.Wind
 		Sampling:    "area",
 		Software:    map[string]string{"foldshade": toolVersion(), "GDAL": raster.GDALVersion()},
 		Lineage:     shellJoin(j.command),
-		Properties:  lookProperties(look),
+		Properties:  lookProperties(look, scene),
+	}
+	if !scene.utc.IsZero() {
+		item.Created, item.Time = item.Time, scene.utc
+		item.TimeMeaning = "the moment at which the track of the ephemeris is abreast of the DEM's centre"
 	}
 	for _, l := range chosen {
 		role := string(l)
@@ -58,18 +66,58 @@ func (o *outputs) writeItem(i int, j *layersJob, grid *dem.Grid, window dem.Wind
 	return o.items[i].Close()
 }
 
+// scene is how a look sees the centre of the DEM.
+type scene struct {
+	view  geometry.View
+	state string    // of the orbit: ascending or descending; empty without one
+	utc   time.Time // zero for a look without a calendar
+}
+
+// sceneOf resolves a look at the centre of the DEM, on its ground.
+func sceneOf(src dem.Source, look geometry.Look) (scene, error) {
+	o, err := overDEM(src, look)
+	if err != nil {
+		return scene{}, err
+	}
+	g := src.Grid()
+	var s scene
+	s.view, _ = o.view(position(src, float64(g.Rows-1)/2, float64(g.Cols-1)/2, 0))
+	if o.platform == nil || math.IsNaN(s.view.T) {
+		return s, nil
+	}
+	s.utc, _ = o.platform.Time(s.view.T)
+	if look.Kind == geometry.Orbit || look.Kind == geometry.Ephemeris {
+		// The earth turns about the third axis: north is north in any frame.
+		s.state = string(geometry.Descending)
+		if _, vel := o.platform.State(s.view.T); vel.Z > 0 {
+			s.state = string(geometry.Ascending)
+		}
+	}
+	return s, nil
+}
+
 // lookProperties are the parameters of a look, in the fields of the STAC
-// extensions view and sar where they have one, and all of them under the keys
-// of the look files.
-func lookProperties(look geometry.Look) map[string]any {
+// extensions view, sar and sat where they have one, and all of them under the
+// keys of the look files. The angles are those at the scene's centre, as the
+// view extension has it.
+func lookProperties(look geometry.Look, at scene) map[string]any {
 	p := map[string]any{}
 	number := func(key string, v float64) {
 		if !math.IsNaN(v) {
 			p[key] = rounded(v, 9)
 		}
 	}
-	number("view:incidence_angle", look.Incidence.Degrees())
-	number("view:azimuth", look.Azimuth.Degrees())
+	number("view:incidence_angle", at.view.Incidence.Degrees())
+	number("view:azimuth", at.view.LookAzimuth.Degrees())
+	number("view:off_nadir", at.view.LookAngle.Degrees())
+	for _, key := range []string{"view:incidence_angle", "view:off_nadir"} {
+		if v, ok := p[key].(float64); ok && v > 90 { // beyond what the extension takes
+			delete(p, key)
+		}
+	}
+	if at.state != "" {
+		p["sat:orbit_state"] = at.state
+	}
 	number("sar:bandwidth", look.Bandwidth/1e9)
 	if look.Band == "" {
 		number("sar:center_frequency", look.Frequency()/1e9)

@@ -241,7 +241,7 @@ func (j *layersJob) compute(ctx context.Context, src *raster.DEM, looks []geomet
 	warn(j.stderr, warnings)
 	// GDAL makes the rasters: give it the room that the marching took.
 	debug.FreeOSMemory()
-	if err := out.finish(ctx, j, src.Grid(), window, chosen); err != nil {
+	if err := out.finish(ctx, j, src, window, chosen); err != nil {
 		return nil, err
 	}
 	return summarize(chosen, out, warnings), nil

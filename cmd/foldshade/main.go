@@ -165,7 +165,7 @@ which incidence.`,
 	root.SetHelpCommand(newHelp())
 	root.Version = fmt.Sprintf("%s (GDAL %s)", toolVersion(), raster.GDALVersion())
 	root.SetFlagErrorFunc(flagError)
-	root.AddCommand(newLayers(command), newSweep(command), newSites(command), newInspect(), newDemo(), newVersion(), newMan())
+	root.AddCommand(newLayers(command), newSweep(command), newSites(command), newLooks(), newInspect(), newDemo(), newVersion(), newMan())
 	return root
 }
 

@@ -75,7 +75,7 @@ func (o *outputs) write(look int, chosen []mask.Layer, t *mask.Tile) error {
 }
 
 // finish makes the rasters and the catalogue entries, still under hidden names.
-func (o *outputs) finish(ctx context.Context, j *layersJob, grid *dem.Grid, window dem.Window, chosen []mask.Layer) error {
+func (o *outputs) finish(ctx context.Context, j *layersJob, src dem.Source, window dem.Window, chosen []mask.Layer) error {
 	bar := newProgress(j.stderr, "writing  ")
 	o.set.Progress = bar.update
 	err := o.set.Finish(ctx)
@@ -84,7 +84,7 @@ func (o *outputs) finish(ctx context.Context, j *layersJob, grid *dem.Grid, wind
 		return err
 	}
 	for i := range o.looks {
-		if err := o.writeItem(i, j, grid, window, chosen); err != nil {
+		if err := o.writeItem(i, j, src, window, chosen); err != nil {
 			return err
 		}
 	}
