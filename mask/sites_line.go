@@ -31,6 +31,9 @@ type line struct {
 // trace lays the line through (u, v) over the field, at most reach rows each
 // way. ok is false where the surface has no value there.
 func (l *line) trace(f *field, u, v float64, nearRows, farRows int) (ok bool) {
+	if u < float64(f.ua) { // before the first row of a fan
+		return false
+	}
 	l.f = f
 	l.y = ray{ln: f.ln, k: f.ln.lane(u, v), u0: -1, from: -1, to: -2}
 	i := min(math.Floor(u), float64(f.ub-2))

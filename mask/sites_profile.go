@@ -63,13 +63,19 @@ func (w *sitesWorker) profile(distance float64) (*Profile, error) {
 			distance = d
 		}
 	}
-	ln, p := w.looks[0], &w.sites[0]
+	p := &w.sites[0]
+	ln, ok := w.side(0, p)
+	if !ok {
+		return nil, fmt.Errorf("site %q stands right at the radar, so there is no profile", w.job.Sites[0].Name)
+	}
 	// Every point of the profile needs a reach of its own.
 	win := dem.Window{Row: int(p.row), Col: int(p.col), Rows: 1, Cols: 1}
-	if err := w.load(0, win, distance/ln.cotMost+w.job.Sites[0].Height); err != nil {
+	if err := w.load(ln, win, distance/ln.cotMost+w.job.Sites[0].Height); err != nil {
 		return nil, err
 	}
-	w.trace(p.row, p.col)
+	if !w.trace(p.row, p.col) {
+		return nil, fmt.Errorf("site %q has no height, so there is no profile", w.job.Sites[0].Name)
+	}
 	spots, site := w.line.all()
 	classes := w.profileClasses(spots)
 	prof := &Profile{Incidence: out[0].Incidence, LookAzimuth: out[0].LookAzimuth}

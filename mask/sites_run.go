@@ -240,8 +240,9 @@ func (w *sitesWorker) bundle(ctx context.Context, sites []int, out []SiteResult)
 				return err
 			}
 		}
-		if w.field = &w.w.field; places.Rows > 0 && (places != cells || extra > 0) {
-			if err := w.load(k, places, extra); err != nil {
+		shared := w.looks[k].fan == nil
+		if w.field = &w.w.field; shared && places.Rows > 0 && (places != cells || extra > 0) {
+			if err := w.load(w.looks[k], places, extra); err != nil {
 				return err
 			}
 		}
@@ -249,6 +250,11 @@ func (w *sitesWorker) bundle(ctx context.Context, sites []int, out []SiteResult)
 			res := &out[i*len(w.looks)+k]
 			*res = w.blank(i, k)
 			if w.sites[i].where == OnGround {
+				if !shared {
+					if err := w.approach(i, k); err != nil {
+						return err
+					}
+				}
 				w.evaluate(i, k, t, res)
 			}
 			w.footprint(i, k, res)
@@ -263,6 +269,18 @@ func (w *sitesWorker) bundle(ctx context.Context, sites []int, out []SiteResult)
 		w.tell(len(sites))
 	}
 	return nil
+}
+
+// approach reads the field of a site for a tripod, whose fan depends on the
+// place.
+func (w *sitesWorker) approach(i, k int) error {
+	p := &w.sites[i]
+	ln, ok := w.side(k, p)
+	if !ok {
+		return nil // evaluate finds out
+	}
+	_, places, extra := w.windows([]int{i})
+	return w.load(ln, places, extra)
 }
 
 // tell reports finished pairs.
@@ -315,30 +333,60 @@ func (w *sitesWorker) cells(k int, win dem.Window) (*Tile, error) {
 	if err := b.sheet.load(w.job.Source, win); err != nil {
 		return nil, err
 	}
-	u0, u1, v0, v1 := w.looks[k].window(win)
-	b.field.setUp(w.looks[k], w.lim, u0, u1, v0, v1)
-	if err := b.field.load(w.job.Source); err != nil {
-		return nil, err
+	if w.looks[k].fan != nil {
+		b.sheet.blank()
 	}
-	b.sheet.classify(&b.field, &b.strip, &b.walk)
+	for _, side := range w.sides(k) {
+		u0, u1, v0, v1 := side.window(win)
+		if u0 = max(u0, side.firstRow()); u0 >= u1 {
+			continue
+		}
+		b.field.setUp(side, w.lim, u0, u1, v0, v1)
+		if err := b.field.load(w.job.Source); err != nil {
+			return nil, err
+		}
+		b.sheet.classify(&b.field, &b.strip, &b.walk)
+	}
 	return b.fill(k), nil
 }
 
-// load reads the field around the places of a bundle for look k, with a reach
-// for that much more relief.
-func (w *sitesWorker) load(k int, win dem.Window, extra float64) error {
-	u0, u1, v0, v1 := w.looks[k].window(win)
+// sides returns the lanes of look k: the fans of a tripod, one set otherwise.
+func (r *sitesRunner) sides(k int) []*lanes {
+	return append([]*lanes{r.looks[k]}, r.looks[k].more...)
+}
+
+// side returns the lanes of look k that hold a place; ok is false beside a
+// tripod.
+func (r *sitesRunner) side(k int, p *ground) (*lanes, bool) {
+	if r.looks[k].fan == nil {
+		return r.looks[k], true
+	}
+	for _, ln := range r.sides(k) {
+		u, v := ln.place(p.row, p.col)
+		d := u - ln.fan.u
+		if off := math.Abs(v - ln.fan.v); u >= float64(ln.firstRow()) && (off < d || off == d && ln.fan.rows) {
+			return ln, true
+		}
+	}
+	return nil, false
+}
+
+// load reads the field around places for lanes of a look, with a reach for
+// that much more relief.
+func (w *sitesWorker) load(ln *lanes, win dem.Window, extra float64) error {
+	u0, u1, v0, v1 := ln.window(win)
 	lim := w.lim
 	lim.high += extra
 	lim.ceiling += extra
 	w.field = &w.wide
-	w.field.setUp(w.looks[k], lim, u0, u1, v0, v1)
+	w.field.setUp(ln, lim, max(u0, ln.firstRow()), u1, v0, v1)
 	w.field.lim = w.lim
 	return w.field.load(w.job.Source)
 }
 
-// trace lays the line through a place of the grid.
-func (w *sitesWorker) trace(row, col float64) bool {
+// trace lays the line through a place of the grid; ok is false where the
+// surface has no value.
+func (w *sitesWorker) trace(row, col float64) (ok bool) {
 	f := w.field
 	u, v := f.ln.place(row, col)
 	return w.line.trace(f, u, v, f.near, f.far)
@@ -362,44 +410,77 @@ func (w *sitesWorker) blank(i, k int) SiteResult {
 // on whose centres sites stand.
 func (w *sitesWorker) evaluate(i, k int, t *Tile, res *SiteResult) {
 	p, s := &w.sites[i], &w.job.Sites[i]
-	view, facet, sight := w.look(k, p)
-	w.describe(p, s, k, &view, facet, &sight, res)
-	w.trace(p.row, p.col)
+	g := w.look(k, p, s.Height)
+	res.Seen = g.seen
+	w.describe(p, k, &g, res)
+	if _, ok := w.side(k, p); !ok && res.Seen == geometry.InView {
+		res.Seen = geometry.OutsideRange // right at a tripod
+	}
+	if p.centre && s.Height == 0 {
+		if w.fromCell(t, p, res); res.Class == NoData && res.Seen == geometry.InView {
+			res.Seen = geometry.OutsideSwath // of what the layers interpolate
+		}
+	}
+	if res.Seen != geometry.InView || !w.trace(p.row, p.col) {
+		return
+	}
 	f := w.judge.of(&w.line, w.line.target(s.Height))
-	res.Blocker, res.Partner = noTerrain, noTerrain
 	if f.blocker != nil {
 		res.Blocker = w.line.terrain(w.grid, f.blocker)
 	}
 	if f.partner != nil {
 		res.Partner = w.line.terrain(w.grid, f.partner)
 	}
-	m := f.lane(w.field, p.z, p.z+s.Height)
-	w.classes(&m, facet, &sight, res)
-	if p.centre && s.Height == 0 {
-		w.fromCell(t, p, res)
+	if !p.centre || s.Height > 0 {
+		m := f.lane(w.field, p.z, p.z+s.Height)
+		w.classes(&m, &g, res)
 	}
-	res.MastToClear = w.mastToClear(s.Height, res, &f)
+	res.MastToClear = w.mastToClear(s.Height, res)
 	if w.job.DEMError.Sigma > 0 {
-		w.chance(i, k, facet, res)
+		w.chance(i, k, g.facet, res)
 	}
 }
 
-// look returns how look k sees the ground of a place.
-func (w *sitesWorker) look(k int, p *ground) (view, geometry.Facet, geometry.Sight) {
-	v := w.looks[k].viewOf(w.grid, p.row, p.col, true)
+// glance is how a look sees a target over a place.
+type glance struct {
+	seen       geometry.Seen
+	facet      geometry.Facet // of the ground
+	sight      geometry.Sight
+	slantRange float64 // to the target, metres
+}
+
+// look returns how look k sees a target over a place.
+func (w *sitesWorker) look(k int, p *ground, height float64) (g glance) {
+	ln, look := w.looks[k], &w.job.Looks[k]
+	if ln.places != nil {
+		at := geometry.Geodetic{Place: geometry.Place{Lon: p.local.Lon, Lat: p.local.Lat}, Height: p.z}
+		v, seen := ln.platform.View(at)
+		at.Height += height
+		top, _ := ln.platform.View(at)
+		g = glance{seen: seen, sight: v.Sight(), slantRange: top.SlantRange}
+		l := &p.local
+		det := l.ColE*l.RowN - l.ColN*l.RowE
+		g.facet = g.sight.Facet((p.zc*l.RowN-p.zr*l.ColN)/det, (p.zr*l.ColE-p.zc*l.RowE)/det)
+		return g
+	}
+	v := ln.viewOf(w.grid, p.row, p.col, true)
 	c := func(i int) float64 { return v.up[i] + p.zc*v.c[i] + p.zr*v.r[i] }
-	facet := geometry.Facet{Along: c(0), Above: c(1), Across: c(2)}
-	sight := geometry.Sight{
+	g.facet = geometry.Facet{Along: c(0), Above: c(1), Across: c(2)}
+	g.sight = geometry.Sight{
 		Along:  geometry.ENU{East: v.east, North: v.north, Up: v.up[0]},
 		Above:  geometry.ENU{Up: v.up[1]},
 		Across: geometry.ENU{Up: v.up[2]},
 	}
-	return v, facet, sight
+	_, g.slantRange = ln.at(v.s, p.z+height)
+	if look.SlantRange == look.SlantRange {
+		g.slantRange += look.SlantRange
+	}
+	return g
 }
 
 // classes fills the classes and margins from the line's.
-func (w *sitesWorker) classes(m *lane, facet geometry.Facet, sight *geometry.Sight, res *SiteResult) {
-	raw, turns := m.raw(), w.turns(facet, sight)
+func (w *sitesWorker) classes(m *lane, g *glance, res *SiteResult) {
+	raw, turns := m.raw(), w.turns(g)
 	res.Layover, res.Shadow = Class(layoverOf[turns&3][raw]), Class(shadowOf[turns&3][raw])
 	res.Class = Class(verdictOf[turns][raw])
 	res.Clearance = float64(m.clear)
@@ -409,14 +490,15 @@ func (w *sitesWorker) classes(m *lane, facet geometry.Facet, sight *geometry.Sig
 }
 
 // turns returns the turns of a facet.
-func (w *sitesWorker) turns(f geometry.Facet, sight *geometry.Sight) (turns int) {
+func (w *sitesWorker) turns(g *glance) (turns int) {
+	f := g.facet
 	if f.ActiveLayover() {
 		turns |= turnLayover
 	}
 	if f.SelfShadow() {
 		turns |= turnShadow
 	}
-	if sight.Foreshortening(f) < w.job.Options.CompressedBelow {
+	if g.sight.Foreshortening(f) < w.job.Options.CompressedBelow {
 		turns |= turnCompressed
 	}
 	return turns
@@ -430,8 +512,8 @@ func (w *sitesWorker) fromCell(t *Tile, p *ground, res *SiteResult) {
 }
 
 // describe fills what does not depend on other terrain.
-func (w *sitesWorker) describe(p *ground, s *Site, k int, v *view, f geometry.Facet, sight *geometry.Sight, res *SiteResult) {
-	look := &w.job.Looks[k]
+func (w *sitesWorker) describe(p *ground, k int, g *glance, res *SiteResult) {
+	look, sight, f := &w.job.Looks[k], &g.sight, g.facet
 	res.LineOfSight = sight.Along
 	res.Incidence = sight.Along.Incidence()
 	res.Elevation = 90*geometry.Degree - res.Incidence
@@ -442,10 +524,7 @@ func (w *sitesWorker) describe(p *ground, s *Site, k int, v *view, f geometry.Fa
 	res.Foreshortening = sight.Foreshortening(f)
 	res.AreaFactor = sight.SigmaArea(f)
 	res.Downslope = downslope(f, sight)
-	_, res.SlantRange = w.looks[k].at(v.s, p.z+s.Height)
-	if look.SlantRange == look.SlantRange {
-		res.SlantRange += look.SlantRange
-	}
+	res.SlantRange = g.slantRange
 	if Lacks(GroundResolution, *look) == nil {
 		res.GroundResolution = sight.GroundResolution(f, geometry.SlantResolution(look.Bandwidth))
 	}
@@ -469,10 +548,10 @@ func gridNorth(g *dem.Grid, l *dem.Local) geometry.Angle {
 }
 
 // mastToClear returns the least height of a target over the line's point that
-// is neither hidden nor folded; f and res are those of one at height now. The
+// is neither hidden nor folded; res is that of one at height now. The
 // target must stand above the shadow, above the ground farther away that has
 // its slant range, and not above the ground nearer that has it.
-func (w *sitesWorker) mastToClear(now float64, res *SiteResult, f *finding) float64 {
+func (w *sitesWorker) mastToClear(now float64, res *SiteResult) float64 {
 	if k := res.Layover; k == Open {
 		return 0
 	} else if k == NoData || k == Undetermined || k == ActiveLayover {

@@ -4,6 +4,7 @@ import (
 	"math"
 
 	"foldshade/dem"
+	"foldshade/geometry"
 )
 
 // shareStep is the side of the squares that a site's cells are taken in.
@@ -98,13 +99,16 @@ func (w *sitesWorker) footprint(i, k int, res *SiteResult) {
 // classAt returns the class of a target over a place near those of the bundle.
 func (w *sitesWorker) classAt(k int, row, col, height float64) Class {
 	p, err := groundAt(w.job.Source, &w.sheet, row, col)
-	if err != nil || p.where != OnGround || !w.trace(p.row, p.col) {
+	if err != nil || p.where != OnGround {
 		return NoData
 	}
-	_, facet, sight := w.look(k, &p)
+	g := w.look(k, &p, height)
+	if ln, ok := w.side(k, &p); g.seen != geometry.InView || !ok || ln != w.field.ln || !w.trace(p.row, p.col) {
+		return NoData
+	}
 	f := w.judge.of(&w.line, w.line.target(height))
 	m := f.lane(w.field, p.z, p.z+height)
 	var res SiteResult
-	w.classes(&m, facet, &sight, &res)
+	w.classes(&m, &g, &res)
 	return res.Class
 }

@@ -69,7 +69,7 @@ func (w *sitesWorker) skies(ctx context.Context, sites []int, out [][]SkyRay) er
 			return err
 		}
 		if places.Rows > 0 {
-			if err := w.load(k, places, extra); err != nil {
+			if err := w.load(w.looks[k], places, extra); err != nil {
 				return err
 			}
 		}
@@ -93,7 +93,7 @@ func (w *sitesWorker) skies(ctx context.Context, sites []int, out [][]SkyRay) er
 func (w *sitesWorker) ray(i, k int, out *SkyRay) {
 	p, s := &w.sites[i], &w.job.Sites[i]
 	w.trace(p.row, p.col)
-	_, facet, _ := w.look(k, p)
+	facet := w.look(k, p, 0).facet
 	slope := (facet.Along - facet.Above) / (facet.Along + facet.Above) // at 45 degrees
 	spots, here := w.line.all()
 	lit := litBelow(spots)

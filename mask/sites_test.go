@@ -88,3 +88,63 @@ func TestMountainSitesEqualTheLayers(t *testing.T) {
 	sameAsCells(t, geographic, mask.DefaultOptions(), cells, "geographic", fixedLook(39*deg, 103*deg))
 	assert.NotEmpty(t, cells)
 }
+
+// movingLooks are an orbit, a flight and a tripod over the mountain.
+func movingLooks(m *dem.Memory) []geometry.Look {
+	g := m.Frame
+	at := func(row, col float64) geometry.Place {
+		l := g.At(row, col)
+		return geometry.Place{Lon: l.Lon, Lat: l.Lat}
+	}
+	orbit := geometry.NewLook()
+	orbit.Name, orbit.Kind, orbit.Side = "orbit", geometry.Orbit, geometry.Right
+	orbit.Incidence, orbit.Altitude, orbit.Heading = 22*deg, 700e3, 347*deg
+	flight := geometry.NewLook()
+	flight.Name, flight.Kind, flight.Side = "flight", geometry.Flight, geometry.Right
+	flight.Start, flight.End, flight.Height = at(460, -150), at(-20, -170), 7000
+	tripod := geometry.NewLook()
+	tripod.Name, tripod.Kind = "tripod", geometry.Tripod
+	tripod.Position, tripod.Antenna = at(150.3, 60.7), 300
+	return []geometry.Look{orbit, flight, tripod}
+}
+
+// A millionth and a half of a cell beside a centre a site is walked to from its
+// own place, and for every kind of look it gets the class that the layers have
+// there, but for cells whose margin is all but nothing. On the centre it gets
+// the bits of the layers.
+func TestSitesOfEveryKind(t *testing.T) {
+	m := mountain(t)
+	g := m.Frame
+	o := openEdge()
+	var cells []int
+	for i := 0; i < len(m.Heights); i += 1231 {
+		cells = append(cells, i)
+	}
+	looks := append(movingLooks(m), fixedLook(66*deg, 260*deg))
+	sameAsCells(t, m, o, cells, "moving", looks...)
+	for _, look := range looks {
+		raster := march(t, m, g.Whole(), siteLayers, o, look)[0]
+		var sites []mask.Site
+		for _, i := range cells {
+			sites = append(sites, mask.Site{Row: float64(i/g.Cols) + 1.5e-6, Col: float64(i%g.Cols) + 1.5e-6})
+		}
+		checked, differ, kinds := 0, 0, map[int]int{}
+		for k, r := range evaluate(t, m, o, sites, look) {
+			want := mask.Class(raster.classes[mask.LayoverLayer][cells[k]])
+			if r.Where != mask.OnGround || want == mask.NoData && r.Seen == geometry.InView {
+				continue // beside a hole or the edge of what is seen
+			}
+			checked++
+			kinds[r.Layover.Kind()]++
+			if r.Layover.Kind() != want.Kind() {
+				differ++
+				t.Logf("%s, row %d, column %d: %v, %v, %v at the site, %v, %v, %v in the layers", look.Name, cells[k]/g.Cols, cells[k]%g.Cols,
+					r.Layover, r.Clearance, r.FoldMargin, want, raster.values[mask.Clearance][0][cells[k]], raster.values[mask.FoldMargin][0][cells[k]])
+			}
+		}
+		t.Logf("%s: %d sites, %v, %d differ", look.Name, checked, kinds, differ)
+		assert.Greater(t, kinds[kindOpen], 10, look.Name)
+		assert.Greater(t, kinds[kindFolded]+kinds[kindHidden], 10, look.Name)
+		assert.LessOrEqual(t, float64(differ), 0.02*float64(checked), look.Name)
+	}
+}
