@@ -114,9 +114,9 @@ func (w *sitesWorker) classReason(res *SiteResult) string {
 func (w *sitesWorker) help(res *SiteResult) string {
 	switch {
 	case res.MastToClear == res.MastToClear:
-		return fmt.Sprintf("; a mast of %s m would clear it", metres(math.Ceil(res.MastToClear*10)/10))
+		return fmt.Sprintf("; a mast of %.1f m would clear it", math.Ceil(res.MastToClear*10)/10)
 	case res.Class.Kind() == 4:
-		return fmt.Sprintf("; a mast of %s m would see the radar but be folded", metres(math.Ceil((w.job.Sites[res.Site].Height-res.Clearance)*10)/10))
+		return fmt.Sprintf("; a mast of %.1f m would see the radar but be folded", math.Ceil((w.job.Sites[res.Site].Height-res.Clearance+liftAbove)*10)/10)
 	}
 	return "; no mast helps"
 }
