@@ -223,19 +223,18 @@ func (s *sweep) tiles() []dem.Window {
 	cell := int64(16 + 26 + 16 + 2*len(s.job.Azimuths))
 	room := memory/int64(s.threads) - s.count.bytes()
 	w := s.job.Window
-	size := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(4*s.threads)))
+	size := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(s.threads)))
 	size = min(max(size, minTile), maxSweepTile)
 	for size > minTile && size*size*cell+s.stripe(size) > room {
-		size = size * 3 / 4
+		size = size * 7 / 8
 	}
 	if t := s.job.Options.Tile; t > 0 {
 		size = int64(t)
 	}
 	var out []dem.Window
-	for row := 0; row < w.Rows; row += int(size) {
-		for col := 0; col < w.Cols; col += int(size) {
-			t := dem.Window{Row: w.Row + row, Col: w.Col + col, Rows: min(int(size), w.Rows-row), Cols: min(int(size), w.Cols-col)}
-			if t = s.crop(t); t.Rows > 0 {
+	for _, r := range parts(w.Row, w.Rows, int(size)) {
+		for _, c := range parts(w.Col, w.Cols, int(size)) {
+			if t := s.crop(dem.Window{Row: r[0], Col: c[0], Rows: r[1], Cols: c[1]}); t.Rows > 0 {
 				out = append(out, t)
 			}
 		}
@@ -243,7 +242,18 @@ func (s *sweep) tiles() []dem.Window {
 	return out
 }
 
-const maxSweepTile = 1024
+// parts cuts a run of cells into equal pieces of at most size cells, each by its
+// first cell and its length.
+func parts(first, cells, size int) (out [][2]int) {
+	n := (cells + size - 1) / size
+	for i := range n {
+		a, b := i*cells/n, (i+1)*cells/n
+		out = append(out, [2]int{first + a, b - a})
+	}
+	return out
+}
+
+const maxSweepTile = 1536
 
 // stripe is the memory of the heights and lanes of one stripe of a tile.
 func (s *sweep) stripe(size int64) int64 {

@@ -35,12 +35,17 @@ func windowLanes(g *dem.Grid, azimuth, from, to geometry.Angle) *lanes {
 	look := geometry.NewLook()
 	look.Kind, look.Incidence, look.Azimuth = geometry.Fixed, 45*geometry.Degree, azimuth
 	ln := fixedLanes(g, look)
-	// The reach: ground beyond relief / slope cannot have a slope that counts.
-	// It takes cot for ground farther away, and cot + tan for nearer ground.
-	fold, shade := 1/from.Tan(), to.Tan()
+	// The reach: ground beyond relief / slope cannot have a slope that shows where
+	// to look. It takes cot for ground farther away, and cot + tan for nearer
+	// ground.
+	fold, shade := 1/(guideShare*from.Tan()), to.Tan()/guideShare
 	ln.cotMost, ln.tanMost = fold, math.Max(shade-fold, 0)
 	return ln
 }
+
+// guideShare is the part of the bounds that a slope of a lane must pass for the
+// cell to look there on its own range line, where it may be steeper.
+const guideShare = 0.7
 
 // windower finds the slopes of the cells of one rectangle for one azimuth. The
 // slices are row-major over the rectangle, NaN where there is no height; no
@@ -82,7 +87,7 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 		}
 		for j := range x.field.strips {
 			if x.strip.setUp(&x.field, x.field.first+j) {
-				x.strip.march()
+				x.strip.march(guideShare*x.minShade, guideShare*x.minFold)
 				x.cells()
 			}
 		}
@@ -113,6 +118,9 @@ type windowStrip struct {
 	// next sample on the hull; -1 at its end: upper and lower on the way away
 	// from the radar, upper on the way back.
 	shade, nearer, farther []int32
+	// By lane and row, the most that ground from ownRows on rises above a line
+	// at the least slope that shows where to look.
+	topShade, topNearer, topFarther []float64
 	// Ground distance to the nearest unknown terrain towards the radar and away
 	// from it, infinite where there is none.
 	before, behind []float32
@@ -172,6 +180,7 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	n := p.n * windowLaneCount
 	p.ground, p.neg = resize(p.ground, n), resize(p.neg, p.n)
 	p.shade, p.nearer, p.farther = resize(p.shade, n), resize(p.nearer, n), resize(p.farther, n)
+	p.topShade, p.topNearer, p.topFarther = resize(p.topShade, n/2), resize(p.topNearer, n/2), resize(p.topFarther, n/2)
 	p.last = float64(ln.orient.v - 1)
 	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
 	p.anyUnknown = !f.sure
@@ -207,7 +216,7 @@ func (p *windowStrip) columns(st *standing) (va, vb int) {
 }
 
 // march samples the lanes and finds their hulls.
-func (p *windowStrip) march() {
+func (p *windowStrip) march(shade, fold float64) {
 	for i := range p.at {
 		p.sample(i)
 	}
@@ -223,6 +232,10 @@ func (p *windowStrip) march() {
 		hull(g, 1, part(p.shade))
 		hull(p.neg, 1, part(p.nearer))
 		hull(p.neg, -1, part(p.farther))
+		top := func(a []float64) []float64 { return a[k*p.rows:][:p.rows] }
+		crests(g, 1, 1, shade, top(p.topShade))
+		crests(g, 1, -1, fold, top(p.topNearer))
+		crests(g, -1, 1, fold, top(p.topFarther))
 		if p.anyUnknown {
 			p.unknown(k, g)
 		}
@@ -356,18 +369,52 @@ func hull(ground []mark, dir int, link []int32) {
 	}
 }
 
+// crests fills out, for every row of a lane, with the largest
+//
+//	sign h + dir least s
+//
+// of the samples from ownRows on, towards the radar for dir 1 and away from it
+// for -1. A point with less of it sees ground at a slope above least.
+func crests(ground []mark, dir int, sign, least float64, out []float64) {
+	from, to := 0, len(out)
+	if dir < 0 {
+		from, to = len(out)-1, -1
+	}
+	top, tilt := math.Inf(-1), float64(dir)*least
+	count := func(g mark) {
+		if t := float64(sign*g.h) + float64(tilt*g.s); t > top {
+			top = t
+		}
+	}
+	for i := from; i != to; i += dir {
+		if j := i - ownRows*dir; j >= 0 && j < len(out) {
+			// The sample halfway to the row passed before, and the row itself.
+			if l := 2*j - dir; l >= 0 && l < len(ground) {
+				count(ground[l])
+			}
+			count(ground[2*j])
+		}
+		out[i] = top
+	}
+}
+
 // touch returns the sample at which the tangent from a point over row ua + i of
 // lane k, at height h, touches the hull of the lane's ground from ownRows on:
 // the sample with the largest
 //
 //	sign (h[j] - h) / |s[j] - s|
 //
-// It returns -1 where that is not above least. Of samples at the same slope it
-// is the nearest, so that it does not depend on ground out of reach.
-func (p *windowStrip) touch(link []int32, k, i, dir int, sign, h, least float64) int {
-	base := k * p.n
-	ground, next := p.ground[base:][:p.n], link[base:][:p.n]
+// It returns -1 where that is not above least, as crests tells beforehand. Of
+// samples at the same slope it is the nearest, so that it does not depend on
+// ground out of reach.
+func (p *windowStrip) touch(link []int32, crests []float64, k, i, dir int, sign, h, least float64) int {
+	ground := p.ground[k*p.n:][:p.n]
 	s0 := ground[2*i].s
+	// Towards the radar the samples lie before the row: dir is -1.
+	if top := crests[k*p.rows+i]; !(top > float64(sign*h)-float64(float64(dir)*least*s0)) {
+		return -1
+	}
+	next := link[k*p.n:][:p.n]
 	j := 2 * (i + ownRows*dir)
 	for j >= 0 && j < p.n && ground[j].h != ground[j].h {
 		j += dir
@@ -457,21 +504,21 @@ func (x *windower) cell(u, v int) slopes {
 	own.step(&out)
 	own.beyond(&out)
 	h := (own.h + p.roundH) - p.roundH
-	tangent := func(link []int32, dir int, sign, least float64, most *float64) {
-		j := p.touch(link, k, i, dir, sign, h, least)
+	tangent := func(link []int32, crests []float64, dir int, sign, least float64, most *float64) {
+		j := p.touch(link, crests, k, i, dir, sign, h, least)
 		if j >= 0 {
 			own.around(j, sign, most)
 		}
 		if b == a {
 			return
 		}
-		if l := p.touch(link, k+1, i, dir, sign, h, least); l >= 0 && l != j {
+		if l := p.touch(link, crests, k+1, i, dir, sign, h, least); l >= 0 && l != j {
 			own.around(l, sign, most)
 		}
 	}
-	tangent(p.shade, -1, 1, x.minShade, &out.shade)
-	tangent(p.nearer, -1, -1, x.minFold, &out.fold)
-	tangent(p.farther, 1, 1, x.minFold, &out.fold)
+	tangent(p.shade, p.topShade, -1, 1, guideShare*x.minShade, &out.shade)
+	tangent(p.nearer, p.topNearer, -1, -1, guideShare*x.minFold, &out.fold)
+	tangent(p.farther, p.topFarther, 1, 1, guideShare*x.minFold, &out.fold)
 	out.shadeU, out.foldU = out.shade, out.fold
 	if p.anyUnknown {
 		c, d := k*p.rows+i, (b/p.n)*p.rows+i
