@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"io"
+	"math"
 	"strings"
 
 	"github.com/spf13/cobra"
@@ -16,6 +17,8 @@ import (
 type demFlags struct {
 	crs, unit string
 	band      int
+	geoid     string
+	offset    float64 // NaN when not given
 }
 
 func (d *demFlags) define(cmd *cobra.Command) {
@@ -23,7 +26,10 @@ func (d *demFlags) define(cmd *cobra.Command) {
 	f.StringVar(&d.crs, "crs", "", "CRS of the DEM where the file has none or a wrong one:\nEPSG:code, WKT or a PROJ string")
 	f.Var(&whole{&d.band, 1, 65535}, "band", "the band with the heights, 1 to 65535;\nby default the first that can hold heights")
 	f.StringVar(&d.unit, "vertical-unit", "", "unit of the heights where the file does not say it:\nm, ft, us-ft, cm, dm, mm or km; by default m")
-	inGroup(cmd, groupInput, "crs CRS", "band N", "vertical-unit UNIT")
+	f.StringVar(&d.geoid, "geoid", "", "raster of geoid undulations in metres, added to the\nheights of the DEM to make them ellipsoidal")
+	d.offset = math.NaN()
+	f.Var(&decimal{&d.offset, -1000, 1000, "metres"}, "height-offset", "metres added to the heights in place of a geoid,\n-1000 to 1000; 0 says that they are ellipsoidal")
+	inGroup(cmd, groupInput, "crs CRS", "band N", "vertical-unit UNIT", "geoid FILE", "height-offset METRES")
 }
 
 // open opens a DEM that may hold its heights in so many bytes.
@@ -31,7 +37,14 @@ func (d *demFlags) open(name string, hold int64) (*raster.DEM, error) {
 	if name == "" {
 		return nil, usagef("DEM is empty; give the path or the GDAL name of a raster")
 	}
-	src, err := raster.Open(name, raster.Options{CRS: d.crs, Band: d.band, VerticalUnit: d.unit, HoldBytes: hold})
+	o := raster.Options{CRS: d.crs, Band: d.band, VerticalUnit: d.unit, Geoid: d.geoid, HoldBytes: hold}
+	if !math.IsNaN(d.offset) {
+		if d.geoid != "" {
+			return nil, hint(usagef("--geoid and --height-offset are both given"), "give one of them")
+		}
+		o.HeightOffset = &d.offset
+	}
+	src, err := raster.Open(name, o)
 	if err != nil {
 		return nil, err
 	}

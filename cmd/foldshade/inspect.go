@@ -213,6 +213,13 @@ func (p *inspection) print(w io.Writer) {
 	if vertical == "" {
 		vertical = "not stated; taken as ellipsoidal"
 	}
+	if s := f.HeightShift; s != nil {
+		name := s.Name
+		if s.Source == "offset" {
+			name = "the given offset"
+		}
+		vertical = fmt.Sprintf("made ellipsoidal by %s: %+.2f to %+.2f m added", name, s.Least, s.Most)
+	}
 	c := f.Centre
 	printPairs(w, [][2]string{
 		{"DEM", fmt.Sprintf("%s, band %d of %d, %s (%s)", f.Name, f.Band, f.Bands, f.DataType, f.Driver)},

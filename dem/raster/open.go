@@ -23,6 +23,13 @@ type Options struct {
 	// VerticalUnit is the unit of the heights (m, ft, us-ft, cm, dm, mm, km).
 	// Empty: as the band or the vertical CRS says, else metres.
 	VerticalUnit string
+	// Geoid is a raster of geoid undulations in metres, in any format that GDAL
+	// reads: they are added to the heights, which makes them ellipsoidal. It
+	// rules over the vertical CRS. Empty: none.
+	Geoid string
+	// HeightOffset is added to all heights, metres, in place of a geoid; zero
+	// says that they are ellipsoidal. nil: none.
+	HeightOffset *float64
 	// HoldBytes is the most memory the heights may take to be held, 4 bytes a
 	// cell; a larger DEM is read again by window. Zero: DefaultHold; negative:
 	// never hold.
@@ -60,6 +67,7 @@ func refuse(name string, cause error, format string, args ...any) error {
 type DEM struct {
 	name  string
 	grid  *dem.Grid
+	shift *lattice // from the heights of the file to ellipsoidal ones; nil for none
 	facts Facts
 	log   *messages
 
@@ -195,8 +203,7 @@ func (d *DEM) prepare(o Options) error {
 	d.hold = int64(s.SizeY)*int64(s.SizeX) <= holdBytes(o.HoldBytes)/4
 	d.collect(n, ref, unit)
 	d.checkUsage(ref)
-	d.warnReference(ref)
-	return nil
+	return d.raise(o, ref)
 }
 
 func holdBytes(asked int64) int64 {

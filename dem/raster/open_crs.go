@@ -75,6 +75,7 @@ type reference struct {
 	name, code   string
 	horizontal   *wktNode // the CRS without its vertical part
 	vertical     *wktNode // nil when there is none
+	verticalText string   // the same as written, bound to a grid or not
 	ellipsoidal  bool     // the CRS is three-dimensional
 	geographic   bool
 	unit         string
@@ -129,7 +130,7 @@ func (r *reference) part(root *wktNode) {
 	r.horizontal = root.kid("PROJCRS", "GEOGCRS", "GEODCRS", "BOUNDCRS", "ENGCRS")
 	for _, k := range root.kids {
 		if b := base(k); b != nil && b.is("VERTCRS") {
-			r.vertical = b
+			r.vertical, r.verticalText = b, k.text
 		}
 	}
 }

@@ -38,6 +38,9 @@ type Facts struct {
 	VerticalUnit       string  `json:"vertical_unit"`
 	VerticalUnitM      float64 `json:"vertical_unit_m"`
 	VerticalUnitSource string  `json:"vertical_unit_source"` // "given", "band", "crs" or "assumed"
+	// HeightShift is what was added to the heights of the file to make them
+	// ellipsoidal; null for nothing.
+	HeightShift *HeightShift `json:"height_shift"`
 
 	PixelIs   string     `json:"pixel_is"`  // "area" or "point", as the file says
 	SouthUp   bool       `json:"south_up"`  // the first row is the southern edge

@@ -73,6 +73,7 @@ func (d *DEM) fetch(w dem.Window, dst []float32, t *tally) error {
 			blank(out, mask)
 			d.decod.narrow(out, t)
 		}
+		d.shift.add(part, out)
 	}
 	return nil
 }

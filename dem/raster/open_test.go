@@ -315,7 +315,11 @@ func TestCRSOption(t *testing.T) {
 		d, err := Open(path, Options{CRS: crs})
 		require.NoError(t, err, crs)
 		assert.InDelta(t, 9, d.Facts().Corners[0].Lon, 1e-9)
-		requireHeights(t, d, 0, ramp)
+		shift := 0.0
+		if s := d.Facts().HeightShift; s != nil { // over 210 m the undulation changes by less than a centimetre
+			shift = (s.Least + s.Most) / 2
+		}
+		requireHeights(t, d, 0.01, func(r, c int) float64 { return ramp(r, c) + shift })
 		require.NoError(t, d.Close())
 	}
 }

@@ -258,7 +258,7 @@ func (t *tally) step(a, b float32) bool {
 // filled reports whether a height comes from a fill value met in this file.
 func (t *tally) filled(h float32) bool {
 	for k, f := range fills {
-		if t.fills[k].count > 0 && h == float32(f*t.d.decod.mul+t.d.decod.add) {
+		if t.fills[k].count > 0 && t.d.shift.near(float64(h), float64(float32(f*t.d.decod.mul+t.d.decod.add))) {
 			return true
 		}
 	}
@@ -299,8 +299,8 @@ func (d *DEM) warnReference(r *reference) {
 	switch {
 	case r.ellipsoidal:
 	case r.vertical == nil:
-		d.log.add("the vertical reference of the heights is not stated; they are " + consequence)
+		d.log.add("the vertical reference of the heights is not stated; they are " + consequence + "; give --geoid or --height-offset where it is known")
 	default:
-		d.log.add("the heights refer to " + r.vertical.name() + "; they are " + consequence)
+		d.log.add("the heights refer to " + r.vertical.name() + ", which PROJ cannot turn into ellipsoidal heights here: its grid is not installed or not known; they are " + consequence + "; install the grid, or give --geoid or --height-offset")
 	}
 }
