@@ -159,7 +159,7 @@ func (j *sweepJob) candidates() ([]geometry.Look, error) {
 	if len(looks) > mask.MaxRanked {
 		return nil, hint(usagef("%d candidate looks; at most %d are ranked at once", len(looks), mask.MaxRanked), "rank them in several runs")
 	}
-	return looks, fixedOnly(looks)
+	return looks, drivenOnly(looks)
 }
 
 // compute sweeps, ranks and fills the set.
@@ -245,9 +245,32 @@ func (j *sweepJob) rank(ctx context.Context, src *raster.DEM, found dem.Range, a
 		Inside: at.inside, Best: j.best, Condition: j.condition,
 	}
 	for _, l := range looks {
-		job.Sights = append(job.Sights, geometry.LineOfSight(l.Incidence, l.Azimuth))
+		sight, err := sightOf(src, at.window, l)
+		if err != nil {
+			return nil, err
+		}
+		job.Sights = append(job.Sights, sight)
 	}
 	return mask.Rank(ctx, job)
+}
+
+// sightOf returns the line of sight of a look at the middle of a window: that of
+// a platform varies over the area.
+func sightOf(src *raster.DEM, w dem.Window, l geometry.Look) (geometry.ENU, error) {
+	if l.Kind == geometry.Fixed {
+		return geometry.LineOfSight(l.Incidence, l.Azimuth), nil
+	}
+	p, err := mask.PlatformOf(src, l)
+	if err != nil {
+		return geometry.ENU{}, err
+	}
+	row, col := float64(w.Row)+float64(w.Rows-1)/2, float64(w.Col)+float64(w.Cols-1)/2
+	ground := src.Grid().At(row, col)
+	v, seen := p.View(geometry.Geodetic{Place: geometry.Place{Lon: ground.Lon, Lat: ground.Lat}})
+	if seen == geometry.OutsideSegment {
+		return geometry.ENU{}, hint(fmt.Errorf("look %q does not see the middle of the area: %s", l.Name, seen), "leave the look out, or move --area under its track")
+	}
+	return v.LineOfSight, nil
 }
 
 // sweepRasters are the rasters that --rasters asks for.
