@@ -176,6 +176,13 @@ func (g *Grid) At(row, col float64) Local {
 	}
 }
 
+// Nodes returns how many nodes At's lattice has along the rows and columns, and
+// the cells between two of them: At is exact at the nodes, the first of which is
+// the first cell.
+func (g *Grid) Nodes() (rows, cols int, rowStep, colStep float64) {
+	return g.latR, g.latC, g.stepR, g.stepC
+}
+
 // split parts a lattice coordinate into the node below and the remainder,
 // keeping the node and the next one inside [0, n).
 func split(p float64, n int) (node int, rest float64) {

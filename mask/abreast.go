@@ -7,153 +7,325 @@ import (
 	"foldshade/geometry"
 )
 
-// abreastStep is the number of columns between two places of a row at which a
-// platform's geometry is solved; between them points and antenna move straight.
-// Over 8 cells of 100 m the earth departs from straight by (800 m)^2 / (8 R) =
-// 13 mm.
-const abreastStep = 8
+// abreast is a platform abreast of one place of the ground at the height of
+// reference: what leads from the ground to the antenna, metres, and the unit
+// vector of travel, both east, north, up at the ground.
+type abreast struct{ way, travel geometry.ENU }
 
-// abreast is a platform abreast of one grid position at the height of
-// reference: earth-centred vectors, and the inverse of the ground vectors.
-type abreast struct {
-	ground, up, east, north geometry.ECEF
-	pos, travel             geometry.ECEF
-	// gE = ec zc + er zr, gN = nc zc + nr zr
-	ec, er, nc, nr float64
-}
-
-// abreastOf solves one position. Where the platform never comes abreast the
-// antenna is that of the nearer end of the track: such points are not seen.
-func (ln *lanes) abreastOf(g *dem.Grid, row, col float64) abreast {
-	l := g.At(row, col)
-	p := geometry.Geodetic{Place: geometry.Place{Lon: l.Lon, Lat: l.Lat}, Height: ln.datum}
-	a := abreast{
-		ground: p.ECEF(),
-		up:     p.FromENU(geometry.ENU{Up: 1}), east: p.FromENU(geometry.ENU{East: 1}), north: p.FromENU(geometry.ENU{North: 1}),
+func (a abreast) plus(b abreast, t float64) abreast {
+	add := func(x, y geometry.ENU) geometry.ENU {
+		return geometry.ENU{East: x.East + float64(t*y.East), North: x.North + float64(t*y.North), Up: x.Up + float64(t*y.Up)}
 	}
-	t, _ := ln.platform.ZeroDoppler(a.ground)
-	a.pos, a.travel = ln.platform.State(t)
+	return abreast{add(a.way, b.way), add(a.travel, b.travel)}
+}
+
+// sights holds a platform abreast of the nodes of the grid's own lattice, where
+// the places of the ground are exact; between them each component is a quadratic
+// along rows and columns. Over 64 cells of 100 m, L = 6400 m, what is left of the
+// way is below L^3 tan^2 / (9 sqrt 3 R^2) = 3 mm at 70 degrees latitude, where
+// straight lines would be wrong by (L/2)^2 tan / (8 R) = 0.6 m.
+type sights struct {
+	rows, cols       int // nodes
+	rowStep, colStep float64
+	nodes            []abreast
+	state            []nodeState
+}
+
+// nodeState says what holds at a node.
+type nodeState uint8
+
+const (
+	nodeSeen    nodeState = 1 << iota // seen, the limits of the swath aside
+	nodeAbreast                       // the track comes abreast of it
+)
+
+func newSights(g *dem.Grid, look geometry.Look, p geometry.Platform, datum float64) *sights {
+	s := &sights{}
+	s.rows, s.cols, s.rowStep, s.colStep = g.Nodes()
+	s.nodes, s.state = make([]abreast, s.rows*s.cols), make([]nodeState, s.rows*s.cols)
+	for i := range s.nodes {
+		row, col := float64(i/s.cols)*s.rowStep, float64(i%s.cols)*s.colStep
+		s.nodes[i], s.state[i] = abreastOf(g, p, row, col, datum, 0)
+		if look.SectorFrom.Given() { // its limit may pass between nodes
+			s.state[i] &^= nodeSeen
+		}
+	}
+	return s
+}
+
+// abreastOf solves one position of the grid. The way is that of the height of
+// reference, found at a height above it.
+func abreastOf(g *dem.Grid, p geometry.Platform, row, col, datum, above float64) (a abreast, state nodeState) {
+	l := g.At(row, col)
+	at := geometry.Geodetic{Place: geometry.Place{Lon: l.Lon, Lat: l.Lat}, Height: datum + above}
+	ground := at.ECEF()
+	t, ok := p.ZeroDoppler(ground)
+	if ok {
+		state |= nodeAbreast
+	}
+	if _, seen := p.View(at); seen == geometry.InView || seen == geometry.OutsideSwath || seen == geometry.OutsideRange {
+		state |= nodeSeen
+	}
+	pos, vel := p.State(t)
+	a.way, a.travel = at.ToENU(pos.Sub(ground)), at.ToENU(vel).Unit()
+	a.way.Up += above
+	return a, state
+}
+
+// patch is the part of a row between two nodes: quadratics in t, the columns from
+// the left one in steps of the lattice.
+type patch struct {
+	a, b, c        abreast
+	seen, abreast  bool
+	from           int     // node on the left
+	ec, er, nc, nr float64 // gE = ec zc + er zr, gN = nc zc + nr zr, at t = 0
+	dec, der       float64 // and their change to t = 1
+	dnc, dnr       float64
+}
+
+// weights returns the first of up to three nodes for a place between two of n,
+// given in steps, and the weights of Lagrange's quadratic.
+func weights(x float64, n int) (first int, w [3]float64) {
+	i := min(max(int(x), 0), n-2)
+	if n == 2 {
+		return 0, [3]float64{1 - x, x, 0}
+	}
+	first = min(i, n-3)
+	t := x - float64(first)
+	return first, [3]float64{(t - 1) * (t - 2) / 2, t * (2 - t), t * (t - 1) / 2}
+}
+
+// patch prepares the columns right of node j for a row.
+func (s *sights) patch(g *dem.Grid, row, j int) patch {
+	p := patch{from: j, seen: true, abreast: true}
+	i0, w := weights(float64(row)/s.rowStep, s.rows)
+	j0 := max(min(j, s.cols-3), 0)
+	var node [3]abreast
+	for q := range min(3, s.cols) {
+		for k := range min(3, s.rows) {
+			n := (i0+k)*s.cols + j0 + q
+			node[q] = node[q].plus(s.nodes[n], w[k])
+			p.seen = p.seen && s.state[n]&nodeSeen != 0
+			p.abreast = p.abreast && s.state[n]&nodeAbreast != 0
+		}
+	}
+	p.a, p.b = node[0], node[1].plus(node[0], -1)
+	if s.cols > 2 {
+		p.c = node[0].plus(node[1], -2).plus(node[2], 1)
+		p.c = abreast{}.plus(p.c, 0.5)
+		p.b = p.b.plus(p.c, -1)
+	}
+	if j > j0 { // the last two nodes: count from the middle one of the three
+		p.a, p.b = p.a.plus(p.b, 1).plus(p.c, 1), p.b.plus(p.c, 2)
+	}
+	p.ec, p.er, p.nc, p.nr = perMetre(g.At(float64(row), float64(j)*s.colStep))
+	p.dec, p.der, p.dnc, p.dnr = perMetre(g.At(float64(row), float64(j+1)*s.colStep))
+	p.dec, p.der, p.dnc, p.dnr = p.dec-p.ec, p.der-p.er, p.dnc-p.nc, p.dnr-p.nr
+	return p
+}
+
+// perMetre returns the columns and rows of a metre east and north.
+func perMetre(l dem.Local) (ec, er, nc, nr float64) {
 	det := l.ColE*l.RowN - l.ColN*l.RowE
-	a.ec, a.er = l.RowN/det, -l.ColN/det
-	a.nc, a.nr = -l.RowE/det, l.ColE/det
-	return a
+	return l.RowN / det, -l.ColN / det, -l.RowE / det, l.ColE / det
 }
 
-func mixECEF(a, b geometry.ECEF, t float64) geometry.ECEF {
-	return geometry.ECEF{X: a.X + t*(b.X-a.X), Y: a.Y + t*(b.Y-a.Y), Z: a.Z + t*(b.Z-a.Z)}
-}
-
-// at returns how the platform sees the point of height h between two positions:
-// range, line of sight and the sight with the true range plane.
-func (a *abreast) at(b *abreast, t, h float64) (r float64, s geometry.Sight) {
-	up, east, north := mixECEF(a.up, b.up, t), mixECEF(a.east, b.east, t), mixECEF(a.north, b.north, t)
-	d := mixECEF(a.pos, b.pos, t).Sub(mixECEF(a.ground, b.ground, t).Add(up.Scale(h)))
-	r = d.Norm()
-	v := mixECEF(a.travel, b.travel, t)
-	los := geometry.ENU{East: d.Dot(east) / r, North: d.Dot(north) / r, Up: d.Dot(up) / r}
-	return r, geometry.SightFrom(los, geometry.ENU{East: v.Dot(east), North: v.Dot(north), Up: v.Dot(up)})
+// at returns the platform abreast of the ground at t and a height above that of
+// reference. A higher point is met a little later on the track, by the part of
+// its height that lies along it.
+func (p *patch) at(t, above float64) (way, travel geometry.ENU) {
+	quadratic := func(a, b, c float64) float64 { return a + float64(t*(b+float64(t*c))) }
+	travel = geometry.ENU{
+		East:  quadratic(p.a.travel.East, p.b.travel.East, p.c.travel.East),
+		North: quadratic(p.a.travel.North, p.b.travel.North, p.c.travel.North),
+		Up:    quadratic(p.a.travel.Up, p.b.travel.Up, p.c.travel.Up),
+	}
+	later := float64(above * travel.Up)
+	way = geometry.ENU{
+		East:  quadratic(p.a.way.East, p.b.way.East, p.c.way.East) + float64(later*travel.East),
+		North: quadratic(p.a.way.North, p.b.way.North, p.c.way.North) + float64(later*travel.North),
+		Up:    quadratic(p.a.way.Up, p.b.way.Up, p.c.way.Up) - above + float64(later*travel.Up),
+	}
+	return way, travel
 }
 
 // seeAbreast is see for a platform. It also marks the cells that the look does
 // not see.
 func (w *worker) seeAbreast(ln *lanes, look *geometry.Look, row, col, at int) {
 	n := w.sheet.w.Cols
-	z, zc, zr := w.sheet.z[at:at+n], w.sheet.zc[at:at+n], w.sheet.zr[at:at+n]
+	s := ln.sights
+	limits := swathOf(look)
+	for j := 0; j < n; {
+		from := min(int(float64(col+j)/s.colStep), s.cols-2)
+		p := s.patch(w.grid, row, from)
+		for ; j < n && (float64(col+j) < float64(from+1)*s.colStep || from == s.cols-2); j++ {
+			w.seeCell(ln, &p, &limits, row, col+j, j, at+j)
+		}
+	}
+}
+
+// seeCell fills the turns of one cell, and its facet and view when they are
+// wanted.
+func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j, at int) {
+	s := ln.sights
+	h := float64(w.sheet.z[at])
+	if h != h {
+		w.turns[j], w.unseen[j] = 0, true
+		return
+	}
+	t := float64(col)/s.colStep - float64(p.from)
+	way, travel := p.at(t, h-ln.datum)
+	if !p.abreast {
+		a, _ := abreastOf(w.grid, ln.platform, float64(row), float64(col), ln.datum, h-ln.datum)
+		way, travel = a.way, a.travel
+		way.Up -= h - ln.datum
+	}
+	if limits.upright { // a tripod turns; its range planes are upright
+		travel = geometry.ENU{East: way.North, North: -way.East}
+	}
+	r2 := way.Dot(way)
+	w.unseen[j] = (!p.seen || limits.close(way.Up, r2)) && !w.asked(ln, row, col, h) || limits.outside(way.Up, r2)
+	c, d := float64(w.sheet.zc[at]), float64(w.sheet.zr[at])
+	gE := float64((p.ec+float64(t*p.dec))*c) + float64((p.er+float64(t*p.der))*d)
+	gN := float64((p.nc+float64(t*p.dnc))*c) + float64((p.nr+float64(t*p.dnr))*d)
+	// As geometry.SightFrom and Facet, but for the lengths of the vectors.
+	above := travel.Cross(way)
+	if above.Up < 0 {
+		above = geometry.ENU{East: -above.East, North: -above.North, Up: -above.Up}
+	}
+	turn := uint8(0)
+	if way.Up-float64(gE*way.East)-float64(gN*way.North) <= 0 {
+		turn |= turnShadow
+	}
+	gain := above.Up - float64(gE*above.East) - float64(gN*above.North)
+	if gain <= 0 {
+		turn |= turnLayover
+	}
 	limit := w.job.Options.CompressedBelow
-	w.seenRow(ln, look, row, col, z)
-	block := col / abreastStep * abreastStep
-	right := ln.abreastOf(w.grid, float64(row), float64(block))
-	for j := 0; j < n; block += abreastStep {
-		left := right
-		right = ln.abreastOf(w.grid, float64(row), float64(block+abreastStep))
-		for ; j < n && col+j < block+abreastStep; j++ {
-			t := float64(col+j-block) / abreastStep
-			h := float64(z[j])
-			r, s := left.at(&right, t, h-ln.datum)
-			c, d := float64(zc[j]), float64(zr[j])
-			f := s.Facet(left.ec*c+left.er*d, left.nc*c+left.nr*d)
-			turn := uint8(0)
-			if s.Foreshortening(f) < limit {
-				turn = turnCompressed
-			}
-			if f.ActiveLayover() {
-				turn |= turnLayover
-			}
-			if f.SelfShadow() {
-				turn |= turnShadow
-			}
-			w.turns[j] = turn
-			if w.unseen[j] || outsideSwath(look, s.Along.Up, r) {
-				w.unseen[j] = true
-			}
-			if w.wantFacets {
-				w.facets[j], w.ups[j] = f, [3]float64{s.Along.Up, s.Above.Up, s.Across.Up}
-			}
-			if w.wantViews {
-				w.views[j] = view{east: s.Along.East, north: s.Along.North, s: r}
-			}
+	// Where the range plane leans little, foreshortening is gain / above.Up to
+	// within a few parts in a hundred.
+	maybe := gain < 2*limit*above.Up || travel.Up*travel.Up*(1+gE*gE+gN*gN) > 1e-3
+	if maybe || w.wantFacets {
+		r := math.Sqrt(r2)
+		los := geometry.ENU{East: way.East / r, North: way.North / r, Up: way.Up / r}
+		sight := geometry.SightFrom(los, travel)
+		f := sight.Facet(gE, gN)
+		if maybe && sight.Foreshortening(f) < limit {
+			turn |= turnCompressed
+		}
+		if w.wantFacets {
+			w.facets[j], w.ups[j] = f, [3]float64{los.Up, sight.Above.Up, sight.Across.Up}
+		}
+		if w.wantViews {
+			w.views[j] = view{east: los.East, north: los.North, s: r}
 		}
 	}
+	w.turns[j] = turn
 }
 
-// outsideSwath reports whether a cell lies outside the limits that can be told
-// from its own incidence and slant range.
-func outsideSwath(look *geometry.Look, cos, r float64) bool {
-	near, far := look.NearIncidence, look.FarIncidence
-	return near.Given() && cos > near.Cos() || far.Given() && cos < far.Cos() ||
-		r < look.MinRange || r > look.MaxRange
+// asked reports whether the platform sees a cell.
+func (w *worker) asked(ln *lanes, row, col int, h float64) bool {
+	l := w.grid.At(float64(row), float64(col))
+	_, seen := ln.platform.View(geometry.Geodetic{Place: geometry.Place{Lon: l.Lon, Lat: l.Lat}, Height: h})
+	return seen == geometry.InView
 }
 
-// seenRow marks the cells of one row that the look does not see for a reason
-// other than its swath. Where two places viewStep columns apart are both in
-// view, so is what lies between; elsewhere every cell is asked for.
-func (w *worker) seenRow(ln *lanes, look *geometry.Look, row, col int, z []float32) {
-	ask := func(c int, h float64) bool {
-		l := w.grid.At(float64(row), float64(c))
-		if h != h {
-			h = ln.datum
-		}
-		_, seen := ln.platform.View(geometry.Geodetic{Place: geometry.Place{Lon: l.Lon, Lat: l.Lat}, Height: h})
-		return seen == geometry.InView || seen == geometry.OutsideSwath || seen == geometry.OutsideRange
+// swath holds the limits that can be told from a cell's own incidence and slant
+// range: cosines and squares of ranges, infinite where none was given.
+type swath struct {
+	most, least         float64 // cosines of the near and far limits
+	nearest, farthest   float64
+	bounded, horizontal bool
+	upright             bool
+}
+
+func swathOf(look *geometry.Look) swath {
+	s := swath{most: math.Inf(1), least: math.Inf(-1), nearest: math.Inf(-1), farthest: math.Inf(1)}
+	if look.NearIncidence.Given() {
+		s.most, s.bounded = look.NearIncidence.Cos(), true
 	}
-	w.unseen = resize(w.unseen, len(z))
-	block := col / viewStep * viewStep
-	right := ask(block, nan)
-	for j := 0; j < len(z); block += viewStep {
-		left := right
-		right = ask(block+viewStep, nan)
-		end := min(len(z), block+viewStep-col)
-		for ; j < end; j++ {
-			w.unseen[j] = !(left && right) && !ask(col+j, float64(z[j]))
-		}
+	if look.FarIncidence.Given() {
+		s.least, s.bounded = look.FarIncidence.Cos(), true
 	}
+	if look.MinRange == look.MinRange {
+		s.nearest, s.bounded = look.MinRange*look.MinRange, true
+	}
+	if look.MaxRange == look.MaxRange {
+		s.farthest, s.bounded = look.MaxRange*look.MaxRange, true
+	}
+	s.horizontal = look.Kind == geometry.Orbit || look.Kind == geometry.Ephemeris
+	s.upright = look.Kind == geometry.Tripod
+	return s
 }
 
-// extended returns a look along a track that reaches as far past the DEM as
-// its lanes are laid out: a flight line is carried on along its geodesic, at
-// the height that p resolved.
-func extended(g *dem.Grid, look geometry.Look, p geometry.Platform) geometry.Look {
+// closeTo is how near to a limit, as a cosine or a part of the range, a cell is
+// asked for on its own.
+const closeTo = 1e-5
+
+// close reports whether a cell lies next to a limit or the horizon, from the way
+// up to the antenna and the square of the slant range.
+func (s *swath) close(up, r2 float64) bool {
+	if s.horizontal && up*up < closeTo*closeTo*r2 {
+		return true
+	}
+	if !s.bounded {
+		return false
+	}
+	r := math.Sqrt(r2)
+	cos := up / r
+	return math.Abs(cos-s.most) < closeTo || math.Abs(cos-s.least) < closeTo ||
+		math.Abs(r2-s.nearest) < closeTo*r2 || math.Abs(r2-s.farthest) < closeTo*r2
+}
+
+// outside reports whether a cell that is not next to a limit lies outside one.
+func (s *swath) outside(up, r2 float64) bool {
+	if s.horizontal && up < -closeTo*math.Sqrt(r2) {
+		return true
+	}
+	if !s.bounded || s.close(up, r2) {
+		return false
+	}
+	cos := up / math.Sqrt(r2)
+	return cos > s.most || cos < s.least || r2 < s.nearest || r2 > s.farthest
+}
+
+// extended returns a platform whose track reaches as far past the DEM as its lanes
+// are laid out: a flight line is carried on along its geodesic, at the height that
+// p resolved.
+func extended(g *dem.Grid, look geometry.Look, p geometry.Platform) (geometry.Platform, error) {
 	if look.Kind != geometry.Flight {
-		return look
+		return p, nil
 	}
-	pos, _ := p.State(0)
-	look.Height, look.HeightAboveGround = pos.Geodetic().Height, math.NaN()
 	at := func(row, col float64) geometry.Place {
 		l := g.At(row, col)
 		return geometry.Place{Lon: l.Lon, Lat: l.Lat}
 	}
-	corner := at(0, 0)
+	corner, opposite := at(0, 0), at(float64(g.Rows-1), float64(g.Cols-1))
+	if reaches(p, corner) && reaches(p, opposite) &&
+		reaches(p, at(0, float64(g.Cols-1))) && reaches(p, at(float64(g.Rows-1), 0)) {
+		return p, nil
+	}
+	pos, _ := p.State(0)
+	look.Height, look.HeightAboveGround = pos.Geodetic().Height, math.NaN()
 	reach := 0.0
-	for _, end := range []geometry.Place{at(float64(g.Rows-1), float64(g.Cols-1)), look.Start, look.End} {
+	for _, end := range []geometry.Place{opposite, look.Start, look.End} {
 		if length, _, _, err := geometry.Inverse(corner, end); err == nil {
 			reach = max(reach, 2*length)
 		}
 	}
 	_, leave, arrive, err := geometry.Inverse(look.Start, look.End)
 	if err != nil {
-		return look
+		return nil, err
 	}
 	look.Start, _ = geometry.Direct(look.Start, leave+180*geometry.Degree, reach)
 	look.End, _ = geometry.Direct(look.End, arrive, reach)
-	return look
+	return geometry.NewPlatform(look, geometry.Site{})
+}
+
+// reaches reports whether the known track goes well past a place.
+func reaches(p geometry.Platform, at geometry.Place) bool {
+	const spare = 50e3 // metres along the line; the lanes spread some 64 cells past the DEM
+	from, to := p.Span()
+	t, ok := p.ZeroDoppler(geometry.Geodetic{Place: at}.ECEF())
+	return ok && t > from+spare && t < to-spare
 }

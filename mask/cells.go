@@ -276,6 +276,9 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		r.near[k] = (x.nearer - h) * cos
 		r.far[k] = (h - x.farther) * cos
 	}
+	if ln.places != nil && ln.fan == nil {
+		r.trackRanges(p, u)
+	}
 	roughness(&r.clear, &r.roughM, settleShare/r.slackM)
 	roughness(&r.near, &r.roughN, settleShare/r.slackR)
 	roughness(&r.far, &r.roughF, settleShare/r.slackR)
@@ -296,6 +299,41 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		}
 		if bits&2 == 0 {
 			r.farU[k] = (h - x.farther) * cos
+		}
+	}
+	if ln.places != nil && ln.fan == nil {
+		r.trackRangesU(p, u)
+	}
+}
+
+// trackRanges fills the margins of range of a platform, in which slant range is
+// not linear.
+func (r *laneMargins) trackRanges(p *strip, u int) {
+	l := p.inDEM()
+	row := p.row(u)
+	for k := l.a; k < l.b; k++ {
+		q := p.place(k)
+		_, nearer := p.f.ln.view(&q, float64(row[k].nearer))
+		_, farther := p.f.ln.view(&q, float64(row[k].farther))
+		r.near[k], r.far[k] = float32(p.r[k]-nearer), float32(farther-p.r[k])
+	}
+}
+
+// trackRangesU is trackRanges with unknown terrain at its worst.
+func (r *laneMargins) trackRangesU(p *strip, u int) {
+	l := p.inDEM()
+	bits := p.sure[u-p.ua]
+	row := p.unsureRow(u)
+	for k := l.a; k < l.b; k++ {
+		q := p.place(k)
+		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
+		if bits&1 == 0 {
+			_, nearer := p.f.ln.view(&q, float64(row[k].nearer))
+			r.nearU[k] = float32(p.r[k] - nearer)
+		}
+		if bits&2 == 0 {
+			_, farther := p.f.ln.view(&q, float64(row[k].farther))
+			r.farU[k] = float32(farther - p.r[k])
 		}
 	}
 }
@@ -377,11 +415,25 @@ func (t *sheet) settle(f *field, wk *walker, u, v int, m lane) lane {
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	shade, nearer, farther := f.limitLines()
 	most, above, below := h-shade, (nearer-h)*f.ln.cos, (h-farther)*f.ln.cos
+	if f.ln.places != nil && f.ln.fan == nil {
+		above, below = wk.ranges(u, h, nearer, farther)
+	}
 	return lane{
 		clear: float32(min(x.clear, most)), clearU: float32(min(x.clearU, most)),
 		near: float32(min(x.near, above)), nearU: float32(min(x.nearU, above)),
 		far: float32(min(x.far, below)), farU: float32(min(x.farU, below)),
 	}
+}
+
+// ranges returns how much slant range lies between a height at the walk's own
+// point and two others there, but no more than the place has.
+func (w *walker) ranges(u int, h, nearer, farther float64) (above, below float64) {
+	_, s := w.y.at(u)
+	p := w.y.place(s)
+	_, r := w.y.ln.view(&p, h)
+	_, near := w.y.ln.view(&p, min(nearer, w.y.ln.rangeHeight(&p, 0)))
+	_, far := w.y.ln.view(&p, farther)
+	return r - near, far - r
 }
 
 // raw returns the code that the margins give, before the cell's own slope.

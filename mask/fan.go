@@ -47,6 +47,7 @@ func fanLanes(g *dem.Grid, look geometry.Look, p geometry.Platform, lim dem.Rang
 		return nil, fmt.Errorf("look %q: position leaves no cell of the DEM to look at", look.Name)
 	}
 	fans[0].more = fans[1:]
+	fans[0].sights = newSights(g, look, p, fans[0].datum)
 	return fans[0], nil
 }
 

@@ -61,6 +61,12 @@ func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
 		a = math.Min(a, ln.lane(float64(u), float64(v0)))
 		b = math.Max(b, ln.lane(float64(u), float64(v1-1)))
 	}
+	if ln.places != nil { // lanes of a track may bend on the way
+		for u := u0 + 1; u < u1-1; u++ {
+			a = math.Min(a, ln.lane(float64(u), float64(v0)))
+			b = math.Max(b, ln.lane(float64(u), float64(v1-1)))
+		}
+	}
 	// A cell on the line between two strips may fall to either by rounding.
 	f.first = (int(math.Floor(a-1e-6)) - ln.first) / laneStep
 	f.strips = (int(math.Floor(b+1e-6))-ln.first)/laneStep + 1 - f.first

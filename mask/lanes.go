@@ -107,15 +107,16 @@ type lanes struct {
 	// Of a platform: the places of the nodes in their range planes.
 	places   []place
 	platform geometry.Platform
+	sights   *sights
 	fan      *fan     // of a tripod
 	more     []*lanes // the other fans of a tripod
 	// ahead returns the unit ground vector, east and north, of the range line
 	// at a place of the grid, away from the radar.
 	ahead func(l *dem.Local) (e, n float64)
 	minDS float64 // least ground distance of one row along a lane, metres
-	// rowM and rowR are what one row of level ground is worth: metres of m and
-	// of r.
-	rowM, rowR float64
+	// rowM, rowR and rowH are what one row of level ground is worth at least:
+	// metres of m, of r, and of height at equal r.
+	rowM, rowR, rowH float64
 	lens
 }
 
@@ -182,6 +183,7 @@ func fixedLanes(g *dem.Grid, look geometry.Look) *lanes {
 	ln.layOut(slope)
 	ln.measure(g, slope)
 	ln.rowM, ln.rowR = ln.minDS*ln.cot, ln.minDS*ln.sin
+	ln.rowH = ln.rowR / ln.cos
 	return ln
 }
 

@@ -240,17 +240,17 @@ func (p *strip) shade(k int, top float64) float64 {
 
 // equalRange returns the height at which lane k has slant range r.
 func (p *strip) equalRange(k int, r float64) float64 {
-	if p.f.ln.places == nil || math.IsInf(r, 0) {
+	if p.f.ln.places == nil {
 		return p.h[k] + (p.r[k]-r)/p.f.ln.cos
 	}
 	q := p.place(k)
-	if p.f.ln.fan != nil {
+	switch {
+	case p.f.ln.fan != nil && !math.IsInf(r, 0):
 		return p.h[k] + (p.r[k]-r)/p.f.ln.steepness(&q, p.h[k])
+	case math.IsInf(r, 1) || p.f.ln.fan != nil:
+		return -r
 	}
-	if h := p.f.ln.rangeHeight(&q, r); h == h {
-		return h
-	}
-	return math.Inf(1)
+	return p.f.ln.rangeHeight(&q, max(r, 0))
 }
 
 // laneNumbers holds the numbers of the lanes.
@@ -281,13 +281,13 @@ func (st *forwardState) reset() {
 }
 
 // entering marks the lanes that are in the DEM at row u, where they are l, but
-// not one row back in direction dir, and reports whether there are any. The
-// strip is made to stand at that row.
+// not one row back in direction dir, and reports whether there are any.
 func (p *strip) entering(l span, u, dir int, unknown *[marchLanes]bool) (any bool) {
 	before := span{}
 	if back := u + dir; back >= 0 && back < p.f.ln.orient.u {
 		p.stand(back)
 		before = p.inDEM()
+		p.stand(u)
 	}
 	for k := l.a; k < l.b; k++ {
 		if k < before.a || k >= before.b {
@@ -309,7 +309,7 @@ func (f *field) limitLines() (shade, nearer, farther float64) {
 	if ln.fan != nil { // the field holds all that counts
 		return f.lim.low - ln.rowM, noLimit, -noLimit
 	}
-	return f.lim.low - ln.rowM, f.lim.high + ln.rowR/ln.cos, f.lim.low - ln.rowR/ln.cos
+	return f.lim.low - ln.rowM, f.lim.high + ln.rowH, f.lim.low - ln.rowH
 }
 
 // forward walks from near range to far range. A tie counts against the point:

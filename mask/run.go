@@ -200,18 +200,7 @@ func lanesOf(src dem.Source, look geometry.Look, rng dem.Range) (*lanes, error) 
 	if look.Kind == geometry.Tripod {
 		return fanLanes(g, look, p, rng)
 	}
-	far := p
-	if more := extended(g, look, p); more.Kind == geometry.Flight {
-		if far, err = geometry.NewPlatform(more, geometry.Site{}); err != nil {
-			return nil, err
-		}
-	}
-	ln, err := trackLanes(g, look, far, rng)
-	if err != nil {
-		return nil, err
-	}
-	ln.platform = p
-	return ln, nil
+	return trackLanes(g, look, p, rng)
 }
 
 // PlatformOf resolves a look that is not a plane wave over a DEM: anchored at

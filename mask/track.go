@@ -1,6 +1,7 @@
 package mask
 
 import (
+	"errors"
 	"fmt"
 	"math"
 
@@ -43,11 +44,11 @@ func (l *lens) shadeHeight(p *place, m float64) float64 {
 }
 
 // rangeHeight returns the height below the antenna at which a place has slant
-// range r; NaN where no height has.
+// range r; where it has none, the height of its least slant range.
 func (l *lens) rangeHeight(p *place, r float64) float64 {
 	n := p.nx*p.nx + p.ny*p.ny
 	b := p.x*p.nx + p.y*p.ny
-	return l.datum + (-b-math.Sqrt(b*b-n*(p.x*p.x+p.y*p.y-r*r)))/n
+	return l.datum - (b+math.Sqrt(max(b*b-n*(p.x*p.x+p.y*p.y-r*r), 0)))/n
 }
 
 // angle returns sine and cosine of the incidence at a place and height.
@@ -61,15 +62,24 @@ func (l *lens) angle(p *place, h float64) (sin, cos float64) {
 // trackLanes lays out the range lines of a platform on a track: lane k is where
 // the range plane through column k of the middle row meets the ground.
 func trackLanes(g *dem.Grid, look geometry.Look, p geometry.Platform, lim dem.Range) (*lanes, error) {
-	tr := tracker{g: g, p: p, datum: (lim.Min + lim.Max) / 2, left: look.Side == geometry.Left}
+	far, err := extended(g, look, p)
+	if err != nil {
+		return nil, err
+	}
+	tr := tracker{g: g, p: far, datum: (lim.Min + lim.Max) / 2, left: look.Side == geometry.Left}
 	ln := &lanes{lens: lens{datum: tr.datum, scale: 1}, platform: p}
 	cr, cc := float64(g.Rows-1)/2, float64(g.Cols-1)/2
 	v, ok := tr.view(cr, cc)
 	if !ok {
-		return nil, fmt.Errorf("look %q: the track does not come abreast of the DEM's centre", look.Name)
+		return nil, fmt.Errorf("look %q: the track does not come abreast of the DEM's centre; choose a DEM along the track", look.Name)
 	}
-	l := g.At(cr, cc)
-	dr, dc := indexDirection(l, v.LookAzimuth)
+	// Level at right angles to the travel, to the side of the look: also where
+	// the centre lies on the other side or under the track.
+	azimuth := geometry.Angle(math.Atan2(v.Travel.East, v.Travel.North)) + 90*geometry.Degree
+	if tr.left {
+		azimuth -= 180 * geometry.Degree
+	}
+	dr, dc := indexDirection(g.At(cr, cc), azimuth)
 	if math.Abs(dr) >= math.Abs(dc)*(1-1e-6) {
 		ln.orient = newOrient(g, false, dr < 0)
 	} else {
@@ -80,6 +90,7 @@ func trackLanes(g *dem.Grid, look geometry.Look, p geometry.Platform, lim dem.Ra
 		return nil, fmt.Errorf("look %q: %w", look.Name, err)
 	}
 	tr.bound(lim)
+	ln.sights = newSights(g, look, p, ln.datum)
 	return ln, nil
 }
 
@@ -109,8 +120,10 @@ func (tr *tracker) abreast(u, v float64) (t float64, ok bool) {
 	return tr.p.ZeroDoppler(tr.point(tr.ln.cell(u, v)).ECEF())
 }
 
+var errShortTrack = errors.New("the track does not come abreast of all of the DEM and some 100 cells around it; a longer track or a smaller DEM is needed")
+
 // layOut finds where the range plane of each node lane crosses each node row,
-// by the secant method along the row, and the places there.
+// and the places there.
 func (tr *tracker) layOut(dr, dc float64) error {
 	ln := tr.ln
 	ln.nu = (ln.orient.u-1)/laneStep + 2
@@ -120,18 +133,19 @@ func (tr *tracker) layOut(dr, dc float64) error {
 		du, dv = dc, dr
 	}
 	drift := dv / math.Abs(du)
-	// The lanes spread over the DEM's columns at every row; half as much again
-	// covers how range lines turn across it.
-	reach := 1.5*math.Abs(drift)*float64(ln.orient.u)/2 + 2*laneStep
-	ln.first = laneStep * int(math.Floor(-reach/laneStep))
-	ln.nk = (int(math.Ceil(float64(ln.orient.v)+reach))-ln.first)/laneStep + 2
+	lo, hi, err := tr.meet(drift)
+	if err != nil {
+		return err
+	}
+	ln.first = laneStep * (int(math.Floor(lo/laneStep)) - 1)
+	ln.nk = (int(math.Ceil(hi))-ln.first)/laneStep + 3
 	n := ln.nu * ln.nk
 	ln.v, ln.s, ln.places = make([]float64, n), make([]float64, n), make([]place, n)
 	for j := range ln.nk {
 		k := float64(ln.first + laneStep*j)
 		t, ok := tr.abreast(ln.mid, k)
 		if !ok {
-			return fmt.Errorf("the track does not come abreast of all of the DEM and its surroundings; a longer track is needed")
+			return errShortTrack
 		}
 		pos, vel := tr.p.State(t)
 		plane := newRangePlane(pos, vel, tr.left)
@@ -147,29 +161,55 @@ func (tr *tracker) layOut(dr, dc float64) error {
 	return nil
 }
 
+// meet returns the least and largest lane that the DEM meets, from where the
+// range planes through its first and last column cross the middle row.
+func (tr *tracker) meet(drift float64) (lo, hi float64, err error) {
+	ln := tr.ln
+	lo, hi = 0, float64(ln.orient.v-1)
+	for i := range ln.nu {
+		u := float64(laneStep * i)
+		for _, v := range [2]float64{0, float64(ln.orient.v - 1)} {
+			t, ok := tr.abreast(u, v)
+			k, found := tr.cross(ln.mid, v+drift*(ln.mid-u), t)
+			if !ok || !found {
+				return 0, 0, errShortTrack
+			}
+			lo, hi = min(lo, k), max(hi, k)
+		}
+	}
+	return lo, hi, nil
+}
+
+// cross finds the column at which a range plane crosses row u by the secant
+// method, starting from a guess.
+func (tr *tracker) cross(u, v, t float64) (float64, bool) {
+	ta, ok := tr.abreast(u, v)
+	tb, okB := tr.abreast(u, v+1)
+	for range 6 { // t is all but linear in the column
+		if !ok || !okB {
+			return 0, false
+		}
+		step := (t - ta) / (tb - ta)
+		v += step
+		if math.Abs(step) < 1e-7 {
+			break
+		}
+		slope := tb - ta
+		ta, ok = tr.abreast(u, v)
+		tb = ta + slope
+	}
+	return v, true
+}
+
 // trace follows one lane from the middle row to the first or the last.
 func (tr *tracker) trace(j int, k, t, drift float64, plane *rangePlane, from, dir int) error {
 	ln := tr.ln
 	v, u := k, ln.mid
 	for i := from; i >= 0 && i < ln.nu; i += dir {
 		to := float64(laneStep * i)
-		a := v + drift*(to-u)
-		ta, ok := tr.abreast(to, a)
-		tb, okB := tr.abreast(to, a+1)
-		if !ok || !okB {
-			return fmt.Errorf("the track does not come abreast of all of the DEM and its surroundings; a longer track is needed")
-		}
-		for range 6 { // t is all but linear in the column
-			step := (t - ta) / (tb - ta)
-			a += step
-			if math.Abs(step) < 1e-7 {
-				break
-			}
-			next, ok := tr.abreast(to, a)
-			if !ok {
-				return fmt.Errorf("the track does not come abreast of all of the DEM and its surroundings; a longer track is needed")
-			}
-			ta, tb = next, next+(tb-ta)
+		a, ok := tr.cross(to, v+drift*(to-u), t)
+		if !ok {
+			return errShortTrack
 		}
 		if to != u {
 			drift = (a - v) / (to - u)
@@ -238,6 +278,10 @@ func (tr *tracker) bound(lim dem.Range) {
 				continue
 			}
 			p := &ln.places[n]
+			if p.x <= 0 { // none of the look's ground
+				minCos, maxCos = min(minCos, 1), max(maxCos, 1)
+				continue
+			}
 			for _, h := range [2]float64{lim.Min, lim.Max} {
 				_, cos := ln.angle(p, h)
 				minCos, maxCos = min(minCos, cos), max(maxCos, cos)
@@ -249,8 +293,10 @@ func (tr *tracker) bound(lim dem.Range) {
 	top := ln.places[n].plus(ln.places[n+ln.nk].minus(ln.places[n]), p)
 	end := ln.places[n+1].plus(ln.places[n+1+ln.nk].minus(ln.places[n+1]), p)
 	middle = top.plus(end.minus(top), q)
-	// dm/dh = scale (ny x - nx y) / x^2 is made one there.
-	ln.scale = middle.x * middle.x / (middle.ny*middle.x - middle.nx*middle.y)
+	// dm/dh = scale (ny x - nx y) / x^2 is made one there, unless the middle lies
+	// under the track or beyond it.
+	x := max(math.Abs(middle.x), math.Abs(middle.y)/8)
+	ln.scale = x * x / (middle.ny*x + math.Abs(middle.nx*middle.y))
 	ln.sin, ln.cos = ln.angle(&middle, tr.datum)
 	ln.cot, ln.tan = ln.cos/ln.sin, ln.sin/ln.cos
 	sinOf := func(cos float64) float64 { return math.Sqrt(max(1-cos*cos, 1e-12)) }
@@ -261,4 +307,5 @@ func (tr *tracker) bound(lim dem.Range) {
 	}
 	ln.rowM = ln.minDS * max(minCos, 0.01) / sinOf(max(minCos, 0))
 	ln.rowR = ln.minDS * sinOf(maxCos)
+	ln.rowH = ln.minDS / ln.cotMost
 }
