@@ -204,7 +204,11 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, bump float32,
 	m, doubt := t.margins.at(k, w, bump)
 	if doubt != 0 {
 		if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum == sum {
-			wk.quick(p, u, v, k, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
+			next := k + 1
+			if w == 0 {
+				next = k
+			}
+			wk.quick(p, u, v, k, next, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 		} else {
 			m = t.settle(p.f, wk, u, v, m)
 		}
@@ -378,8 +382,16 @@ func (r *laneMargins) at(k int, w, bump float32) (m lane, d doubts) {
 		x, perRow := a[k], settleShare/slack
 		switch {
 		case w != 0: // at weight 0 the second does not count, also when it is NaN
-			x += w * (a[k+1] - x)
-			slack += bump + rough[k]
+			y := a[k+1]
+			switch {
+			case x != x: // a lane outside the DEM: the other stands alone
+				x, slack = y, float32(math.Inf(1))
+			case y != y:
+				slack = float32(math.Inf(1))
+			default:
+				x += w * (y - x)
+				slack += bump + rough[k]
+			}
 		case !r.exact:
 			d := max(abs32(a[k]-a[k-1]), abs32(a[k+1]-a[k]))
 			slack += d * (roughShare + roughGrowth*d*perRow)

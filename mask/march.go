@@ -332,6 +332,11 @@ func (p *strip) forward() {
 				row[k] = noLines
 			}
 		}
+		for k := range unsure {
+			if k < l.a || k >= l.b {
+				unsure[k] = noUnsure
+			}
+		}
 		if !f.sure {
 			for k := l.a; k < l.b; k++ {
 				if h := p.h[k]; h != h {
@@ -343,11 +348,6 @@ func (p *strip) forward() {
 			p.sure[u-p.ua] = 1
 			p.forwardSure(row, l)
 			continue
-		}
-		for k := range unsure {
-			if k < l.a || k >= l.b {
-				unsure[k] = noUnsure
-			}
 		}
 		p.forwardUnsure(row, unsure, l)
 	}

@@ -6,16 +6,17 @@ import "math"
 // sign the lanes had wrong: it is small, and no more is known of it.
 const atLimit = 1. / (1 << 14)
 
-// quick settles a doubtful cell between lanes k and k+1 of a strip. It walks
+// quick settles a doubtful cell between lanes k and next of a strip, which are
+// one where the cell lies on it. It walks
 // from the cell's own centre over the bilinear surface, as settle does, but only
 // as far as the lines of the two lanes do not decide the rest with a slack of
 // their own.
-func (w *walker) quick(p *strip, u, v, k int, m *lane, doubt doubts, slackM, slackR float64) {
+func (w *walker) quick(p *strip, u, v, k, next int, m *lane, doubt doubts, slackM, slackR float64) {
 	w.f = p.f
 	w.y = newRay(p.f.ln, u, v)
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
-	q := quickWalk{walker: w, p: p, u: u, k: k, slackM: slackM * w.y.gain(s, h), slackR: slackR}
+	q := quickWalk{walker: w, p: p, u: u, k: k, next: next, slackM: slackM * w.y.gain(s, h), slackR: slackR}
 	q.m, q.r = w.y.see(s, h)
 	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
 	if doubt&doubtClear != 0 {
@@ -69,7 +70,7 @@ func signed(margin float32, positive bool, tiny float32) float32 {
 type quickWalk struct {
 	*walker
 	p              *strip
-	u, k           int
+	u, k, next     int
 	m, r           float64
 	slackM, slackR float64
 }
@@ -89,17 +90,25 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		if row == nil || q.p.sure[u-q.p.ua]&1 != 0 {
 			return never
 		}
-		a, b = float64(row[q.k].shade), float64(row[q.k+1].shade)
+		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
 	} else {
 		row := q.p.row(u)
-		a, b = float64(row[q.k].shade), float64(row[q.k+1].shade)
+		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
 	}
 	a, _ = q.y.see(s, a)
 	b, _ = q.y.see(s, b)
 	return around(a, b, settleShare/q.slackM)
 }
 
+// Where one lane has no line, the other stands for both with twice the slack.
 func around(a, b, perRow float64) bounds {
+	if a != a || b != b {
+		alone := 2 * settleShare / perRow
+		if a != a {
+			a = b
+		}
+		return bounds{a - alone, a + alone}
+	}
 	if a > b {
 		a, b = b, a
 	}
@@ -111,9 +120,9 @@ func around(a, b, perRow float64) bounds {
 // reaches, counting ground that may be lit when possible is set.
 func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	row := q.p.row(u)
-	a, b := row[q.k].nearer, row[q.k+1].nearer
+	a, b := row[q.k].nearer, row[q.next].nearer
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
-		a, b = unsure[q.k].nearer, unsure[q.k+1].nearer
+		a, b = unsure[q.k].nearer, unsure[q.next].nearer
 	}
 	return q.ranges(u, a, b, s)
 }
@@ -122,25 +131,25 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 // range there.
 func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	row := q.p.row(u)
-	a, b := row[q.k].farther, row[q.k+1].farther
+	a, b := row[q.k].farther, row[q.next].farther
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
-		a, b = unsure[q.k].farther, unsure[q.k+1].farther
+		a, b = unsure[q.k].farther, unsure[q.next].farther
 	}
 	return q.ranges(u, a, b, s)
 }
 
 func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
 	if q.f.ln.fan != nil {
-		return around(q.laneRange(u, q.k, a), q.laneRange(u, q.k+1, b), settleShare/q.slackR)
+		return around(q.laneRange(u, q.k, a), q.laneRange(u, q.next, b), settleShare/q.slackR)
 	}
 	_, x := q.y.see(s, float64(a))
 	_, y := q.y.see(s, float64(b))
 	return around(x, y, settleShare/q.slackR)
 }
 
-// highest returns a bound of the heights on the path from row u, column va, to
-// the next row in direction dir, column vb, NaN where one is missing.
-func (w *walker) highest(u, dir int, va, vb float64) float64 {
+// between returns bounds of the heights on the path from row u, column va, to
+// the next row in direction dir, column vb: NaN where one is missing.
+func (w *walker) between(u, dir int, va, vb float64) (low, high float64) {
 	f := w.f
 	if va > vb {
 		va, vb = vb, va
@@ -148,15 +157,21 @@ func (w *walker) highest(u, dir int, va, vb float64) float64 {
 	a, b := int(math.Floor(va)), int(math.Ceil(vb))
 	i := u - f.ua
 	x := f.z[i*f.width+a-f.at[i]:][:b-a+1]
-	hi := x[0]
-	for _, h := range x[1:] {
-		hi = max(hi, h)
-	}
 	i += dir
-	for _, h := range f.z[i*f.width+a-f.at[i]:][:b-a+1] {
-		hi = max(hi, h)
+	y := f.z[i*f.width+a-f.at[i]:][:b-a+1]
+	lo, hi := x[0], x[0]
+	for j := range x {
+		lo, hi = min(lo, x[j], y[j]), max(hi, x[j], y[j])
 	}
-	return float64(hi)
+	return float64(lo), float64(hi)
+}
+
+// matters reports whether ground between two heights from distance s on, towards
+// the radar, may share the point's slant range or hide ground that reaches best.
+func (q *quickWalk) matters(s, low, high, best float64) bool {
+	top, _ := q.y.see(s, high)
+	_, most := q.y.see(s, low)
+	return !(most < q.r) || !(top < best) && !math.IsInf(best, -1)
 }
 
 // lit reports whether no ground towards the radar reaches the point's m: none
@@ -165,7 +180,8 @@ func (q *quickWalk) lit(unknown bool) bool {
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
-		if top, _ := q.y.see(sa, q.highest(u, -1, va, vb)); !(top < q.m) {
+		_, high := q.between(u, -1, va, vb)
+		if top, _ := q.y.see(sa, high); !(top < q.m) {
 			q.step(u, -1, va, vb, sa, sb)
 			for i := range q.pieces {
 				if g := &q.pieces[i]; g.m >= q.m && g.unknown == unknown {
@@ -205,7 +221,10 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
-		q.step(u, -1, va, vb, sa, sb)
+		q.pieces = q.pieces[:0]
+		if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
+			q.step(u, -1, va, vb, sa, sb)
+		}
 		for i := range q.pieces {
 			g := &q.pieces[i]
 			switch {
@@ -259,7 +278,15 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 	for u := q.u; u < q.p.ub-1; u++ {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u + 1)
-		q.step(u, 1, va, vb, sa, sb)
+		// Ground beyond the point's slant range cannot hide any that is within
+		// it: it lies below the line of equal range, the other above.
+		q.pieces = q.pieces[:0]
+		_, high := q.between(u, 1, va, vb)
+		if _, least := q.y.see(sa, high); !(least > q.r) {
+			q.step(u, 1, va, vb, sa, sb)
+		} else {
+			hidden = false
+		}
 		for i := range q.pieces {
 			g := q.pieces[i]
 			if g.unknown {
