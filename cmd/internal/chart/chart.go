@@ -178,13 +178,13 @@ func (d *drawing) draw(canvas vg.Canvas) {
 	d.cells()
 	d.frame()
 	for _, m := range d.Marks {
-		d.mark(m.Kind, d.at(m.Azimuth, m.Incidence))
-	}
-	for _, m := range d.Marks {
 		if m.Kind == User && m.Name != "" {
 			p := d.at(m.Azimuth, m.Incidence)
 			d.haloed(float64(p.X)+9, float64(p.Y)-3.5, 9.5, 0, m.Name)
 		}
+	}
+	for _, m := range d.Marks {
+		d.mark(m.Kind, d.at(m.Azimuth, m.Incidence))
 	}
 	d.scale()
 	d.notes()
