@@ -3,6 +3,7 @@ package mask
 import (
 	"math"
 	"math/rand/v2"
+	"slices"
 	"sort"
 
 	"foldshade/geometry"
@@ -14,15 +15,27 @@ import (
 
 // draws keeps the room that simulated errors take.
 type draws struct {
+	block block
 	chain []crossing
-	e     []float64    // one draw, by crossing
-	near  []chainPlace // where the line's spots lie
-	far   []chainPlace
-	here  chainPlace
-	ahead chainPlace // a row farther than the point, and nearer
-	back  chainPlace
-	run   float64 // ground distance between the two, metres
-	line  line    // the line with the errors
+	e     []float64 // one draw, by crossing
+	// The crossings [ka, kb) lie in the block.
+	ka, kb    int
+	near, far []errorPlace // where the line's spots lie
+	here      errorPlace
+	line      line // the line with the errors
+}
+
+// blockSide is the number of cells along a side of the block around a place:
+// those that its slope is made of.
+const blockSide = 4
+
+// block is the cells around the point of a line, whose errors are drawn
+// together.
+type block struct {
+	u, v  float64 // its first cell
+	lower [blockSide * blockSide][blockSide * blockSide]float64
+	slope [blockSide * blockSide]float64 // what an error adds to the facet's Above
+	e     [blockSide * blockSide]float64 // one draw
 }
 
 // crossing is where the range line crosses a row or a column of cells: its
@@ -31,17 +44,18 @@ type crossing struct {
 	at   float64    // row of the marching frame, fractional
 	u, v [2]float64 // the cells
 	w    [2]float64 // their weights
-	// The error follows from that at the crossing before: e = carry before +
-	// fresh z, z a standard normal.
+	// Outside the block the error follows from that at the crossing nearer to
+	// it: e = carry before + fresh z, z a standard normal.
 	carry, fresh float64
 }
 
-// chainPlace is a place of the chain: a part of the way from crossing k to the
-// next.
-type chainPlace struct {
-	k int
-	t float64
-	// Of a spot there: what a metre of height adds to m, and takes from r.
+// errorPlace is where a spot takes its error from: a part t of the way from
+// crossing k to the next, or a place of the block when k is -1.
+type errorPlace struct {
+	k    int
+	t    float64
+	u, v float64
+	// What a metre of height adds to m, and takes from r.
 	gain, drop float64
 }
 
@@ -70,6 +84,7 @@ func (w *sitesWorker) chance(i, k int, facet geometry.Facet, res *SiteResult) {
 	}
 	w.cut(&t, e.Sigma)
 	d.layOut(w, e)
+	d.lean(w, i, k, facet)
 	rng := rand.New(rand.NewPCG(e.Seed^math.Float64bits(w.sites[i].row)*0x9e3779b97f4a7c15^math.Float64bits(w.sites[i].col), uint64(k)))
 	res.Chance = d.simulate(w, rng, e.Draws, t, facet)
 }
@@ -86,7 +101,7 @@ func (d *draws) simulate(w *sitesWorker, rng *rand.Rand, n int, t target, facet 
 		}
 		f := w.judge.of(&d.line, at)
 		turns := 0
-		if facet.Above-d.slope()*t.drop <= 0 {
+		if facet.Above+d.slope() <= 0 {
 			turns = turnLayover
 		}
 		m := lane{float32(f.clear), float32(f.near), float32(f.far), float32(f.clearU), float32(f.nearU), float32(f.farU)}
@@ -132,39 +147,115 @@ func (w *sitesWorker) cut(t *target, sigma float64) {
 	l.far = l.far[:last+1]
 }
 
-// layOut lays out the crossings of the line, and where its spots lie between
-// them. A crossing has the variance that mixing two cells leaves and the exact
-// covariance with the crossing before; beyond that the chain is Markov, as the
+// layOut lays out the block and the crossings of the line, and where its spots
+// lie. A crossing has the variance that mixing two cells leaves and the exact
+// covariance with its neighbour; beyond that the chain is Markov, as the
 // exponential covariance is along a line.
 func (d *draws) layOut(w *sitesWorker, e *DEMError) {
 	l, o := &w.line, w.field.ln.orient
-	first, last := math.Floor(l.here.u)-1, math.Ceil(l.here.u)+1 // a row each way for the slope
+	first, last := math.Floor(l.here.u), math.Floor(l.here.u)+1
 	for i := range l.near {
 		first = min(first, math.Floor(l.near[i].u))
 	}
 	for i := range l.far {
 		last = max(last, math.Ceil(l.far[i].u))
 	}
-	first, last = max(first, 0), min(last, float64(o.u-1))
-	d.cross(l, int(first), int(last))
+	d.cross(l, int(first), int(min(last, float64(o.u-1))))
 	ue, un, ve, vn := o.step(w.grid, l.here.u, l.here.v)
-	d.carry(e, func(du, dv float64) float64 { return math.Hypot(du*ue+dv*ve, du*un+dv*vn) })
+	corr := func(du, dv float64) float64 {
+		switch {
+		case du == 0 && dv == 0:
+			return 1
+		case e.Correlation == 0:
+			return 0
+		}
+		return math.Exp(-math.Hypot(du*ue+dv*ve, du*un+dv*vn) / e.Correlation)
+	}
+	d.block.layOut(math.Floor(l.here.u)-1, math.Floor(l.here.v)-1, e.Sigma, corr)
+	d.carry(e.Sigma, corr)
 	d.near, d.far = d.place(d.near, l, l.near), d.place(d.far, l, l.far)
 	d.here = d.placeOf(l, &l.here)
-	ahead, back := min(l.here.u+1, last), max(l.here.u-1, first)
-	d.ahead, d.back = d.find(ahead), d.find(back)
-	d.run = l.distance(ahead) - l.distance(back)
 }
 
-// distance returns the ground distance at a fractional row of the line.
-func (l *line) distance(u float64) float64 {
-	i := math.Floor(u)
-	_, a := l.y.at(int(i))
-	if i == u {
-		return a
+// layOut places the block and factorizes the covariance of its errors, by
+// Cholesky's method.
+func (b *block) layOut(u, v, sigma float64, corr func(du, dv float64) float64) {
+	b.u, b.v = u, v
+	for i := range b.lower {
+		for j := range i + 1 {
+			sum := corr(float64(i/blockSide-j/blockSide), float64(i%blockSide-j%blockSide)) * sigma * sigma
+			for k := range j {
+				sum -= b.lower[i][k] * b.lower[j][k]
+			}
+			if i == j {
+				b.lower[i][i] = math.Sqrt(max(sum, 1e-12*sigma*sigma))
+			} else {
+				b.lower[i][j] = sum / b.lower[j][j]
+			}
+		}
 	}
-	_, b := l.y.at(int(i) + 1)
-	return a + (u-i)*(b-a)
+}
+
+// draw fills the errors of the block.
+func (b *block) draw(rng *rand.Rand) {
+	var z [blockSide * blockSide]float64
+	for i := range z {
+		z[i] = rng.NormFloat64()
+		e := 0.0
+		for k, l := range b.lower[i][:i+1] {
+			e += l * z[k]
+		}
+		b.e[i] = e
+	}
+}
+
+// holds reports whether a place lies in the block.
+func (b *block) holds(u, v float64) bool {
+	return u >= b.u && v >= b.v && u <= b.u+blockSide-1 && v <= b.v+blockSide-1
+}
+
+// at returns the error of the bilinear surface at a place of the block.
+func (b *block) at(u, v float64) float64 {
+	u, v = u-b.u, v-b.v
+	i, j := min(int(u), blockSide-2), min(int(v), blockSide-2)
+	x, y := v-float64(j), u-float64(i)
+	e := b.e[i*blockSide+j:]
+	top, end := e[0]+x*(e[1]-e[0]), e[blockSide]+x*(e[blockSide+1]-e[blockSide])
+	return top + y*(end-top)
+}
+
+// lean fills what the errors of the block add to the facet of a site.
+func (d *draws) lean(w *sitesWorker, i, k int, facet geometry.Facet) {
+	b, g, o := &d.block, w.grid, w.field.ln.orient
+	p := w.sites[i]
+	byCol, byRow := p, p
+	byCol.zc, byRow.zr = p.zc+1, p.zr+1
+	perC := w.look(k, &byCol, 0).facet.Above - facet.Above
+	perR := w.look(k, &byRow, 0).facet.Above - facet.Above
+	b.slope = [blockSide * blockSide]float64{}
+	add := func(row, col int, x float64) {
+		u, v := o.place(float64(row), float64(col))
+		b.slope[int(u-b.u)*blockSide+int(v-b.v)] += x
+	}
+	for row := int(p.row); row < g.Rows && float64(row) < p.row+1; row++ {
+		for col := int(p.col); col < g.Cols && float64(col) < p.col+1; col++ {
+			weight := (1 - math.Abs(p.row-float64(row))) * (1 - math.Abs(p.col-float64(col)))
+			a, z := max(col-1, 0), min(col+1, g.Cols-1)
+			add(row, z, weight*perC/float64(z-a))
+			add(row, a, -weight*perC/float64(z-a))
+			a, z = max(row-1, 0), min(row+1, g.Rows-1)
+			add(z, col, weight*perR/float64(z-a))
+			add(a, col, -weight*perR/float64(z-a))
+		}
+	}
+}
+
+// slope returns what a draw adds to the facet's Above.
+func (d *draws) slope() (sum float64) {
+	for i, x := range d.block.slope {
+		sum += x * d.block.e[i]
+	}
+	return sum
 }
 
 // cross fills the chain with the crossings from one row to another.
@@ -192,18 +283,9 @@ func (d *draws) cross(l *line, first, last int) {
 	}
 }
 
-// carry fills how the errors of the chain follow from each other. distance
-// returns the metres of a number of rows and columns.
-func (d *draws) carry(e *DEMError, distance func(du, dv float64) float64) {
-	corr := func(du, dv float64) float64 {
-		switch {
-		case du == 0 && dv == 0:
-			return 1
-		case e.Correlation == 0:
-			return 0
-		}
-		return math.Exp(-distance(du, dv) / e.Correlation)
-	}
+// carry finds the crossings in the block and fills how the errors of the others
+// follow from each other, outwards from it.
+func (d *draws) carry(sigma float64, corr func(du, dv float64) float64) {
 	cov := func(a, b *crossing) (sum float64) {
 		for i := range 2 {
 			for j := range 2 {
@@ -214,40 +296,42 @@ func (d *draws) carry(e *DEMError, distance func(du, dv float64) float64) {
 		}
 		return sum
 	}
-	before := 1.0
-	for k := range d.chain {
-		c := &d.chain[k]
-		variance := cov(c, c)
-		c.carry, c.fresh = 0, variance
-		if k > 0 {
-			with := cov(c, &d.chain[k-1])
-			c.carry, c.fresh = with/before, max(variance-with*with/before, 0)
-		}
-		c.fresh = e.Sigma * math.Sqrt(c.fresh)
-		before = variance
+	inside := func(c *crossing) bool {
+		return d.block.holds(c.u[0], c.v[0]) && (c.w[1] == 0 || d.block.holds(c.u[1], c.v[1]))
+	}
+	d.ka = slices.IndexFunc(d.chain, func(c crossing) bool { return inside(&c) })
+	for d.kb = d.ka; d.kb < len(d.chain) && inside(&d.chain[d.kb]); {
+		d.kb++
+	}
+	follow := func(c, before *crossing) {
+		with, variance := cov(c, before), cov(before, before)
+		c.carry = with / variance
+		c.fresh = sigma * math.Sqrt(max(cov(c, c)-with*c.carry, 0))
+	}
+	for k := d.ka - 1; k >= 0; k-- {
+		follow(&d.chain[k], &d.chain[k+1])
+	}
+	for k := d.kb; k < len(d.chain); k++ {
+		follow(&d.chain[k], &d.chain[k-1])
 	}
 }
 
-// find returns the place of a fractional row on the chain.
-func (d *draws) find(u float64) chainPlace {
-	k := sort.Search(len(d.chain), func(k int) bool { return d.chain[k].at > u }) - 1
-	k = min(max(k, 0), len(d.chain)-2)
-	a, b := d.chain[k].at, d.chain[k+1].at
-	if a == b {
-		return chainPlace{k: k}
-	}
-	return chainPlace{k: k, t: (u - a) / (b - a)}
-}
-
-// placeOf returns the place of a spot on the chain.
-func (d *draws) placeOf(l *line, q *spot) chainPlace {
-	p := d.find(q.u)
+// placeOf returns where a spot takes its error from.
+func (d *draws) placeOf(l *line, q *spot) errorPlace {
 	up, nearer := l.y.see(q.s, q.h+1)
-	p.gain, p.drop = up-q.m, q.r-nearer
+	p := errorPlace{k: -1, u: q.u, v: q.v, gain: up - q.m, drop: q.r - nearer}
+	if d.block.holds(q.u, q.v) {
+		return p
+	}
+	p.k = sort.Search(len(d.chain), func(k int) bool { return d.chain[k].at > q.u }) - 1
+	p.k = min(max(p.k, 0), len(d.chain)-2)
+	if a, b := d.chain[p.k].at, d.chain[p.k+1].at; a != b {
+		p.t = (q.u - a) / (b - a)
+	}
 	return p
 }
 
-func (d *draws) place(to []chainPlace, l *line, spots []spot) []chainPlace {
+func (d *draws) place(to []errorPlace, l *line, spots []spot) []errorPlace {
 	to = to[:0]
 	for i := range spots {
 		to = append(to, d.placeOf(l, &spots[i]))
@@ -255,30 +339,43 @@ func (d *draws) place(to []chainPlace, l *line, spots []spot) []chainPlace {
 	return to
 }
 
-// draw fills the errors of the crossings.
+// draw fills the errors of the block and of the crossings.
 func (d *draws) draw(rng *rand.Rand) {
+	d.block.draw(rng)
 	d.e = resize(d.e, len(d.chain))
-	e := 0.0
-	for k := range d.chain {
+	for k := d.ka; k < d.kb; k++ {
 		c := &d.chain[k]
-		e = c.carry*e + c.fresh*rng.NormFloat64()
-		d.e[k] = e
+		d.e[k] = c.w[0] * d.block.at(c.u[0], c.v[0])
+		if c.w[1] > 0 {
+			d.e[k] += c.w[1] * d.block.at(c.u[1], c.v[1])
+		}
+	}
+	for k := d.ka - 1; k >= 0; k-- {
+		d.e[k] = d.chain[k].carry*d.e[k+1] + d.chain[k].fresh*rng.NormFloat64()
+	}
+	for k := d.kb; k < len(d.chain); k++ {
+		d.e[k] = d.chain[k].carry*d.e[k-1] + d.chain[k].fresh*rng.NormFloat64()
 	}
 }
 
-// at returns the error at a place, straight between two crossings.
-func (d *draws) at(b chainPlace) float64 { return d.e[b.k] + b.t*(d.e[b.k+1]-d.e[b.k]) }
+// at returns the error at a place.
+func (d *draws) at(p *errorPlace) float64 {
+	if p.k < 0 {
+		return d.block.at(p.u, p.v)
+	}
+	return d.e[p.k] + p.t*(d.e[p.k+1]-d.e[p.k])
+}
 
 // disturb fills d.line with the line and the errors and returns the target with
 // its own, unless known ground hides it: then hidden is true.
 func (d *draws) disturb(l *line, t target) (_ target, hidden bool) {
-	lift := func(q *spot, p *chainPlace) {
-		e := d.at(*p)
+	lift := func(q *spot, p *errorPlace) {
+		e := d.at(p)
 		q.h, q.m, q.r = q.h+e, q.m+p.gain*e, q.r-p.drop*e
 	}
 	d.line.here = l.here
 	lift(&d.line.here, &d.here)
-	e := d.at(d.here)
+	e := d.at(&d.here)
 	t.m, t.r = t.m+t.gain*e, t.r-t.drop*e
 	d.line.near = append(d.line.near[:0], l.near...)
 	for i := range d.line.near {
@@ -298,10 +395,6 @@ func (d *draws) disturb(l *line, t target) (_ target, hidden bool) {
 	}
 	return t, false
 }
-
-// slope returns the error of the slope along the line by differences over a row
-// each way, as far as the DEM goes.
-func (d *draws) slope() float64 { return (d.at(d.ahead) - d.at(d.back)) / d.run }
 
 // surelyOpen reports whether the probability of a fold or a shadow is
 // negligible by the union bound: the sum of the probabilities that one spot

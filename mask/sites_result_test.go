@@ -320,7 +320,7 @@ func TestSitesJobErrors(t *testing.T) {
 func TestMarginalByChance(t *testing.T) {
 	m := wallScene(50)
 	look := fixedLook(45*deg, 90*deg)
-	sites := []mask.Site{{Row: 4, Col: 25.1}, {Row: 4, Col: 24.7}, {Row: 4, Col: 21}, {Row: 4, Col: 45}}
+	sites := []mask.Site{{Row: 4, Col: 25.1}, {Row: 4, Col: 24.8}, {Row: 4, Col: 21}, {Row: 4, Col: 45}}
 	got := chances(t, m, mask.DEMError{Sigma: 3, Correlation: 200, Seed: 1}, sites, look)
 	for i, want := range []mask.Verdict{mask.Marginal, mask.Marginal, mask.Unusable, mask.Usable} {
 		r := got[i]
