@@ -87,7 +87,6 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 		}
 		for j := range x.field.strips {
 			if x.strip.setUp(&x.field, x.field.first+j) {
-				x.strip.march(guideShare*x.minShade, guideShare*x.minFold)
 				x.cells()
 			}
 		}
@@ -104,31 +103,36 @@ type standing struct{ v, end, dv, s, ds float64 }
 // NaN where there is none, and halfway between rows where it does not matter.
 type mark struct{ s, h float64 }
 
-// windowStrip is a bundle of neighbouring lanes, see strip. Samples are kept by
-// lane, two a row: lane k's at row u is at k * n + 2 (u - ua), and the next one
-// is halfway to row u + 1. Between its corners the surface may bulge, most where
-// a line runs along a diagonal, and the rows alone would not show it.
-type windowStrip struct {
-	f              *field
-	j, k0          int
-	u0, u1, ua, ub int
-	at             []standing // by row
-	ground         []mark
+// windowLane is one lane of a strip. Samples stand two a row: the one of row u at
+// 2 (u - ua), and the next one halfway to row u + 1. Between its corners the
+// surface may bulge, most where a line runs along a diagonal, and the rows alone
+// would not show it.
+type windowLane struct {
+	ground []mark
 	// The hulls of what was passed before each sample, itself included, as the
 	// next sample on the hull; -1 at its end: upper and lower on the way away
 	// from the radar, upper on the way back.
 	shade, nearer, farther []int32
-	// By lane and row, the most that ground from ownRows on rises above a line
-	// at the least slope that shows where to look.
+	// By row, the most that ground from ownRows on rises above a line at the
+	// least slope that shows where to look.
 	topShade, topNearer, topFarther []float64
 	// Ground distance to the nearest unknown terrain towards the radar and away
-	// from it, infinite where there is none.
+	// from it, infinite where there is none, by row.
 	before, behind []float32
-	gaps           []bool // a height is missing between a row and the next
+}
 
-	neg             []mark // of one lane: heights upside down
+// windowStrip is a bundle of neighbouring lanes, see strip, of which two are
+// marched at a time.
+type windowStrip struct {
+	f               *field
+	j, k0           int
+	u0, u1, ua, ub  int
+	rows            int
+	at              []standing    // by row
+	lanes           [2]windowLane // lane k is at k % 2
+	neg             []mark        // of one lane: heights upside down
+	gaps            []bool        // of one lane: the surface is not known between a row and the next
 	roundS, roundH  float64
-	rows, n         int
 	anyUnknown      bool
 	last            float64 // column of the DEM
 	nearEnd, farEnd bool    // the strip reaches the DEM's first, last row
@@ -176,19 +180,25 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	for i := range p.at {
 		p.at[i] = p.stand(p.ua + i)
 	}
-	p.n = 2 * p.rows
-	n := p.n * windowLaneCount
-	p.ground, p.neg = resize(p.ground, n), resize(p.neg, p.n)
-	p.shade, p.nearer, p.farther = resize(p.shade, n), resize(p.nearer, n), resize(p.farther, n)
-	p.topShade, p.topNearer, p.topFarther = resize(p.topShade, n/2), resize(p.topNearer, n/2), resize(p.topFarther, n/2)
+	p.neg, p.gaps = resize(p.neg, 2*p.rows), resize(p.gaps, p.rows)
+	for k := range p.lanes {
+		p.lanes[k].resize(p.rows)
+	}
 	p.last = float64(ln.orient.v - 1)
 	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
 	p.anyUnknown = !f.sure
-	if p.anyUnknown {
-		p.before, p.behind = resize(p.before, n/2), resize(p.behind, n/2)
-		p.gaps = resize(p.gaps, n/2)
-	}
 	return true
+}
+
+func (l *windowLane) resize(rows int) {
+	l.ground = resize(l.ground, 2*rows)
+	for _, a := range [3]*[]int32{&l.shade, &l.nearer, &l.farther} {
+		*a = resize(*a, 2*rows)
+	}
+	for _, a := range [3]*[]float64{&l.topShade, &l.topNearer, &l.topFarther} {
+		*a = resize(*a, rows)
+	}
+	l.before, l.behind = resize(l.before, rows), resize(l.behind, rows)
 }
 
 // stand takes columns and distances of the lanes at row u from the lattice.
@@ -210,35 +220,37 @@ func (p *windowStrip) stand(u int) standing {
 // columns returns the columns [va, vb) of the field's cells between the strip's
 // lanes.
 func (p *windowStrip) columns(st *standing) (va, vb int) {
-	va = int(math.Ceil(st.v))
-	vb = int(math.Ceil(st.end))
-	return max(va, p.f.v0), min(vb, p.f.v1)
+	return max(int(math.Ceil(st.v)), p.f.v0), min(int(math.Ceil(st.end)), p.f.v1)
 }
 
-// march samples the lanes and finds their hulls.
-func (p *windowStrip) march(shade, fold float64) {
-	for i := range p.at {
-		p.sample(i)
+// between returns those between lane k and the next.
+func (p *windowStrip) between(st *standing, k int) (va, vb int) {
+	from, to := st.v, st.end
+	if k > 0 {
+		from = st.v + float64(st.dv*float64(k))
 	}
-	for i := range p.rows {
-		p.halfway(i)
+	if k < laneStep-1 {
+		to = st.v + float64(st.dv*float64(k+1))
 	}
-	for k := range windowLaneCount {
-		part := func(a []int32) []int32 { return a[k*p.n:][:p.n] }
-		g := p.ground[k*p.n:][:p.n]
-		for i, x := range g {
-			p.neg[i] = mark{x.s, -x.h}
-		}
-		hull(g, 1, part(p.shade))
-		hull(p.neg, 1, part(p.nearer))
-		hull(p.neg, -1, part(p.farther))
-		top := func(a []float64) []float64 { return a[k*p.rows:][:p.rows] }
-		crests(g, 1, 1, shade, top(p.topShade))
-		crests(g, 1, -1, fold, top(p.topNearer))
-		crests(g, -1, 1, fold, top(p.topFarther))
-		if p.anyUnknown {
-			p.unknown(k, g)
-		}
+	return max(int(math.Ceil(from)), p.f.v0), min(int(math.Ceil(to)), p.f.v1)
+}
+
+// march samples lane k and finds its hulls.
+func (p *windowStrip) march(k int, shade, fold float64) {
+	l := &p.lanes[k%2]
+	p.sample(l.ground, float64(k))
+	p.halfway(l.ground, float64(k))
+	for i, x := range l.ground {
+		p.neg[i] = mark{x.s, -x.h}
+	}
+	hull(l.ground, 1, l.shade)
+	hull(p.neg, 1, l.nearer)
+	hull(p.neg, -1, l.farther)
+	crests(l.ground, 1, 1, shade, l.topShade)
+	crests(l.ground, 1, -1, fold, l.topNearer)
+	crests(l.ground, -1, 1, fold, l.topFarther)
+	if p.anyUnknown {
+		p.unknown(l, float64(k))
 	}
 }
 
@@ -249,15 +261,14 @@ func (p *windowStrip) heights(i int) (z []float32, at int) {
 	return f.z[r*f.width:][:f.width], f.at[r]
 }
 
-// sample takes the heights and distances of row ua + i.
-func (p *windowStrip) sample(i int) {
-	st := &p.at[i]
-	z, at := p.heights(i)
-	v := st.v - float64(at)
-	for k, n := 0, 2*i; k < windowLaneCount; k, n = k+1, n+p.n {
-		p.ground[n] = mark{
-			(st.s + float64(st.ds*float64(k)) + p.roundS) - p.roundS,
-			(lerp(z, v+float64(st.dv*float64(k))) + p.roundH) - p.roundH,
+// sample takes the heights and distances of a lane at the rows.
+func (p *windowStrip) sample(g []mark, k float64) {
+	for i := range p.at {
+		st := &p.at[i]
+		z, at := p.heights(i)
+		g[2*i] = mark{
+			(st.s + float64(st.ds*k) + p.roundS) - p.roundS,
+			(lerp(z, st.v-float64(at)+float64(st.dv*k)) + p.roundH) - p.roundH,
 		}
 	}
 }
@@ -267,37 +278,27 @@ func (p *windowStrip) sample(i int) {
 // look, so a coarse measure does.
 const bulgeShare = 0.03
 
-// halfway takes the heights and distances between rows ua + i and ua + i + 1,
-// where the surface bulges.
-func (p *windowStrip) halfway(i int) {
-	if i == p.rows-1 {
-		for n := 2*i + 1; n < len(p.ground); n += p.n {
-			p.ground[n].h = nan
+// halfway takes the heights and distances of a lane between the rows, where the
+// surface bulges.
+func (p *windowStrip) halfway(g []mark, k float64) {
+	g[len(g)-1].h = nan
+	for i := range p.rows - 1 {
+		a, b := &p.at[i], &p.at[i+1]
+		h := nan
+		va, vb := a.v+float64(a.dv*k), b.v+float64(b.dv*k)
+		f, n := &g[2*i], &g[2*i+2]
+		if va != vb { // else the surface is straight
+			v := (va + vb) / 2
+			c := math.Floor(v)
+			za, ca := p.heights(i)
+			zb, cb := p.heights(i + 1)
+			h = (lerpAt(za, int(c)-ca, v-c) + lerpAt(zb, int(c)-cb, v-c)) / 2
+			d, least := h-(f.h+n.h)/2, bulgeShare*(n.s-f.s)
+			if !(d > least || d < -least) {
+				h = nan
+			}
 		}
-		return
-	}
-	a, b := &p.at[i], &p.at[i+1]
-	za, ca := p.heights(i)
-	zb, cb := p.heights(i + 1)
-	v, dv := (a.v+b.v)/2, (a.dv+b.dv)/2
-	least := bulgeShare * math.Abs(b.s-a.s)
-	straight := a.v == b.v && a.dv == b.dv
-	for k, n := 0, 2*i+1; k < windowLaneCount; k, n = k+1, n+p.n {
-		p.ground[n].h = nan
-		if straight {
-			continue
-		}
-		c := v + float64(dv*float64(k))
-		j := math.Floor(c)
-		x, l, m := c-j, int(j)-ca, int(j)-cb
-		h := (lerpAt(za, l, x) + lerpAt(zb, m, x)) / 2
-		g, f := &p.ground[n-1], &p.ground[n+1]
-		if d := h - (g.h+f.h)/2; d > least || d < -least {
-			p.ground[n] = mark{((g.s+f.s)/2 + p.roundS) - p.roundS, (h + p.roundH) - p.roundH}
-		}
-	}
-	if p.anyUnknown {
-		p.gapsAt(i)
+		g[2*i+1] = mark{((f.s+n.s)/2 + p.roundS) - p.roundS, (h + p.roundH) - p.roundH}
 	}
 }
 
@@ -305,13 +306,6 @@ func (p *windowStrip) halfway(i int) {
 func lerpAt(z []float32, i int, rest float64) float64 {
 	a, b := float64(z[i]), float64(z[i+1])
 	return a + float64(rest*(b-a))
-}
-
-// gapsAt notes where the surface is not known between row ua + i and the next.
-func (p *windowStrip) gapsAt(i int) {
-	for k := range windowLaneCount {
-		p.gaps[k*p.rows+i] = p.gap(i, float64(k))
-	}
 }
 
 // gap reports whether the surface along a lane, which may be fractional, is not
@@ -407,29 +401,28 @@ func crests(ground []mark, dir int, sign, least float64, out []float64) {
 // It returns -1 where that is not above least, as crests tells beforehand. Of
 // samples at the same slope it is the nearest, so that it does not depend on
 // ground out of reach.
-func (p *windowStrip) touch(link []int32, crests []float64, k, i, dir int, sign, h, least float64) int {
-	ground := p.ground[k*p.n:][:p.n]
+func (l *windowLane) touch(link []int32, crests []float64, i, dir int, sign, h, least float64) int {
+	ground := l.ground
 	s0 := ground[2*i].s
-	// Towards the radar the samples lie before the row: dir is -1.
-	if top := crests[k*p.rows+i]; !(top > float64(sign*h)-float64(float64(dir)*least*s0)) {
+	if !(crests[i] > float64(sign*h)-float64(float64(dir)*least*s0)) {
 		return -1
 	}
-	next := link[k*p.n:][:p.n]
+	n := len(ground)
 	j := 2 * (i + ownRows*dir)
-	for j >= 0 && j < p.n && ground[j].h != ground[j].h {
+	for j >= 0 && j < n && ground[j].h != ground[j].h {
 		j += dir
 	}
-	if j < 0 || j >= p.n {
+	if j < 0 || j >= n {
 		return -1
 	}
 	rise, away := sign*(ground[j].h-h), math.Abs(ground[j].s-s0)
-	for l := next[j]; l >= 0; l = next[j] {
-		g := &ground[l]
+	for m := link[j]; m >= 0; m = link[j] {
+		g := &ground[m]
 		r, a := sign*(g.h-h), math.Abs(g.s-s0)
 		if float64(r*away) <= float64(rise*a) {
 			break
 		}
-		j, rise, away = int(l), r, a
+		j, rise, away = int(m), r, a
 	}
 	if rise <= least*away {
 		return -1
@@ -439,39 +432,47 @@ func (p *windowStrip) touch(link []int32, crests []float64, k, i, dir int, sign,
 
 // unknown fills the distances of lane k to unknown terrain. Where there is some
 // between two rows it reaches, at worst, the row itself.
-func (p *windowStrip) unknown(k int, g []mark) {
-	gaps := p.gaps[k*p.rows:][:p.rows]
+func (p *windowStrip) unknown(l *windowLane, k float64) {
+	for i := range p.rows - 1 {
+		p.gaps[i] = p.gap(i, k)
+	}
 	walk := func(out []float32, from, to, dir, gap int, edge bool) {
 		place := math.Inf(1)
 		edge = edge && !p.f.lim.openEdge
 		for i := from; i != to; i += dir {
-			if i == from && edge || i != from && gaps[i+gap] {
-				place = g[2*i].s
+			s := l.ground[2*i].s
+			if i == from && edge || i != from && p.gaps[i+gap] {
+				place = s
 			}
-			out[i] = float32(math.Abs(place - g[2*i].s))
+			out[i] = float32(math.Abs(place - s))
 		}
 	}
-	walk(p.before[k*p.rows:][:p.rows], 0, p.rows, 1, -1, p.nearEnd)
-	walk(p.behind[k*p.rows:][:p.rows], p.rows-1, -1, -1, 0, p.farEnd)
+	walk(l.before, 0, p.rows, 1, -1, p.nearEnd)
+	walk(l.behind, p.rows-1, -1, -1, 0, p.farEnd)
 }
 
-// cells takes the slopes of the strip's cells.
+// cells marches the strip and takes the slopes of its cells.
 func (x *windower) cells() {
 	p := &x.strip
-	f := p.f
-	o := f.ln.orient
-	for u := p.u0; u < p.u1; u++ {
-		st := &p.at[u-p.ua]
-		va, vb := p.columns(st)
-		row, col := o.cell(float64(u), float64(va))
-		at, stride := (int(row)-x.win.Row)*x.win.Cols+int(col)-x.win.Col, 1
-		if o.transposed {
-			stride = x.win.Cols
-		}
-		for v := va; v < vb; v, at = v+1, at+stride {
-			c := x.cell(u, v)
-			x.shade[at], x.shadeU[at] = float32(c.shade), float32(c.shadeU)
-			x.fold[at], x.foldU[at] = float32(c.fold), float32(c.foldU)
+	p.march(0, guideShare*x.minShade, guideShare*x.minFold)
+	for k := range laneStep {
+		p.march(k+1, guideShare*x.minShade, guideShare*x.minFold)
+		for u := p.u0; u < p.u1; u++ {
+			st := &p.at[u-p.ua]
+			va, vb := p.between(st, k)
+			if va >= vb {
+				continue
+			}
+			row, col := p.f.ln.cell(float64(u), float64(va))
+			at, stride := (int(row)-x.win.Row)*x.win.Cols+int(col)-x.win.Col, 1
+			if p.f.ln.transposed {
+				stride = x.win.Cols
+			}
+			for v := va; v < vb; v, at = v+1, at+stride {
+				c := x.cell(u, v, k)
+				x.shade[at], x.shadeU[at] = float32(c.shade), float32(c.shadeU)
+				x.fold[at], x.foldU[at] = float32(c.fold), float32(c.foldU)
+			}
 		}
 	}
 }
@@ -479,9 +480,10 @@ func (x *windower) cells() {
 // slopes are those of one cell.
 type slopes struct{ shade, fold, shadeU, foldU float64 }
 
-// cell finds the slopes of one cell: on its own range line the next row on both
-// sides, and the places where the tangents of the lanes beside it touch.
-func (x *windower) cell(u, v int) slopes {
+// cell finds the slopes of one cell between lanes k and k + 1: on its own range
+// line the next row on both sides, and the places where the tangents of the lanes
+// touch.
+func (x *windower) cell(u, v, k int) slopes {
 	p := &x.strip
 	i := u - p.ua
 	st := &p.at[i]
@@ -492,39 +494,35 @@ func (x *windower) cell(u, v int) slopes {
 		return slopes{nan, nan, nan, nan}
 	}
 	out := slopes{shade: x.minShade, fold: x.minFold}
-	k := min(int(own.k), laneStep-1)
-	a := k*p.n + 2*i
-	b := a
-	if float64(k) != own.k {
-		b += p.n
+	a, b := &p.lanes[k%2], &p.lanes[(k+1)%2]
+	if float64(k) == own.k {
+		b = a
 	}
-	if p.ground[a].h != p.ground[a].h || p.ground[b].h != p.ground[b].h {
+	if a.ground[2*i].h != a.ground[2*i].h || b.ground[2*i].h != b.ground[2*i].h {
 		return x.walk(&own)
 	}
 	own.step(&out)
 	own.beyond(&out)
 	h := (own.h + p.roundH) - p.roundH
-	tangent := func(link []int32, crests []float64, dir int, sign, least float64, most *float64) {
-		j := p.touch(link, crests, k, i, dir, sign, h, least)
-		if j >= 0 {
-			own.around(j, sign, most)
-		}
-		if b == a {
-			return
-		}
-		if l := p.touch(link, crests, k+1, i, dir, sign, h, least); l >= 0 && l != j {
-			own.around(l, sign, most)
-		}
-	}
-	tangent(p.shade, p.topShade, -1, 1, guideShare*x.minShade, &out.shade)
-	tangent(p.nearer, p.topNearer, -1, -1, guideShare*x.minFold, &out.fold)
-	tangent(p.farther, p.topFarther, 1, 1, guideShare*x.minFold, &out.fold)
+	shade, fold := guideShare*x.minShade, guideShare*x.minFold
+	own.see(a.touch(a.shade, a.topShade, i, -1, 1, h, shade), b.touch(b.shade, b.topShade, i, -1, 1, h, shade), 1, &out.shade)
+	own.see(a.touch(a.nearer, a.topNearer, i, -1, -1, h, fold), b.touch(b.nearer, b.topNearer, i, -1, -1, h, fold), -1, &out.fold)
+	own.see(a.touch(a.farther, a.topFarther, i, 1, 1, h, fold), b.touch(b.farther, b.topFarther, i, 1, 1, h, fold), 1, &out.fold)
 	out.shadeU, out.foldU = out.shade, out.fold
 	if p.anyUnknown {
-		c, d := k*p.rows+i, (b/p.n)*p.rows+i
-		x.worst(&out, own.h, float64(min(p.before[c], p.before[d])), float64(min(p.behind[c], p.behind[d])))
+		x.worst(&out, own.h, float64(min(a.before[i], b.before[i])), float64(min(a.behind[i], b.behind[i])))
 	}
 	return out
+}
+
+// see counts the ground about two samples of the lanes, -1 for none.
+func (o *ownLine) see(a, b int, sign float64, most *float64) {
+	if a >= 0 {
+		o.around(a, sign, most)
+	}
+	if b >= 0 && b != a {
+		o.around(b, sign, most)
+	}
 }
 
 // worst counts unknown terrain at distances towards the radar and away from it.
