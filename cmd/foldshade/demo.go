@@ -24,7 +24,12 @@ const (
 	demoSites   = "sites.geojson"
 	demoPicture = "valley.png"
 	demoLayers  = "layers"
+	demoResults = "campaign.gpkg"
+	demoSheet   = "sheet.html"
 )
+
+// What the demo takes for the error of its heights: metres.
+const demoSigma, demoCorrelation = 3, 200
 
 type demoJob struct {
 	out       string
@@ -40,8 +45,8 @@ func newDemo() *cobra.Command {
 		Short: "an invented valley, its sites and looks, and the main job on it",
 		Long: `demo makes the Oltrenza valley, which does not exist, with a town, a glacier, a
 landslide, a gorge and a pass. It writes the valley's DEM, sites and looks into a
-folder, computes the layers of the looks, draws a picture of the result, and says
-what to try next.`,
+folder, computes the layers of the looks, draws a picture of the result, judges the
+sites, makes the field sheet that a crew would print, and says what to try next.`,
 		Example: `  foldshade demo --out valley`,
 		Args:    exactly(),
 		RunE: func(cmd *cobra.Command, _ []string) error {
@@ -92,10 +97,14 @@ func (d *demoJob) run(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
+	report, err := d.sites(ctx, src, scratch, valley.GeoJSON(), set)
+	if err != nil {
+		return err
+	}
 	if err := set.Commit(); err != nil {
 		return err
 	}
-	return d.print(result)
+	return d.print(result, report)
 }
 
 func writeText(set *raster.Set, name, text string) error {
@@ -200,30 +209,71 @@ func (d *demoJob) layers(ctx context.Context, src *raster.DEM, v *demo.Valley, s
 	return result, file.Close()
 }
 
+// sites judges the sites of the valley and makes the field sheet, as
+// `foldshade sites` would.
+func (d *demoJob) sites(ctx context.Context, src *raster.DEM, scratch, sites string, set *raster.Set) (*siteReport, error) {
+	name := filepath.Join(scratch, demoSites)
+	if err := os.WriteFile(name, []byte(sites), 0o600); err != nil {
+		return nil, outputf("%q: %w", name, reason(err))
+	}
+	looks, err := lookfile.Read(filepath.Join(scratch, demoLooks))
+	if err != nil {
+		return nil, err
+	}
+	list, err := raster.ReadSites(name, raster.SiteOptions{}, src.Grid())
+	if err != nil {
+		return nil, err
+	}
+	list.Name = filepath.Join(d.out, demoSites)
+	job := newSitesJob()
+	job.stderr, job.said, job.title = io.Discard, filepath.Join(d.out, demoDEM), "Oltrenza valley"
+	job.errors = mask.DEMError{Sigma: demoSigma, Correlation: demoCorrelation}
+	job.out, job.sheet = []string{filepath.Join(d.out, demoResults)}, filepath.Join(d.out, demoSheet)
+	job.command = []string{"foldshade", "sites", job.said, "--sites", list.Name, "--looks", filepath.Join(d.out, demoLooks),
+		"--dem-sigma", fmt.Sprint(demoSigma), "--dem-correlation", fmt.Sprint(demoCorrelation),
+		"--out", job.out[0], "--sheet", job.sheet, "--title", job.title}
+	out := &siteOutputs{}
+	for _, f := range []namedOutput{{demoResults, asGeoPackage}, {demoSheet, asSheet}} {
+		if err := out.claim(set, f, f.path); err != nil {
+			return nil, err
+		}
+	}
+	report, err := job.compute(ctx, src, list, looks)
+	if err != nil {
+		return nil, err
+	}
+	return report, out.write(ctx, report)
+}
+
 // print says what was made and what to try next.
-func (d *demoJob) print(s *summary) error {
+func (d *demoJob) print(s *summary, sites *siteReport) error {
 	w := d.stdout
 	at := func(name string) string { return filepath.Join(d.out, name) }
 	fmt.Fprint(w, "The Oltrenza valley, which does not exist, and what three invented radars see of it:\n\n")
 	if err := s.print(w, false); err != nil {
 		return err
 	}
+	fmt.Fprint(w, "\nIts five sites under the looks:\n\n")
+	sites.printTable(w)
 	fmt.Fprintln(w, "\nMade:")
 	printPairs(w, [][2]string{
 		{"  " + at(demoPicture), "the picture to look at first"},
+		{"  " + at(demoSheet), "the field sheet: open it in a browser, print it on A4"},
 		{"  " + at(demoDEM), "the DEM"},
 		{"  " + at(demoLooks), "the looks; change one and run again"},
 		{"  " + at(demoSites), "town, glacier, landslide, gorge and pass"},
 		{"  " + at(demoLayers), "a folder a look: five layers and item.json; open them in a GIS"},
+		{"  " + at(demoResults), "the sites, their verdicts, and lines to what hides or folds them"},
 	})
 	fmt.Fprintf(w, `
 Try next:
   foldshade inspect %[1]s
   foldshade layers %[1]s --look name=mine,incidence=45,azimuth=200 --out %[2]s
+  foldshade sites %[1]s --sites %[3]s --look name=mine,incidence=45,azimuth=200
   foldshade layers YOUR_DEM.tif --look incidence=38,heading=347,side=right --out layers
 
 Open to the radar does not mean safe to stand on: steep ground, rockfall, avalanches
 and crevasses are not on these maps. Local codes, permits and licensed practice come first.
-`, shellJoin([]string{at(demoDEM)}), shellJoin([]string{at("mine")}))
+`, shellJoin([]string{at(demoDEM)}), shellJoin([]string{at("mine")}), shellJoin([]string{at(demoSites)}))
 	return nil
 }

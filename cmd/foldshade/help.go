@@ -63,13 +63,10 @@ func printHelp(cmd *cobra.Command, _ []string) {
 
 // kindsOf returns the kinds of look that a command takes.
 func kindsOf(cmd *cobra.Command) []geometry.Kind {
-	switch cmd.Name() {
-	case "looks":
+	if cmd.Name() == "looks" {
 		return geometry.Kinds
-	case "layers", "inspect":
-		return geometry.DrivenKinds
 	}
-	return []geometry.Kind{geometry.Fixed}
+	return geometry.DrivenKinds
 }
 
 // printWrapped writes a word and the text after it in two columns of a page of

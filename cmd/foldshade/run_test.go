@@ -373,7 +373,7 @@ func TestDemo(t *testing.T) {
 	dir := filepath.Join(t.TempDir(), "demo")
 	got := call(t.Context(), "demo", "--out", dir)
 	require.Equal(t, exitDone, got.code, got.errOut)
-	for _, name := range []string{demoDEM, demoLooks, demoSites, demoPicture} {
+	for _, name := range []string{demoDEM, demoLooks, demoSites, demoPicture, demoResults, demoSheet} {
 		assert.FileExists(t, filepath.Join(dir, name))
 	}
 	made, err := lookfile.Read(filepath.Join(dir, demoLooks))

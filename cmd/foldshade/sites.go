@@ -28,6 +28,7 @@ type sitesJob struct {
 	columns   raster.SiteOptions
 	out       []string
 	sheet     string
+	title     string
 	require   string
 	edge      string
 	memory    int64
@@ -108,11 +109,12 @@ func (j *sitesJob) define(cmd *cobra.Command) {
 	j.reflector.define(cmd)
 	f.StringArrayVar(&j.out, "out", nil, "file for the results, .gpkg, .geojson, .csv or .kml;\nrepeat the flag for more")
 	f.StringVar(&j.sheet, "sheet", "", "file for the field sheet, .html: one page to print")
+	f.StringVar(&j.title, "title", "", "heading of the field sheet; by default the name of the\nfile of sites")
 	f.Var(&choice{&j.require, []string{"open", "usable"}}, "require", "open or usable: exit status 1 unless every site is that\nunder every look")
 	f.Var(&decimal{&j.options.CompressedBelow, 0, 1, ""}, "compressed-below", "the foreshortening under which an open site is compressed,\n0 to 1")
 	f.BoolVar(&j.overwrite, "overwrite", false, "replace outputs that exist")
 	f.BoolVar(&j.asJSON, "json", false, "print JSON in place of the table")
-	inGroup(cmd, groupOutput, "out FILE", "sheet FILE", "require WORD", "compressed-below RATIO", "overwrite", "json")
+	inGroup(cmd, groupOutput, "out FILE", "sheet FILE", "title TEXT", "require WORD", "compressed-below RATIO", "overwrite", "json")
 	f.Var(&size{&j.memory, leastMemory, mostMemory}, "memory", memoryHelp)
 	f.Var(&whole{&j.options.Threads, 1, 1024}, "threads", "workers, 1 to 1024; by default one a processor")
 	inGroup(cmd, groupMachine, "memory SIZE", "threads N")
@@ -133,6 +135,9 @@ func (j *sitesJob) check() error {
 	if j.sites == "" {
 		return hint(usagef("--sites FILE is missing"), "name the vector file of the sites, as in --sites sites.geojson")
 	}
+	if j.title != "" && j.sheet == "" {
+		return usagef("--title is the heading of the field sheet, and --sheet is not given")
+	}
 	if !math.IsNaN(j.errors.Correlation) && math.IsNaN(j.errors.Sigma) {
 		return usagef("--dem-correlation needs --dem-sigma, the size of the errors")
 	}
@@ -149,7 +154,7 @@ func (j *sitesJob) run(ctx context.Context) (*siteReport, error) {
 	if err != nil {
 		return nil, err
 	}
-	if err := fixedOnly(looks); err != nil {
+	if err := drivenOnly(looks); err != nil {
 		return nil, err
 	}
 	if err := j.reflector.check(looks); err != nil {
@@ -298,7 +303,7 @@ func (r *siteReport) fill(results []mask.SiteResult) error {
 			*p = pair{site: &r.sites.List[i], look: &r.looks[k], lon: lon[i], lat: lat[i]}
 			if j, ok := at[i]; ok {
 				p.result = results[j*n+k]
-				if p.result.Where != mask.OnGround {
+				if p.result.Where != mask.OnGround && len(p.site.Paths) == 0 {
 					p.problem = p.result.Reason
 				}
 			} else {

@@ -61,6 +61,20 @@ func angleColumn(name, title string, get func(r *mask.SiteResult) geometry.Angle
 	return numberColumn(name, title, "°", 2, func(p *pair) float64 { return get(&p.result).Degrees() })
 }
 
+// azimuthColumn is angleColumn for a direction: 360 degrees, where rounding
+// leads there, are 0.
+func azimuthColumn(name, title string, get func(p *pair) geometry.Angle) siteColumn {
+	return numberColumn(name, title, "°", 2, func(p *pair) float64 { return azimuth(get(p)) })
+}
+
+// azimuth is a direction in degrees, as it is printed with two decimals.
+func azimuth(a geometry.Angle) float64 {
+	if v := roundTo(a.Degrees(), 2); v == 360 {
+		return 0
+	}
+	return a.Degrees()
+}
+
 func lengthColumn(name, title string, get func(r *mask.SiteResult) float64) siteColumn {
 	return numberColumn(name, title, "m", 2, func(p *pair) float64 { return get(&p.result) })
 }
@@ -134,9 +148,9 @@ var viewColumns = []siteColumn{
 	angleColumn("incidence", "Incidence", func(r *mask.SiteResult) geometry.Angle { return r.Incidence }),
 	angleColumn("local_incidence", "Local incidence", func(r *mask.SiteResult) geometry.Angle { return r.LocalIncidence }),
 	angleColumn("range_incidence", "Range incidence", func(r *mask.SiteResult) geometry.Angle { return r.RangeIncidence }),
-	angleColumn("look_azimuth", "Look azimuth", func(r *mask.SiteResult) geometry.Angle { return r.LookAzimuth }),
-	angleColumn("to_radar", "To the radar, true north", func(r *mask.SiteResult) geometry.Angle { return r.ToRadar }),
-	angleColumn("to_radar_grid", "To the radar, grid north", func(r *mask.SiteResult) geometry.Angle { return r.GridToRadar }),
+	azimuthColumn("look_azimuth", "Look azimuth", func(p *pair) geometry.Angle { return p.result.LookAzimuth }),
+	azimuthColumn("to_radar", "To the radar, true north", func(p *pair) geometry.Angle { return p.result.ToRadar }),
+	azimuthColumn("to_radar_grid", "To the radar, grid north", func(p *pair) geometry.Angle { return p.result.GridToRadar }),
 	angleColumn("elevation", "Elevation of the radar", func(r *mask.SiteResult) geometry.Angle { return r.Elevation }),
 	ratioColumn("los_east", "Line of sight, east", 6, func(r *mask.SiteResult) float64 { return r.LineOfSight.East }),
 	ratioColumn("los_north", "Line of sight, north", 6, func(r *mask.SiteResult) float64 { return r.LineOfSight.North }),

@@ -15,6 +15,18 @@ func (r *siteReport) print(w io.Writer, asJSON bool) error {
 	if asJSON {
 		return printJSON(w, r.records())
 	}
+	r.printTable(w)
+	fmt.Fprintln(w, "\nmargins in metres, angles in degrees; to radar: azimuth from true north")
+	r.printReasons(w)
+	if r.reflector.wanted() {
+		r.printReflectors(w)
+	}
+	r.printFiles(w)
+	return nil
+}
+
+// printTable prints one line a site and look.
+func (r *siteReport) printTable(w io.Writer) {
 	head := []string{"site", "look", "verdict", "class", "clearance", "fold margin", "local inc.", "to radar"}
 	chance := r.job.DEMError.Sigma > 0
 	if chance {
@@ -25,7 +37,7 @@ func (r *siteReport) print(w io.Writer, asJSON bool) error {
 		p := &r.pairs[i]
 		q := &p.result
 		row := []string{short(p.site.Name, 28), short(p.look.Name, 24), string(q.Verdict), q.Class.String(),
-			fixed(q.Clearance, 2), fixed(q.FoldMargin, 2), fixed(q.LocalIncidence.Degrees(), 2), fixed(q.ToRadar.Degrees(), 2)}
+			fixed(q.Clearance, 2), fixed(q.FoldMargin, 2), fixed(q.LocalIncidence.Degrees(), 2), fixed(azimuth(q.ToRadar), 2)}
 		if chance {
 			row = append(row, fixed(q.Chance.Open, 3))
 		}
@@ -33,13 +45,6 @@ func (r *siteReport) print(w io.Writer, asJSON bool) error {
 	}
 	leftAlign(append(rows, head), 4)
 	printTable(w, head, rows)
-	fmt.Fprintln(w, "\nmargins in metres, angles in degrees; to radar: azimuth from true north")
-	r.printReasons(w)
-	if r.reflector.wanted() {
-		r.printReflectors(w)
-	}
-	r.printFiles(w)
-	return nil
 }
 
 // printReasons says why pairs are not usable.

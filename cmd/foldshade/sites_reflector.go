@@ -131,7 +131,7 @@ type reflectorLeg struct {
 func (f *reflectorFlags) aid(p *pair) *reflectorAid {
 	r := &p.result
 	wavelength := p.look.Wavelength
-	if !f.wanted() || math.IsNaN(wavelength) || p.problem != "" || math.IsNaN(r.LineOfSight.Up) {
+	if !f.wanted() || math.IsNaN(wavelength) || p.problem != "" || r.Verdict == mask.NotSeen || math.IsNaN(r.LineOfSight.Up) {
 		return nil
 	}
 	aim := geometry.AimAt(r.LineOfSight)
@@ -194,7 +194,7 @@ func (a *reflectorAid) notes() []string {
 		how = "tip the opening down"
 	}
 	notes := []string{fmt.Sprintf("Corner reflector: opening to azimuth %.2f° true, %.2f° grid; base plate %.2f° (%s).",
-		a.azimuth.Degrees(), a.gridAzimuth.Degrees(), a.tilt.Degrees(), how)}
+		azimuth(a.azimuth), azimuth(a.gridAzimuth), a.tilt.Degrees(), how)}
 	for _, l := range a.legs {
 		text := fmt.Sprintf("Legs of %s m: %.2f dBsm", shortest(l.leg), geometry.Decibels(l.section))
 		if !math.IsNaN(l.ratio) {
@@ -232,8 +232,8 @@ func (f *reflectorFlags) columns() []siteColumn {
 		}
 	}
 	columns := []siteColumn{
-		numberColumn("reflector_azimuth", "Reflector, opening to, true north", "°", 2, of(func(a *reflectorAid) float64 { return a.azimuth.Degrees() })),
-		numberColumn("reflector_azimuth_grid", "Reflector, opening to, grid north", "°", 2, of(func(a *reflectorAid) float64 { return a.gridAzimuth.Degrees() })),
+		numberColumn("reflector_azimuth", "Reflector, opening to, true north", "°", 2, of(func(a *reflectorAid) float64 { return azimuth(a.azimuth) })),
+		numberColumn("reflector_azimuth_grid", "Reflector, opening to, grid north", "°", 2, of(func(a *reflectorAid) float64 { return azimuth(a.gridAzimuth) })),
 		numberColumn("reflector_base_tilt", "Reflector, base tilt", "°", 2, of(func(a *reflectorAid) float64 { return a.tilt.Degrees() })),
 		textColumn("reflector_clears", func(p *pair) string {
 			if p.aid == nil {

@@ -38,9 +38,9 @@ const (
 // writeSheet writes the field sheet.
 func (r *siteReport) writeSheet(ctx context.Context, w io.Writer) error {
 	s := &sheet.Sheet{
-		Title: "Sites of " + filepath.Base(r.sites.Name), DEM: r.label(), Command: shellJoin(r.command),
+		Title: cmp.Or(r.title, "Sites of "+filepath.Base(r.sites.Name)), DEM: r.label(), Command: shellJoin(r.command),
 		Software: fmt.Sprintf("foldshade %s, GDAL %s", toolVersion(), raster.GDALVersion()),
-		Made:     time.Now().Truncate(time.Second), Facts: r.facts(), Warnings: r.warnings,
+		Made:     time.Now().UTC().Truncate(time.Second), Facts: r.facts(), Warnings: r.warnings,
 	}
 	for i := range r.looks {
 		l := &r.looks[i]
@@ -179,10 +179,10 @@ func (r *siteReport) addProfiles(ctx context.Context, s *sheet.Sheet) error {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		if r.pairs[i*len(r.looks)].problem != "" {
-			continue
-		}
 		for _, look := range r.bestLooks(i, sheetProfiles) {
+			if q := &r.pairs[i*len(r.looks)+look].result; q.Where != mask.OnGround || q.Verdict == mask.NotSeen {
+				continue // no ground to cut, or no ray to cut it along
+			}
 			p, err := mask.SiteProfile(ctx, job, k, look, reach)
 			if err != nil {
 				return err
@@ -223,7 +223,10 @@ func (r *siteReport) bestLooks(site, n int) []int {
 func (r *siteReport) sheetProfile(p *mask.Profile, site, look int) sheet.Profile {
 	out := sheet.Profile{
 		Look: look, At: p.Site, Incidence: p.Incidence.Degrees(),
-		ToRadar: (p.LookAzimuth + 180*geometry.Degree).Turn().Degrees(),
+		ToRadar: (p.LookAzimuth + 180*geometry.Degree).Turn().Degrees(), SlantRange: math.NaN(),
+	}
+	if r.looks[look].Kind != geometry.Fixed {
+		out.SlantRange = r.pairs[site*len(r.looks)+look].result.SlantRange
 	}
 	for _, q := range p.Points {
 		out.Points = append(out.Points, sheet.ProfilePoint{Distance: q.Distance, Height: q.Height, Class: q.Class})

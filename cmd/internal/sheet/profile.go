@@ -16,6 +16,8 @@ type Profile struct {
 	At     int // index of the point under the site
 	// Incidence is that at the site, ToRadar the azimuth to the radar, degrees.
 	Incidence, ToRadar float64
+	// SlantRange is that of the site, NaN for a plane wave.
+	SlantRange float64
 	// Blocker and Partner are the terrain that hides or folds the site or comes
 	// nearest to it; NaN distances where there is none.
 	Blocker, Partner ProfileMark
@@ -185,50 +187,32 @@ func (p *Profile) body(d *drawing, f *frame, keep []int) {
 	}
 }
 
-// shadow fills what lies between the ground and the last ray that passes the
-// terrain before it: a plane wave of the site's own incidence.
+// shadow fills the air that no ray reaches: from the last lit point before
+// hidden ground straight to the first one behind it. Where the profile ends in
+// shadow, the ray goes on at the site's own incidence.
 func (p *Profile) shadow(d *drawing, f *frame, keep []int) {
-	cot := 1 / math.Tan(p.Incidence*math.Pi/180)
-	highest := math.Inf(-1)
-	var upper, lower [][2]float64
-	flush := func() {
-		if len(upper) > 0 {
-			for i := len(lower) - 1; i >= 0; i-- {
-				upper = append(upper, lower[i])
-			}
-			path := polygon(upper)
-			d.add(`<path d="%s" class="shade"/><path d="%s" fill="url(#falling-dark)"/>`, path, path)
-		}
-		upper, lower = nil, nil
+	hidden := func(i int) bool {
+		return p.Points[i].Class.Kind() == mask.SelfShadow.Kind() && !math.IsNaN(p.Points[i].Height)
 	}
-	for k, i := range keep {
-		q := p.Points[i]
-		if math.IsNaN(q.Height) {
+	for k := 1; k < len(keep); k++ {
+		crest := p.Points[keep[k-1]]
+		if !hidden(keep[k]) || hidden(keep[k-1]) || math.IsNaN(crest.Height) {
 			continue
 		}
-		reach := q.Height + q.Distance*cot
-		if reach >= highest {
-			if len(upper) > 0 { // where the ray meets the ground again
-				before := p.Points[keep[k-1]]
-				if !math.IsNaN(before.Height) {
-					a := highest - (before.Height + before.Distance*cot)
-					t := a / (a + reach - highest)
-					s := before.Distance + t*(q.Distance-before.Distance)
-					upper = append(upper, f.at(s, highest-s*cot))
-				}
-				flush()
-			}
-			highest = reach
-			continue
+		points := [][2]float64{f.at(crest.Distance, crest.Height)}
+		for ; k < len(keep) && hidden(keep[k]); k++ {
+			points = append(points, f.at(p.Points[keep[k]].Distance, p.Points[keep[k]].Height))
 		}
-		if len(upper) == 0 && k > 0 && !math.IsNaN(p.Points[keep[k-1]].Height) {
-			before := p.Points[keep[k-1]]
-			upper = append(upper, f.at(before.Distance, before.Height))
+		if k < len(keep) && !math.IsNaN(p.Points[keep[k]].Height) {
+			points = append(points, f.at(p.Points[keep[k]].Distance, p.Points[keep[k]].Height))
+		} else {
+			end := p.Points[keep[k-1]].Distance
+			z := crest.Height - (end-crest.Distance)/math.Tan(p.Incidence*math.Pi/180)
+			points = append(points, f.at(end, max(z, p.Points[keep[k-1]].Height)))
 		}
-		upper = append(upper, f.at(q.Distance, highest-q.Distance*cot))
-		lower = append(lower, f.at(q.Distance, q.Height))
+		path := polygon(points)
+		d.add(`<path d="%s" class="shade"/><path d="%s" fill="url(#falling-dark)"/>`, path, path)
 	}
-	flush()
 }
 
 // ribbon draws the surface with its classes.
@@ -268,10 +252,34 @@ func (p *Profile) rays(d *drawing, f *frame, target float64) {
 	from := max(f.s0, -(f.z1-target)*tan)
 	a, b := f.at(from, target-from/tan), f.at(0, target)
 	d.add(`<path d="M%.1f %.1fL%.1f %.1f" class="ray" marker-end="url(#tip)"/>`, a[0], a[1], b[0], b[1])
-	// Slant range s sin i - z cos i stays the same along z = s tan i.
-	far := max(f.s1-f.s0, (f.z1-f.z0)/tan)
-	a, b = f.at(-far, target-far*tan), f.at(far, target+far*tan)
-	d.add(`<path d="M%.1f %.1fL%.1f %.1f" class="front"/>`, a[0], a[1], b[0], b[1])
+	var front [][2]float64
+	for k := range frontPoints + 1 {
+		at := f.s0 + (f.s1-f.s0)*float64(k)/frontPoints
+		if z := p.front(at, target); !math.IsNaN(z) {
+			front = append(front, f.at(at, z))
+		}
+	}
+	if len(front) > 1 {
+		d.add(`<path d="%s" class="front"/>`, polyline(front))
+	}
+}
+
+// frontPoints is how many steps the line of equal slant range is drawn in.
+const frontPoints = 48
+
+// front is the height at a distance at which slant range is that of the
+// target: a circle around the antenna, or for a plane wave, where
+//
+//	r = s sin i - z cos i,
+//
+// the line z = s tan i through the target. NaN where there is none.
+func (p *Profile) front(s, target float64) float64 {
+	sin, cos := math.Sincos(p.Incidence * math.Pi / 180)
+	if math.IsNaN(p.SlantRange) {
+		return target + s*sin/cos
+	}
+	r := p.SlantRange
+	return target + r*cos - math.Sqrt(r*r-(s+r*sin)*(s+r*sin))
 }
 
 // annotate names the site and what decides. Letters that would cover each

@@ -30,12 +30,14 @@ func drawSky(s *Site) template.HTML {
 	d := &drawing{}
 	const rim = "M%[1]g %[2]gA%[3]g %[3]g 0 1 1 %[1]g %[4]gA%[3]g %[3]g 0 1 1 %[1]g %[2]gZ"
 	circle := fmt.Sprintf(rim, skyMiddle, skyMiddle-skyRadius, skyRadius, skyMiddle+skyRadius)
-	d.area(circle, mask.Open, "nonzero")
 	known := len(s.Sky) > 2
 	for _, r := range s.Sky {
 		known = known && !math.IsNaN(r.Low+r.High)
 	}
-	if known {
+	if !known {
+		d.area(circle, mask.Undetermined, "nonzero")
+	} else {
+		d.area(circle, mask.Open, "nonzero")
 		ring := func(of func(Ray) float64) string {
 			var points [][2]float64
 			for _, r := range s.Sky {
