@@ -97,18 +97,6 @@ func (l *lookFlags) read() ([]geometry.Look, error) {
 	return looks, nil
 }
 
-// fixedOnly refuses looks that are no plane waves, for the jobs that need one
-// direction everywhere.
-func fixedOnly(looks []geometry.Look) error {
-	for _, l := range looks {
-		if l.Kind != geometry.Fixed {
-			return hint(usagef("look %q is of kind %s; this command takes kind fixed", l.Name, l.Kind),
-				"`foldshade layers` takes "+driven()+"; `foldshade looks` shows the angles of any kind")
-		}
-	}
-	return nil
-}
-
 // drivenOnly refuses the kinds of look that the marching does not serve.
 func drivenOnly(looks []geometry.Look) error {
 	for _, l := range looks {

@@ -149,16 +149,18 @@ func (j *inspectJob) run(ctx context.Context, name string) (*inspection, error) 
 // lookReach returns the row of a look: the incidence at the DEM's centre and
 // the longest reach anywhere on it.
 func lookReach(src dem.Source, look geometry.Look, found dem.Range, relief float64) (reachRow, error) {
+	if err := comesAbreast(src, look); err != nil {
+		return reachRow{}, err
+	}
 	o, err := overDEM(src, look)
 	if err != nil {
 		return reachRow{}, err
 	}
 	g := src.Grid()
 	centre := position(src, float64(g.Rows-1)/2, float64(g.Cols-1)/2, found.Min)
-	v, _ := o.view(centre)
+	v, seen := o.view(centre)
 	s := o.over(g, found.Min, found.Max, relief)
-	if s.seen == 0 || math.IsNaN(v.T) && o.platform != nil {
-		_, seen := o.view(centre)
+	if s.seen == 0 {
 		return reachRow{}, hint(fmt.Errorf("look %q does not see the DEM: %s", look.Name, o.why(centre, &v, seen)), "`foldshade looks --dem` shows the geometry of a look")
 	}
 	row := rowOf(g, v.Incidence, s.reach)

@@ -234,10 +234,20 @@ func (j *layersJob) compute(ctx context.Context, src *raster.DEM, looks []geomet
 	if err != nil {
 		return nil, err
 	}
+	for _, look := range looks {
+		if err := comesAbreast(src, look); err != nil {
+			return nil, err
+		}
+	}
 	if err := j.march(ctx, src, found, chosen, window, out); err != nil {
 		return nil, err
 	}
 	warnings := src.Warnings()
+	for i, look := range looks {
+		if out.tallies[i].total() == 0 {
+			warnings = append(warnings, fmt.Sprintf("look %q sees no ground of the area; `foldshade looks --dem` says why", look.Name))
+		}
+	}
 	warn(j.stderr, warnings)
 	// GDAL makes the rasters: give it the room that the marching took.
 	debug.FreeOSMemory()

@@ -95,6 +95,20 @@ func (o *geometryOf) why(p geometry.Geodetic, v *geometry.View, seen geometry.Se
 	return seen.String()
 }
 
+// comesAbreast refuses a look whose track never comes abreast of the DEM's centre.
+func comesAbreast(src dem.Source, look geometry.Look) error {
+	o, err := overDEM(src, look)
+	if err != nil || o.platform == nil || look.Kind == geometry.Tripod {
+		return err
+	}
+	g := src.Grid()
+	centre := position(src, float64(g.Rows-1)/2, float64(g.Cols-1)/2, 0)
+	if v, seen := o.view(centre); math.IsNaN(v.T) {
+		return hint(fmt.Errorf("look %q does not see the DEM: %s", look.Name, o.why(centre, &v, seen)), "`foldshade looks --dem` shows the geometry of a look")
+	}
+	return nil
+}
+
 // position turns a fractional cell position into a point at the DEM's height
 // there, or at the height given where it has none.
 func position(src dem.Source, row, col, otherwise float64) geometry.Geodetic {
@@ -164,7 +178,8 @@ func (r reach) or(o reach) reach {
 //
 //	x' = sqrt(r^2 - (y - relief)^2)
 //
-// and a lower one, nearer, at sqrt(r^2 - (y + relief)^2). The ground's own drop
+// and a lower one, nearer, at sqrt(r^2 - (y + relief)^2); for an antenna below the
+// point the other way round. The ground's own drop
 // over the distance, d^2 / 2R, counts as relief.
 func (o *geometryOf) reach(v *geometry.View, relief float64) reach {
 	r := reach{shadow: relief * math.Max(v.Incidence.Tan(), 0)}
@@ -181,8 +196,8 @@ func (o *geometryOf) reach(v *geometry.View, relief float64) reach {
 	at := func(y float64) float64 { return math.Sqrt(max(v.SlantRange*v.SlantRange-y*y, 0)) }
 	for range 3 {
 		drop := func(d float64) float64 { return relief + d*d/(2*geometry.SemiMajor) }
-		r.away = at(max(y-drop(r.away), 0)) - x
-		r.towards = x - at(y+drop(r.towards))
+		r.away = at(max(y-drop(r.away), -y-drop(r.away), 0)) - x
+		r.towards = x - at(max(y+drop(r.towards), drop(r.towards)-y))
 	}
 	return r
 }

@@ -437,8 +437,8 @@ func TestInspect(t *testing.T) {
 	assert.Equal(t, heights{682, 2543, 148885, 4151}, p.Heights)
 	// At 45 degrees tan and cot are 1: both reaches are the relief.
 	require.Len(t, p.Reach, 1)
-	assert.InDelta(t, 2543-682, p.Reach[0].Shadow, 1e-3)
-	assert.InDelta(t, 2543-682, p.Reach[0].Layover, 1e-3)
+	assert.InDelta(t, 2543-682, *p.Reach[0].Shadow, 1e-3)
+	assert.InDelta(t, 2543-682, *p.Reach[0].Layover, 1e-3)
 	assert.NotEmpty(t, p.Warnings)
 
 	got = call(t.Context(), "inspect", mountain)
