@@ -24,7 +24,7 @@ var Kinds = []Kind{Fixed, Orbit, Ephemeris, Flight, Tripod}
 
 // DrivenKinds lists the kinds that the program computes today. The looks of
 // the others are read and checked, then refused by whoever cannot drive them.
-var DrivenKinds = []Kind{Fixed, Orbit, Ephemeris, Flight}
+var DrivenKinds = []Kind{Fixed, Orbit, Ephemeris, Flight, Tripod}
 
 // Side is the side to which the radar looks, seen along the heading.
 type Side string
