@@ -119,7 +119,7 @@ const chainError = 0.04
 
 func TestChanceAgainstWholeTerrains(t *testing.T) {
 	t.Logf("seed %d", *walkSeed)
-	terrains, draws := 1000, 4000
+	terrains, draws := 600, 4000
 	if *walkFull {
 		terrains, draws = 10000, 40000
 	}

@@ -59,8 +59,12 @@ func sameAsCells(t *testing.T, m *dem.Memory, o mask.Options, cells []int, where
 
 func TestSitesOnCentresEqualTheLayers(t *testing.T) {
 	t.Logf("seed %d", *walkSeed)
-	for k := range 200 {
-		rng := rand.New(rand.NewPCG(*walkSeed, uint64(2000+k)))
+	scenes := 200
+	if *walkFull {
+		scenes *= 15
+	}
+	for k := range scenes {
+		rng := rand.New(rand.NewPCG(*walkSeed, uint64(1000+k)))
 		s := randomScene(rng)
 		var cells []int
 		for i := range s.terrain.Heights {
@@ -75,7 +79,7 @@ func TestSitesOnCentresEqualTheLayers(t *testing.T) {
 func TestMountainSitesEqualTheLayers(t *testing.T) {
 	m := mountain(t)
 	var cells []int
-	for i := 0; i < len(m.Heights); i += 383 {
+	for i := 0; i < len(m.Heights); i += 997 {
 		cells = append(cells, i)
 	}
 	for k, l := range mountainLooks {
