@@ -317,8 +317,8 @@ func (r *laneMargins) trackRanges(p *strip, u int) {
 	row := p.row(u)
 	for k := l.a; k < l.b; k++ {
 		q := p.place(k)
-		_, nearer := p.f.ln.view(&q, float64(row[k].nearer))
-		_, farther := p.f.ln.view(&q, float64(row[k].farther))
+		nearer := p.f.ln.viewR(&q, float64(row[k].nearer))
+		farther := p.f.ln.viewR(&q, float64(row[k].farther))
 		r.near[k], r.far[k] = float32(p.r[k]-nearer), float32(farther-p.r[k])
 	}
 }
@@ -332,11 +332,11 @@ func (r *laneMargins) trackRangesU(p *strip, u int) {
 		q := p.place(k)
 		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
 		if bits&1 == 0 {
-			_, nearer := p.f.ln.view(&q, float64(row[k].nearer))
+			nearer := p.f.ln.viewR(&q, float64(row[k].nearer))
 			r.nearU[k] = float32(p.r[k] - nearer)
 		}
 		if bits&2 == 0 {
-			_, farther := p.f.ln.view(&q, float64(row[k].farther))
+			farther := p.f.ln.viewR(&q, float64(row[k].farther))
 			r.farU[k] = float32(farther - p.r[k])
 		}
 	}
@@ -442,9 +442,9 @@ func (t *sheet) settle(f *field, wk *walker, u, v int, m lane) lane {
 func (w *walker) ranges(u int, h, nearer, farther float64) (above, below float64) {
 	_, s := w.y.at(u)
 	p := w.y.place(s)
-	_, r := w.y.ln.view(&p, h)
-	_, near := w.y.ln.view(&p, min(nearer, w.y.ln.rangeHeight(&p, 0)))
-	_, far := w.y.ln.view(&p, farther)
+	r := w.y.ln.viewR(&p, h)
+	near := w.y.ln.viewR(&p, min(nearer, w.y.ln.rangeHeight(&p, 0)))
+	far := w.y.ln.viewR(&p, farther)
 	return r - near, far - r
 }
 

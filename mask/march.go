@@ -400,11 +400,17 @@ func (p *strip) forwardSure(row []lines, l span) {
 
 // forwardLines fills the lines of one row that the forward march sets.
 func (p *strip) forwardLines(row []lines, l span) {
-	st := &p.fwd
+	st, ln := &p.fwd, p.f.ln
 	minShade, maxNearer, _ := p.f.limitLines()
 	for k := l.a; k < l.b; k++ {
-		row[k].shade = float32(max(p.shade(k, st.top[k]), minShade))
-		row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
+		if ln.fan != nil || math.IsInf(st.top[k], -1) {
+			row[k].shade = float32(max(p.shade(k, st.top[k]), minShade))
+			row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
+			continue
+		}
+		q := p.place(k)
+		row[k].shade = float32(max(ln.shadeHeight(&q, st.top[k]), minShade))
+		row[k].nearer = float32(min(ln.rangeHeight(&q, max(st.most[k], 0)), maxNearer))
 	}
 }
 
@@ -442,8 +448,13 @@ func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 		tk := st.top[k]
 		row[k].shade = float32(max(p.shade(k, tk), minShade))
 		row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
-		unsure[k].shade = float32(max(p.shade(k, st.topU[k]), minShade))
-		unsure[k].nearer = float32(min(p.equalRange(k, st.mostU[k]), maxNearer))
+		unsure[k] = unsureLines{shade: row[k].shade, nearer: row[k].nearer}
+		if st.topU[k] != tk {
+			unsure[k].shade = float32(max(p.shade(k, st.topU[k]), minShade))
+		}
+		if st.mostU[k] != st.most[k] {
+			unsure[k].nearer = float32(min(p.equalRange(k, st.mostU[k]), maxNearer))
+		}
 		if mk <= tk {
 			st.hid[k] = true
 			st.m[k], st.r[k] = mk, rk
@@ -563,6 +574,8 @@ func (p *strip) backwardUnsure(row []lines, unsure []unsureLines, l span) {
 			st.leastU[k] = min(st.leastU[k], near)
 		}
 		row[k].farther = float32(max(p.equalRange(k, st.least[k]), minFarther))
-		unsure[k].farther = float32(max(p.equalRange(k, st.leastU[k]), minFarther))
+		if unsure[k].farther = row[k].farther; st.leastU[k] != st.least[k] {
+			unsure[k].farther = float32(max(p.equalRange(k, st.leastU[k]), minFarther))
+		}
 	}
 }

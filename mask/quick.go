@@ -95,8 +95,8 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		row := q.p.row(u)
 		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
 	}
-	a, _ = q.y.see(s, a)
-	b, _ = q.y.see(s, b)
+	a = q.y.seeM(s, a)
+	b = q.y.seeM(s, b)
 	return around(a, b, settleShare/q.slackM)
 }
 
@@ -142,8 +142,8 @@ func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
 	if q.f.ln.fan != nil {
 		return around(q.laneRange(u, q.k, a), q.laneRange(u, q.next, b), settleShare/q.slackR)
 	}
-	_, x := q.y.see(s, float64(a))
-	_, y := q.y.see(s, float64(b))
+	x := q.y.seeR(s, float64(a))
+	y := q.y.seeR(s, float64(b))
 	return around(x, y, settleShare/q.slackR)
 }
 
@@ -169,10 +169,14 @@ func (w *walker) between(u, dir int, va, vb float64) (low, high float64) {
 // matters reports whether ground between two heights from distance s on, towards
 // the radar, may share the point's slant range or hide ground that reaches best.
 func (q *quickWalk) matters(s, low, high, best float64) bool {
-	top, _ := q.y.see(s, high)
-	_, most := q.y.see(s, low)
-	return !(most < q.r) || !(top < best) && !math.IsInf(best, -1)
+	top := q.y.seeM(s, high)
+	most := q.y.seeR(s, low)
+	return q.overhead(top) || !(most < q.r) || !(top < best) && !math.IsInf(best, -1)
 }
+
+// overhead reports whether ground at m stands above the antenna of a platform:
+// there slant range grows with height, and the look angle towards the radar.
+func (q *quickWalk) overhead(m float64) bool { return q.y.ln.places != nil && m > 0 }
 
 // lit reports whether no ground towards the radar reaches the point's m: none
 // that the DEM shows, or no unknown terrain.
@@ -181,7 +185,7 @@ func (q *quickWalk) lit(unknown bool) bool {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
 		_, high := q.between(u, -1, va, vb)
-		if top, _ := q.y.see(sa, high); !(top < q.m) {
+		if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
 			q.step(u, -1, va, vb, sa, sb)
 			for i := range q.pieces {
 				if g := &q.pieces[i]; g.m >= q.m && g.unknown == unknown {
@@ -282,7 +286,7 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 		// it: it lies below the line of equal range, the other above.
 		q.pieces = q.pieces[:0]
 		_, high := q.between(u, 1, va, vb)
-		if _, least := q.y.see(sa, high); !(least > q.r) {
+		if top, least := q.y.see(sa, high); !(least > q.r) || q.overhead(top) {
 			q.step(u, 1, va, vb, sa, sb)
 		} else {
 			hidden = false

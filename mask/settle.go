@@ -20,6 +20,7 @@ type ray struct {
 	from, to       int     // the rows for which the following hold
 	va, dv, sa, ds float64 // at row from, and the change for one row
 	pa, dp         place   // of a platform, the same
+	perDS          float64 // rows a metre
 }
 
 func newRay(ln *lanes, u, v int) ray {
@@ -53,6 +54,7 @@ func (y *ray) enter(u int) {
 		node := func(n int) place { return ln.places[n].plus(ln.places[n+1].minus(ln.places[n]), q) }
 		y.pa = node(n)
 		y.dp = place{}.plus(node(n+ln.nk).minus(y.pa), 1./laneStep)
+		y.perDS = 1 / y.ds
 	}
 	if ln.uniform {
 		y.va, y.dv = y.k+float64(ln.slope*(float64(y.from)-ln.mid)), ln.slope
@@ -68,16 +70,35 @@ func (y *ray) see(s, h float64) (m, r float64) {
 	return y.ln.view(&p, h)
 }
 
+// seeM and seeR are the halves of see.
+func (y *ray) seeM(s, h float64) float64 {
+	if y.ln.places == nil {
+		m, _ := y.ln.at(s, h)
+		return m
+	}
+	p := y.place(s)
+	return y.ln.viewM(&p, h)
+}
+
+func (y *ray) seeR(s, h float64) float64 {
+	if y.ln.places == nil {
+		_, r := y.ln.at(s, h)
+		return r
+	}
+	p := y.place(s)
+	return y.ln.viewR(&p, h)
+}
+
 // place returns the place at ground distance s.
 func (y *ray) place(s float64) place {
-	d := (s - y.sa) / y.ds
+	d := (s - y.sa) * y.perDS
 	for range 2 { // s may lie between other rows of the lattice than before
 		u := y.from + int(math.Floor(d))
 		if d >= 0 && u <= y.to || u < 0 || u/laneStep >= y.ln.nu-1 {
 			break
 		}
 		y.enter(u)
-		d = (s - y.sa) / y.ds
+		d = (s - y.sa) * y.perDS
 	}
 	return y.pa.plus(y.dp, d)
 }
@@ -88,10 +109,14 @@ func (y *ray) worth(sa, sb, h float64) (m, r float64) {
 	if y.ln.places == nil {
 		return y.ln.cot * (sb - sa), y.ln.tan * (sb - sa)
 	}
-	m0, r0 := y.see(sa, h)
-	m1, r1 := y.see(sb, h)
-	up, nearer := y.see(sa, h+1)
-	return (m1 - m0) / (up - m0), (r1 - r0) / (r0 - nearer)
+	// With X, Y of lens.view at sa and their change to sb: the change of Y / X,
+	// and of X^2 + Y^2, over that for a metre of height.
+	p, q := y.place(sa), y.place(sb)
+	h -= y.ln.datum
+	x0, y0 := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	dx, dy := q.x+float64(h*q.nx)-x0, q.y+float64(h*q.ny)-y0
+	m = (float64(dy*x0) - float64(y0*dx)) / (float64(p.ny*x0) - float64(p.nx*y0))
+	return m, -(float64(x0*dx) + float64(y0*dy)) / (float64(x0*p.nx) + float64(y0*p.ny))
 }
 
 // gain returns the change of m for a metre of height.
@@ -99,9 +124,10 @@ func (y *ray) gain(s, h float64) float64 {
 	if y.ln.places == nil {
 		return 1
 	}
-	a, _ := y.see(s, h)
-	b, _ := y.see(s, h+1)
-	return b - a
+	p := y.place(s)
+	h -= y.ln.datum
+	x, up := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	return y.ln.scale * (float64(p.ny*x) - float64(p.nx*up)) / (x * x)
 }
 
 // point is a point of the surface on a range line, or unknown terrain.

@@ -37,6 +37,25 @@ func (l *lens) view(p *place, h float64) (m, r float64) {
 	return l.scale * y / x, math.Sqrt(float64(x*x) + float64(y*y))
 }
 
+// viewM and viewR are the halves of view.
+func (l *lens) viewM(p *place, h float64) float64 {
+	h -= l.datum
+	x := p.x + float64(h*p.nx)
+	if x <= 0 {
+		return math.Inf(-1)
+	}
+	return l.scale * (p.y + float64(h*p.ny)) / x
+}
+
+func (l *lens) viewR(p *place, h float64) float64 {
+	h -= l.datum
+	x, y := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	if x <= 0 {
+		return math.Inf(-1)
+	}
+	return math.Sqrt(float64(x*x) + float64(y*y))
+}
+
 // shadeHeight returns the height at which a place has the given m.
 func (l *lens) shadeHeight(p *place, m float64) float64 {
 	t := m / l.scale
