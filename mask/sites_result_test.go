@@ -211,6 +211,24 @@ func TestShares(t *testing.T) {
 	assert.Contains(t, r.Reason, "its footprint is")
 }
 
+// A tripod looks at a footprint across the border of two of its fans of range
+// lines: level ground, all open, but for the radar's own cell.
+func TestFootprintAcrossFans(t *testing.T) {
+	m := testterrain.Sample(testterrain.Metric(61, 61, 10, 10, 0), func(_, _ float64) float64 { return 100 })
+	l := m.Frame.At(30, 30)
+	look := geometry.NewLook()
+	look.Name, look.Kind, look.Antenna = "tripod", geometry.Tripod, 40
+	look.Position = geometry.Place{Lon: l.Lon, Lat: l.Lat}
+	sites := []mask.Site{{Row: 15.2, Col: 15.2, Footprint: 60}, {Row: 45.3, Col: 44.9, Footprint: 60}, {Row: 15.5, Col: 44.5, Footprint: 35}, {Row: 30, Col: 30}}
+	got := evaluate(t, m, openEdge(), sites, look)
+	for _, r := range got[:3] {
+		assert.Equal(t, mask.Usable, r.Verdict, "%v: %v", r.Reason, r.Shares)
+		assert.Equal(t, mask.Shares{1: 1}, r.Shares)
+	}
+	assert.Equal(t, mask.NotSeen, got[3].Verdict)
+	assert.Regexp(t, "^Not seen: ", got[3].Reason)
+}
+
 // A place without ground is a result, not an error, and leaves the others
 // alone.
 func TestSitesWithoutGround(t *testing.T) {

@@ -364,7 +364,7 @@ func (r *sitesRunner) side(k int, p *ground) (*lanes, bool) {
 	for _, ln := range r.sides(k) {
 		u, v := ln.place(p.row, p.col)
 		d := u - ln.fan.u
-		if off := math.Abs(v - ln.fan.v); u >= float64(ln.firstRow()) && (off < d || off == d && ln.fan.rows) {
+		if u >= float64(ln.firstRow()) && math.Abs(v-ln.fan.v) <= d+onColumn { // a diagonal serves in either
 			return ln, true
 		}
 	}

@@ -87,7 +87,7 @@ func (w *sitesWorker) footprint(i, k int, res *SiteResult) {
 				continue
 			}
 			row, col := p.row+(l.ColE*nn-l.ColN*e)/det, p.col+(e*l.RowN-nn*l.RowE)/det
-			count[w.classAt(k, row, col, s.Height).Kind()]++
+			count[w.classAt(i, k, row, col).Kind()]++
 			all++
 		}
 	}
@@ -96,14 +96,26 @@ func (w *sitesWorker) footprint(i, k int, res *SiteResult) {
 	}
 }
 
-// classAt returns the class of a target over a place near those of the bundle.
-func (w *sitesWorker) classAt(k int, row, col, height float64) Class {
+// classAt returns the class of site i's target over another place of its
+// footprint.
+func (w *sitesWorker) classAt(i, k int, row, col float64) Class {
+	height := w.job.Sites[i].Height
 	p, err := groundAt(w.job.Source, &w.sheet, row, col)
 	if err != nil || p.where != OnGround {
 		return NoData
 	}
 	g := w.look(k, &p, height)
-	if ln, ok := w.side(k, &p); g.seen != geometry.InView || !ok || ln != w.field.ln || !w.trace(p.row, p.col) {
+	ln, ok := w.side(k, &p)
+	if g.seen != geometry.InView || !ok {
+		return NoData
+	}
+	if ln != w.field.ln { // a tripod sees the footprint in two fans
+		_, places, extra := w.windows([]int{i})
+		if w.load(ln, places, extra) != nil {
+			return NoData
+		}
+	}
+	if !w.trace(p.row, p.col) {
 		return NoData
 	}
 	f := w.judge.of(&w.line, w.line.target(height))
