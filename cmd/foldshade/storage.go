@@ -31,12 +31,16 @@ var storages = map[mask.Layer]storage{
 	mask.Clearance:        {quantum: 1.0 / 64},
 	mask.FoldMargin:       {quantum: 1.0 / 64},
 	mask.Foreshortening:   {quantum: 1.0 / 2048},
+	mask.Returns:          {nearest: true},
+	mask.Share:            {quantum: 1.0 / 4096, nearest: true},
 	mask.LineOfSight:      {quantum: 1.0 / (1 << 16)},
 	mask.Downslope:        {quantum: 1.0 / (1 << 14)},
 	mask.GroundResolution: {quantum: 1.0 / 1024, nearest: true},
 	mask.AreaFactor:       {quantum: 1.0 / 1024, nearest: true},
 	mask.CriticalBaseline: {quantum: 1.0 / 64, nearest: true},
 	mask.AmbiguityHeight:  {quantum: 1.0 / 1024, nearest: true},
+	mask.Returns:          {quantum: 1, nearest: true},
+	mask.Share:            {quantum: 1.0 / 2048, nearest: true},
 }
 
 // rasterLayer says what the file of a layer of a look holds.
