@@ -31,8 +31,6 @@ var storages = map[mask.Layer]storage{
 	mask.Clearance:        {quantum: 1.0 / 64},
 	mask.FoldMargin:       {quantum: 1.0 / 64},
 	mask.Foreshortening:   {quantum: 1.0 / 2048},
-	mask.Returns:          {nearest: true},
-	mask.Share:            {quantum: 1.0 / 4096, nearest: true},
 	mask.LineOfSight:      {quantum: 1.0 / (1 << 16)},
 	mask.Downslope:        {quantum: 1.0 / (1 << 14)},
 	mask.GroundResolution: {quantum: 1.0 / 1024, nearest: true},
@@ -41,8 +39,6 @@ var storages = map[mask.Layer]storage{
 	mask.AmbiguityHeight:  {quantum: 1.0 / 1024, nearest: true},
 	mask.Returns:          {quantum: 1, nearest: true},
 	mask.Share:            {quantum: 1.0 / 2048, nearest: true},
-}
-
 // rasterLayer says what the file of a layer of a look holds.
 func rasterLayer(info mask.LayerInfo, look geometry.Look, metadata map[string]string) raster.Layer {
 	l := raster.Layer{
