@@ -39,6 +39,8 @@ var storages = map[mask.Layer]storage{
 	mask.AmbiguityHeight:  {quantum: 1.0 / 1024, nearest: true},
 	mask.Returns:          {quantum: 1, nearest: true},
 	mask.Share:            {quantum: 1.0 / 2048, nearest: true},
+}
+
 // rasterLayer says what the file of a layer of a look holds.
 func rasterLayer(info mask.LayerInfo, look geometry.Look, metadata map[string]string) raster.Layer {
 	l := raster.Layer{
