@@ -86,10 +86,7 @@ func ratioColumn(name, title string, n int, get func(r *mask.SiteResult) float64
 // siteColumns returns the columns of the sites themselves; the file writes one
 // row a site.
 func (r *siteReport) siteColumns() []siteColumn {
-	coordinates := 3
-	if r.src.Grid().Geographic {
-		coordinates = 9
-	}
+	coordinates := r.mapDecimals()
 	return []siteColumn{
 		textColumn("site", func(p *pair) string { return p.site.Name }),
 		countColumn("record", func(p *pair) int { return p.site.Record }),
@@ -103,6 +100,15 @@ func (r *siteReport) siteColumns() []siteColumn {
 		numberColumn("ground", "", "m", 2, func(p *pair) float64 { return p.result.Ground }),
 		textColumn("problem", func(p *pair) string { return p.problem }),
 	}
+}
+
+// mapDecimals is how many decimals map coordinates have: millimetres of a map
+// in metres, tenths of a millimetre of one in degrees.
+func (r *siteReport) mapDecimals() int {
+	if r.src.Grid().Geographic {
+		return 9
+	}
+	return 3
 }
 
 // resultColumns returns the columns of a site under a look, after those of the

@@ -41,6 +41,7 @@ func (r *siteReport) writeSheet(ctx context.Context, w io.Writer) error {
 		Title: cmp.Or(r.title, "Sites of "+filepath.Base(r.sites.Name)), DEM: r.label(), Command: shellJoin(r.command),
 		Software: fmt.Sprintf("foldshade %s, GDAL %s", toolVersion(), raster.GDALVersion()),
 		Made:     time.Now().UTC().Truncate(time.Second), Facts: r.facts(), Warnings: r.warnings,
+		MapDecimals: r.mapDecimals(),
 	}
 	for i := range r.looks {
 		l := &r.looks[i]

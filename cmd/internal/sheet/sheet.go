@@ -28,6 +28,8 @@ type Sheet struct {
 	// Left is how many more sites there are than the sheet shows.
 	Left int
 	Maps []Map
+	// MapDecimals is how many decimals map coordinates are shown with.
+	MapDecimals int
 	// Quantities are the numbers of a pair, in the order of the files. Those
 	// that no pair of the sheet has a value for are not shown.
 	Quantities []Quantity

@@ -72,9 +72,9 @@ type mapView struct {
 // short are the quantities of the table of each site, in its order, with
 // titles for narrow columns; the long table has all.
 var short = []Quantity{
-	{Key: "clearance", Title: "Clear­ance"}, {Key: "fold_margin", Title: "Fold margin"}, {Key: "mast_to_clear", Title: "Mast to clear"},
+	{Key: "clearance", Title: "Clear\u00adance"}, {Key: "fold_margin", Title: "Fold margin"}, {Key: "mast_to_clear", Title: "Mast to clear"},
 	{Key: "p_open", Title: "P (open)"}, {Key: "to_radar", Title: "Radar at, true"}, {Key: "to_radar_grid", Title: "Radar at, grid"},
-	{Key: "elevation", Title: "Eleva­tion"}, {Key: "incidence", Title: "Inci­dence"}, {Key: "local_incidence", Title: "Local inc."},
+	{Key: "elevation", Title: "Eleva\u00adtion"}, {Key: "incidence", Title: "Inci\u00addence"}, {Key: "local_incidence", Title: "Local inc."},
 }
 
 func newView(s *Sheet) *view {
