@@ -76,11 +76,10 @@ type SweepResult struct {
 	Cells int64 // that count and have a height
 	// Looks are the pairs, incidence by incidence within each azimuth.
 	Looks []LookShare
-	// Coverage[n] is the best set of n+1 looks by the cells that are open in at
-	// least one of them. TwoDirections[n] is the best set of n+2 looks by the
-	// cells that are open in at least two that separate east and up; it is
-	// empty when no two looks do on any cell. A set that gains nothing is left
-	// out, and so are those after it.
+	// Coverage holds the best sets of one look and more by the cells that are open
+	// in at least one of them, TwoDirections those of two looks and more by the
+	// cells that are open in at least two that separate east and up, by size. A
+	// size at which one look more gains nothing is left out.
 	Coverage, TwoDirections []LookSet
 }
 

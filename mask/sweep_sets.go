@@ -133,6 +133,10 @@ func (s *setSearch) extend(ctx context.Context, sets []LookSet, first, most int,
 			next = LookSet{Looks: append(slices.Clone(last.Looks), one.Looks[0]), Cells: one.Cells}
 		}
 		if next.Cells <= last.Cells {
+			// One look more may do nothing for two directions where two more do.
+			if ok && g.two {
+				continue
+			}
 			break
 		}
 		sets = append(sets, next)
