@@ -6,7 +6,6 @@ import (
 	"math"
 	"slices"
 
-	"foldshade/dem"
 	"foldshade/geometry"
 )
 
@@ -68,9 +67,9 @@ func (w *sitesWorker) profile(distance float64) (*Profile, error) {
 	if !ok {
 		return nil, fmt.Errorf("site %q stands right at the radar, so there is no profile", w.job.Sites[0].Name)
 	}
+	_, places, extra := w.windows([]int{0})
 	// Every point of the profile needs a reach of its own.
-	win := dem.Window{Row: int(p.row), Col: int(p.col), Rows: 1, Cols: 1}
-	if err := w.load(ln, win, distance/ln.cotMost+w.job.Sites[0].Height); err != nil {
+	if err := w.load(ln, places, distance/ln.cotMost+extra); err != nil {
 		return nil, err
 	}
 	if !w.trace(p.row, p.col) {

@@ -391,3 +391,85 @@ func TestProfileByHand(t *testing.T) {
 	_, err = mask.SiteProfile(context.Background(), job, 1, 1, 200)
 	assert.ErrorContains(t, err, `site "a" has no ground`)
 }
+
+// anySites draws sites of all sorts: with masts, footprints and cells, on the
+// grid and beside it.
+func anySites(rng *rand.Rand, g *dem.Grid) []mask.Site {
+	sites := make([]mask.Site, 8)
+	for i := range sites {
+		s := randomSite(rng, g)
+		if rng.IntN(4) == 0 {
+			l := g.At(s.Row, s.Col)
+			s.Footprint = 4 * rng.Float64() * math.Hypot(l.ColE, l.ColN)
+		}
+		if rng.IntN(5) == 0 {
+			s.Cells = []mask.Cell{{Row: rng.IntN(g.Rows), Col: rng.IntN(g.Cols)}, {Row: rng.IntN(g.Rows), Col: rng.IntN(g.Cols)}}
+		}
+		if rng.IntN(9) == 0 {
+			s.Row = float64(g.Rows) * 3 * (rng.Float64() - 0.5)
+		}
+		sites[i] = s
+	}
+	return sites
+}
+
+// Whatever the grid, the look and the sites: shares and probabilities sum to 1,
+// classes are known ones, reasons are sentences, and profiles and skies come
+// out whole.
+func TestSitesAnywhere(t *testing.T) {
+	t.Logf("seed %d", *walkSeed)
+	known := map[mask.Class]bool{}
+	for _, c := range mask.Classes {
+		known[c.Code] = true
+	}
+	evaluated := 0
+	for k := range 60 {
+		rng := rand.New(rand.NewPCG(*walkSeed, uint64(11000+k)))
+		s := randomScene(rng)
+		g := s.terrain.Frame
+		span, err := dem.Scan(context.Background(), s.terrain)
+		require.NoError(t, err)
+		at := func() geometry.Place {
+			l := g.At(rng.Float64()*float64(g.Rows-1), rng.Float64()*float64(g.Cols-1))
+			return geometry.Place{Lon: l.Lon, Lat: l.Lat}
+		}
+		looks := movingLooks(s.terrain)
+		looks[1].Start, looks[1].End, looks[1].Height = at(), at(), 4000
+		looks[2].Position, looks[2].Antenna = at(), 20
+		for _, look := range append(looks, s.look) {
+			job := mask.SitesJob{Source: s.terrain, Range: span, Looks: []geometry.Look{look}, Sites: anySites(rng, g), Options: s.options,
+				DEMError: mask.DEMError{Sigma: 3, Correlation: 30 * float64(rng.IntN(2)), Draws: 30}}
+			got, err := mask.EvaluateSites(context.Background(), job)
+			if err != nil { // a track that does not pass the DEM, a tripod on a hole
+				assert.NotEqual(t, geometry.Fixed, look.Kind, "%v: %v", s, err)
+				continue
+			}
+			for i, r := range got {
+				where := fmt.Sprintf("grid %d: %v, %v, site %+v: %+v", k, s, look.Kind, job.Sites[i], r)
+				sum := 0.0
+				for _, x := range r.Shares {
+					sum += x
+				}
+				assert.InDelta(t, 1, sum, 1e-9, where)
+				if c := r.Chance; c.Open == c.Open {
+					assert.InDelta(t, 1, c.Open+c.Folded+c.Hidden+c.Undetermined, 1e-9, where)
+				}
+				assert.True(t, known[r.Class] && known[r.Layover] && known[r.Shadow], where)
+				assert.Regexp(t, `^[A-Z].*[^.]\.$`, r.Reason, where)
+				assert.Contains(t, mask.Verdicts, r.Verdict, where)
+				evaluated++
+				p, err := mask.SiteProfile(context.Background(), job, i, 0, 50)
+				if r.Where != mask.OnGround {
+					assert.Error(t, err, where)
+				} else if err == nil {
+					assert.Zero(t, p.Points[p.Site].Distance, where)
+				}
+			}
+		}
+		job := mask.SitesJob{Source: s.terrain, Range: span, Sites: []mask.Site{randomSite(rng, g)}, Options: s.options}
+		sky, err := mask.SkyOfLooks(context.Background(), job, []geometry.Angle{0, 1, 2, 3, 4, 5, 6})
+		require.NoError(t, err)
+		require.Len(t, sky[0], 7)
+	}
+	assert.Greater(t, evaluated, 1000)
+}
