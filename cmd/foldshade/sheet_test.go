@@ -20,6 +20,8 @@ import (
 	"github.com/chromedp/chromedp"
 	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
+
+	"foldshade/cmd/internal/demo"
 )
 
 // shots is where to leave pictures of the sheet for people to look at.
@@ -144,15 +146,15 @@ const measure = `(() => {
 func makeSheet(t *testing.T) (string, []map[string]any) {
 	t.Helper()
 	dir := t.TempDir()
-	demo := filepath.Join(dir, "demo")
-	got := call(t.Context(), "demo", "--out", demo)
-	require.Equal(t, exitDone, got.code, got.errOut)
-	text, err := os.ReadFile(filepath.Join(demo, demoSites))
+	valley, err := demo.New(demo.Seed)
 	require.NoError(t, err)
+	require.NoError(t, writeValley(valley, dir))
+	looks := filepath.Join(dir, demoLooks)
+	require.NoError(t, os.WriteFile(looks, []byte(demo.Looks), 0o600))
 	awkward := strings.NewReplacer(
 		`"Pravell"`, `"<script>alert(1)</script> & \"Pravell\" 'quoted'"`,
 		`"Tovary Pass"`, `"`+strings.Repeat("Tovarypassover", 12)+`"`,
-		`"Isvarn Glacier"`, `"Isvärn ﬁrn 氷河 🏔"`).Replace(string(text))
+		`"Isvarn Glacier"`, `"Isvärn ﬁrn 氷河 🏔"`).Replace(valley.GeoJSON())
 	// An area, and a site off the map.
 	awkward = strings.Replace(awkward, `"features": [`, `"features": [
 		{"type":"Feature","properties":{"name":"Field"},"geometry":{"type":"Polygon","coordinates":[[[-40.11,47.0],[-40.105,47.0],[-40.105,47.004],[-40.11,47.0]]]}},
@@ -160,7 +162,7 @@ func makeSheet(t *testing.T) (string, []map[string]any) {
 	sites := filepath.Join(dir, "sites.geojson")
 	require.NoError(t, os.WriteFile(sites, []byte(awkward), 0o600))
 	sheet := filepath.Join(dir, "sheet.html")
-	got = call(t.Context(), "sites", filepath.Join(demo, demoDEM), "--sites", sites, "--looks", filepath.Join(demo, demoLooks),
+	got := call(t.Context(), "sites", filepath.Join(dir, demoDEM), "--sites", sites, "--looks", looks,
 		"--look", "name=x,incidence=45,azimuth=30,frequency_ghz=9.6,bandwidth_mhz=150,slant_range_km=8", "--look", "name=a-name-that-is-as-long-as-names-get-in-plans,incidence=29,azimuth=260",
 		"--dem-sigma", "3", "--dem-correlation", "150", "--reflector-legs", "0.5,1", "--clutter=-12", "--azimuth-resolution", "2", "--reflector-error", "0.2",
 		"--sheet", sheet, "--json")
