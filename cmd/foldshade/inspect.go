@@ -204,6 +204,15 @@ func rounded(v float64, decimals int) float64 {
 	return math.Round(v*power) / power
 }
 
+// shiftText says what made the heights ellipsoidal.
+func shiftText(s *raster.HeightShift) string {
+	name := s.Name
+	if s.Source == "offset" {
+		name = "the given offset"
+	}
+	return fmt.Sprintf("made ellipsoidal by %s: %+.2f to %+.2f m added", name, s.Least, s.Most)
+}
+
 func (p *inspection) print(w io.Writer) {
 	f := p.DEM
 	all := p.Heights.Valid + p.Heights.Holes
@@ -216,11 +225,7 @@ func (p *inspection) print(w io.Writer) {
 		vertical = "not stated; taken as ellipsoidal"
 	}
 	if s := f.HeightShift; s != nil {
-		name := s.Name
-		if s.Source == "offset" {
-			name = "the given offset"
-		}
-		vertical = fmt.Sprintf("made ellipsoidal by %s: %+.2f to %+.2f m added", name, s.Least, s.Most)
+		vertical = shiftText(s)
 	}
 	c := f.Centre
 	printPairs(w, [][2]string{

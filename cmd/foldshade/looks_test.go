@@ -296,6 +296,12 @@ func TestGeoidOnTheCommandLine(t *testing.T) {
 	assert.Empty(t, raised.Warnings)
 	got := call(t.Context(), "inspect", name, "--geoid", "/usr/share/proj/egm96_15.gtx")
 	assert.Contains(t, got.out, "made ellipsoidal by /usr/share/proj/egm96_15.gtx: +4")
+	out := filepath.Join(t.TempDir(), "out")
+	got = call(t.Context(), "layers", name, "--look", "name=a,"+look, "--geoid", "/usr/share/proj/egm96_15.gtx", "--only", "slant-range", "--out", out)
+	require.Equal(t, exitDone, got.code, got.errOut)
+	text, err := exec.Command("gdalinfo", filepath.Join(out, "a", "slant-range.tif")).Output()
+	require.NoError(t, err)
+	assert.Contains(t, string(text), "heights=made ellipsoidal by /usr/share/proj/egm96_15.gtx")
 	got = call(t.Context(), "inspect", name, "--height-offset", "-12.5")
 	assert.Contains(t, got.out, "made ellipsoidal by the given offset: -12.50 to -12.50 m")
 }

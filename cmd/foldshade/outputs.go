@@ -42,6 +42,9 @@ func newOutputs(j *layersJob, src *raster.DEM, looks []geometry.Look, chosen []m
 func (o *outputs) open(i int, j *layersJob, src *raster.DEM, look geometry.Look, chosen []mask.Layer, window dem.Window) error {
 	o.writers[i] = map[mask.Layer]*raster.Writer{}
 	metadata := fileMetadata(j.command, j.label(), look, j.options)
+	if s := src.Facts().HeightShift; s != nil {
+		metadata["heights"] = shiftText(s)
+	}
 	for _, l := range chosen {
 		info, _ := mask.Info(l)
 		w, err := o.set.Writer(path.Join(o.folder, look.Name), rasterLayer(info, look, metadata), src.Grid(), window)
