@@ -73,9 +73,11 @@ func (a *antenna) see(p geometry.ECEF) (angle, r float64) {
 }
 
 // seenAs is one sample of a trace: look angle and slant range, those of the
-// ceiling and the range of the lowest ground where there is no surface.
+// ceiling and the range of the lowest ground where there is no surface. close says
+// that it lies less than a row away: the margins count such ground only where it
+// hides or folds.
 type seenAs struct {
-	known             bool
+	known, close      bool
 	angle, r, lowestR float64
 }
 
@@ -87,7 +89,9 @@ func (w *trackWalker) trace(to []seenAs, a *antenna, row, col int, sign float64)
 	cell := min(math.Hypot(here.ColE, here.ColN), math.Hypot(here.RowE, here.RowN))
 	r, c := float64(row), float64(col)
 	h := w.heights[row*w.cols+col]
-	for {
+	dr, dc := w.rowAndColumn(a, row, col)
+	samples := w.perCell / cell / max(math.Abs(dr), math.Abs(dc)) // a row
+	for k := 1; ; k++ {
 		// A step level and at right angles to the travel, and from there along
 		// the travel's level part back into the plane.
 		p := w.point(r, c, h)
@@ -116,7 +120,7 @@ func (w *trackWalker) trace(to []seenAs, a *antenna, row, col int, sign float64)
 				if angle <= 0 {
 					return to
 				}
-				to = append(to, seenAs{known: true, angle: angle, r: s})
+				to = append(to, seenAs{known: true, close: float64(k) < samples-0.5, angle: angle, r: s})
 				continue
 			}
 		}
@@ -134,6 +138,14 @@ func (w *trackWalker) trace(to []seenAs, a *antenna, row, col int, sign float64)
 		}
 		to = append(to, q)
 	}
+}
+
+// rowAndColumn returns the rows and columns of a metre along the trace.
+func (w *trackWalker) rowAndColumn(a *antenna, row, col int) (dr, dc float64) {
+	v := w.point(float64(row), float64(col), 0).ToENU(a.travel)
+	level := math.Hypot(v.East, v.North)
+	r, c := w.move(float64(row), float64(col), v.North/level, -v.East/level)
+	return r - float64(row), c - float64(col)
 }
 
 // move goes metres east and north.
@@ -185,7 +197,8 @@ func (w *trackWalker) at(row, col int, buf []seenAs) (out trackAnswer) {
 	out.worthM, out.worthR = cell/view.Incidence.Tan(), cell*view.Incidence.Sin()
 	near := w.trace(buf[:0], &a, row, col, -1)
 	top, unknown := -inf, -inf // running maxima of the look angle
-	partner, sure, may := -inf, false, false
+	sure, may := false, false
+	topFar, nearFar, nearAny := -inf, -inf, -inf // of ground at least a row away, and of all
 	for k := len(near) - 1; k >= 0; k-- {
 		q := near[k]
 		if !q.known {
@@ -195,13 +208,27 @@ func (w *trackWalker) at(row, col int, buf []seenAs) (out trackAnswer) {
 		}
 		lit := q.angle > top
 		top = max(top, q.angle)
+		if !q.close {
+			topFar = max(topFar, q.angle)
+		}
 		if lit {
-			partner = max(partner, q.r)
+			nearAny = max(nearAny, q.r)
+			if !q.close {
+				nearFar = max(nearFar, q.r)
+			}
 			may = may || q.r >= r0
 			sure = sure || q.r >= r0 && q.angle > unknown
 		}
 	}
-	out.m, out.r = w.mast(&a, own, top), r0-partner
+	if nearAny < r0 {
+		nearAny = nearFar
+	}
+	if top < angle0 {
+		topFar = min(top, topFar)
+	} else {
+		topFar = top
+	}
+	out.m, out.r = w.mast(&a, own, topFar), r0-nearAny
 	switch {
 	case top >= angle0:
 		out.kind, out.shadowKind = kindHidden, kindHidden
@@ -220,7 +247,9 @@ func (w *trackWalker) at(row, col int, buf []seenAs) (out trackAnswer) {
 		}
 		if q.angle > top {
 			top = q.angle
-			out.r = min(out.r, q.r-r0)
+			if !q.close || q.r <= r0 {
+				out.r = min(out.r, q.r-r0)
+			}
 			may = may || q.r <= r0
 			sure = sure || q.r <= r0 && q.angle > unknown
 		}
@@ -313,6 +342,53 @@ func compareTrack(t testing.TB, w *trackWalker, got *raster, answers map[int]tra
 			}
 			c.lone = append(c.lone, fmt.Sprintf("row %d, column %d: engine %d, shadow layer %d; walk %d, %d (%+.4g m clear, %+.4g m from a fold); walk in thousandths %d, %d (%+.4g, %+.4g)",
 				row, col, have.kind, have.shadowKind, a.kind, a.shadowKind, a.m, a.r, f.kind, f.shadowKind, f.m, f.r))
+		}
+	}
+	return c
+}
+
+// marginTally counts margins that are held against the walk, and those farther
+// from it than a row's worth of level ground.
+type marginTally struct{ clear, clearOff, mast, mastOff, fold, foldOff int }
+
+func (c *marginTally) add(o marginTally) {
+	c.clear, c.clearOff, c.mast, c.mastOff = c.clear+o.clear, c.clearOff+o.clearOff, c.mast+o.mast, c.mastOff+o.mastOff
+	c.fold, c.foldOff = c.fold+o.fold, c.foldOff+o.foldOff
+}
+
+func (c marginTally) String() string {
+	return fmt.Sprintf("clearance near zero %d, off %d; masts in shadow %d, off %d; fold margin near zero %d, off %d",
+		c.clear, c.clearOff, c.mast, c.mastOff, c.fold, c.foldOff)
+}
+
+// compareMargins compares clearance where the walk finds it small, within a row's
+// worth, or negative, and fold margin where it is small; of cells of which both
+// know the kind.
+func compareMargins(w *trackWalker, got *raster, answers map[int]trackAnswer) (c marginTally) {
+	for i, a := range answers {
+		row, col := i/w.cols, i%w.cols
+		kind := got.kind(mask.LayoverLayer, row, col)
+		if kind == kindUnsure || kind == kindNone || a.kind == kindUnsure || a.kind == kindNone {
+			continue
+		}
+		miss := math.Abs(float64(got.values[mask.Clearance][0][i]) - a.m)
+		switch {
+		case a.m <= 0:
+			c.mast++
+			if !(miss <= a.worthM) {
+				c.mastOff++
+			}
+		case a.m < a.worthM:
+			c.clear++
+			if !(miss <= a.worthM) {
+				c.clearOff++
+			}
+		}
+		if a.kind != kindHidden && kind != kindHidden && math.Abs(a.r) < a.worthR {
+			c.fold++
+			if !(math.Abs(float64(got.values[mask.FoldMargin][0][i])-a.r) <= a.worthR) {
+				c.foldOff++
+			}
 		}
 	}
 	return c

@@ -78,6 +78,7 @@ func TestPlatformsAgainstWalk(t *testing.T) {
 	require.NoError(t, err)
 	wanted := func(i int) bool { return *walkFull && i%23 == 0 || i%trackSample == 0 }
 	var all tally
+	var margins marginTally
 	for k, s := range []struct {
 		terrain *dem.Memory
 		look    geometry.Look
@@ -104,14 +105,20 @@ func TestPlatformsAgainstWalk(t *testing.T) {
 		require.NoError(t, err)
 		w := newTrackWalker(s.terrain, span, s.look, p, o)
 		got := march(t, s.terrain, s.terrain.Frame.Whole(), marginLayers, o, s.look)
-		tally := compareTrack(t, w, &got[0], w.every(wanted))
-		t.Logf("%d, %s: %v", k, s.look.Name, tally)
+		answers := w.every(wanted)
+		tally := compareTrack(t, w, &got[0], answers)
+		margin := compareMargins(w, &got[0], answers)
+		t.Logf("%d, %s: %v; %v", k, s.look.Name, tally, margin)
+		margins.add(margin)
 		all.add(tally)
 		assert.LessOrEqual(t, float64(tally.differ), max(mountainDiffer*float64(tally.determined), 1), "%s: cells of another kind", s.look.Name)
 		assert.Empty(t, tally.lone, "%s: differing cells alone", s.look.Name)
 	}
-	t.Logf("all: %v", all)
+	t.Logf("all: %v; %v", all, margins)
 	assert.LessOrEqual(t, float64(all.differ), mountainDiffer*float64(all.determined), "cells of another kind")
+	off := margins.clearOff + margins.mastOff + margins.foldOff
+	assert.LessOrEqual(t, float64(off), mountainDiffer*float64(margins.clear+margins.mast+margins.fold), "margins off by more than a row's worth")
+	assert.Greater(t, margins.mast, 100)
 	assert.LessOrEqual(t, float64(all.guessed), mountainGuessed*float64(all.cells), "cells undetermined in the walk only")
 	assert.LessOrEqual(t, float64(all.timid), mountainTimid*float64(all.cells), "cells undetermined in the engine only")
 }
