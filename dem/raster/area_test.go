@@ -80,12 +80,12 @@ func TestReadAreaByCentres(t *testing.T) {
 	assert.Equal(t, cells, a.Cells)
 }
 
-// TestReadAreaOtherCRS: the same ground in longitude and latitude. Corners by
-// PROJ's cs2cs, EPSG:32632 to EPSG:4326 (through GDAL).
+// TestReadAreaOtherCRS: a square in longitude and latitude. By gdaltransform
+// (PROJ), EPSG:4326 to EPSG:32632, its south-west corner is at 600320.3 E,
+// 5198917.4 N, its north-east corner at 600695.3 E, 5199257.1 N.
 func TestReadAreaOtherCRS(t *testing.T) {
 	square := `{"type":"Feature","properties":{},"geometry":{"type":"Polygon","coordinates":[[[%s],[%s],[%s],[%s],[%s]]]}}`
 	corner := func(lon, lat float64) string { return fmt.Sprintf("%.9f,%.9f", lon, lat) }
-	// Around the middle of the grid, 601000 E 5199250 N: 10.3208 E, 46.9376 N.
 	a := corner(10.318, 46.9362)
 	text := fmt.Sprintf(square, a, corner(10.323, 46.9362), corner(10.323, 46.9392), corner(10.318, 46.9392), a)
 	area, err := ReadArea(writeArea(t, "area.geojson", text), areaGrid())
@@ -94,6 +94,12 @@ func TestReadAreaOtherCRS(t *testing.T) {
 	// m: 126932 m2 or 203.1 cells of 625 m2; the outline of 1428 m may gain or
 	// lose half a cell's width along a part of it.
 	assert.InDelta(t, 203, float64(area.Cells), 8)
+	// The sides lean against the grid by the convergence, 0.97 degrees: 6 m.
+	w := area.Window
+	assert.InDelta(t, (600320.3-600000)/25, w.Col, 1.3)
+	assert.InDelta(t, (600695.3-600000)/25, w.Col+w.Cols, 1.3)
+	assert.InDelta(t, (5200000-5199257.1)/25, w.Row, 1.3)
+	assert.InDelta(t, (5200000-5198917.4)/25, w.Row+w.Rows, 1.3)
 }
 
 func TestReadAreaRefuses(t *testing.T) {
