@@ -423,7 +423,7 @@ func TestSitesAnywhere(t *testing.T) {
 		known[c.Code] = true
 	}
 	evaluated := 0
-	for k := range 60 {
+	for k := range 25 {
 		rng := rand.New(rand.NewPCG(*walkSeed, uint64(11000+k)))
 		s := randomScene(rng)
 		g := s.terrain.Frame
@@ -471,5 +471,5 @@ func TestSitesAnywhere(t *testing.T) {
 		require.NoError(t, err)
 		require.Len(t, sky[0], 7)
 	}
-	assert.Greater(t, evaluated, 1000)
+	assert.Greater(t, evaluated, 400)
 }

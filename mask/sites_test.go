@@ -83,8 +83,11 @@ func TestMountainSitesEqualTheLayers(t *testing.T) {
 		cells = append(cells, i)
 	}
 	for k, l := range mountainLooks {
+		if k%2 == 0 && !*walkFull {
+			continue
+		}
 		o := mask.DefaultOptions()
-		o.OpenEdge = k%2 == 1
+		o.OpenEdge = k%4 == 1
 		look := fixedLook(l.incidence*deg, l.azimuth*deg)
 		sameAsCells(t, m, o, cells, look.String(), look)
 	}
