@@ -331,19 +331,11 @@ func (r *siteReport) vectorLayer(name string, columns []siteColumn, rows int, at
 
 // The elements of a KML document (OGC 12-007r2) that the sites need.
 type (
-	kmlRoot struct {
-		XMLName  xml.Name `xml:"http://www.opengis.net/kml/2.2 kml"`
-		Document kmlDocument
-	}
-	kmlDocument struct {
-		Name    string      `xml:"name"`
-		Styles  []kmlStyle  `xml:"Style"`
-		Folders []kmlFolder `xml:"Folder"`
-	}
 	kmlStyle struct {
-		ID   string   `xml:"id,attr"`
-		Icon *kmlIcon `xml:"IconStyle"`
-		Line *kmlLine `xml:"LineStyle"`
+		XMLName xml.Name `xml:"Style"`
+		ID      string   `xml:"id,attr"`
+		Icon    *kmlIcon `xml:"IconStyle"`
+		Line    *kmlLine `xml:"LineStyle"`
 	}
 	kmlIcon struct {
 		Color string  `xml:"color"`
@@ -353,11 +345,8 @@ type (
 		Color string  `xml:"color"`
 		Width float64 `xml:"width"`
 	}
-	kmlFolder struct {
-		Name  string     `xml:"name"`
-		Marks []kmlPlace `xml:"Placemark"`
-	}
 	kmlPlace struct {
+		XMLName     xml.Name   `xml:"Placemark"`
 		Name        string     `xml:"name"`
 		Description string     `xml:"description,omitempty"`
 		Style       string     `xml:"styleUrl"`
@@ -381,39 +370,75 @@ var kmlColors = map[mask.Verdict]string{
 	mask.UndeterminedThere: "ff545a5d", mask.NotSeen: "ff726a5d",
 }
 
+// kmlSpace is the name space of KML.
+const kmlSpace = "http://www.opengis.net/kml/2.2"
+
+// kmlWriter writes a document piece by piece and keeps the first error.
+type kmlWriter struct {
+	*xml.Encoder
+	err error
+}
+
+func (k *kmlWriter) add(piece any) {
+	if k.err == nil {
+		k.err = k.Encode(piece)
+	}
+}
+
+// within writes an element around what inside writes, with a name first.
+func (k *kmlWriter) within(element, name string, inside func()) {
+	start := xml.StartElement{Name: xml.Name{Local: element}}
+	if k.err == nil {
+		k.err = k.EncodeToken(start)
+	}
+	if k.err == nil {
+		k.err = k.EncodeElement(name, xml.StartElement{Name: xml.Name{Local: "name"}})
+	}
+	inside()
+	if k.err == nil {
+		k.err = k.EncodeToken(start.End())
+	}
+}
+
 // writeKML writes a folder a look with a placemark a site, and the lines to
 // what hides or folds it. Every value is in the placemark's data.
 func (r *siteReport) writeKML(w io.Writer) error {
-	d := kmlDocument{Name: "Sites and looks"}
-	for _, v := range mask.Verdicts {
-		d.Styles = append(d.Styles, kmlStyle{ID: string(v), Icon: &kmlIcon{kmlColors[v], 1.1}})
-	}
-	d.Styles = append(d.Styles, kmlStyle{ID: "line", Line: &kmlLine{kmlColors[mask.Unusable], 2}})
-	columns := r.allColumns()
-	lines := r.rays()
-	for k := range r.looks {
-		folder := kmlFolder{Name: r.looks[k].Name}
-		for i := range r.sites.List {
-			p := &r.pairs[i*len(r.looks)+k]
-			folder.Marks = append(folder.Marks, placemark(p, columns))
-		}
-		for i := range lines {
-			if l := &lines[i]; l.pair.look == &r.looks[k] {
-				folder.Marks = append(folder.Marks, lineMark(l))
-			}
-		}
-		d.Folders = append(d.Folders, folder)
-	}
 	if _, err := io.WriteString(w, xml.Header); err != nil {
 		return err
 	}
-	encoder := xml.NewEncoder(w)
-	encoder.Indent("", " ")
-	if err := encoder.Encode(kmlRoot{Document: d}); err != nil {
-		return err
+	k := &kmlWriter{Encoder: xml.NewEncoder(w)}
+	k.Indent("", " ")
+	root := xml.StartElement{Name: xml.Name{Space: kmlSpace, Local: "kml"}}
+	k.err = k.EncodeToken(root)
+	k.within("Document", "Sites and looks", func() {
+		for _, v := range mask.Verdicts {
+			k.add(kmlStyle{ID: string(v), Icon: &kmlIcon{kmlColors[v], 1.1}})
+		}
+		k.add(kmlStyle{ID: "line", Line: &kmlLine{kmlColors[mask.Unusable], 2}})
+		columns, lines := r.allColumns(), r.rays()
+		for look := range r.looks {
+			k.within("Folder", r.looks[look].Name, func() { r.writeFolder(k, look, columns, lines) })
+		}
+	})
+	if k.err == nil {
+		k.err = k.EncodeToken(root.End())
 	}
-	_, err := io.WriteString(w, "\n")
-	return err
+	if k.err == nil {
+		k.err = k.Close()
+	}
+	return k.err
+}
+
+// writeFolder writes the placemarks of a look.
+func (r *siteReport) writeFolder(k *kmlWriter, look int, columns []siteColumn, lines []ray) {
+	for i := range r.sites.List {
+		k.add(placemark(&r.pairs[i*len(r.looks)+look], columns))
+	}
+	for i := range lines {
+		if l := &lines[i]; l.pair.look == &r.looks[look] {
+			k.add(lineMark(l))
+		}
+	}
 }
 
 func placemark(p *pair, columns []siteColumn) kmlPlace {

@@ -1,6 +1,9 @@
 package main
 
 import (
+	"bufio"
+	"bytes"
+	"encoding/json"
 	"fmt"
 	"io"
 	"math"
@@ -13,7 +16,7 @@ import (
 // print writes the table or the JSON.
 func (r *siteReport) print(w io.Writer, asJSON bool) error {
 	if asJSON {
-		return printJSON(w, r.records())
+		return r.printJSON(w)
 	}
 	r.printTable(w)
 	fmt.Fprintln(w, "\nmargins in metres, angles in degrees; to radar: azimuth from true north")
@@ -23,6 +26,31 @@ func (r *siteReport) print(w io.Writer, asJSON bool) error {
 	}
 	r.printFiles(w)
 	return nil
+}
+
+// printJSON prints the rows as printJSON of the package would, one at a time:
+// a large campaign has a hundred thousand of them.
+func (r *siteReport) printJSON(w io.Writer) error {
+	out := bufio.NewWriter(w)
+	before := "[\n  "
+	var b bytes.Buffer
+	for _, row := range r.records() {
+		text, err := row.MarshalJSON()
+		if err != nil {
+			return err
+		}
+		b.Reset()
+		b.WriteString(before)
+		if err := json.Indent(&b, text, "  ", "  "); err != nil {
+			return err
+		}
+		if _, err := out.Write(b.Bytes()); err != nil {
+			return err
+		}
+		before = ",\n  "
+	}
+	_, _ = out.WriteString("\n]\n") // Flush has its error
+	return out.Flush()
 }
 
 // printTable prints one line a site and look.
