@@ -17,7 +17,7 @@ func (w *walker) quick(p *strip, u, v, k, next int, m *lane, doubt doubts, slack
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
 	q := quickWalk{walker: w, p: p, u: u, k: k, next: next, slackM: slackM * w.y.gain(s, h), slackR: slackR}
-	q.m, q.r = w.y.see(s, h)
+	q.m, q.r = w.y.own(s, h)
 	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
 	if doubt&doubtClear != 0 {
 		m.clear = signed(m.clear, q.lit(false), tinyM)
@@ -178,6 +178,10 @@ func (q *quickWalk) matters(s, low, high, best float64) bool {
 // there slant range grows with height, and the look angle towards the radar.
 func (q *quickWalk) overhead(m float64) bool { return q.y.ln.places != nil && m > 0 }
 
+// left reports whether the walk of a platform's range line has left the DEM at
+// column v, where one of the lanes beside it may go on.
+func (q *quickWalk) left(v float64) bool { return q.y.ln.places != nil && q.outside(v) }
+
 // lit reports whether no ground towards the radar reaches the point's m: none
 // that the DEM shows, or no unknown terrain.
 func (q *quickWalk) lit(unknown bool) bool {
@@ -192,6 +196,9 @@ func (q *quickWalk) lit(unknown bool) bool {
 					return false
 				}
 			}
+		}
+		if q.left(vb) { // the lanes may go on inside
+			return true
 		}
 		b := q.shade(u-1, sb, unknown)
 		if b.high < q.m-q.slackM {
@@ -242,6 +249,9 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 					best = g.m
 				}
 			}
+		}
+		if q.left(vb) {
+			return best != none
 		}
 		if best != none {
 			b := q.shade(u-1, sb, false)
@@ -314,6 +324,9 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 				hidden = true
 			}
 			prev = g
+		}
+		if q.left(vb) {
+			return false
 		}
 		b := q.farther(u+1, sb, possible)
 		if b.low > q.r+q.slackR {

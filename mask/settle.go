@@ -70,6 +70,21 @@ func (y *ray) see(s, h float64) (m, r float64) {
 	return y.ln.view(&p, h)
 }
 
+// underTrack is the least level distance from the antenna, metres, that a cell
+// itself is given: whether one under the track counts is not for the walk to say.
+const underTrack = 1e-3
+
+// own is see for the point itself.
+func (y *ray) own(s, h float64) (m, r float64) {
+	m, r = y.see(s, h)
+	if y.ln.places != nil && math.IsInf(m, -1) {
+		p := y.place(s)
+		up := p.y + (h-y.ln.datum)*p.ny
+		m, r = y.ln.scale*up/underTrack, math.Abs(up)
+	}
+	return m, r
+}
+
 // seeM and seeR are the halves of see.
 func (y *ray) seeM(s, h float64) float64 {
 	if y.ln.places == nil {
@@ -126,7 +141,7 @@ func (y *ray) gain(s, h float64) float64 {
 	}
 	p := y.place(s)
 	h -= y.ln.datum
-	x, up := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	x, up := max(p.x+float64(h*p.nx), underTrack), p.y+float64(h*p.ny)
 	return y.ln.scale * (float64(p.ny*x) - float64(p.nx*up)) / (x * x)
 }
 
@@ -159,7 +174,7 @@ func (w *walker) settle(f *field, u, v int) margins {
 	w.y = newRay(f.ln, u, v)
 	_, s := w.y.at(u)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
-	m, r := w.y.see(s, h)
+	m, r := w.y.own(s, h)
 	x := w.towards(u, m, r)
 	gain := w.y.gain(s, h)
 	x.clear, x.clearU = x.clear/gain, x.clearU/gain
