@@ -346,7 +346,7 @@ func nearest(text string, candidates []string) string {
 	}
 	best, least := "", (len(t)+1)/3
 	for _, c := range candidates {
-		if d := editDistance(t, strings.ToLower(c)); d <= least {
+		if d := EditDistance(t, strings.ToLower(c)); d <= least {
 			if best == "" || d < least {
 				best, least = c, d
 			}
@@ -355,10 +355,10 @@ func nearest(text string, candidates []string) string {
 	return best
 }
 
-// editDistance returns the least number of bytes inserted, removed or
+// EditDistance returns the least number of bytes inserted, removed or
 // replaced that turns a into b. Source: Wagner & Fischer, The string-to-string
 // correction problem, J. ACM 21(1), 1974, 168-173 (from memory).
-func editDistance(a, b string) int {
+func EditDistance(a, b string) int {
 	row := make([]int, len(b)+1)
 	for j := range row {
 		row[j] = j

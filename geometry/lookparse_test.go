@@ -456,7 +456,7 @@ func TestEditDistance(t *testing.T) {
 		a, b string
 		d    int
 	}{{"kitten", "sitting", 3}, {"", "abc", 3}, {"abc", "", 3}, {"same", "same", 0}, {"flaw", "lawn", 2}, {"ab", "ba", 2}} {
-		assert.Equal(t, row.d, editDistance(row.a, row.b), "%s %s", row.a, row.b)
-		assert.Equal(t, row.d, editDistance(row.b, row.a), "%s %s", row.b, row.a)
+		assert.Equal(t, row.d, EditDistance(row.a, row.b), "%s %s", row.a, row.b)
+		assert.Equal(t, row.d, EditDistance(row.b, row.a), "%s %s", row.b, row.a)
 	}
 }

@@ -16,6 +16,7 @@ import (
 	"github.com/spf13/pflag"
 
 	"foldshade/dem/raster"
+	"foldshade/geometry"
 )
 
 func main() {
@@ -231,7 +232,7 @@ func exactly(names ...string) cobra.PositionalArgs {
 func didYouMean(prefix, word string, known []string) string {
 	best, least := "", max(3, len(word)/3+1)
 	for _, k := range known {
-		if d := editDistance(strings.ToLower(word), k); d < least {
+		if d := geometry.EditDistance(strings.ToLower(word), k); d < least {
 			best, least = k, d
 		}
 	}
@@ -239,26 +240,4 @@ func didYouMean(prefix, word string, known []string) string {
 		return ""
 	}
 	return fmt.Sprintf("did you mean %s%s?", prefix, best)
-}
-
-// editDistance counts the insertions, deletions and replacements of bytes
-// that turn a into b (Levenshtein 1966).
-func editDistance(a, b string) int {
-	row := make([]int, len(b)+1)
-	for j := range row {
-		row[j] = j
-	}
-	for i := range len(a) {
-		diagonal := row[0]
-		row[0] = i + 1
-		for j := range len(b) {
-			replace := diagonal
-			if a[i] != b[j] {
-				replace++
-			}
-			diagonal = row[j+1]
-			row[j+1] = min(replace, row[j]+1, row[j+1]+1)
-		}
-	}
-	return row[len(b)]
 }
