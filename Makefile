@@ -7,9 +7,15 @@ FUZZTIME ?= 20s
 # to fail the build.
 VCS := $(shell git -C '$(CURDIR)' status >/dev/null 2>&1 && echo auto || echo false)
 
+# Vector code is an experiment of Go 1.26; without it, on another processor or
+# with another Go, the portable code gives the same results, more slowly.
+SIMD := $(shell GOEXPERIMENT=simd $(GO) list simd/archsimd >/dev/null 2>&1 && echo simd)
+export GOEXPERIMENT = $(SIMD)
+
 PURE := ./geometry/... ./dem ./mask/...
 
 empty :=
+comma := ,
 space := $(empty) $(empty)
 
 # What the race detector runs beside all of dem/raster: it costs a factor of
@@ -48,14 +54,16 @@ check:
 unit:
 	$(GO) test ./...
 
-# geometry, dem and mask serve programs that have no C compiler.
+# geometry, dem and mask serve programs that have no C compiler, and machines
+# that have no vector code.
+pure: export GOEXPERIMENT =
 pure:
 	CGO_ENABLED=0 $(GO) build $(PURE)
 	CGO_ENABLED=0 $(GO) test $(PURE)
 
 # The concurrent parts, with the race detector and the strict check of
 # pointers passed to C.
-race: export GOEXPERIMENT = cgocheck2
+race: export GOEXPERIMENT = $(if $(SIMD),$(SIMD)$(comma))cgocheck2
 race:
 	$(GO) test -race ./dem/raster/...
 	$(GO) test -race -run '^($(subst $(space),|,$(CONCURRENT)))$$' ./mask ./cmd/foldshade
