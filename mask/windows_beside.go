@@ -1,0 +1,240 @@
+package mask
+
+import "math"
+
+// The next two rows on both sides of a cell, on its own range line. For a row of
+// cells nearly all is the same: the columns that their lines cross, as steps from
+// the cell, and, on parallel lanes, where between them.
+
+// course is how the lines of cells run, in whole columns.
+type course struct {
+	lane      int  // the lane before a cell less the cell's column, see windowCells
+	on        bool // the cells lie on lanes
+	near, far sideCourse
+}
+
+// sideCourse is a course on one side, in columns from the cell's: the neighbour
+// towards which the line runs, 0 for none; the column before the line two rows
+// on; and the column that it crosses between the first and the second row, 0 for
+// none.
+type sideCourse struct{ neighbour, second, kink int }
+
+// windowRun is a run of cells of one course.
+type windowRun struct {
+	p    *windowStrip
+	i    int // row from ua on
+	j, v int // the first cell, by column from the first of the row and of the DEM
+	n    int
+	end  int // the first column behind the row's cells
+	lane int // before the first cell
+	course
+}
+
+// run returns the first run of row ua + i.
+func (p *windowStrip) run(i int) windowRun {
+	st := &p.at[i]
+	va, vb := p.columns(st)
+	r := windowRun{p: p, i: i, v: va, j: va - st.first(), end: vb - st.first()}
+	r.find()
+	return r
+}
+
+func (r *windowRun) next() {
+	r.j, r.v = r.j+r.n, r.v+r.n
+	r.find()
+}
+
+// find takes the cells from j on that have the course of the first: courses
+// change one way only.
+func (r *windowRun) find() {
+	r.n = 0
+	if r.j >= r.end {
+		return
+	}
+	r.n = r.end - r.j
+	r.course = r.p.course(r.i, r.j)
+	r.lane = r.j + r.course.lane
+	if r.p.f.ln.uniform {
+		return
+	}
+	for r.n > 1 && r.p.course(r.i, r.j+r.n-1) != r.course {
+		r.n = (r.n + 1) / 2
+	}
+}
+
+// distance returns the ground distance of the cells to another row.
+func (r *windowRun) distance(row int) linear {
+	_, first := r.p.away(r.i, row, 0)
+	_, last := r.p.away(r.i, row, laneStep)
+	return linearOf(first, last)
+}
+
+// line returns the range line of a cell of the run.
+func (r *windowRun) line(c int) ownLine {
+	p := r.p
+	st := &p.at[r.i]
+	o := ownLine{p: p, i: r.i, v: r.v + c, h: float64(p.row(r.i, r.v)[c])}
+	o.k = st.lane(float64(o.v))
+	_, o.s = st.place(o.k)
+	return o
+}
+
+// away returns the columns and the ground distance from a cell of row ua + i, by
+// column, to where its line crosses another row.
+func (p *windowStrip) away(i, row int, j float64) (columns, distance float64) {
+	st := &p.at[i]
+	v := float64(st.first()) + j
+	k := st.lane(v)
+	_, s := st.place(k)
+	to, far := p.at[row].place(k)
+	return to - v, math.Abs(far - s)
+}
+
+func (p *windowStrip) course(i, j int) course {
+	st := &p.at[i]
+	k := st.lane(float64(st.first() + j))
+	lane := min(max(int(math.Floor(k)), 0), laneStep-1)
+	return course{lane - j, float64(lane) == k, p.sideCourse(i, j, -1), p.sideCourse(i, j, 1)}
+}
+
+func (p *windowStrip) sideCourse(i, j, dir int) (c sideCourse) {
+	if r := i + dir; r < 0 || r >= p.rows {
+		return c
+	}
+	a, _ := p.away(i, i+dir, float64(j))
+	switch {
+	case a > onColumn:
+		c.neighbour = 1
+	case a < -onColumn:
+		c.neighbour = -1
+	}
+	if r := i + 2*dir; r < 0 || r >= p.rows {
+		return c
+	}
+	b, _ := p.away(i, i+2*dir, float64(j))
+	c.second = int(math.Floor(b + onColumn))
+	// The last column that is passed before the second row.
+	if k := int(math.Floor(b - onColumn)); c.neighbour > 0 && float64(k) > a {
+		c.kink = k
+	}
+	if k := int(math.Ceil(b + onColumn)); c.neighbour < 0 && float64(k) < a {
+		c.kink = k
+	}
+	return c
+}
+
+// besideLine is one side of a run: heights by cell, and where the lines cross.
+// Slices are nil beyond the DEM and without a kink.
+type besideLine struct {
+	here, aside   []float32 // the cells and the neighbours towards which the lines run
+	first, firstA []float32 // the same in the next row
+	second, after []float32 // before and behind the lines in the second row
+	kink, kinkEnd []float32 // at the column between, in the two rows
+
+	across, rest, part         linear // of the way to firstA, to after, and from kink to kinkEnd
+	firstD, secondD, kinkPlace linear // ground distances
+}
+
+// beside raises the slopes of a run's cells to those of the next two rows.
+func (p *windowStrip) beside(r *windowRun, c *windowCells) {
+	near, far := p.besideLine(r, r.near, -1), p.besideLine(r, r.far, 1)
+	near.slopes(r.j, c.shade[r.j:][:r.n], c.fold[r.j:][:r.n])
+	far.slopes(r.j, c.fold[r.j:][:r.n], nil)
+}
+
+func (p *windowStrip) besideLine(r *windowRun, c sideCourse, dir int) (b besideLine) {
+	first, second := r.i+dir, r.i+2*dir
+	if first < 0 || first >= p.rows {
+		return b
+	}
+	b.here = p.row(r.i, r.v)
+	b.aside = p.row(r.i, r.v+c.neighbour)
+	b.first, b.firstA = p.row(first, r.v), p.row(first, r.v+c.neighbour)
+	a0, d0 := p.away(r.i, first, 0)
+	a1, d1 := p.away(r.i, first, laneStep)
+	b.across, b.firstD = linearOf(math.Abs(a0), math.Abs(a1)), linearOf(d0, d1)
+	if second < 0 || second >= p.rows {
+		return b
+	}
+	b0, e0 := p.away(r.i, second, 0)
+	b1, e1 := p.away(r.i, second, laneStep)
+	from := float64(c.second)
+	b.second, b.after = p.row(second, r.v+c.second), p.row(second, r.v+c.second+1)
+	b.rest, b.secondD = linearOf(b0-from, b1-from), linearOf(e0, e1)
+	if b0-from < onColumn && p.f.ln.uniform {
+		b.after = b.second // no neighbour counts
+	}
+	if c.kink == 0 {
+		return b
+	}
+	b.kink, b.kinkEnd = p.row(first, r.v+c.kink), p.row(second, r.v+c.kink)
+	at := float64(c.kink)
+	t0, t1 := (at-a0)/(b0-a0), (at-a1)/(b1-a1)
+	b.part = linearOf(t0, t1)
+	b.kinkPlace = linearOf(d0+t0*(e0-d0), d1+t1*(e1-d1))
+	return b
+}
+
+// slopes raises up to the largest slope from the cells up to the ground on the
+// line, from ownGround on, and down, when not nil, to the largest one down. j is
+// the first cell's column. Between the cell and the next row the surface is a
+// parabola that starts in the cell, so that slopes are largest at one of the ends.
+func (b *besideLine) slopes(j int, up, down []float32) {
+	if b.first == nil {
+		return
+	}
+	c := 0
+	if vectors {
+		c = b.slopesVector(j, up, down)
+	}
+	for ; c < len(up); c++ {
+		high, low := b.cell(c, j+c)
+		if high > up[c] {
+			up[c] = high
+		}
+		if down != nil && -low > down[c] {
+			down[c] = -low
+		}
+	}
+}
+
+// cell returns the largest and the smallest slope up from cell c, at column j.
+// Where heights are missing the slopes are NaN or leave some ground out.
+func (b *besideLine) cell(c, j int) (high, low float32) {
+	h, a := b.here[c], b.across.at(j)
+	q := b.first[c] - h
+	turn := (b.firstA[c] - h) - q
+	side := b.aside[c] - h
+	end := q + float32(a*turn)
+	start := q + float32(a*side) + float32(ownGround*float32(a*(turn-side)))
+	d := 1 / b.firstD.at(j)
+	high, low = higher(start, end)*d, lower(start, end)*d
+	count := func(rise, away float32) {
+		m := rise / away
+		high, low = higher(m, high), lower(m, low)
+	}
+	if b.second != nil {
+		q := b.second[c] - h
+		count(q+float32(b.rest.at(j)*((b.after[c]-h)-q)), b.secondD.at(j))
+	}
+	if b.kink != nil {
+		q := b.kink[c] - h
+		count(q+float32(b.part.at(j)*((b.kinkEnd[c]-h)-q)), b.kinkPlace.at(j))
+	}
+	return high, low
+}
+
+// higher and lower return the second where one is NaN, as vectors do.
+func higher(a, b float32) float32 {
+	if a > b {
+		return a
+	}
+	return b
+}
+
+func lower(a, b float32) float32 {
+	if a < b {
+		return a
+	}
+	return b
+}

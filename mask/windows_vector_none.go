@@ -1,0 +1,9 @@
+//go:build !(goexperiment.simd && amd64 && !go1.27)
+
+package mask
+
+func (g *guide) advanceVector(*laneRow, linear, float32) {}
+
+func (g *guide) seesVector(int, bool, []float32, []float32, linear, int, int) uint32 { return 0 }
+
+func (b *besideLine) slopesVector(int, []float32, []float32) int { return 0 }
