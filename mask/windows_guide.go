@@ -96,7 +96,7 @@ func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) 
 	for c := range n {
 		z, d := g.sign*h0[c], d.at(j+c)
 		for l, slope := range g.slopes {
-			top := max(g.top[l][lane+c], g.top[l][lane+c+other])
+			top := higher(g.top[l][lane+c], g.top[l][lane+c+other])
 			if !(top > z+float32(d*slope)) {
 				break
 			}

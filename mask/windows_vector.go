@@ -1,0 +1,96 @@
+//go:build goexperiment.simd && amd64 && !go1.27
+
+package mask
+
+import "simd/archsimd"
+
+type float32x8 = archsimd.Float32x8
+
+const vectorWidth = 8
+
+func load(s []float32, at int) float32x8 {
+	return archsimd.LoadFloat32x8((*[vectorWidth]float32)(s[at:]))
+}
+
+func store(x float32x8, s []float32, at int) { x.Store((*[vectorWidth]float32)(s[at:])) }
+
+// higherOf and lowerOf are higher and lower. The vectors' own largest and smallest
+// do not say which one they take of two when one is NaN.
+func higherOf(a, b float32x8) float32x8 { return a.Merge(b, a.Greater(b)) }
+func lowerOf(a, b float32x8) float32x8  { return a.Merge(b, a.Less(b)) }
+
+// ascending holds 0, 1, 2, ...
+var ascending = [vectorWidth]float32{0, 1, 2, 3, 4, 5, 6, 7}
+
+// spread returns the line at columns j, j+1, ...
+func (q linear) spread(j int) float32x8 {
+	at := archsimd.BroadcastFloat32x8(float32(j)).Add(archsimd.LoadFloat32x8(&ascending))
+	return archsimd.BroadcastFloat32x8(q.a).Add(archsimd.BroadcastFloat32x8(q.b).Mul(at))
+}
+
+func (g *guide) advanceVector(h *laneRow, d linear, row float32) {
+	sign, rows := archsimd.BroadcastFloat32x8(g.sign), archsimd.BroadcastFloat32x8(row)
+	for k := 0; k < guideLanes; k += vectorWidth {
+		z, away := load(h[:], k).Mul(sign), d.spread(k)
+		for l, slope := range g.slopes {
+			top, held := g.top[l][:], g.row[l][:]
+			t := load(top, k).Sub(away.Mul(archsimd.BroadcastFloat32x8(slope)))
+			store(rows.Merge(load(held, k), z.GreaterEqual(t)), held, k)
+			store(higherOf(z, t), top, k)
+		}
+	}
+}
+
+func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n int) (out uint32) {
+	other := lane + 1
+	if on {
+		other = lane
+	}
+	sign, sharp := archsimd.BroadcastFloat32x8(g.sign), archsimd.BroadcastFloat32x8(guideSharpness)
+	for c := 0; c < n; c += vectorWidth {
+		z, away := load(h0, c).Mul(sign), d.spread(j+c)
+		best := load(most, c).Mul(sharp)
+		bits := uint8(0)
+		for l, slope := range g.slopes {
+			top := g.top[l][:]
+			t := higherOf(load(top, lane+c), load(top, other+c))
+			below := t.Greater(z.Add(away.Mul(archsimd.BroadcastFloat32x8(slope))))
+			if below.ToBits() == 0 {
+				break
+			}
+			bits |= below.And(archsimd.BroadcastFloat32x8(g.next[l]).Greater(best)).ToBits()
+		}
+		out |= uint32(bits) << c
+	}
+	return out & uint32(1<<n-1)
+}
+
+func (b *besideLine) slopesVector(j int, up, down []float32) int {
+	one, own := archsimd.BroadcastFloat32x8(1), archsimd.BroadcastFloat32x8(ownGround)
+	c := 0
+	for ; c+vectorWidth <= len(up); c += vectorWidth {
+		h, a := load(b.here, c), b.across.spread(j+c)
+		q := load(b.first, c).Sub(h)
+		turn := load(b.firstA, c).Sub(h).Sub(q)
+		side := load(b.aside, c).Sub(h)
+		end := q.Add(a.Mul(turn))
+		start := q.Add(a.Mul(side)).Add(own.Mul(a.Mul(turn.Sub(side))))
+		d := one.Div(b.firstD.spread(j + c))
+		high, low := higherOf(start, end).Mul(d), lowerOf(start, end).Mul(d)
+		if b.second != nil {
+			q := load(b.second, c).Sub(h)
+			m := q.Add(b.rest.spread(j + c).Mul(load(b.after, c).Sub(h).Sub(q))).Div(b.secondD.spread(j + c))
+			high, low = higherOf(m, high), lowerOf(m, low)
+		}
+		if b.kink != nil {
+			q := load(b.kink, c).Sub(h)
+			m := q.Add(b.part.spread(j + c).Mul(load(b.kinkEnd, c).Sub(h).Sub(q))).Div(b.kinkPlace.spread(j + c))
+			high, low = higherOf(m, high), lowerOf(m, low)
+		}
+		store(higherOf(high, load(up, c)), up, c)
+		if down != nil {
+			store(higherOf(archsimd.BroadcastFloat32x8(0).Sub(low), load(down, c)), down, c)
+		}
+	}
+	return c
+}
