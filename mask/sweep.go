@@ -261,7 +261,7 @@ func (s *sweep) stripe(size int64) int64 {
 		near, far := ln.reach(s.lim)
 		rows = max(rows, min(size+int64(near+far), int64(ln.orient.u)))
 	}
-	return rows * (5*(windowStripe+2*laneStep) + 40*(laneStep + 1))
+	return rows * (5*(windowStripe+2*laneStep) + 40*(laneStep+1))
 }
 
 // crop shrinks a tile to the cells that count.

@@ -51,6 +51,8 @@ func windowLanes(g *dem.Grid, azimuth, from, to geometry.Angle) *lanes {
 type windower struct {
 	shade, shadeU []float32
 	fold, foldU   []float32
+	sure          bool         // there is no unknown terrain: shadeU is shade, foldU is fold
+	own           [2][]float32 // memory for when it is not
 
 	minShade, minFold float64 // the bounds: cot and tan of the limiting incidences
 	win               dem.Window
@@ -74,14 +76,16 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 	x.shadeGuide.setUp(x.minShade, 1/from.Tan(), 1)
 	x.nearerGuide.setUp(x.minFold, to.Tan(), -1)
 	x.fartherGuide.setUp(x.minFold, to.Tan(), 1)
-	for _, a := range []*[]float32{&x.shade, &x.shadeU, &x.fold, &x.foldU} {
-		*a = resize(*a, n)
-	}
+	x.shade, x.fold = resize(x.shade, n), resize(x.fold, n)
+	x.sure, x.shadeU, x.foldU = true, x.shade, x.fold
 	u0, u1, v0, v1 := ln.window(win)
 	for v := v0; v < v1; v += windowStripe {
 		x.field.setUp(ln, lim, u0, u1, v, min(v+windowStripe, v1))
 		if err := x.field.load(src); err != nil {
 			return err
+		}
+		if x.sure && !x.field.sure {
+			x.part()
 		}
 		x.field.z = append(x.field.z, make([]float32, vectorSlack)...)
 		for j := range x.field.strips {
@@ -92,6 +96,16 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 		}
 	}
 	return nil
+}
+
+// part gives the slopes with unknown terrain their own memory. Until there is
+// some they are the others.
+func (x *windower) part() {
+	for i, a := range [2][]float32{x.shade, x.fold} {
+		x.own[i] = resize(x.own[i], len(a))
+		copy(x.own[i], a)
+	}
+	x.sure, x.shadeU, x.foldU = false, x.own[0], x.own[1]
 }
 
 // vectorSlack is how many numbers beyond those that are meant vectors may read.
@@ -123,6 +137,9 @@ type windowStrip struct {
 	cells          windowCells // of the rows from u0 on
 	width          int         // cells that are held a row
 	heights        laneRow     // of the row that is sampled
+	// Of the rows that were sampled: heights by lane and row, and the distance of
+	// the middle lane.
+	tall, along []float32
 
 	missing         []bool                // by row from ua on: heights, or lanes outside the DEM
 	unknown         bool                  // what is missing is unknown terrain
@@ -154,9 +171,13 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
 	p.rows = p.ub - p.ua
 	p.at = resize(p.at, p.rows)
+	p.along = resize(p.along, p.rows+vectorSlack)
 	for i := range p.at {
 		p.at[i] = p.stand(p.ua + i)
+		_, s := p.at[i].place(laneStep / 2)
+		p.along[i] = float32(s)
 	}
+	p.tall = resize(p.tall, (laneStep+1)*p.stride())
 	n := p.width*(p.u1-p.u0) + vectorSlack
 	for _, a := range [4]*[]float32{&p.cells.shade, &p.cells.fold, &p.cells.shadeU, &p.cells.foldU} {
 		*a = resize(*a, n)
@@ -175,12 +196,14 @@ func (p *windowStrip) stand(u int) standing {
 	q := float64(u-laneStep*i) / laneStep
 	n := i*ln.nk + p.j
 	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+ln.nk]-a[n])) }
-	st := standing{v: ln.vAt(float64(u), float64(p.k0)), end: ln.vAt(float64(u), float64(p.k0+laneStep)), dv: 1}
-	if !ln.uniform {
-		st.dv = (st.end - st.v) / laneStep
-	}
-	st.s = at(ln.s, n)
+	st := standing{s: at(ln.s, n)}
 	st.ds = (at(ln.s, n+1) - st.s) / laneStep
+	if ln.uniform {
+		st.v, st.end, st.dv = ln.vAt(float64(u), float64(p.k0)), ln.vAt(float64(u), float64(p.k0+laneStep)), 1
+		return st
+	}
+	st.v, st.end = at(ln.v, n), at(ln.v, n+1)
+	st.dv = (st.end - st.v) / laneStep
 	return st
 }
 
@@ -205,34 +228,51 @@ func (p *windowStrip) row(i, v int) []float32 {
 	return p.f.z[r*p.f.width+v-p.f.at[r]:]
 }
 
+// lane returns the heights of a lane by row, as far as they were sampled.
+func (p *windowStrip) lane(k int) []float32 { return p.tall[k*p.stride():][:p.stride()] }
+
+// stride is odd, so that lanes do not compete for a place in the cache.
+func (p *windowStrip) stride() int { return (p.rows + vectorSlack) | 1 }
+
 // sample fills heights with those of the lanes at row ua + i.
 func (p *windowStrip) sample(i int) {
-	st := &p.at[i]
-	c := math.Floor(st.v)
-	if rest := st.v - c; st.dv == 1 {
-		heightsBetween(p.heights[:laneStep+1], p.row(i, int(c)), rest)
-		return
-	}
-	z := p.row(i, int(c))
-	for k := range laneStep + 1 {
-		p.heights[k] = float32(lerp(z, st.v-c+float64(st.dv*float64(k))))
+	p.sampleRow(i)
+	for k, h := range p.heights[:laneStep+1] {
+		p.tall[k*p.stride()+i] = h
 	}
 }
 
-// heightsBetween fills h with the heights at the same fraction of every step of
-// z.
-func heightsBetween(h, z []float32, rest float64) {
-	if rest > 1-onColumn {
-		z, rest = z[1:], 0
+func (p *windowStrip) sampleRow(i int) {
+	st := &p.at[i]
+	h := p.heights[:laneStep+1]
+	column := func(k int) int { return int(math.Floor(st.v+float64(st.dv*float64(k))+onColumn)) - k }
+	for from := 0; from < len(h); {
+		// The lanes that keep their distance from a column.
+		n, c := len(h)-from, column(from)
+		for st.dv != 1 && column(from+n-1) != c {
+			n = (n + 1) / 2
+		}
+		z := p.row(i, from+c)
+		first := st.v - float64(c)
+		if rest := (linear{float32(first), float32(st.dv - 1)}); st.dv == 1 && first < onColumn {
+			copy(h[from:from+n], z)
+		} else {
+			heightsBetween(h[from:from+n], z, rest, from)
+		}
+		from += n
 	}
-	if rest < onColumn {
-		copy(h, z)
-		return
-	}
-	q := float32(rest)
+}
+
+// heightsBetween fills h with heights between every one of z and the next. from
+// is the first lane.
+func heightsBetween(h, z []float32, rest linear, from int) {
 	z = z[:len(h)+1]
-	for k := range h {
-		h[k] = z[k] + float32(q*(z[k+1]-z[k]))
+	k := 0
+	if vectors {
+		k = heightsBetweenVector(h, z, rest, from)
+	}
+	for ; k < len(h); k++ {
+		h[k] = z[k] + float32(rest.at(from+k)*(z[k+1]-z[k]))
 	}
 }
 
@@ -322,17 +362,30 @@ func (x *windower) put(i int, c *windowCells) {
 	if p.f.ln.transposed {
 		stride = x.win.Cols
 	}
+	if p.unknown {
+		raiseTo(c.shadeU[:p.width], c.shade)
+		raiseTo(c.foldU[:p.width], c.fold)
+	} else {
+		c.shadeU, c.foldU = c.shade, c.fold
+	}
 	if p.missing[i] {
 		x.mend(i, c)
 	}
-	for ; va < vb; va, j, at = va+1, j+1, at+stride {
-		x.shade[at], x.fold[at] = c.shade[j], c.fold[j]
-		x.shadeU[at], x.foldU[at] = c.shade[j], c.fold[j]
-		if p.unknown && c.shadeU[j] > c.shade[j] {
-			x.shadeU[at] = c.shadeU[j]
-		}
-		if p.unknown && c.foldU[j] > c.fold[j] {
-			x.foldU[at] = c.foldU[j]
-		}
+	x.putRow(x.shade, c.shade[j:][:vb-va], at, stride)
+	x.putRow(x.fold, c.fold[j:][:vb-va], at, stride)
+	if !x.sure {
+		x.putRow(x.shadeU, c.shadeU[j:][:vb-va], at, stride)
+		x.putRow(x.foldU, c.foldU[j:][:vb-va], at, stride)
+	}
+}
+
+func (x *windower) putRow(to, from []float32, at, stride int) {
+	if stride == 1 {
+		copy(to[at:], from)
+		return
+	}
+	for _, m := range from {
+		to[at] = m
+		at += stride
 	}
 }

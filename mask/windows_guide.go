@@ -14,7 +14,7 @@ const guideShare = 0.7
 const guideRows = 3
 
 // guideStep is about the ratio of two neighbouring slopes of a guide.
-const guideStep = 1.25
+const guideStep = 1.1
 
 // laneRow holds a number for every lane of a strip, and fills whole vectors. The
 // lanes behind the last are NaN where that matters.
@@ -149,6 +149,6 @@ func (x *windower) seek(r *windowRun, g *guide, dir int, most []float32) {
 				near, far = a, b
 			}
 		}
-		o.search(near, far, dir, g.sign, &most[r.j+c])
+		o.search(r.lane+c, near, far, dir, float64(g.sign), &most[r.j+c])
 	}
 }

@@ -17,34 +17,89 @@ func (o *ownLine) height(row int) (h, s float64) {
 }
 
 // search raises most to the largest slope up to the ground of the line, down
-// with sign -1, in the rows from near to far and about them. dir is that from
-// the cell to them.
-func (o *ownLine) search(near, far, dir int, sign float32, most *float32) {
+// with sign -1, that lies about the rows from near to far. The lanes beside it,
+// lane and the next, say where.
+func (o *ownLine) search(lane, near, far, dir int, sign float64, most *float32) {
 	near, far = near-dir, far+dir
-	if d := (near - o.i) * dir; d < 2 {
-		near = o.i + 2*dir
+	if (near-o.i)*dir < guideRows {
+		near = o.i + guideRows*dir
 	}
 	far = min(max(far, 0), o.p.rows-1)
-	best, top, at := -1, 0., 1.
-	for r := near; (far-r)*dir >= 0; r += dir {
-		h, s := o.height(r)
-		rise, d := float64(sign)*(h-o.h), math.Abs(s-o.s)
-		if best < 0 && rise == rise || float64(rise*at) > float64(top*d) {
-			best, top, at = r, rise, d
+	lo, hi := min(near, far), max(near, far)
+	row := -1
+	if hi-lo < dbgN {
+		best, top, at := -1, 0., 1.
+		for r := near; (far-r)*dir >= 0; r += dir {
+			h, s := o.height(r)
+			rise, d := sign*(h-o.h), math.Abs(s-o.s)
+			if best < 0 && rise == rise || float64(rise*at) > float64(top*d) {
+				best, top, at = r, rise, d
+			}
 		}
+		row = best
+	} else {
+		row = o.p.steepest(o, lane, lo, hi, float32(sign))
 	}
-	if best < 0 {
+	if row < 0 {
 		return
 	}
-	m := top / at
-	m = max(m, float64(*most))
-	if best != o.i+dir {
-		o.between(best, best-dir, float64(sign), &m)
+	m := float64(*most)
+	h, s := o.height(row)
+	if q := sign * (h - o.h) / math.Abs(s-o.s); q > m {
+		m = q
 	}
-	if r := best + dir; r >= 0 && r < o.p.rows {
-		o.between(best, r, float64(sign), &m)
+	for next := row - 1; next <= row+1; next += 2 {
+		if next >= 0 && next < o.p.rows {
+			o.between(row, next, sign, &m)
+		}
 	}
 	*most = float32(m)
+}
+
+// steepest returns the row of [from, to] at which the ground on the lanes beside
+// a line, mixed, has the largest slope up from the line's cell, down with sign
+// -1; -1 where there is none.
+func (p *windowStrip) steepest(o *ownLine, lane, from, to int, sign float32) int {
+	n := to - from + 1
+	if n <= 0 {
+		return -1
+	}
+	b := min(lane+1, laneStep)
+	q := steepness{
+		a: p.lane(lane)[from:], b: p.lane(b)[from:], s: p.along[from:],
+		mix: float32(o.k - float64(lane)), h0: float32(o.h), s0: p.along[o.i], sign: sign,
+	}
+	if q.mix == 0 {
+		q.b = q.a
+	}
+	if vectors {
+		if r := q.searchVector(n); r >= 0 {
+			return from + r
+		}
+		return -1
+	}
+	best, row := float32(math.Inf(-1)), -1
+	for r := range n {
+		if m := q.at(r); m > best {
+			best, row = m, from+r
+		}
+	}
+	return row
+}
+
+// steepness is what steepest looks at: heights of two lanes, and distances.
+type steepness struct {
+	a, b, s           []float32
+	mix, h0, s0, sign float32
+}
+
+func (q *steepness) at(r int) float32 {
+	h := q.a[r] + float32(q.mix*(q.b[r]-q.a[r]))
+	d := q.s[r] - q.s0
+	if d < 0 {
+		d = -d
+	}
+	return float32(q.sign*(h-q.h0)) / d
 }
 
 // between counts the slopes to the ground between two neighbouring rows. The
@@ -97,3 +152,5 @@ func (o *ownLine) between(row, next int, sign float64, most *float64) {
 	piece(ca, 0, t)
 	piece(cb, t, 1)
 }
+
+const dbgN = 5

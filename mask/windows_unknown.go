@@ -138,6 +138,13 @@ func (p *windowStrip) eachUnknown(i int, visit func(j int, h, d float64)) {
 	}
 }
 
+// raiseTo raises slopes to others.
+func raiseTo(a, to []float32) {
+	for i := range a {
+		a[i] = higher(a[i], to[i])
+	}
+}
+
 // raise raises a slope to rise / distance.
 func raise(slope *float32, rise, distance float64) {
 	if distance == 0 {

@@ -2,7 +2,10 @@
 
 package mask
 
-import "simd/archsimd"
+import (
+	"math"
+	"simd/archsimd"
+)
 
 type float32x8 = archsimd.Float32x8
 
@@ -26,6 +29,14 @@ var ascending = [vectorWidth]float32{0, 1, 2, 3, 4, 5, 6, 7}
 func (q linear) spread(j int) float32x8 {
 	at := archsimd.BroadcastFloat32x8(float32(j)).Add(archsimd.LoadFloat32x8(&ascending))
 	return archsimd.BroadcastFloat32x8(q.a).Add(archsimd.BroadcastFloat32x8(q.b).Mul(at))
+}
+
+func heightsBetweenVector(h, z []float32, rest linear, from int) (k int) {
+	for ; k+vectorWidth <= len(h); k += vectorWidth {
+		a := load(z, k)
+		store(a.Add(rest.spread(from+k).Mul(load(z, k+1).Sub(a))), h, k)
+	}
+	return k
 }
 
 func (g *guide) advanceVector(h *laneRow, d linear, row float32) {
@@ -93,4 +104,31 @@ func (b *besideLine) slopesVector(j int, up, down []float32) int {
 		}
 	}
 	return c
+}
+
+func (q *steepness) searchVector(n int) int {
+	mix, h0, s0, sign := archsimd.BroadcastFloat32x8(q.mix), archsimd.BroadcastFloat32x8(q.h0), archsimd.BroadcastFloat32x8(q.s0), archsimd.BroadcastFloat32x8(q.sign)
+	best := archsimd.BroadcastFloat32x8(float32(math.Inf(-1)))
+	row, at := archsimd.BroadcastFloat32x8(-1), archsimd.LoadFloat32x8(&ascending)
+	last := archsimd.BroadcastFloat32x8(float32(n))
+	for r := 0; r < n; r += vectorWidth {
+		a := load(q.a, r)
+		h := a.Add(mix.Mul(load(q.b, r).Sub(a)))
+		d := load(q.s, r).Sub(s0)
+		d = higherOf(d, s0.Sub(load(q.s, r)))
+		m := sign.Mul(h.Sub(h0)).Div(d)
+		larger := m.Greater(best).And(last.Greater(at))
+		best, row = m.Merge(best, larger), at.Merge(row, larger)
+		at = at.Add(archsimd.BroadcastFloat32x8(vectorWidth))
+	}
+	var m, rows [vectorWidth]float32
+	best.Store(&m)
+	row.Store(&rows)
+	k := 0
+	for i := range m {
+		if m[i] > m[k] || m[i] == m[k] && rows[i] >= 0 && rows[i] < rows[k] {
+			k = i
+		}
+	}
+	return int(rows[k])
 }

@@ -7,3 +7,7 @@ func (g *guide) advanceVector(*laneRow, linear, float32) {}
 func (g *guide) seesVector(int, bool, []float32, []float32, linear, int, int) uint32 { return 0 }
 
 func (b *besideLine) slopesVector(int, []float32, []float32) int { return 0 }
+
+func (q *steepness) searchVector(int) int { return 0 }
+
+func heightsBetweenVector([]float32, []float32, linear, int) int { return 0 }
