@@ -9,61 +9,79 @@ type ownLine struct {
 	k, s, h float64
 }
 
-// height returns the height and the distance of the line at a row.
-func (o *ownLine) height(row int) (h, s float64) {
-	v, s := o.p.at[row].place(o.k)
-	c := math.Floor(v)
-	return lerp(o.p.row(row, int(c)), v-c), s
+// station is where a line crosses a row: the heights from stationMargin columns
+// before column c on, the one before the line, and the line's own column,
+// distance and height.
+type station struct {
+	z       []float32
+	c       int
+	v, s, h float64
 }
 
+// stationMargin is the most columns that a line passes between two rows.
+const stationMargin = 2
+
+func (o *ownLine) cross(row int) (x station) {
+	x.v, x.s = o.p.at[row].place(o.k)
+	c := math.Floor(x.v)
+	x.c = int(c)
+	x.z = o.p.row(row, x.c-stationMargin)
+	x.h = lerp(x.z, x.v-c+stationMargin)
+	return x
+}
+
+// shortSearch is the most rows that a line searches by itself. It sees more than
+// the lanes do where ground is as rough as its cells are wide.
+const shortSearch = 5
+
 // search raises most to the largest slope up to the ground of the line, down
-// with sign -1, that lies about the rows from near to far. The lanes beside it,
-// lane and the next, say where.
+// with sign -1, that lies about the rows from near to far.
 func (o *ownLine) search(lane, near, far, dir int, sign float64, most *float32) {
 	near, far = near-dir, far+dir
 	if (near-o.i)*dir < guideRows {
 		near = o.i + guideRows*dir
 	}
 	far = min(max(far, 0), o.p.rows-1)
-	lo, hi := min(near, far), max(near, far)
-	row := -1
-	if hi-lo < dbgN {
-		best, top, at := -1, 0., 1.
-		for r := near; (far-r)*dir >= 0; r += dir {
-			h, s := o.height(r)
-			rise, d := sign*(h-o.h), math.Abs(s-o.s)
-			if best < 0 && rise == rise || float64(rise*at) > float64(top*d) {
-				best, top, at = r, rise, d
-			}
-		}
-		row = best
+	var row int
+	if n := (far-near)*dir + 1; n <= shortSearch {
+		row = o.steepestOwn(near, n, dir, sign)
 	} else {
-		row = o.p.steepest(o, lane, lo, hi, float32(sign))
+		row = o.steepest(lane, min(near, far), n, float32(sign))
 	}
 	if row < 0 {
 		return
 	}
-	m := float64(*most)
-	h, s := o.height(row)
-	if q := sign * (h - o.h) / math.Abs(s-o.s); q > m {
-		m = q
-	}
+	m := slope{float64(*most), sign, o.h, o.s}
+	x := o.cross(row)
+	m.raise(x.h, x.s)
 	for next := row - 1; next <= row+1; next += 2 {
 		if next >= 0 && next < o.p.rows {
-			o.between(row, next, sign, &m)
+			y := o.cross(next)
+			m.between(&x, &y)
 		}
 	}
-	*most = float32(m)
+	*most = float32(m.most)
 }
 
-// steepest returns the row of [from, to] at which the ground on the lanes beside
-// a line, mixed, has the largest slope up from the line's cell, down with sign
-// -1; -1 where there is none.
-func (p *windowStrip) steepest(o *ownLine, lane, from, to int, sign float32) int {
-	n := to - from + 1
-	if n <= 0 {
-		return -1
+// steepestOwn returns the row of n from one on that has the largest slope on the
+// line itself, -1 where there is none.
+func (o *ownLine) steepestOwn(from, n, dir int, sign float64) int {
+	best, top, at := -1, 0., 1.
+	for r := from; n > 0; n, r = n-1, r+dir {
+		x := o.cross(r)
+		rise, d := sign*(x.h-o.h), math.Abs(x.s-o.s)
+		if best < 0 && rise == rise || float64(rise*at) > float64(top*d) {
+			best, top, at = r, rise, d
+		}
 	}
+	return best
+}
+
+// steepest returns the row of n from one on at which the ground on the lanes
+// beside the line, lane and the next, mixed, has the largest slope up from the
+// cell, down with sign -1; -1 where there is none.
+func (o *ownLine) steepest(lane, from, n int, sign float32) int {
+	p := o.p
 	b := min(lane+1, laneStep)
 	q := steepness{
 		a: p.lane(lane)[from:], b: p.lane(b)[from:], s: p.along[from:],
@@ -102,55 +120,56 @@ func (q *steepness) at(r int) float32 {
 	return float32(q.sign*(h-q.h0)) / d
 }
 
-// between counts the slopes to the ground between two neighbouring rows. The
-// surface is a parabola on each side of the column that the line crosses.
-func (o *ownLine) between(row, next int, sign float64, most *float64) {
-	p, f := o.p, o.p.f
-	va, vb := p.at[row].v+float64(p.at[row].dv*o.k), p.at[next].v+float64(p.at[next].dv*o.k)
-	if va == vb {
-		return // straight
+// slope is the largest slope from a point up to ground, down with sign -1.
+type slope struct{ most, sign, h, s float64 }
+
+func (m *slope) raise(h, s float64) {
+	rise, away := m.sign*(h-m.h), math.Abs(s-m.s)
+	if rise > m.most*away {
+		m.most = rise / away
 	}
-	ca, cb := math.Floor(va), math.Floor(vb)
-	i, j := row+p.ua-f.ua, next+p.ua-f.ua
-	za, zb := f.z[i*f.width:], f.z[j*f.width:]
-	_, sa := p.at[row].place(o.k)
-	_, sb := p.at[next].place(o.k)
-	ds := sb - sa
-	// On the bilinear surface of the cell from column c on: h = a + b t + d t^2.
-	piece := func(c, t0, t1 float64) {
-		k, l := int(c)-f.at[i], int(c)-f.at[j]
-		p0, q0 := float64(za[k]), float64(zb[l])
-		ep, eq := float64(za[k+1])-p0, float64(zb[l+1])-q0
-		x, dx := va-c, vb-va
-		a, b, d := p0+ep*x, q0-p0+ep*dx+(eq-ep)*x, (eq-ep)*dx
-		count := func(t float64) {
-			if m := sign * (a + t*(b+t*d) - o.h) / math.Abs(sa+t*ds-o.s); m > *most {
-				*most = m
-			}
-		}
-		count(t1)
-		if sign*d >= 0 {
-			return // no height above the ends
-		}
-		// The ground farthest above the steepest line so far; twice, since that
-		// line is then steeper.
-		away := math.Copysign(ds, ds*(sa-o.s)) // change of distance to the cell for t
-		for range 2 {
-			t := (sign**most*away - b) / (2 * d)
-			if !(t > t0 && t < t1) {
-				return
-			}
-			count(t)
-		}
-	}
-	if ca == cb {
-		piece(ca, 0, 1)
-		return
-	}
-	c := math.Max(ca, cb)
-	t := (c - va) / (vb - va)
-	piece(ca, 0, t)
-	piece(cb, t, 1)
 }
 
-const dbgN = 5
+// between raises the slope to that of the ground between two rows next to each
+// other. The surface is a parabola on each side of the column that the line
+// crosses.
+func (m *slope) between(a, b *station) {
+	if a.v == b.v { // straight
+		m.raise(b.h, b.s)
+		return
+	}
+	if a.c == b.c {
+		m.piece(a, b, a.c, 0, 1)
+		return
+	}
+	c := max(a.c, b.c)
+	t := (float64(c) - a.v) / (b.v - a.v)
+	m.piece(a, b, a.c, 0, t)
+	m.piece(a, b, b.c, t, 1)
+}
+
+// piece is between for the way from t0 to t1, behind column c.
+func (m *slope) piece(a, b *station, c int, t0, t1 float64) {
+	p, q := a.z[c-a.c+stationMargin:], b.z[c-b.c+stationMargin:]
+	p0, e := float64(p[0]), float64(p[1]-p[0])
+	q0, g := float64(q[0]), float64(q[1]-q[0])
+	x, dx := a.v-float64(c), b.v-a.v
+	// Heights along the way: h + t (b + t d).
+	h, r, d := p0+float64(e*x), q0-p0+float64(e*dx)+float64((g-e)*x), (g-e)*dx
+	ds := b.s - a.s
+	count := func(t float64) { m.raise(h+float64(t*(r+float64(t*d))), a.s+float64(t*ds)) }
+	count(t1)
+	if m.sign*d >= 0 {
+		return // no ground above the ends
+	}
+	// The ground farthest above the steepest line so far; twice, since that line
+	// is then steeper.
+	away := math.Copysign(ds, ds*(a.s-m.s)) // change of distance to the point for t
+	for range 2 {
+		t := (m.sign*m.most*away - r) / (2 * d)
+		if !(t > t0 && t < t1) {
+			return
+		}
+		count(t)
+	}
+}

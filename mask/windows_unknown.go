@@ -187,7 +187,8 @@ func (x *windower) walk(o *ownLine, c *windowCells, j int) {
 		unknown = math.Inf(1)
 		last := o.s
 		for r := o.i + dir; r >= 0 && r < p.rows; r += dir {
-			h, s := o.height(r)
+			x := o.cross(r)
+			h, s := x.h, x.s
 			d := math.Abs(s - o.s)
 			if d > enough {
 				return unknown
