@@ -14,7 +14,7 @@ const guideShare = 0.7
 const guideRows = 3
 
 // guideStep is about the ratio of two neighbouring slopes of a guide.
-const guideStep = 1.1
+const guideStep = 1.4
 
 // laneRow holds a number for every lane of a strip, and fills whole vectors. The
 // lanes behind the last are NaN where that matters.
@@ -31,7 +31,6 @@ const guideLanes = 40
 type guide struct {
 	sign   float32   // -1 turns heights upside down
 	slopes []float32 // ascending
-	next   []float32 // the slope above, infinite above the last
 	top    []laneRow // by slope
 	row    []laneRow
 }
@@ -41,14 +40,10 @@ func (g *guide) setUp(bound, highest float64, sign float32) {
 	low := guideShare * bound
 	n := int(math.Ceil(math.Log(highest/low)/math.Log(guideStep))) + 1
 	g.sign = sign
-	g.slopes, g.next = resize(g.slopes, n), resize(g.next, n)
+	g.slopes = resize(g.slopes, n)
 	g.top, g.row = resize(g.top, n), resize(g.row, n)
 	for l := range n {
 		g.slopes[l] = float32(low * math.Pow(highest/low, float64(l)/float64(n-1)))
-		g.next[l] = float32(math.Inf(1))
-		if l > 0 {
-			g.next[l-1] = g.slopes[l]
-		}
 	}
 }
 
@@ -84,6 +79,9 @@ func (g *guide) advance(h *laneRow, d linear, row int) {
 // slope than most, one bit each. Cell c lies between lanes lane + c and the next,
 // or on the former. h0 are the heights, d is the distance of the cells from the
 // row passed last.
+//
+// How far a line is above a point is a convex function of its slope, so its chord
+// between two slopes is zero at no less than the largest slope of the ground.
 func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) uint32 {
 	if vectors {
 		return g.seesVector(lane, on, h0, most, d, j, n)
@@ -95,21 +93,27 @@ func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) 
 	out := uint32(0)
 	for c := range n {
 		z, d := g.sign*h0[c], d.at(j+c)
-		for l, slope := range g.slopes {
+		l, above, below := 0, float32(0), float32(0)
+		for ; l < len(g.slopes); l++ {
 			top := higher(g.top[l][lane+c], g.top[l][lane+c+other])
-			if !(top > z+float32(d*slope)) {
+			if below = top - (z + float32(d*g.slopes[l])); !(below > 0) {
 				break
 			}
-			if g.next[l] > float32(most[c]*guideSharpness) {
-				out |= 1 << c
-			}
+			above = below
+		}
+		slope := float32(math.Inf(1))
+		switch {
+		case l == 0:
+			continue
+		case l < len(g.slopes):
+			slope = g.slopes[l-1] + float32((g.slopes[l]-g.slopes[l-1])*(above/(above-below)))
+		}
+		if slope > most[c] {
+			out |= 1 << c
 		}
 	}
 	return out
 }
-
-// guideSharpness is guideShare for slopes that the cell has already seen.
-const guideSharpness = 0.95
 
 // between returns the rows between which a point of height h0, d from the row
 // passed last, sees the ground at its largest slope along a lane; ok is false

@@ -30,51 +30,46 @@ func (o *ownLine) cross(row int) (x station) {
 	return x
 }
 
-// shortSearch is the most rows that a line searches by itself. It sees more than
-// the lanes do where ground is as rough as its cells are wide.
-const shortSearch = 5
-
 // search raises most to the largest slope up to the ground of the line, down
-// with sign -1, that lies about the rows from near to far.
+// with sign -1, that lies about the rows from near to far. The lanes beside it
+// say where; from there the line itself is followed to where it is steepest.
 func (o *ownLine) search(lane, near, far, dir int, sign float64, most *float32) {
 	near, far = near-dir, far+dir
 	if (near-o.i)*dir < guideRows {
 		near = o.i + guideRows*dir
 	}
 	far = min(max(far, 0), o.p.rows-1)
-	var row int
-	if n := (far-near)*dir + 1; n <= shortSearch {
-		row = o.steepestOwn(near, n, dir, sign)
-	} else {
+	n := (far-near)*dir + 1
+	row := near + n/2*dir
+	if n > 3 {
 		row = o.steepest(lane, min(near, far), n, float32(sign))
 	}
-	if row < 0 {
+	if n <= 0 || row < 0 {
 		return
 	}
 	m := slope{float64(*most), sign, o.h, o.s}
-	x := o.cross(row)
-	m.raise(x.h, x.s)
-	for next := row - 1; next <= row+1; next += 2 {
-		if next >= 0 && next < o.p.rows {
-			y := o.cross(next)
-			m.between(&x, &y)
-		}
-	}
+	at := o.cross(row)
+	m.raise(at.h, at.s)
+	m.follow(o, row, -1, at)
+	m.follow(o, row, 1, at)
 	*most = float32(m.most)
 }
 
-// steepestOwn returns the row of n from one on that has the largest slope on the
-// line itself, -1 where there is none.
-func (o *ownLine) steepestOwn(from, n, dir int, sign float64) int {
-	best, top, at := -1, 0., 1.
-	for r := from; n > 0; n, r = n-1, r+dir {
-		x := o.cross(r)
-		rise, d := sign*(x.h-o.h), math.Abs(x.s-o.s)
-		if best < 0 && rise == rise || float64(rise*at) > float64(top*d) {
-			best, top, at = r, rise, d
+// follow looks at the ground from one row to the next, and on as long as that is
+// seen at a larger slope.
+func (m *slope) follow(o *ownLine, row, dir int, at station) {
+	for range guideRows - 1 {
+		row += dir
+		if row < 0 || row >= o.p.rows {
+			return
 		}
+		next := o.cross(row)
+		m.between(&at, &next)
+		if !m.above(&next, &at) {
+			return
+		}
+		at = next
 	}
-	return best
 }
 
 // steepest returns the row of n from one on at which the ground on the lanes
@@ -123,6 +118,11 @@ func (q *steepness) at(r int) float32 {
 // slope is the largest slope from a point up to ground, down with sign -1.
 type slope struct{ most, sign, h, s float64 }
 
+// above reports whether a place is seen at a larger slope than another.
+func (m *slope) above(a, b *station) bool {
+	return m.sign*(a.h-m.h)*math.Abs(b.s-m.s) > m.sign*(b.h-m.h)*math.Abs(a.s-m.s)
+}
+
 func (m *slope) raise(h, s float64) {
 	rise, away := m.sign*(h-m.h), math.Abs(s-m.s)
 	if rise > m.most*away {
@@ -165,7 +165,7 @@ func (m *slope) piece(a, b *station, c int, t0, t1 float64) {
 	// The ground farthest above the steepest line so far; twice, since that line
 	// is then steeper.
 	away := math.Copysign(ds, ds*(a.s-m.s)) // change of distance to the point for t
-	for range 2 {
+	for range guideRows - 1 {
 		t := (m.sign*m.most*away - r) / (2 * d)
 		if !(t > t0 && t < t1) {
 			return

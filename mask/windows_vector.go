@@ -44,10 +44,10 @@ func (g *guide) advanceVector(h *laneRow, d linear, row float32) {
 	for k := 0; k < guideLanes; k += vectorWidth {
 		z, away := load(h[:], k).Mul(sign), d.spread(k)
 		for l, slope := range g.slopes {
-			top, held := g.top[l][:], g.row[l][:]
-			t := load(top, k).Sub(away.Mul(archsimd.BroadcastFloat32x8(slope)))
-			store(rows.Merge(load(held, k), z.GreaterEqual(t)), held, k)
-			store(higherOf(z, t), top, k)
+			top, held := g.top[l][k:], g.row[l][k:]
+			t := load(top, 0).Sub(away.Mul(archsimd.BroadcastFloat32x8(slope)))
+			store(rows.Merge(load(held, 0), z.GreaterEqual(t)), held, 0)
+			store(higherOf(z, t), top, 0)
 		}
 	}
 }
@@ -57,21 +57,27 @@ func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n
 	if on {
 		other = lane
 	}
-	sign, sharp := archsimd.BroadcastFloat32x8(g.sign), archsimd.BroadcastFloat32x8(guideSharpness)
+	sign := archsimd.BroadcastFloat32x8(g.sign)
 	for c := 0; c < n; c += vectorWidth {
 		z, away := load(h0, c).Mul(sign), d.spread(j+c)
-		best := load(most, c).Mul(sharp)
-		bits := uint8(0)
+		var zero, above, below, low float32x8
+		high := archsimd.BroadcastFloat32x8(float32(math.Inf(1)))
+		up := zero.Equal(zero)
 		for l, slope := range g.slopes {
-			top := g.top[l][:]
-			t := higherOf(load(top, lane+c), load(top, other+c))
-			below := t.Greater(z.Add(away.Mul(archsimd.BroadcastFloat32x8(slope))))
-			if below.ToBits() == 0 {
+			m := archsimd.BroadcastFloat32x8(slope)
+			t := higherOf(load(g.top[l][lane+c:], 0), load(g.top[l][other+c:], 0))
+			x := t.Sub(z.Add(away.Mul(m)))
+			before := up
+			up = up.And(x.Greater(zero))
+			above, low = x.Merge(above, up), m.Merge(low, up)
+			ends := before.ToInt32x8().AndNot(up.ToInt32x8()).ToMask()
+			below, high = x.Merge(below, ends), m.Merge(high, ends)
+			if up.ToBits() == 0 {
 				break
 			}
-			bits |= below.And(archsimd.BroadcastFloat32x8(g.next[l]).Greater(best)).ToBits()
 		}
-		out |= uint32(bits) << c
+		m := low.Add(high.Sub(low).Mul(above.Div(above.Sub(below))))
+		out |= uint32(m.Greater(load(most, c)).ToBits()) << c
 	}
 	return out & uint32(1<<n-1)
 }
