@@ -165,7 +165,7 @@ func (m *slope) piece(a, b *station, c int, t0, t1 float64) {
 	// The ground farthest above the steepest line so far; twice, since that line
 	// is then steeper.
 	away := math.Copysign(ds, ds*(a.s-m.s)) // change of distance to the point for t
-	for range guideRows - 1 {
+	for range 2 {
 		t := (m.sign*m.most*away - r) / (2 * d)
 		if !(t > t0 && t < t1) {
 			return
