@@ -90,10 +90,10 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		if row == nil || q.p.sure[u-q.p.ua]&1 != 0 {
 			return never
 		}
-		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
+		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	} else {
 		row := q.p.row(u)
-		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
+		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	}
 	a = q.y.seeM(s, a)
 	b = q.y.seeM(s, b)
@@ -120,9 +120,9 @@ func around(a, b, perRow float64) bounds {
 // reaches, counting ground that may be lit when possible is set.
 func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	row := q.p.row(u)
-	a, b := row[q.k].nearer, row[q.next].nearer
+	a, b := row.nearer[q.k], row.nearer[q.next]
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
-		a, b = unsure[q.k].nearer, unsure[q.next].nearer
+		a, b = unsure.nearer[q.k], unsure.nearer[q.next]
 	}
 	return q.ranges(u, a, b, s)
 }
@@ -131,9 +131,9 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 // range there.
 func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	row := q.p.row(u)
-	a, b := row[q.k].farther, row[q.next].farther
+	a, b := row.farther[q.k], row.farther[q.next]
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
-		a, b = unsure[q.k].farther, unsure[q.next].farther
+		a, b = unsure.farther[q.k], unsure.farther[q.next]
 	}
 	return q.ranges(u, a, b, s)
 }

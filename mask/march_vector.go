@@ -1,0 +1,86 @@
+//go:build goexperiment.simd && amd64 && !go1.27
+
+package mask
+
+import "simd/archsimd"
+
+// The marches of a plane wave on vectors of four lanes: what the loops of march.go
+// do where all lanes lie in the DEM and no height is missing. Max and Min take
+// their second operand where the first is NaN.
+
+type byLane36 [36]float32
+
+const marchVectors = (marchLanes + 3) / 4 * 4
+
+func four(x float64) archsimd.Float64x4 { return archsimd.BroadcastFloat64x4(x) }
+
+func lanes4(a *byLane, k int) archsimd.Float64x4 { return archsimd.LoadFloat64x4((*[4]float64)(a[k:])) }
+
+func put4(a *byLane, k int, x archsimd.Float64x4) { x.Store((*[4]float64)(a[k:])) }
+
+func put4as32(a *byLane32, k int, x archsimd.Float64x4) {
+	x.ConvertToFloat32().Store((*[4]float32)(a[k:]))
+}
+
+// heightsVector is heightsAt for all lanes: z holds the heights before them, next
+// those beyond.
+func heightsVector(h *byLane, z, next *byLane36, rest float64) {
+	part := four(rest)
+	for k := 0; k < marchVectors; k += 4 {
+		p := archsimd.LoadFloat32x4((*[4]float32)(z[k:])).ConvertToFloat64()
+		q := archsimd.LoadFloat32x4((*[4]float32)(next[k:])).ConvertToFloat64()
+		put4(h, k, p.Add(part.Mul(q.Sub(p))))
+	}
+}
+
+// viewVector is strip.view.
+func viewVector(p *strip, m0, dm, r0, dr, cos float64) {
+	vm0, vdm, vr0, vdr, vcos := four(m0), four(dm), four(r0), four(dr), four(cos)
+	for k := 0; k < marchVectors; k += 4 {
+		h, n := lanes4(&p.h, k), lanes4(&laneNumbers, k)
+		put4(&p.m, k, h.Add(vm0.Add(vdm.Mul(n))))
+		put4(&p.r, k, vr0.Add(vdr.Mul(n)).Sub(vcos.Mul(h)))
+	}
+}
+
+// forwardVector is strip.forwardSure.
+func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
+	st := &p.fwd
+	lowest, highest, per := four(minShade), four(maxNearer), four(perCos)
+	none, zero := four(nan), four(0)
+	for k := 0; k < marchVectors; k += 4 {
+		h, m, r := lanes4(&p.h, k), lanes4(&p.m, k), lanes4(&p.r, k)
+		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
+		put4as32(&row.shade, k, h.Add(top.Sub(m)).Max(lowest))
+		put4as32(&row.nearer, k, h.Add(r.Sub(most).Mul(per)).Min(highest))
+		// Where ground comes out of the shadow, its edge counts.
+		bm, br := lanes4(&st.m, k), lanes4(&st.r, k)
+		edge := br.Add(top.Sub(bm).Div(m.Sub(bm)).Mul(r.Sub(br)))
+		hidden := m.LessEqual(top)
+		put4as32(&row.dip, k, none.Merge(r.Sub(edge).Max(zero), hidden))
+		put4(&st.most, k, most.Merge(edge.Max(r).Max(most), hidden))
+		put4(&st.top, k, top.Merge(m, hidden))
+		put4(&st.m, k, m.Merge(none, hidden))
+		put4(&st.r, k, r)
+	}
+}
+
+// backwardVector is strip.backwardSure.
+func backwardVector(p *strip, row *lines, minFarther, perCos float64) {
+	lowest, per := four(minFarther), four(perCos)
+	for k := 0; k < marchVectors; k += 4 {
+		farther := lanes4(&p.h, k).Sub(lanes4(&p.bwd.least, k).Sub(lanes4(&p.r, k)).Mul(per))
+		put4as32(&row.farther, k, farther.Max(lowest))
+	}
+}
+
+// backwardMoveVector is strip.backwardMove where no unknown terrain hides anything.
+func backwardMoveVector(p *strip, row *lines) {
+	st := &p.bwd
+	for k := 0; k < marchVectors; k += 4 {
+		dip := archsimd.LoadFloat32x4((*[4]float32)(row.dip[k:])).ConvertToFloat64()
+		begin := lanes4(&p.r, k).Sub(dip)
+		put4(&st.least, k, begin.Min(lanes4(&st.least, k)))
+		put4(&st.leastU, k, begin.Min(lanes4(&st.leastU, k)))
+	}
+}
