@@ -34,7 +34,6 @@ type sheet struct {
 	clear     []float32
 	fold      []float32
 	margins   laneMargins
-	cells     rowCells
 	returns   []float32
 	share     []float32
 	bin       float64 // metres of slant range, 0 when neither is wanted
@@ -159,30 +158,32 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 		return
 	}
 	z, base := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
-	r := &t.margins
-	r.fill(p, u, p.sure[u-p.ua] == 3)
-	if f.ln.uniform {
-		// All cells lie equally far from the lane before them.
-		first := int(math.Ceil(p.edgeA))
-		x := float64(first) - p.v0
-		k := min(int(x+onLane), 2)
-		w := weight(x, k)
-		if vectors && k == 1 && r.sure && t.bin == 0 && p.inDEM() == whole {
-			t.classifyRowVector(p, wk, u, va-first+1, vb-first+1, w)
-			return
-		}
-		for v := va; v < vb; v++ {
-			t.classifyCell(p, wk, u, v, k+v-first, w, z[v-base])
-		}
-		return
-	}
+	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
+	bundles := vectors && t.margins.sure && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
 	per := 1 / p.dv
 	for v := va; v < vb; v++ {
-		x := (float64(v) - p.v0) * per
-		k := min(max(int(x+onLane), 1), laneStep)
-		t.classifyCell(p, wk, u, v, k, weight(x, k), z[v-base])
+		if bundles {
+			from := min(v, vb-bundle)
+			if k := p.before(from, per); k >= 1 && k+bundle-1 <= laneStep && p.before(from+bundle-1, per) == k+bundle-1 {
+				t.classifyBundle(p, wk, u, from, v-from, k, per, (*[bundle]float32)(z[from-base:]))
+				v = from + bundle - 1
+				continue
+			}
+		}
+		k := min(max(p.before(v, per), 1), laneStep)
+		t.classifyCell(p, wk, u, v, k, weight(p.laneOf(v, per), k), z[v-base])
 	}
 }
+
+// bundle is the number of cells that a vector holds.
+const bundle = 8
+
+// laneOf returns the lane of the strip, fractional, on which column v lies in the
+// row where the strip stands; per is 1 / dv.
+func (p *strip) laneOf(v int, per float64) float64 { return (float64(v) - p.v0) * per }
+
+// before returns the last lane that does not lie beyond column v.
+func (p *strip) before(v int, per float64) int { return int(p.laneOf(v, per) + onLane) }
 
 // weight returns how far, in lanes, a cell at lane x lies beyond lane k; 0 where
 // it lies on it.

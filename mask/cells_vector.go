@@ -3,6 +3,7 @@
 package mask
 
 import (
+	"encoding/binary"
 	"math"
 	"math/bits"
 
@@ -51,74 +52,96 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 	}
 }
 
-// rowCells holds the cells of a row of a strip, by the lane before each.
-type rowCells struct {
-	clear, fold byLane32
-	raw         [padLanes]int32
+// weights8 are the weights of the cells from column v on after lanes k, k+1 and so
+// on, as weight gives them.
+func (p *strip) weights8(v, k int, per float64) archsimd.Float32x8 {
+	var w [bundle]float32
+	perLane, first := four(per), four(p.v0)
+	for j := 0; j < bundle; j += 4 {
+		number := lanes4(&laneNumbers, 0)
+		lane := four(float64(v + j)).Add(number).Sub(first).Mul(perLane)
+		beyond := lane.Sub(four(float64(k + j)).Add(number))
+		beyond.ConvertToFloat32().Store((*[4]float32)(w[j:]))
+	}
+	x := archsimd.LoadFloat32x8(&w)
+	return x.Masked(x.GreaterEqual(eight(onLane)))
 }
 
-// classifyRowVector classifies the cells after lanes ka to kb-1 of row u, where no
-// terrain is unknown: those that are not doubtful at once, the others one by one.
-func (t *sheet) classifyRowVector(p *strip, wk *walker, u, ka, kb int, w float32) {
-	f := p.f
-	first := int(math.Ceil(p.edgeA)) - 1 // column of the cell after lane 0
-	z := f.z[(u-f.ua)*f.width+first-f.at[u-f.ua]:]
-	c := &t.cells
-	doubtful := c.fill(&t.margins, (*byLane32)(z), w)
-	at, stride := t.place(f, u, first+ka)
-	if stride == 1 {
-		if t.wantClear {
-			copy(t.clear[at:at+kb-ka], c.clear[ka:kb])
-		}
-		if t.wantFold {
-			copy(t.fold[at:at+kb-ka], c.fold[ka:kb])
-		}
-		raw := t.raw[at : at+kb-ka]
-		for j, x := range c.raw[ka:kb] {
-			raw[j] = uint8(x)
-		}
-	} else {
-		for k, i := ka, at; k < kb; k, i = k+1, i+stride {
-			t.raw[i] = uint8(c.raw[k])
-			t.keep(i, c.clear[k], c.fold[k])
-		}
-	}
-	for doubtful &= 1<<kb - 1<<ka; doubtful != 0; doubtful &= doubtful - 1 {
-		k := bits.TrailingZeros64(doubtful)
-		t.classifyCell(p, wk, u, first+k, k, w, z[k])
-	}
-}
-
-// fill finds the margins of the cells at weight w after lanes 1 to laneStep from
-// the margins of the lanes and the cells' heights z, and the classes. It returns
-// the cells that are doubtful, as bits.
-func (c *rowCells) fill(r *laneMargins, z *byLane32, w float32) (doubtful uint64) {
-	part, zero, none := eight(w), eight(0), eight(float32(nan))
-	slackM, slackR := eight(r.slackM), eight(r.slackR)
-	code := func(c Class) archsimd.Int32x8 { return archsimd.BroadcastInt32x8(int32(c)) }
-	open, folded, hidden := code(Open), code(ActiveLayover), code(CastShadow)
-	far, near := code(LayoverFarther-ActiveLayover), code(LayoverNearer-ActiveLayover)
-	blend := func(a *byLane32, k int) archsimd.Float32x8 {
+// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1) after lanes
+// k+skip and so on, where no terrain is unknown: those that are not doubtful at
+// once, the others one by one. z are the heights from column v on.
+func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per float64, z *[bundle]float32) {
+	r := &t.margins
+	part, zero, none := p.weights8(v, k, per), eight(0), eight(float32(nan))
+	blend := func(a *byLane32) archsimd.Float32x8 {
 		x := lanes8(a, k)
 		return x.Add(part.Mul(lanes8(a, k+1).Sub(x)))
 	}
-	for k := 1; k <= laneStep; k += 8 {
-		m, n, g := blend(&r.clear, k), blend(&r.near, k), blend(&r.far, k)
-		bump := absolute(lanes8(z, k).Sub(blend(&r.h, k)))
-		sM, sN, sG := slackM.Add(bump), slackR.Add(bump), slackR.Add(bump)
-		if !r.exact {
-			sM, sN, sG = sM.Add(lanes8(&r.roughM, k)), sN.Add(lanes8(&r.roughN, k)), sG.Add(lanes8(&r.roughF, k))
-		}
-		dark := zero.Sub(sM).Greater(m)
-		sureR := absolute(n).Greater(sN).And(absolute(g).Greater(sG))
-		sure := dark.Or(m.Greater(sM).And(sureR))
-		doubtful |= uint64(^sure.ToBits()) << k
-
-		cause := far.Masked(g.LessEqual(zero)).Or(near.Masked(n.LessEqual(zero)))
-		raw := open.Merge(folded.Add(cause), cause.Equal(archsimd.Int32x8{}))
-		hidden.Merge(raw, dark).Store((*[8]int32)(c.raw[k:]))
-		put8(&c.clear, k, m)
-		put8(&c.fold, k, none.Merge(n.Min(g), dark))
+	m, n, g := blend(&r.clear), blend(&r.near), blend(&r.far)
+	bump := absolute(archsimd.LoadFloat32x8(z).Sub(blend(&r.h)))
+	slackM, slackN := eight(r.slackM).Add(bump), eight(r.slackR).Add(bump)
+	slackG := slackN
+	if !r.exact {
+		slackM = slackM.Add(lanes8(&r.roughM, k))
+		slackN, slackG = slackN.Add(lanes8(&r.roughN, k)), slackG.Add(lanes8(&r.roughF, k))
 	}
-	return doubtful
+	dark := zero.Sub(slackM).Greater(m)
+	sureR := absolute(n).Greater(slackN).And(absolute(g).Greater(slackG))
+	sure := dark.Or(m.Greater(slackM).And(sureR))
+	fold := none.Merge(n.Min(g), dark)
+	codes := codesOf(dark.ToBits(), n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+
+	i, stride := t.place(p.f, u, v)
+	if stride == 1 && skip == 0 {
+		binary.LittleEndian.PutUint64(t.raw[i:], codes)
+		if t.wantClear {
+			m.Store((*[bundle]float32)(t.clear[i:]))
+		}
+		if t.wantFold {
+			fold.Store((*[bundle]float32)(t.fold[i:]))
+		}
+	} else {
+		t.scatter(i, stride, skip, codes, m, fold)
+	}
+	doubtful := ^sure.ToBits() >> skip << skip
+	if doubtful == 0 {
+		return
+	}
+	var w [bundle]float32
+	part.Store(&w)
+	for ; doubtful != 0; doubtful &= doubtful - 1 {
+		j := bits.TrailingZeros8(doubtful)
+		t.classifyCell(p, wk, u, v+j, k+j, w[j], z[j])
+	}
 }
+
+// scatter stores the cells from skip on of a bundle whose first is at index i.
+func (t *sheet) scatter(i, stride, skip int, codes uint64, clear, fold archsimd.Float32x8) {
+	var c, f [bundle]float32
+	clear.Store(&c)
+	fold.Store(&f)
+	for j := skip; j < bundle; j++ {
+		t.raw[i+j*stride] = uint8(codes >> (8 * j))
+		t.keep(i+j*stride, c[j], f[j])
+	}
+}
+
+// codesOf returns the raw codes of a bundle of cells, a byte each, as lane.raw has
+// them, from bits that say which are hidden and which have partners.
+func codesOf(dark, near, far uint8) uint64 {
+	near, far = near&^dark, far&^dark
+	codes := spread[0xff] * uint64(Open)
+	codes += spread[dark] * uint64(CastShadow-Open)
+	codes += spread[near|far] * uint64(ActiveLayover-Open)
+	return codes + spread[far]*uint64(LayoverFarther-ActiveLayover) + spread[near]*uint64(LayoverNearer-ActiveLayover)
+}
+
+// spread has bit j of its index in byte j.
+var spread = func() (s [256]uint64) {
+	for i := range s {
+		for j := range 8 {
+			s[i] |= uint64(i>>j&1) << (8 * j)
+		}
+	}
+	return s
+}()

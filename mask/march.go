@@ -190,6 +190,8 @@ func (p *strip) sample(u int) span {
 		v := p.v0 + float64(l.a)
 		i := math.Floor(v)
 		heightsAt(p.h[l.a:l.b], z[int(i)-at:], v-i)
+	case vectors && l == whole:
+		spreadVector(&p.h, z, p.v0-float64(at), p.dv)
 	default:
 		v := p.v0 - float64(at)
 		h := p.h[l.a:l.b]

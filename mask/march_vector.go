@@ -5,8 +5,8 @@ package mask
 import "simd/archsimd"
 
 // The marches of a plane wave on vectors of four lanes: what the loops of march.go
-// do where all lanes lie in the DEM and no height is missing. Max and Min take
-// their second operand where the first is NaN.
+// do where all lanes lie in the DEM and no height is missing. Max and Min are for
+// numbers only: what they make of NaN is not defined.
 
 type byLane36 [36]float32
 
@@ -30,6 +30,31 @@ func heightsVector(h *byLane, z, next *byLane36, rest float64) {
 		p := archsimd.LoadFloat32x4((*[4]float32)(z[k:])).ConvertToFloat64()
 		q := archsimd.LoadFloat32x4((*[4]float32)(next[k:])).ConvertToFloat64()
 		put4(h, k, p.Add(part.Mul(q.Sub(p))))
+	}
+}
+
+// spreadVector fills h with the heights at columns v, v + dv and so on of z, as
+// lerp finds them. Where dv is about one, the columns of four lanes follow each
+// other.
+func spreadVector(h *byLane, z []float32, v, dv float64) {
+	first, step := four(v), four(dv)
+	nearly, close := four(1-onColumn), four(onColumn)
+	for k := 0; k < marchVectors; k += 4 {
+		a, b := v+float64(dv*float64(k)), v+float64(dv*float64(k+3))
+		i := int(a)
+		if k+4 <= marchLanes && int(b) == i+3 {
+			at := first.Add(step.Mul(lanes4(&laneNumbers, k)))
+			rest := at.Sub(four(float64(i)).Add(lanes4(&laneNumbers, 0)))
+			p := archsimd.LoadFloat32x4((*[4]float32)(z[i:])).ConvertToFloat64()
+			q := archsimd.LoadFloat32x4((*[4]float32)(z[i+1:])).ConvertToFloat64()
+			x := p.Add(rest.Mul(q.Sub(p)))
+			x = p.Merge(x, rest.Less(close))
+			put4(h, k, q.Merge(x, rest.Greater(nearly)))
+			continue
+		}
+		for j := k; j < min(k+4, marchLanes); j++ {
+			h[j] = lerp(z, v+float64(dv*float64(j)))
+		}
 	}
 }
 
@@ -57,8 +82,10 @@ func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
 		bm, br := lanes4(&st.m, k), lanes4(&st.r, k)
 		edge := br.Add(top.Sub(bm).Div(m.Sub(bm)).Mul(r.Sub(br)))
 		hidden := m.LessEqual(top)
-		put4as32(&row.dip, k, none.Merge(r.Sub(edge).Max(zero), hidden))
-		put4(&st.most, k, most.Merge(edge.Max(r).Max(most), hidden))
+		dip := r.Sub(edge).Merge(zero, edge.LessEqual(r))
+		put4as32(&row.dip, k, none.Merge(dip, hidden))
+		best := edge.Merge(r, edge.Greater(r))
+		put4(&st.most, k, most.Merge(best.Max(most), hidden))
 		put4(&st.top, k, top.Merge(m, hidden))
 		put4(&st.m, k, m.Merge(none, hidden))
 		put4(&st.r, k, r)
@@ -80,7 +107,8 @@ func backwardMoveVector(p *strip, row *lines) {
 	for k := 0; k < marchVectors; k += 4 {
 		dip := archsimd.LoadFloat32x4((*[4]float32)(row.dip[k:])).ConvertToFloat64()
 		begin := lanes4(&p.r, k).Sub(dip)
-		put4(&st.least, k, begin.Min(lanes4(&st.least, k)))
-		put4(&st.leastU, k, begin.Min(lanes4(&st.leastU, k)))
+		least, leastU := lanes4(&st.least, k), lanes4(&st.leastU, k)
+		put4(&st.least, k, begin.Merge(least, begin.Less(least)))
+		put4(&st.leastU, k, begin.Merge(leastU, begin.Less(leastU)))
 	}
 }
