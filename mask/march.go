@@ -26,7 +26,8 @@ type strip struct {
 	unsure []unsureLines // nil where no unknown terrain is within reach
 	// sure says of each row from ua on that no unknown terrain is in reach of
 	// it: bit 0 towards the radar, bit 1 away from it.
-	sure []uint8
+	sure   []uint8
+	gentle []gentle // by row from ua on
 
 	fwd forwardState
 	bwd backwardState
@@ -86,7 +87,7 @@ func (p *strip) setUp(f *field, j int) bool {
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
 	n := p.ub - p.ua
 	p.lines = resize(p.lines, n)
-	p.sure = resize(p.sure, n)
+	p.sure, p.gentle = resize(p.sure, n), resize(p.gentle, n)
 	p.unsure = p.unsure[:0]
 	if !f.sure {
 		p.unsure = resize(p.unsure, n)
@@ -371,6 +372,7 @@ func (p *strip) forward() {
 	last := p.ua - f.near - 1 // last row at which terrain was unknown
 	for u := p.ua; u < p.ub; u++ {
 		l := p.sample(u)
+		p.mark(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ua) {
 			if p.entering(l, u, -1, &p.fwd.unknown) {
 				last = u

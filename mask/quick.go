@@ -185,9 +185,22 @@ func (q *quickWalk) left(v float64) bool { return q.y.ln.places != nil && q.outs
 // lit reports whether no ground towards the radar reaches the point's m: none
 // that the DEM shows, or no unknown terrain.
 func (q *quickWalk) lit(unknown bool) bool {
+	own := true // the look angle grows up to the point itself
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
+		if own = own && q.p.gentle[u-1-q.p.ua].lightening(vb, va); own {
+			if (q.u-u)%2 == 1 {
+				b := q.shade(u-1, sb, unknown)
+				if b.high < q.m-q.slackM {
+					return true
+				}
+				if b.low > q.m+q.slackM {
+					return false
+				}
+			}
+			continue
+		}
 		_, high := q.between(u, -1, va, vb)
 		if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
 			q.step(u, -1, va, vb, sa, sb)
@@ -229,9 +242,22 @@ func (q *quickWalk) edgePoint(u int, h float64) (g point) {
 func (q *quickWalk) foldedNearer(possible bool) bool {
 	none := math.Inf(-1)
 	best := none
+	own := true // slant range grows up to the point itself
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
+		if own = own && q.p.gentle[u-1-q.p.ua].rising(vb, va); own {
+			if (q.u-u)%2 == 1 {
+				b := q.nearer(u-1, sb, possible)
+				if b.high < q.r-q.slackR {
+					return false
+				}
+				if b.low > q.r+q.slackR {
+					return true
+				}
+			}
+			continue
+		}
 		q.pieces = q.pieces[:0]
 		if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
 			q.step(u, -1, va, vb, sa, sb)
@@ -289,9 +315,22 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 // lit, or unknown terrain, does.
 func (q *quickWalk) foldedFarther(possible bool) bool {
 	top, topU, prev, hidden := q.m, math.Inf(-1), point{m: q.m, r: q.r}, false
+	own := true // slant range grows from the point on
 	for u := q.u; u < q.p.ub-1; u++ {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u + 1)
+		if own = own && q.p.gentle[u-q.p.ua].rising(va, vb); own {
+			if (u-q.u)%2 == 1 {
+				b := q.farther(u+1, sb, possible)
+				if b.low > q.r+q.slackR {
+					return false
+				}
+				if b.high < q.r-q.slackR {
+					return true
+				}
+			}
+			continue
+		}
 		// Ground beyond the point's slant range cannot hide any that is within
 		// it: it lies below the line of equal range, the other above.
 		q.pieces = q.pieces[:0]

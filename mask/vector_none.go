@@ -11,6 +11,7 @@ const noVectors = "built without vectors"
 
 func spreadVector(*byLane, []float32, float64, float64)              { panic(noVectors) }
 func heightsVector(*byLane, *byLane36, *byLane36, float64)           { panic(noVectors) }
+func markVector(*byLane41, *byLane41, *grade) (rises, lit uint64)    { panic(noVectors) }
 func viewVector(*strip, float64, float64, float64, float64, float64) { panic(noVectors) }
 func forwardVector(*strip, *lines, float64, float64, float64)        { panic(noVectors) }
 func backwardVector(*strip, *lines, float64, float64)                { panic(noVectors) }

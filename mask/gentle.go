@@ -1,0 +1,137 @@
+package mask
+
+import "math"
+
+// gentle says of the surface between a row and the next one where a range line
+// cannot be folded or hidden by it: a bit a column of patches, the first at
+// column base. A patch is the bilinear surface between four cells.
+type gentle struct {
+	base       int
+	rises, lit uint64 // slant range grows, the look angle grows, away from the radar
+}
+
+// grade is a bound on how the height may change along a range line over one row:
+// below rise slant range grows, above fall the look angle does. drift are the
+// columns that lines move in that row, at the least and at the most.
+type grade struct {
+	rise, fall float32
+	drift      [2]float32
+}
+
+// gradeShare is the part of the limits that ground keeps within, since lines are
+// not quite as straight as they are taken here.
+const gradeShare = 0.99
+
+// patches is the number of patches of a row that lines of a strip may cross.
+const patches = padLanes
+
+// gradeOf returns the bounds of the row at which the strip stands.
+func (p *strip) gradeOf(u int) grade {
+	ln := p.f.ln
+	i := min(u/laneStep, ln.nu-2)
+	n := i*ln.nk + p.j
+	m := n + ln.nk
+	drift := func(n, m int) float32 { return float32((ln.v[m] - ln.v[n]) * (1. / laneStep)) }
+	ds := min(ln.s[m]-ln.s[n], ln.s[m+1]-ln.s[n+1]) * (gradeShare / laneStep)
+	g := grade{drift: [2]float32{drift(n, m), drift(n+1, m+1)}}
+	g.rise, g.fall = float32(ds*ln.tan), float32(-ds*ln.cot)
+	if ln.places != nil {
+		g.rise, g.fall = p.gradeSeen(n, m)
+	}
+	return g
+}
+
+// gradeSeen finds the bounds of a platform: the least of those at the corners of
+// the cell of the lattice and at the lowest and the highest ground.
+func (p *strip) gradeSeen(n, m int) (rise, fall float32) {
+	ln, lim := p.f.ln, &p.f.lim
+	r, f := math.Inf(1), math.Inf(-1)
+	for _, at := range [2][2]int{{n, m}, {n + 1, m + 1}} {
+		a, b := ln.places[at[0]], ln.places[at[1]]
+		for _, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
+			dx, dy := b.x+h*b.nx-a.x-h*a.nx, b.y+h*b.ny-a.y-h*a.ny
+			for _, q := range [2]place{a, b} {
+				x, y := q.x+h*q.nx, q.y+h*q.ny
+				if x <= 0 || x*q.nx+y*q.ny >= 0 || q.ny*x-q.nx*y <= 0 { // under the track, above the antenna
+					return float32(math.Inf(-1)), float32(math.Inf(1))
+				}
+				r = min(r, -(x*dx+y*dy)/(x*q.nx+y*q.ny))
+				f = max(f, -(dy*x-y*dx)/(q.ny*x-q.nx*y))
+			}
+		}
+	}
+	return float32(r * gradeShare / laneStep), float32(f * gradeShare / laneStep)
+}
+
+// mark finds the gentle patches between row u, where the strip stands, and the
+// next one.
+func (p *strip) mark(u int) {
+	f := p.f
+	g := &p.gentle[u-p.ua]
+	*g = gentle{base: int(math.Floor(p.edgeA)) - 1}
+	if f.ln.fan != nil || u+1 >= p.ub {
+		return
+	}
+	i := u - f.ua
+	from, to := i*f.width+g.base-f.at[i], (i+1)*f.width+g.base-f.at[i+1]
+	if from < 0 || to < 0 {
+		return
+	}
+	a, b := f.z[from:], f.z[to:]
+	limits := p.gradeOf(u)
+	if vectors {
+		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
+		return
+	}
+	for k := range patches {
+		lo, hi := limits.of(a[k], a[k+1], b[k], b[k+1])
+		if hi < limits.rise {
+			g.rises |= 1 << k
+		}
+		if lo > limits.fall {
+			g.lit |= 1 << k
+		}
+	}
+}
+
+// byLane41 holds the heights of the corners of the patches.
+type byLane41 [patches + 1]float32
+
+// of returns the least and the most that the height may change along a line over
+// the patch between a0, a1 of one row and b0, b1 of the next.
+func (g *grade) of(a0, a1, b0, b1 float32) (lo, hi float32) {
+	e0, e1 := b0-a0, b1-a1
+	da, db := a1-a0, b1-b0
+	s, t := float32(da*g.drift[0]), float32(da*g.drift[1])
+	x, y := float32(db*g.drift[0]), float32(db*g.drift[1])
+	lo = min(e0, e1) + min(min(s, t), min(x, y))
+	hi = max(e0, e1) + max(max(s, t), max(x, y))
+	return lo, hi
+}
+
+// crossed returns the bits of the patches that a path from column va to column vb
+// crosses, 0 where they are not all known.
+func (g *gentle) crossed(va, vb float64) uint64 {
+	a, b := int(va)-g.base, int(vb)-g.base // columns are not negative inside the DEM
+	if a > b {
+		a, b = b, a
+	}
+	if a < 0 || b >= patches || va < 0 || vb < 0 {
+		return 0
+	}
+	return 1<<(b+1) - 1<<a
+}
+
+// rising reports whether slant range grows all along such a path, away from the
+// radar.
+func (g *gentle) rising(va, vb float64) bool {
+	c := g.crossed(va, vb)
+	return c != 0 && g.rises&c == c
+}
+
+// lightening reports whether the look angle grows all along such a path, away
+// from the radar.
+func (g *gentle) lightening(va, vb float64) bool {
+	c := g.crossed(va, vb)
+	return c != 0 && g.lit&c == c
+}
