@@ -37,6 +37,7 @@ func marginsVector(r *laneMargins, heights *byLane, row *lines, cos float32) {
 		put8(&r.near, k, lanes8(&row.nearer, k).Sub(h).Mul(c))
 		put8(&r.far, k, h.Sub(lanes8(&row.farther, k)).Mul(c))
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // roughnessVector is roughness: the bits of numbers that are not negative order as
@@ -50,6 +51,7 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 		d := gap(k - 1).Max(gap(k)).Max(gap(k + 1)).AsFloat32x8()
 		put8(rough, k, d.Mul(share.Add(growth.Mul(d).Mul(per))))
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // weights8 are the weights of the cells from column v on after lanes k, k+1 and so
@@ -104,11 +106,9 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 		t.scatter(i, stride, skip, codes, m, fold)
 	}
 	doubtful := ^sure.ToBits() >> skip << skip
-	if doubtful == 0 {
-		return
-	}
 	var w [bundle]float32
 	part.Store(&w)
+	archsimd.ClearAVXUpperBits()
 	for ; doubtful != 0; doubtful &= doubtful - 1 {
 		j := bits.TrailingZeros8(doubtful)
 		t.classifyCell(p, wk, u, v+j, k+j, w[j], z[j])

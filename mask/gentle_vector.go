@@ -22,5 +22,6 @@ func markVector(a, b *byLane41, g *grade) (rises, lit uint64) {
 		rises |= uint64(hi.Less(rise).And(known).ToBits()) << k
 		lit |= uint64(lo.Greater(fall).And(known).ToBits()) << k
 	}
+	archsimd.ClearAVXUpperBits()
 	return rises, lit
 }

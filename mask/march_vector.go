@@ -31,6 +31,7 @@ func heightsVector(h *byLane, z, next *byLane36, rest float64) {
 		q := archsimd.LoadFloat32x4((*[4]float32)(next[k:])).ConvertToFloat64()
 		put4(h, k, p.Add(part.Mul(q.Sub(p))))
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // spreadVector fills h with the heights at columns v, v + dv and so on of z, as
@@ -56,6 +57,7 @@ func spreadVector(h *byLane, z []float32, v, dv float64) {
 			h[j] = lerp(z, v+float64(dv*float64(j)))
 		}
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // viewVector is strip.view.
@@ -66,6 +68,7 @@ func viewVector(p *strip, m0, dm, r0, dr, cos float64) {
 		put4(&p.m, k, h.Add(vm0.Add(vdm.Mul(n))))
 		put4(&p.r, k, vr0.Add(vdr.Mul(n)).Sub(vcos.Mul(h)))
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // forwardVector is strip.forwardSure.
@@ -90,6 +93,7 @@ func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
 		put4(&st.m, k, m.Merge(none, hidden))
 		put4(&st.r, k, r)
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // backwardVector is strip.backwardSure.
@@ -99,6 +103,7 @@ func backwardVector(p *strip, row *lines, minFarther, perCos float64) {
 		farther := lanes4(&p.h, k).Sub(lanes4(&p.bwd.least, k).Sub(lanes4(&p.r, k)).Mul(per))
 		put4as32(&row.farther, k, farther.Max(lowest))
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 // backwardMoveVector is strip.backwardMove where no unknown terrain hides anything.
@@ -111,4 +116,5 @@ func backwardMoveVector(p *strip, row *lines) {
 		put4(&st.least, k, begin.Merge(least, begin.Less(least)))
 		put4(&st.leastU, k, begin.Merge(leastU, begin.Less(leastU)))
 	}
+	archsimd.ClearAVXUpperBits()
 }
