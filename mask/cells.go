@@ -211,6 +211,10 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 		return
 	}
 	m, doubt := t.margins.at(k, w, h)
+	folds := doubt&^(doubtClear|doubtClearU) != 0
+	if folds && p.steep(u, v) { // layover by its own slope, whatever shares its range
+		doubt &= doubtClear | doubtClearU
+	}
 	if doubt != 0 {
 		m = t.ask(p, wk, u, v, k, w, m, doubt)
 	}
@@ -222,7 +226,7 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 	t.keep(i, m.clear, fold)
 	if t.bin > 0 {
 		if m.clearU > 0 {
-			t.count(p.f, wk, u, v, i, fold)
+			t.count(p, wk, u, v, i, fold)
 		} else {
 			t.returns[i], t.share[i] = float32(nan), float32(nan)
 		}
@@ -244,12 +248,12 @@ func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt 
 
 // count fills what shares the slant range of a cell. Where nothing comes within
 // a bin, the cell is alone.
-func (t *sheet) count(f *field, wk *walker, u, v, i int, fold float32) {
+func (t *sheet) count(p *strip, wk *walker, u, v, i int, fold float32) {
 	t.returns[i], t.share[i] = 1, 1
 	if fold != fold {
 		t.returns[i], t.share[i] = fold, fold
-	} else if float64(fold) < t.bin {
-		n, share := wk.returns(f, u, v, t.bin)
+	} else if float64(fold) < t.bin || p.steep(u, v) {
+		n, share := wk.returns(p.f, u, v, t.bin)
 		t.returns[i], t.share[i] = float32(n), float32(share)
 	}
 }
@@ -263,6 +267,7 @@ type laneMargins struct {
 	exact               bool     // lanes run through cell centres
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
+	cos                    float32 // slant range for a metre of height
 	roughM, roughN, roughF byLane32
 }
 
@@ -278,6 +283,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	row := ln.minDS * max(sin, levelShare)
 	r.slackM, r.slackR = float32(settleShare*ln.minDS*max(math.Abs(cosine)/sin, levelShare)), float32(settleShare*row)
 	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
+	r.cos = float32(math.Abs(cosine))
 	l := p.inDEM()
 	if vectors && ln.places == nil && l == whole {
 		marginsVector(r, &p.h, p.row(u), float32(cosine))

@@ -88,11 +88,25 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 		slackN, slackG = slackN.Add(lanes8(&r.roughN, k)), slackG.Add(lanes8(&r.roughF, k))
 	}
 	dark := zero.Sub(slackM).Greater(m)
-	sureR := absolute(n).Greater(slackN).And(absolute(g).Greater(slackG))
-	sure := dark.Or(m.Greater(slackM).And(sureR))
+	lit := m.Greater(slackM).ToBits()
+	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
+	doubtful := ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	if doubtful != 0 {
+		e := early{strip: p, u: u, v: v, k: k, z: z, cos: r.cos, slackR: r.slackR, slackM: r.slackM}
+		yes := e.lit(doubtful &^ lit)
+		m, lit = e.positive(m, yes, r.slackM), lit|yes
+		doubtful = lit & (doubtN | doubtG)
+		if doubtful != 0 {
+			steep := p.steep8(u, v)
+			yes = e.alone(doubtN&doubtful&^steep, -1)
+			n, doubtN = e.positive(n, yes, r.slackR), doubtN&^(yes|steep)
+			yes = e.alone(doubtG&doubtful&^steep, 1)
+			g, doubtG = e.positive(g, yes, r.slackR), doubtG&^(yes|steep)
+		}
+		doubtful = ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	}
 	fold := none.Merge(n.Min(g), dark)
 	codes := codesOf(dark.ToBits(), n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
-
 	i, stride := t.place(p.f, u, v)
 	if stride == 1 && skip == 0 {
 		binary.LittleEndian.PutUint64(t.raw[i:], codes)
@@ -105,14 +119,107 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 	} else {
 		t.scatter(i, stride, skip, codes, m, fold)
 	}
-	doubtful := ^sure.ToBits() >> skip << skip
 	var w [bundle]float32
 	part.Store(&w)
 	archsimd.ClearAVXUpperBits()
-	for ; doubtful != 0; doubtful &= doubtful - 1 {
+	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
 		j := bits.TrailingZeros8(doubtful)
 		t.classifyCell(p, wk, u, v+j, k+j, w[j], z[j])
 	}
+}
+
+// steep8 is strip.steep for the cells from column v on.
+func (p *strip) steep8(u, v int) uint8 {
+	at, ok := p.vicinity(u, v)
+	if !ok {
+		return 0
+	}
+	z := p.f.z
+	load := func(i int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[bundle]float32)(z[i:])) }
+	half := eight(0.5)
+	along := load(at.after).Sub(load(at.before)).Mul(half)
+	across := load(at.here + 1).Sub(load(at.here - 1)).Mul(half)
+	return along.Add(across.Mul(eight(at.drift))).Greater(eight(at.limit)).ToBits()
+}
+
+// early settles cells of a bundle, as quickWalk does, on gentle ground: where the
+// lines of limits of a row nearby leave no doubt. What it cannot tell is for
+// quickWalk to say.
+type early struct {
+	*strip
+	u, v, k             int
+	z                   *[bundle]float32
+	cos, slackM, slackR float32
+}
+
+// earlyRows is how far early looks.
+const earlyRows = 4
+
+// lit returns which of the doubtful cells are lit.
+func (e *early) lit(doubtful uint8) (yes uint8) {
+	worth := float32(0)
+	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
+		g := &e.gentle[u-1-e.ua]
+		doubtful &= e.along(e.v, e.u, u, u-1, g.lit)
+		if worth += g.worthM; (e.u-u)%2 == 1 {
+			line := &e.row(u - 1).shade
+			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
+			h := archsimd.LoadFloat32x8(e.z)
+			now := e.clear(h.Sub(x.Max(y)), x.Sub(y), worth, 1, e.slackM) & doubtful
+			yes, doubtful = yes|now, doubtful&^now
+		}
+	}
+	return yes
+}
+
+// alone returns which of the doubtful cells have no partner towards the radar, dir
+// -1, or away from it, 1.
+func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
+	worth := float32(0)
+	for n := 1; doubtful != 0 && n <= earlyRows; n++ {
+		u := e.u + dir*n
+		if u < e.ua || u >= e.ub {
+			break
+		}
+		g := &e.gentle[min(u, u-dir)-e.ua]
+		doubtful &= e.strip.along(e.v, e.u, u-dir, u, g.rises)
+		if worth += g.worthR; n%2 == 0 {
+			h := archsimd.LoadFloat32x8(e.z)
+			var rise, gap archsimd.Float32x8
+			if dir < 0 {
+				line := &e.row(u).nearer
+				x, y := lanes8(line, e.k), lanes8(line, e.k+1)
+				rise, gap = x.Min(y).Sub(h), x.Sub(y)
+			} else {
+				line := &e.row(u).farther
+				x, y := lanes8(line, e.k), lanes8(line, e.k+1)
+				rise, gap = h.Sub(x.Max(y)), x.Sub(y)
+			}
+			now := e.clear(rise, gap, worth, e.cos, e.slackR) & doubtful
+			yes, doubtful = yes|now, doubtful&^now
+		}
+	}
+	return yes
+}
+
+// clear returns which cells clear a line by more than the slack. rise is how far
+// they lie on the right side of it, metres of height, gap the difference of the
+// lanes beside them, worth what the way is worth; scale makes margins of them.
+func (e *early) clear(rise, gap archsimd.Float32x8, worth, scale, slack float32) uint8 {
+	d := absolute(gap).Mul(eight(scale))
+	rough := d.Mul(eight(roughShare).Add(d.Mul(eight(roughGrowth * settleShare / slack))))
+	return rise.Add(eight(worth)).Mul(eight(scale)).Sub(rough).Greater(eight(slack)).ToBits()
+}
+
+// positive returns the margins x, with those of the cells yes positive.
+func (e *early) positive(x archsimd.Float32x8, yes uint8, slack float32) archsimd.Float32x8 {
+	if yes == 0 {
+		return x
+	}
+	bit := archsimd.LoadInt32x8(&[8]int32{1, 2, 4, 8, 16, 32, 64, 128})
+	asked := archsimd.BroadcastInt32x8(int32(yes)).And(bit).Equal(bit)
+	wrong := asked.And(x.LessEqual(eight(0)))
+	return eight(float32(atLimit*float64(slack))).Merge(x, wrong)
 }
 
 // scatter stores the cells from skip on of a bundle whose first is at index i.

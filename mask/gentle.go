@@ -8,6 +8,9 @@ import "math"
 type gentle struct {
 	base       int
 	rises, lit uint64 // slant range grows, the look angle grows, away from the radar
+	// What the row is worth, at the least: metres of height at equal slant range,
+	// and at an equal look angle.
+	worthR, worthM float32
 }
 
 // grade is a bound on how the height may change along a range line over one row:
@@ -79,6 +82,7 @@ func (p *strip) mark(u int) {
 	}
 	a, b := f.z[from:], f.z[to:]
 	limits := p.gradeOf(u)
+	g.worthR, g.worthM = limits.rise, -limits.fall
 	if vectors {
 		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
 		return
@@ -134,4 +138,69 @@ func (g *gentle) rising(va, vb float64) bool {
 func (g *gentle) lightening(va, vb float64) bool {
 	c := g.crossed(va, vb)
 	return c != 0 && g.lit&c == c
+}
+
+// vicinity are the places in a field's heights of a cell of a plane wave and of
+// those before and after it, the columns that lines move in a row, and the rise in
+// a row from which ground is layover by its own slope.
+type vicinity struct {
+	before, here, after int
+	drift, limit        float32
+}
+
+// surely is by how much a slope passes the limit to be layover whatever rounding
+// may do.
+const surely = 1.02 / gradeShare
+
+// vicinity finds the neighbours of the cell (u, v); ok is false where it lies at the
+// end of the field, and for platforms.
+func (p *strip) vicinity(u, v int) (a vicinity, ok bool) {
+	f := p.f
+	i := u - f.ua
+	if f.ln.places != nil || u <= p.ua || u >= p.ub-1 {
+		return a, false
+	}
+	a.before, a.here, a.after = (i-1)*f.width+v-f.at[i-1], i*f.width+v-f.at[i], (i+1)*f.width+v-f.at[i+1]
+	n := u - p.ua
+	a.drift, a.limit = float32(p.at[n+1].v0-p.at[n].v0), p.gentle[n].worthR*surely
+	return a, true
+}
+
+// steep reports whether a plane wave has layover at the cell (u, v) by its own
+// slope, the central differences.
+func (p *strip) steep(u, v int) bool {
+	a, ok := p.vicinity(u, v)
+	if !ok {
+		return false
+	}
+	z := p.f.z
+	along := float32(float32(z[a.after]-z[a.before]) * 0.5)
+	across := float32(float32(z[a.here+1]-z[a.here-1]) * 0.5)
+	return along+float32(across*a.drift) > a.limit
+}
+
+// along returns which of a bundle of cells, a bit each, from column v of row u on,
+// have a path over one row, from row a to row b next to it, on which all patches
+// are among those given for it. The strip stands at row u.
+func (p *strip) along(v, u, a, b int, good uint64) uint8 {
+	here, from, to := p.at[u-p.ua], p.at[a-p.ua], p.at[b-p.ua]
+	first := (float64(v) - here.v0) / here.dv
+	last := first + (bundle-1)/here.dv
+	c0, c1 := from.column(first), to.column(first)
+	d0, d1 := from.column(last)-(bundle-1), to.column(last)-(bundle-1)
+	lo := min(min(c0, c1), min(d0, d1))
+	hi := max(max(c0, c1), max(d0, d1))
+	if lo < 0 {
+		return 0
+	}
+	base := p.gentle[min(a, b)-p.ua].base
+	x, y := int(lo)-base, int(hi)-base
+	if x < 0 || y+bundle > patches {
+		return 0
+	}
+	out := good >> x
+	for x++; x <= y; x++ {
+		out &= good >> x
+	}
+	return uint8(out)
 }

@@ -27,7 +27,8 @@ type strip struct {
 	// sure says of each row from ua on that no unknown terrain is in reach of
 	// it: bit 0 towards the radar, bit 1 away from it.
 	sure   []uint8
-	gentle []gentle // by row from ua on
+	gentle []gentle  // by row from ua on
+	at     []lateral // the same
 
 	fwd forwardState
 	bwd backwardState
@@ -68,6 +69,11 @@ func (l *unsureLines) clear(k int) {
 	l.shade[k], l.nearer[k], l.farther[k] = x, x, x
 }
 
+// lateral says where the lanes cross a row: lane k at column v0 + dv k.
+type lateral struct{ v0, dv float64 }
+
+func (a lateral) column(lane float64) float64 { return a.v0 + float64(a.dv*lane) }
+
 // span is a range of lanes [a, b) of a strip.
 type span struct{ a, b int }
 
@@ -87,7 +93,7 @@ func (p *strip) setUp(f *field, j int) bool {
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
 	n := p.ub - p.ua
 	p.lines = resize(p.lines, n)
-	p.sure, p.gentle = resize(p.sure, n), resize(p.gentle, n)
+	p.sure, p.gentle, p.at = resize(p.sure, n), resize(p.gentle, n), resize(p.at, n)
 	p.unsure = p.unsure[:0]
 	if !f.sure {
 		p.unsure = resize(p.unsure, n)
@@ -372,6 +378,7 @@ func (p *strip) forward() {
 	last := p.ua - f.near - 1 // last row at which terrain was unknown
 	for u := p.ua; u < p.ub; u++ {
 		l := p.sample(u)
+		p.at[u-p.ua] = lateral{p.v0, p.dv}
 		p.mark(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ua) {
 			if p.entering(l, u, -1, &p.fwd.unknown) {
