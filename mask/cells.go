@@ -267,6 +267,8 @@ type laneMargins struct {
 	exact               bool     // lanes run through cell centres
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
+	perM, perR             float32 // rows a metre
+	tinyM, tinyR           float32 // see atLimit
 	cos                    float32 // slant range for a metre of height
 	roughM, roughN, roughF byLane32
 }
@@ -283,6 +285,8 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	row := ln.minDS * max(sin, levelShare)
 	r.slackM, r.slackR = float32(settleShare*ln.minDS*max(math.Abs(cosine)/sin, levelShare)), float32(settleShare*row)
 	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
+	r.perM, r.perR = settleShare/r.slackM, settleShare/r.slackR
+	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
 	r.cos = float32(math.Abs(cosine))
 	l := p.inDEM()
 	if vectors && ln.places == nil && l == whole {
@@ -294,9 +298,9 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		}
 	}
 	if !r.exact {
-		roughness(&r.clear, &r.roughM, settleShare/r.slackM)
-		roughness(&r.near, &r.roughN, settleShare/r.slackR)
-		roughness(&r.far, &r.roughF, settleShare/r.slackR)
+		roughness(&r.clear, &r.roughM, r.perM)
+		roughness(&r.near, &r.roughN, r.perR)
+		roughness(&r.far, &r.roughF, r.perR)
 	}
 	if sure {
 		return
@@ -419,8 +423,8 @@ func (r *laneMargins) at(k int, w, h float32) (m lane, d doubts) {
 	if w != 0 {
 		bump = abs32(h - mix(r.h[k], r.h[k+1], w))
 	}
-	blend := func(a, rough *byLane32, slack float32, bit doubts) float32 {
-		x := a[k]
+	blend := func(a, rough *byLane32, base float32, bit doubts) float32 {
+		x, slack := a[k], base
 		slack += bump
 		if w != 0 { // at weight 0 the second does not count, also when it is NaN
 			switch y := a[k+1]; {
@@ -432,8 +436,13 @@ func (r *laneMargins) at(k int, w, h float32) (m lane, d doubts) {
 				x = mix(x, y, w)
 			}
 		}
-		if !r.exact {
+		switch {
+		case r.exact:
+		case w != 0:
 			slack += rough[k]
+		default: // as much on one side as on the other
+			d := max(abs32(a[k]-a[k-1]), abs32(a[k+1]-a[k]))
+			slack += d * (roughShare + float32(float32(roughGrowth*d)*(settleShare/base)))
 		}
 		if !(x > slack || x < -slack) {
 			d |= bit

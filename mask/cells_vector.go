@@ -59,11 +59,13 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 func (p *strip) weights8(v, k int, per float64) archsimd.Float32x8 {
 	var w [bundle]float32
 	perLane, first := four(per), four(p.v0)
+	number := archsimd.LoadInt32x4(&[4]int32{0, 1, 2, 3})
+	from := func(i int) archsimd.Float64x4 {
+		return archsimd.BroadcastInt32x4(int32(i)).Add(number).ConvertToFloat64()
+	}
 	for j := 0; j < bundle; j += 4 {
-		number := lanes4(&laneNumbers, 0)
-		lane := four(float64(v + j)).Add(number).Sub(first).Mul(perLane)
-		beyond := lane.Sub(four(float64(k + j)).Add(number))
-		beyond.ConvertToFloat32().Store((*[4]float32)(w[j:]))
+		lane := from(v + j).Sub(first).Mul(perLane)
+		lane.Sub(from(k + j)).ConvertToFloat32().Store((*[4]float32)(w[j:]))
 	}
 	x := archsimd.LoadFloat32x8(&w)
 	return x.Masked(x.GreaterEqual(eight(onLane)))
@@ -92,18 +94,21 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
 	doubtful := ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
 	if doubtful != 0 {
-		e := early{strip: p, u: u, v: v, k: k, z: z, cos: r.cos, slackR: r.slackR, slackM: r.slackM}
+		e := early{strip: p, laneMargins: r, u: u, v: v, k: k, z: z}
 		yes := e.lit(doubtful &^ lit)
-		m, lit = e.positive(m, yes, r.slackM), lit|yes
+		m, lit = positive(m, yes, r.tinyM), lit|yes
 		doubtful = lit & (doubtN | doubtG)
 		if doubtful != 0 {
 			steep := p.steep8(u, v)
 			yes = e.alone(doubtN&doubtful&^steep, -1)
-			n, doubtN = e.positive(n, yes, r.slackR), doubtN&^(yes|steep)
+			n, doubtN = positive(n, yes, r.tinyR), doubtN&^(yes|steep)
 			yes = e.alone(doubtG&doubtful&^steep, 1)
-			g, doubtG = e.positive(g, yes, r.slackR), doubtG&^(yes|steep)
+			g, doubtG = positive(g, yes, r.tinyR), doubtG&^(yes|steep)
 		}
 		doubtful = ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	}
+	if !r.exact { // cells on a lane are treated alike on both sides
+		doubtful |= part.Equal(zero).ToBits()
 	}
 	fold := none.Merge(n.Min(g), dark)
 	codes := codesOf(dark.ToBits(), n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
@@ -147,25 +152,32 @@ func (p *strip) steep8(u, v int) uint8 {
 // quickWalk to say.
 type early struct {
 	*strip
-	u, v, k             int
-	z                   *[bundle]float32
-	cos, slackM, slackR float32
+	*laneMargins
+	u, v, k int
+	z       *[bundle]float32
 }
 
 // earlyRows is how far early looks.
 const earlyRows = 4
 
+// path is strip.along for the row before or after u; no vectors are alive here.
+//
+//go:noinline
+func (e *early) path(u, next int, good uint64) uint8 {
+	archsimd.ClearAVXUpperBits()
+	return e.along(e.v, e.u, u, next, good)
+}
+
 // lit returns which of the doubtful cells are lit.
 func (e *early) lit(doubtful uint8) (yes uint8) {
-	worth := float32(0)
 	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
 		g := &e.gentle[u-1-e.ua]
-		doubtful &= e.along(e.v, e.u, u, u-1, g.lit)
-		if worth += g.worthM; (e.u-u)%2 == 1 {
+		doubtful &= e.path(u, u-1, g.lit)
+		if doubtful != 0 && (e.u-u)%2 == 1 {
 			line := &e.row(u - 1).shade
 			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
-			h := archsimd.LoadFloat32x8(e.z)
-			now := e.clear(h.Sub(x.Max(y)), x.Sub(y), worth, 1, e.slackM) & doubtful
+			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(g.worthM, e.u-u+1))
+			now := clears(rise, absolute(x.Sub(y)), e.perM, e.slackM) & doubtful
 			yes, doubtful = yes|now, doubtful&^now
 		}
 	}
@@ -175,51 +187,55 @@ func (e *early) lit(doubtful uint8) (yes uint8) {
 // alone returns which of the doubtful cells have no partner towards the radar, dir
 // -1, or away from it, 1.
 func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
-	worth := float32(0)
 	for n := 1; doubtful != 0 && n <= earlyRows; n++ {
 		u := e.u + dir*n
 		if u < e.ua || u >= e.ub {
 			break
 		}
 		g := &e.gentle[min(u, u-dir)-e.ua]
-		doubtful &= e.strip.along(e.v, e.u, u-dir, u, g.rises)
-		if worth += g.worthR; n%2 == 0 {
-			h := archsimd.LoadFloat32x8(e.z)
-			var rise, gap archsimd.Float32x8
-			if dir < 0 {
-				line := &e.row(u).nearer
-				x, y := lanes8(line, e.k), lanes8(line, e.k+1)
-				rise, gap = x.Min(y).Sub(h), x.Sub(y)
-			} else {
-				line := &e.row(u).farther
-				x, y := lanes8(line, e.k), lanes8(line, e.k+1)
-				rise, gap = h.Sub(x.Max(y)), x.Sub(y)
-			}
-			now := e.clear(rise, gap, worth, e.cos, e.slackR) & doubtful
-			yes, doubtful = yes|now, doubtful&^now
+		doubtful &= e.path(u-dir, u, g.rises)
+		if doubtful == 0 || n%2 == 1 {
+			continue
 		}
+		h := archsimd.LoadFloat32x8(e.z)
+		line := &e.row(u).nearer
+		if dir > 0 {
+			line = &e.row(u).farther
+		}
+		x, y := lanes8(line, e.k), lanes8(line, e.k+1)
+		rise := x.Min(y).Sub(h)
+		if dir > 0 {
+			rise = h.Sub(x.Max(y))
+		}
+		cos := eight(e.cos)
+		rise = rise.Add(e.worth(g.worthR, n)).Mul(cos)
+		now := clears(rise, absolute(x.Sub(y)).Mul(cos), e.perR, e.slackR) & doubtful
+		yes, doubtful = yes|now, doubtful&^now
 	}
 	return yes
 }
 
-// clear returns which cells clear a line by more than the slack. rise is how far
-// they lie on the right side of it, metres of height, gap the difference of the
-// lanes beside them, worth what the way is worth; scale makes margins of them.
-func (e *early) clear(rise, gap archsimd.Float32x8, worth, scale, slack float32) uint8 {
-	d := absolute(gap).Mul(eight(scale))
-	rough := d.Mul(eight(roughShare).Add(d.Mul(eight(roughGrowth * settleShare / slack))))
-	return rise.Add(eight(worth)).Mul(eight(scale)).Sub(rough).Greater(eight(slack)).ToBits()
+// worth is what n rows are worth.
+func (e *early) worth(row float32, n int) archsimd.Float32x8 {
+	return eight(row).Mul(archsimd.BroadcastInt32x8(int32(n)).ConvertToFloat32())
+}
+
+// clears returns which margins are larger than the slack, for which the
+// difference of the lanes beside them counts as in roughness.
+func clears(margin, gap archsimd.Float32x8, perRow, slack float32) uint8 {
+	rough := gap.Mul(eight(roughShare).Add(gap.Mul(eight(roughGrowth)).Mul(eight(perRow))))
+	return margin.Sub(rough).Greater(eight(slack)).ToBits()
 }
 
 // positive returns the margins x, with those of the cells yes positive.
-func (e *early) positive(x archsimd.Float32x8, yes uint8, slack float32) archsimd.Float32x8 {
+func positive(x archsimd.Float32x8, yes uint8, tiny float32) archsimd.Float32x8 {
 	if yes == 0 {
 		return x
 	}
 	bit := archsimd.LoadInt32x8(&[8]int32{1, 2, 4, 8, 16, 32, 64, 128})
 	asked := archsimd.BroadcastInt32x8(int32(yes)).And(bit).Equal(bit)
 	wrong := asked.And(x.LessEqual(eight(0)))
-	return eight(float32(atLimit*float64(slack))).Merge(x, wrong)
+	return eight(tiny).Merge(x, wrong)
 }
 
 // scatter stores the cells from skip on of a bundle whose first is at index i.

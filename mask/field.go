@@ -84,7 +84,7 @@ func (f *field) setUp(ln *lanes, lim limits, u0, u1, v0, v1 int) {
 		end := int(math.Floor(ln.vAt(u, float64(k1)))) + 4
 		f.width = max(f.width, end-f.at[i])
 	}
-	f.z = resize(f.z, rows*f.width+padLanes) // vectors may read past the last row
+	f.z = resize(f.z, rows*f.width)
 }
 
 // resize returns a slice of length n, reusing a's memory when it can. The

@@ -8,11 +8,12 @@ import "math"
 // between its lanes 1 and 1+laneStep, and one lane more on each side that shows
 // how rough the ground is.
 type strip struct {
-	f      *field
-	j      int // column of the lattice
-	k0     int // lane 0
-	ua, ub int // rows that are marched
-	u0, u1 int // rows with cells
+	f      *field // the panel
+	panel  field  // the part of the field that the strip needs, close together
+	j      int    // column of the lattice
+	k0     int    // lane 0
+	ua, ub int    // rows that are marched
+	u0, u1 int    // rows with cells
 
 	// At the row that is sampled: column and ground distance of lane k0, and
 	// their change for one lane.
@@ -91,14 +92,46 @@ func (p *strip) setUp(f *field, j int) bool {
 		return false
 	}
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
+	p.copyPanel(f)
 	n := p.ub - p.ua
 	p.lines = resize(p.lines, n)
-	p.sure, p.gentle, p.at = resize(p.sure, n), resize(p.gentle, n), resize(p.at, n)
+	p.sure, p.gentle = resize(p.sure, n), resize(p.gentle, n)
 	p.unsure = p.unsure[:0]
 	if !f.sure {
 		p.unsure = resize(p.unsure, n)
 	}
 	return true
+}
+
+// panelColumns is the least number of columns of a panel: room for the corners of
+// all patches.
+const panelColumns = patches + 8
+
+// copyPanel copies the strip's heights from the field. A strip's rows lie far
+// apart there; close together they stay in the cache while it is marched to and
+// fro.
+func (p *strip) copyPanel(f *field) {
+	z, at := p.panel.z, p.panel.at
+	p.panel = *f
+	q := &p.panel
+	p.f = q
+	q.ua, q.ub = p.ua, p.ub
+	rows := p.ub - p.ua
+	p.at, q.at = resize(p.at, rows), resize(at, rows)
+	q.width = panelColumns
+	for i := range rows {
+		p.stand(p.ua + i)
+		p.at[i] = lateral{p.v0, p.dv}
+		q.at[i] = int(math.Floor(p.v0)) - 2
+		q.width = max(q.width, int(math.Floor(p.at[i].column(marchLanes-1)))+4-q.at[i])
+	}
+	q.z = resize(z, rows*q.width+padLanes) // vectors may read past the last row
+	for i := range rows {
+		from := q.at[i] - f.at[p.ua-f.ua+i]
+		row := f.z[(p.ua-f.ua+i)*f.width:][:f.width]
+		n := copy(q.z[i*q.width:][:q.width], row[min(max(from, 0), f.width):])
+		fillWith(q.z[i*q.width+n:(i+1)*q.width], float32(nan))
+	}
 }
 
 // row returns the lines of row u.
@@ -197,20 +230,47 @@ func (p *strip) sample(u int) span {
 		v := p.v0 + float64(l.a)
 		i := math.Floor(v)
 		heightsAt(p.h[l.a:l.b], z[int(i)-at:], v-i)
-	case vectors && l == whole:
-		spreadVector(&p.h, z, p.v0-float64(at), p.dv)
 	default:
-		v := p.v0 - float64(at)
-		h := p.h[l.a:l.b]
-		for i := range h {
-			h[i] = lerp(z, v+float64(p.dv*float64(l.a+i)))
-		}
+		p.spread(z, p.v0-float64(at), l)
 	}
 	if ln.places != nil {
 		return p.viewLanes(l)
 	}
 	p.view(l)
 	return l
+}
+
+// spread fills h with the heights of lanes l at columns v, v + dv and so on of z.
+func (p *strip) spread(z []float32, v float64, l span) {
+	if vectors && l == whole {
+		if turn, shift := turnOf(v, p.dv); shift*shift <= 1 {
+			spreadVector(&p.h, z, v, p.dv, turn, shift)
+			return
+		}
+	}
+	for k := l.a; k < l.b; k++ {
+		p.h[k] = lerp(z, v+float64(p.dv*float64(k)))
+	}
+}
+
+// turnOf returns by how much the whole columns of lanes at v, v + dv and so on
+// leave those that follow the first one by one, and from which lane on where that
+// is one.
+func turnOf(v, dv float64) (turn, shift int) {
+	beside := func(k int) int { return int(v+float64(dv*float64(k))) - k }
+	first := int(v)
+	if shift = beside(marchLanes-1) - first; shift == 0 {
+		return padLanes, 0
+	}
+	lo, hi := 0, marchLanes-1
+	for hi-lo > 1 {
+		if mid := (lo + hi) / 2; beside(mid) == first {
+			lo = mid
+		} else {
+			hi = mid
+		}
+	}
+	return hi, shift
 }
 
 // heights fills h with the heights at the same fraction of every step of z.
@@ -378,7 +438,6 @@ func (p *strip) forward() {
 	last := p.ua - f.near - 1 // last row at which terrain was unknown
 	for u := p.ua; u < p.ub; u++ {
 		l := p.sample(u)
-		p.at[u-p.ua] = lateral{p.v0, p.dv}
 		p.mark(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ua) {
 			if p.entering(l, u, -1, &p.fwd.unknown) {

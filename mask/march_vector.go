@@ -35,29 +35,30 @@ func heightsVector(h *byLane, z, next *byLane36, rest float64) {
 }
 
 // spreadVector fills h with the heights at columns v, v + dv and so on of z, as
-// lerp finds them. Where dv is about one, the columns of four lanes follow each
-// other.
-func spreadVector(h *byLane, z []float32, v, dv float64) {
+// lerp finds them. Where dv is about one, the columns of neighbouring lanes follow
+// each other: those of lanes from turn on are shift off.
+func spreadVector(h *byLane, z []float32, v, dv float64, turn, shift int) {
 	first, step := four(v), four(dv)
 	nearly, close := four(1-onColumn), four(onColumn)
+	before := int(v)
+	number := archsimd.LoadInt32x4(&[4]int32{0, 1, 2, 3})
 	for k := 0; k < marchVectors; k += 4 {
-		a, b := v+float64(dv*float64(k)), v+float64(dv*float64(k+3))
-		i := int(a)
-		if k+4 <= marchLanes && int(b) == i+3 {
-			at := first.Add(step.Mul(lanes4(&laneNumbers, k)))
-			rest := at.Sub(four(float64(i)).Add(lanes4(&laneNumbers, 0)))
-			p := archsimd.LoadFloat32x4((*[4]float32)(z[i:])).ConvertToFloat64()
-			q := archsimd.LoadFloat32x4((*[4]float32)(z[i+1:])).ConvertToFloat64()
-			x := p.Add(rest.Mul(q.Sub(p)))
-			x = p.Merge(x, rest.Less(close))
-			put4(h, k, q.Merge(x, rest.Greater(nearly)))
-			continue
+		i := before + k
+		if k >= turn {
+			i += shift
 		}
-		for j := k; j < min(k+4, marchLanes); j++ {
-			h[j] = lerp(z, v+float64(dv*float64(j)))
-		}
+		at := first.Add(step.Mul(lanes4(&laneNumbers, k)))
+		rest := at.Sub(archsimd.BroadcastInt32x4(int32(i)).Add(number).ConvertToFloat64())
+		p := archsimd.LoadFloat32x4((*[4]float32)(z[i:])).ConvertToFloat64()
+		q := archsimd.LoadFloat32x4((*[4]float32)(z[i+1:])).ConvertToFloat64()
+		x := p.Add(rest.Mul(q.Sub(p)))
+		x = p.Merge(x, rest.Less(close))
+		put4(h, k, q.Merge(x, rest.Greater(nearly)))
 	}
 	archsimd.ClearAVXUpperBits()
+	for k := turn &^ 3; k < min((turn+3)&^3, marchLanes); k++ {
+		h[k] = lerp(z, v+float64(dv*float64(k)))
+	}
 }
 
 // viewVector is strip.view.
