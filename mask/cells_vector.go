@@ -158,7 +158,7 @@ type early struct {
 }
 
 // earlyRows is how far early looks.
-const earlyRows = 4
+const earlyRows = 8
 
 // path is strip.along for the row before or after u; no vectors are alive here.
 //
