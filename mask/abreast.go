@@ -147,26 +147,26 @@ func (p *patch) at(t, above float64) (way, travel geometry.ENU) {
 	return way, travel
 }
 
-// seeAbreast is see for a platform. It also marks the cells that the look does
-// not see.
-func (w *worker) seeAbreast(ln *lanes, look *geometry.Look, row, col, at int) {
-	n := w.sheet.w.Cols
+// seeAbreast is see for a platform, for row r of the sheet. It also marks the
+// cells that the look does not see.
+func (w *worker) seeAbreast(ln *lanes, look *geometry.Look, r int) {
+	n, row, col := w.sheet.w.Cols, w.sheet.w.Row+r, w.sheet.w.Col
 	s := ln.sights
 	limits := swathOf(look)
+	z := w.sheet.heights(r)
 	for j := 0; j < n; {
 		from := min(int(float64(col+j)/s.colStep), s.cols-2)
 		p := s.patch(w.grid, row, from)
 		for ; j < n && (float64(col+j) < float64(from+1)*s.colStep || from == s.cols-2); j++ {
-			w.seeCell(ln, &p, &limits, row, col+j, j, at+j)
+			w.seeCell(ln, &p, &limits, row, col+j, j, float64(z[j]))
 		}
 	}
 }
 
 // seeCell fills the turns of one cell, and its facet and view when they are
 // wanted.
-func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j, at int) {
+func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j int, h float64) {
 	s := ln.sights
-	h := float64(w.sheet.z[at])
 	if h != h {
 		w.turns[j], w.unseen[j] = 0, true
 		return
@@ -183,7 +183,7 @@ func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j, at int
 	}
 	r2 := way.Dot(way)
 	w.unseen[j] = (!p.seen || limits.close(way.Up, r2)) && !w.asked(ln, row, col, h) || limits.outside(way.Up, r2)
-	c, d := float64(w.sheet.zc[at]), float64(w.sheet.zr[at])
+	c, d := float64(w.zc[j]), float64(w.zr[j])
 	gE := float64((p.ec+float64(t*p.dec))*c) + float64((p.er+float64(t*p.der))*d)
 	gN := float64((p.nc+float64(t*p.dnc))*c) + float64((p.nr+float64(t*p.dnr))*d)
 	// As geometry.SightFrom and Facet, but for the lengths of the vectors.

@@ -38,8 +38,61 @@ func (ln *lanes) viewOf(g *dem.Grid, row, col float64, withS bool) view {
 	return v
 }
 
-// between interpolates the line of sight and the distance of two views.
-func between(a, b *view, t float64) view {
-	m := func(x, y float64) float64 { return x + float64(t*(y-x)) }
-	return view{east: m(a.east, b.east), north: m(a.north, b.north), s: m(a.s, b.s)}
+// minus returns the difference of two views.
+func (a *view) minus(b *view) (d view) {
+	for i := range 3 {
+		d.up[i], d.c[i], d.r[i] = a.up[i]-b.up[i], a.c[i]-b.c[i], a.r[i]-b.r[i]
+	}
+	d.east, d.north, d.s = a.east-b.east, a.north-b.north, a.s-b.s
+	return d
+}
+
+// plus returns a and a part of a difference.
+func (a *view) plus(d *view, t float64) (v view) {
+	for i := range 3 {
+		v.up[i], v.c[i], v.r[i] = a.up[i]+float64(t*d.up[i]), a.c[i]+float64(t*d.c[i]), a.r[i]+float64(t*d.r[i])
+	}
+	v.east, v.north, v.s = a.east+float64(t*d.east), a.north+float64(t*d.north), a.s+float64(t*d.s)
+	return v
+}
+
+// nodeViews holds the views along one row, viewStep columns apart. They are
+// computed at every viewStep-th row of the grid and at its last, and
+// interpolated between; distances, which other rows of a lattice bend, are not.
+type nodeViews struct {
+	ln       *lanes
+	grid     *dem.Grid
+	first, n int // nodes
+	row      int // row of upper
+	upper, d []view
+	withS    bool
+}
+
+// setUp prepares the views of a window.
+func (v *nodeViews) setUp(ln *lanes, g *dem.Grid, w dem.Window, withS bool) {
+	v.ln, v.grid, v.withS, v.row = ln, g, withS, -1
+	v.first = w.Col / viewStep
+	v.n = (w.Col+w.Cols-1)/viewStep + 2 - v.first
+	v.upper, v.d = resize(v.upper, v.n), resize(v.d, v.n)
+}
+
+// at returns the view at node number block of a row.
+func (v *nodeViews) at(row, block int) view {
+	from := row / viewStep * viewStep
+	to := min(from+viewStep, v.grid.Rows-1)
+	if from != v.row {
+		v.row = from
+		for i := range v.n {
+			col := float64((v.first + i) * viewStep)
+			lower := v.ln.viewOf(v.grid, float64(to), col, false)
+			v.upper[i] = v.ln.viewOf(v.grid, float64(from), col, false)
+			v.d[i] = lower.minus(&v.upper[i])
+		}
+	}
+	i := block - v.first
+	x := v.upper[i].plus(&v.d[i], float64(row-from)/float64(max(to-from, 1)))
+	if v.withS {
+		x.s = v.ln.distance(v.ln.place(float64(row), float64(block*viewStep)))
+	}
+	return x
 }

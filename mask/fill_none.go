@@ -1,0 +1,9 @@
+//go:build !(goexperiment.simd && amd64 && !go1.27)
+
+package mask
+
+func turnsVector(*[viewStep]uint8, *[viewStep]float32, *[viewStep]float32, *view, *view, float64) {
+	panic("mask: no vectors in this build")
+}
+
+func centralVector(_, _, _, _ []float32) bool { panic("mask: no vectors in this build") }
