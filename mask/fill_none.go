@@ -7,3 +7,9 @@ func turnsVector(*[viewStep]uint8, *[viewStep]float32, *[viewStep]float32, *view
 }
 
 func centralVector(_, _, _, _ []float32) bool { panic("mask: no vectors in this build") }
+
+func completeVector([]float32) bool { panic("mask: no vectors in this build") }
+
+func turnVector([]float32, *[8]int, []float32, int, int, int, int) {
+	panic("mask: no vectors in this build")
+}

@@ -17,12 +17,61 @@ func centralVector(d, before, mid, after []float32) bool {
 		ok = ok.And(x.Equal(x)).And(h.Equal(h))
 	}
 	rest := centralScalar(d[n:], before[n:], mid[n:], after[n:])
-	var bits [8]int32
-	ok.ToInt32x8().Store(&bits)
-	for _, b := range bits {
-		rest = rest && b != 0
+	return rest && allOf(ok)
+}
+
+// completeVector is completeScalar, eight at a time.
+func completeVector(z []float32) bool {
+	n := len(z) &^ 7
+	one := archsimd.BroadcastFloat32x8(1)
+	ok := one.Equal(one)
+	for j := 0; j < n; j += 8 {
+		h := archsimd.LoadFloat32x8((*[8]float32)(z[j:]))
+		ok = ok.And(h.Equal(h))
 	}
-	return rest
+	return completeScalar(z[n:]) && allOf(ok)
+}
+
+// allOf reports whether a mask holds everywhere.
+func allOf(m archsimd.Mask32x8) bool {
+	return m.ToInt32x8().Xor(archsimd.BroadcastInt32x8(-1)).IsZero()
+}
+
+// turnVector copies eight columns of src, the rows lo and following of which are n
+// long, to as many rows of dst, for the rows va to vb of src: a multiple of eight.
+// rows says where in dst the row of each column begins, at row 0 of src.
+func turnVector(dst []float32, rows *[8]int, src []float32, n, lo, va, vb int) {
+	for v := va; v < vb; v += 8 {
+		s := src[(v-lo)*n:]
+		load := func(k int) archsimd.Int32x8 {
+			return archsimd.LoadFloat32x8((*[8]float32)(s[k*n:])).AsInt32x8()
+		}
+		// Pairs of rows, then fours, by halves of a vector.
+		p0, p1, p2, p3 := load(0), load(1), load(2), load(3)
+		q0, q1, q2, q3 := load(4), load(5), load(6), load(7)
+		a, b, c, d := fours(p0, p1, p2, p3)
+		e, f, g, h := fours(q0, q1, q2, q3)
+		store := func(k int, x archsimd.Int32x8) {
+			x.AsFloat32x8().Store((*[8]float32)(dst[rows[k]+v:]))
+		}
+		store(0, a.Select128FromPair(0, 2, e))
+		store(1, b.Select128FromPair(0, 2, f))
+		store(2, c.Select128FromPair(0, 2, g))
+		store(3, d.Select128FromPair(0, 2, h))
+		store(4, a.Select128FromPair(1, 3, e))
+		store(5, b.Select128FromPair(1, 3, f))
+		store(6, c.Select128FromPair(1, 3, g))
+		store(7, d.Select128FromPair(1, 3, h))
+	}
+}
+
+// fours returns the columns of four rows: the first to fourth column in the low
+// halves, the fifth to eighth in the high ones.
+func fours(p, q, r, s archsimd.Int32x8) (a, b, c, d archsimd.Int32x8) {
+	lo, hi := p.InterleaveLoGrouped(q).AsInt64x4(), p.InterleaveHiGrouped(q).AsInt64x4()
+	lo2, hi2 := r.InterleaveLoGrouped(s).AsInt64x4(), r.InterleaveHiGrouped(s).AsInt64x4()
+	return lo.InterleaveLoGrouped(lo2).AsInt32x8(), lo.InterleaveHiGrouped(lo2).AsInt32x8(),
+		hi.InterleaveLoGrouped(hi2).AsInt32x8(), hi.InterleaveHiGrouped(hi2).AsInt32x8()
 }
 
 // turnsVector fills the turns of a whole block, four cells at a time, as
