@@ -151,8 +151,11 @@ func completeScalar(z []float32) bool {
 }
 
 func fillWith(a []float32, x float32) {
-	for i := range a {
-		a[i] = x
+	if len(a) > 0 {
+		a[0] = x
+	}
+	for n := 1; n < len(a); n *= 2 { // copying beats storing one by one
+		copy(a[n:], a[:n])
 	}
 }
 

@@ -108,14 +108,13 @@ func (t *sheet) kept(l Layer) *[]float32 {
 // see fills the turns of one row, its facets and sights when a layer of values
 // is wanted, and its views when a layer asks for more.
 func (w *worker) see(row, col int) {
+	v := &w.nodes
+	v.stand(row)
 	n := len(w.turns)
-	block := col / viewStep
-	right := w.nodes.at(row, block)
-	for j := 0; j < n; block++ {
-		left := right
-		right = w.nodes.at(row, block+1)
-		end := min(n, (block+1)*viewStep-col)
-		w.seeBlock(&left, &right, j, end, col+j-block*viewStep)
+	for j, i := 0, 0; j < n; i++ {
+		left := v.col + i*viewStep
+		end := min(n, left+viewStep-col)
+		w.seeBlock(&v.row[i], &v.row[i+1], j, end, col+j-left)
 		j = end
 	}
 }
@@ -130,12 +129,12 @@ const (
 // seeBlock is see for the columns [from, to) that lie between two views, first
 // columns from the left one.
 func (w *worker) seeBlock(a, b *view, from, to, first int) {
-	d := b.minus(a)
 	limit := w.job.Options.CompressedBelow
 	if vectors && to-from == viewStep && !w.wantFacets {
-		turnsVector((*[viewStep]uint8)(w.turns[from:]), (*[viewStep]float32)(w.zc[from:]), (*[viewStep]float32)(w.zr[from:]), a, &d, limit)
+		turnsVector((*[viewStep]uint8)(w.turns[from:]), (*[viewStep]float32)(w.zc[from:]), (*[viewStep]float32)(w.zr[from:]), a, b, limit)
 		return
 	}
+	d := b.minus(a)
 	turns, zc, zr := w.turns[from:to], w.zc[from:to], w.zr[from:to]
 	for i := range turns {
 		t := float64(first+i) * (1. / viewStep)

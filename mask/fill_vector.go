@@ -75,12 +75,12 @@ func fours(p, q, r, s archsimd.Int32x8) (a, b, c, d archsimd.Int32x8) {
 }
 
 // turnsVector fills the turns of a whole block, four cells at a time, as
-// seeBlock does: a is the left view, d the difference to the right one.
-func turnsVector(turns *[viewStep]uint8, zc, zr *[viewStep]float32, a, d *view, limit float64) {
+// seeBlock does.
+func turnsVector(turns *[viewStep]uint8, zc, zr *[viewStep]float32, a, b *view, limit float64) {
 	all := archsimd.BroadcastFloat64x4
-	aUp0, aUp1, dUp0, dUp1 := all(a.up[0]), all(a.up[1]), all(d.up[0]), all(d.up[1])
-	aC0, aC1, dC0, dC1 := all(a.c[0]), all(a.c[1]), all(d.c[0]), all(d.c[1])
-	aR0, aR1, dR0, dR1 := all(a.r[0]), all(a.r[1]), all(d.r[0]), all(d.r[1])
+	aUp0, aUp1, dUp0, dUp1 := all(a.up[0]), all(a.up[1]), all(b.up[0]-a.up[0]), all(b.up[1]-a.up[1])
+	aC0, aC1, dC0, dC1 := all(a.c[0]), all(a.c[1]), all(b.c[0]-a.c[0]), all(b.c[1]-a.c[1])
+	aR0, aR1, dR0, dR1 := all(a.r[0]), all(a.r[1]), all(b.r[0]-a.r[0]), all(b.r[1]-a.r[1])
 	lim, zero := all(limit), all(0)
 	layover, shadow, compressed := archsimd.BroadcastInt64x4(turnLayover), archsimd.BroadcastInt64x4(turnShadow), archsimd.BroadcastInt64x4(turnCompressed)
 	// Lane l collects the turns of the cells l, 4 + l, 8 + l and so on, one a byte.
