@@ -12,6 +12,7 @@ type tileBuffers struct {
 	out                   *Tile
 	verdict               []uint8
 	nodes                 nodeViews
+	sights                sightRow
 	zc, zr                []float32        // of one row: change of height
 	turns                 []uint8          // of one row
 	facets                []geometry.Facet // of one row

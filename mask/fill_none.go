@@ -13,3 +13,5 @@ func completeVector([]float32) bool { panic("mask: no vectors in this build") }
 func turnVector([]float32, *[8]int, []float32, int, int, int, int) {
 	panic("mask: no vectors in this build")
 }
+
+func sightVector(*sightCells, int) { panic("mask: no vectors in this build") }

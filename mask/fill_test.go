@@ -1,6 +1,7 @@
 package mask
 
 import (
+	"context"
 	"fmt"
 	"math"
 	"math/rand/v2"
@@ -8,6 +9,9 @@ import (
 	"time"
 
 	"github.com/stretchr/testify/require"
+
+	"foldshade/dem"
+	"foldshade/geometry"
 )
 
 // The vectors give the bits of the portable loops, also where heights are
@@ -83,5 +87,55 @@ func TestClassesOfRows(t *testing.T) {
 			want[c]++
 		}
 		require.Equal(t, want, got, "seed %d", seed)
+	}
+}
+
+// The vectors give the turns of cells abreast of platforms that the portable
+// loops give one by one.
+func TestVectorsOfSights(t *testing.T) {
+	src := mountainSquare(t, 90)
+	src.Heights[400] = float32(math.NaN())
+	r, err := dem.Scan(context.Background(), src)
+	require.NoError(t, err)
+	at := func(row, col float64) geometry.Place {
+		l := src.Frame.At(row, col)
+		return geometry.Place{Lon: l.Lon, Lat: l.Lat}
+	}
+	look := func(kind geometry.Kind) geometry.Look {
+		l := geometry.NewLook()
+		l.Name, l.Kind, l.Side = "a", kind, geometry.Right
+		return l
+	}
+	orbit, flight, tripod := look(geometry.Orbit), look(geometry.Flight), look(geometry.Tripod)
+	orbit.Pass, orbit.Altitude = geometry.Ascending, 693e3
+	orbit.Inclination, orbit.Incidence = 98.18*geometry.Degree, 39*geometry.Degree
+	flight.Start, flight.End, flight.Height = at(150, -20), at(-50, -60), 5000
+	flight.NearIncidence, flight.FarIncidence = 30*geometry.Degree, 60*geometry.Degree
+	tripod.Position, tripod.Antenna, tripod.MaxRange = at(40, 30), 3, 1500
+	for _, l := range []geometry.Look{orbit, flight, tripod} {
+		run, err := newRunner(Job{Source: src, Range: r, Looks: []geometry.Look{l}, Layers: []Layer{VerdictLayer},
+			Window: src.Frame.Whole(), Options: DefaultOptions()})
+		require.NoError(t, err)
+		w := run.newWorker()
+		require.NoError(t, w.tile(context.Background(), dem.Window{Row: 3, Col: 1, Rows: 80, Cols: 87}))
+		seen := 0
+		for row := range 80 {
+			w.sheet.slopes(row, w.zc, w.zr)
+			w.seeAbreast(run.looks[0], &l, row)
+			turns, unseen := append([]uint8{}, w.turns...), append([]bool{}, w.unseen...)
+			s := run.looks[0].sights
+			s.row(&w.sights, w.grid, 3+row, 0, s.cols-2)
+			c := sightCells{worker: w, ln: run.looks[0], swath: swathOf(&l), row: 3 + row, col: 1, z: w.sheet.heights(row)}
+			for j := range turns {
+				c.patch = s.patch(&w.sights, s.left(1+j))
+				c.seeCell(j)
+				if !unseen[j] {
+					seen++
+				}
+			}
+			require.Equal(t, w.turns, turns, "%v, row %d", l.Kind, row)
+			require.Equal(t, w.unseen, unseen, "%v, row %d", l.Kind, row)
+		}
+		require.Greater(t, seen, 1000, "%v", l.Kind)
 	}
 }
