@@ -1,10 +1,6 @@
 package mask
 
-import (
-	"math"
-
-	"foldshade/dem"
-)
+import "math"
 
 // settleShare is the part of one row's worth of ground under which a margin is
 // doubtful, since lanes sample the surface about once a cell.
@@ -21,97 +17,6 @@ const roughGrowth = 3
 // foldUnknown is the raw code of a lit cell that is folded or not depending on
 // terrain that the DEM does not show. It never leaves the package.
 const foldUnknown Class = 51
-
-// sheet is the rectangle of cells that one worker finishes: what all looks
-// share, in row-major order of the grid.
-type sheet struct {
-	w      dem.Window
-	z      []float32 // heights
-	zc, zr []float32 // change of height for one column more, one row more
-	pad    []float32 // the window with a margin of one cell
-
-	raw       []uint8 // class codes before the cells' own slopes are looked at
-	clear     []float32
-	fold      []float32
-	margins   laneMargins
-	returns   []float32
-	share     []float32
-	bin       float64 // metres of slant range, 0 when neither is wanted
-	wantClear bool
-	wantFold  bool
-}
-
-// load reads the heights of the window and their central differences.
-func (t *sheet) load(src dem.Source, w dem.Window) error {
-	g := src.Grid()
-	t.w = w
-	n := w.Rows * w.Cols
-	t.z, t.zc, t.zr, t.raw = resize(t.z, n), resize(t.zc, n), resize(t.zr, n), resize(t.raw, n)
-	p := g.Clip(dem.Window{Row: w.Row - 1, Col: w.Col - 1, Rows: w.Rows + 2, Cols: w.Cols + 2})
-	t.pad = resize(t.pad, p.Rows*p.Cols)
-	if err := src.Read(p, t.pad); err != nil {
-		return err
-	}
-	for i := range w.Rows {
-		r := w.Row + i - p.Row
-		from := r*p.Cols + w.Col - p.Col
-		row := t.pad[from : from+w.Cols]
-		copy(t.z[i*w.Cols:], row)
-		above, below := row, row // itself where there is no row
-		if r > 0 {
-			above = t.pad[from-p.Cols:][:w.Cols]
-		}
-		if r < p.Rows-1 {
-			below = t.pad[from+p.Cols:][:w.Cols]
-		}
-		zc, zr := t.zc[i*w.Cols:(i+1)*w.Cols], t.zr[i*w.Cols:(i+1)*w.Cols]
-		for j, h := range row {
-			if r > 0 && r < p.Rows-1 {
-				if d := (below[j] - above[j]) / 2; d == d && h == h {
-					zr[j] = d
-					continue
-				}
-			}
-			zr[j] = difference(above[j], h, below[j], r > 0, r < p.Rows-1)
-		}
-		for j, h := range row {
-			hasL, hasR := w.Col+j > 0, w.Col+j < g.Cols-1
-			left, right := h, h
-			if hasL {
-				left = t.pad[from+j-1]
-			}
-			if hasR {
-				right = t.pad[from+j+1]
-			}
-			if d := (right - left) / 2; hasL && hasR && d == d && h == h {
-				zc[j] = d
-				continue
-			}
-			zc[j] = difference(left, h, right, hasL, hasR)
-		}
-	}
-	return nil
-}
-
-// difference returns the change of height over one step at the middle of
-// three neighbours: central where both others have a height, one-sided where
-// one has, NaN where none has or the middle is missing. Source: Zevenbergen &
-// Thorne, Earth Surface Processes and Landforms 12, 1987, 47-56 (from memory).
-func difference(a, mid, b float32, hasA, hasB bool) float32 {
-	if d := (b - a) / 2; hasA && hasB && d == d {
-		if mid != mid {
-			return mid
-		}
-		return d
-	}
-	if hasA && a == a {
-		return mid - a
-	}
-	if hasB {
-		return b - mid
-	}
-	return float32(nan)
-}
 
 // classify marches the field strip by strip, interpolates the lanes' margins to
 // the cells, settles the doubtful ones and leaves the raw codes, with the
