@@ -243,7 +243,7 @@ func (p *strip) sample(u int) span {
 // spread fills h with the heights of lanes l at columns v, v + dv and so on of z.
 func (p *strip) spread(z []float32, v float64, l span) {
 	if vectors && l == whole {
-		if turn, shift := turnOf(v, p.dv); shift*shift <= 1 {
+		if turn, shift := shiftOf(v, p.dv); shift*shift <= 1 {
 			spreadVector(&p.h, z, v, p.dv, turn, shift)
 			return
 		}
@@ -253,10 +253,10 @@ func (p *strip) spread(z []float32, v float64, l span) {
 	}
 }
 
-// turnOf returns by how much the whole columns of lanes at v, v + dv and so on
+// shiftOf returns by how much the whole columns of lanes at v, v + dv and so on
 // leave those that follow the first one by one, and from which lane on where that
 // is one.
-func turnOf(v, dv float64) (turn, shift int) {
+func shiftOf(v, dv float64) (turn, shift int) {
 	beside := func(k int) int { return int(v+float64(dv*float64(k))) - k }
 	first := int(v)
 	if shift = beside(marchLanes-1) - first; shift == 0 {
