@@ -128,9 +128,13 @@ func (p *strip) copyPanel(f *field) {
 	q.z = resize(z, rows*q.width+padLanes) // vectors may read past the last row
 	for i := range rows {
 		from := q.at[i] - f.at[p.ua-f.ua+i]
-		row := f.z[(p.ua-f.ua+i)*f.width:][:f.width]
-		n := copy(q.z[i*q.width:][:q.width], row[min(max(from, 0), f.width):])
-		fillWith(q.z[i*q.width+n:(i+1)*q.width], float32(nan))
+		row, to := f.z[(p.ua-f.ua+i)*f.width:][:f.width], q.z[i*q.width:][:q.width]
+		for from < 0 { // by rounding
+			to[0] = float32(nan)
+			to, from = to[1:], from+1
+		}
+		n := copy(to, row[min(from, f.width):])
+		fillWith(to[n:], float32(nan))
 	}
 }
 
