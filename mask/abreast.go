@@ -81,12 +81,10 @@ func abreastOf(g *dem.Grid, p geometry.Platform, row, col, datum, above float64)
 // patch is the part of a row between two nodes: quadratics in t, the columns from
 // the left one in steps of the lattice.
 type patch struct {
-	a, b, c        abreast
-	seen, abreast  bool
-	from           int     // node on the left
-	ec, er, nc, nr float64 // gE = ec zc + er zr, gN = nc zc + nr zr, at t = 0
-	dec, der       float64 // and their change to t = 1
-	dnc, dnr       float64
+	a, b, c       abreast
+	seen, abreast bool
+	from          int        // node on the left
+	per, dper     [4]float64 // perMetre at t = 0, and its change to t = 1
 }
 
 // weights returns the first of three nodes for a place between two of n, given in
@@ -97,35 +95,66 @@ func weights(x float64, n int) (first int, w [3]float64) {
 	return first, [3]float64{(t - 1) * (t - 2) / 2, t * (2 - t), t * (t - 1) / 2}
 }
 
-// patch prepares the columns right of node j for a row.
-func (s *sights) patch(g *dem.Grid, row, j int) patch {
-	p := patch{from: j, seen: true, abreast: true}
+// sightRow holds a platform abreast of a row of the grid, at columns of nodes.
+type sightRow struct {
+	first int // node
+	nodes []abreast
+	state []nodeState  // what holds at all nodes around
+	per   [][4]float64 // perMetre
+}
+
+// row prepares what the patches right of nodes j0 to j1 need in a row.
+func (s *sights) row(r *sightRow, g *dem.Grid, row, j0, j1 int) {
+	r.first = min(j0, s.cols-3)
+	n := min(j1+3, s.cols) - r.first
+	r.nodes, r.state, r.per = resize(r.nodes, n), resize(r.state, n), resize(r.per, n)
 	i0, w := weights(float64(row)/s.rowStep, s.rows)
-	j0 := min(j, s.cols-3)
-	var node [3]abreast
-	for q := range 3 {
+	for q := range n {
+		var node abreast
+		state := nodeSeen | nodeAbreast
 		for k := range 3 {
-			n := (i0+k)*s.cols + j0 + q
-			node[q] = node[q].plus(s.nodes[n], w[k])
-			p.seen = p.seen && s.state[n]&nodeSeen != 0
-			p.abreast = p.abreast && s.state[n]&nodeAbreast != 0
+			i := (i0+k)*s.cols + r.first + q
+			node = node.plus(s.nodes[i], w[k])
+			state &= s.state[i]
 		}
+		r.nodes[q], r.state[q] = node, state
+		r.per[q] = perMetre(g.At(float64(row), float64(r.first+q)*s.colStep))
 	}
+}
+
+// left returns the node on the left of a column, the last one but one at most.
+func (s *sights) left(col int) int {
+	i := int(float64(col) / s.colStep)
+	if float64(col) < float64(i)*s.colStep { // the quotient was rounded
+		i--
+	} else if float64(col) >= float64(i+1)*s.colStep {
+		i++
+	}
+	return min(i, s.cols-2)
+}
+
+// patch prepares the columns right of node j.
+func (s *sights) patch(r *sightRow, j int) (p patch) {
+	q := min(j, s.cols-3) - r.first
+	node := r.nodes[q : q+3]
+	state := r.state[q] & r.state[q+1] & r.state[q+2]
+	p.from, p.seen, p.abreast = j, state&nodeSeen != 0, state&nodeAbreast != 0
 	p.c = abreast{}.plus(node[0].plus(node[1], -2).plus(node[2], 1), 0.5)
 	p.a, p.b = node[0], node[1].plus(node[0], -1).plus(p.c, -1)
-	if j > j0 { // the last two nodes: count from the middle one of the three
+	if j -= r.first; j > q { // the last two nodes: count from the middle one of the three
 		p.a, p.b = p.a.plus(p.b, 1).plus(p.c, 1), p.b.plus(p.c, 2)
 	}
-	p.ec, p.er, p.nc, p.nr = perMetre(g.At(float64(row), float64(j)*s.colStep))
-	p.dec, p.der, p.dnc, p.dnr = perMetre(g.At(float64(row), float64(j+1)*s.colStep))
-	p.dec, p.der, p.dnc, p.dnr = p.dec-p.ec, p.der-p.er, p.dnc-p.nc, p.dnr-p.nr
+	p.per = r.per[j]
+	for i := range p.per {
+		p.dper[i] = r.per[j+1][i] - p.per[i]
+	}
 	return p
 }
 
-// perMetre returns the columns and rows of a metre east and north.
-func perMetre(l dem.Local) (ec, er, nc, nr float64) {
+// perMetre returns the columns and rows of a metre east and of one north.
+func perMetre(l dem.Local) [4]float64 {
 	det := l.ColE*l.RowN - l.ColN*l.RowE
-	return l.RowN / det, -l.ColN / det, -l.RowE / det, l.ColE / det
+	return [4]float64{l.RowN / det, -l.ColN / det, -l.RowE / det, l.ColE / det}
 }
 
 // at returns the platform abreast of the ground at t and a height above that of
@@ -147,47 +176,97 @@ func (p *patch) at(t, above float64) (way, travel geometry.ENU) {
 	return way, travel
 }
 
-// seeAbreast is see for a platform. It also marks the cells that the look does
-// not see.
-func (w *worker) seeAbreast(ln *lanes, look *geometry.Look, row, col, at int) {
-	n := w.sheet.w.Cols
+// seeAbreast is see for a platform, for row r of the sheet. It also marks the
+// cells that the look does not see.
+func (w *worker) seeAbreast(ln *lanes, look *geometry.Look, r int) {
+	n, row, col := w.sheet.w.Cols, w.sheet.w.Row+r, w.sheet.w.Col
 	s := ln.sights
-	limits := swathOf(look)
-	for j := 0; j < n; {
-		from := min(int(float64(col+j)/s.colStep), s.cols-2)
-		p := s.patch(w.grid, row, from)
-		for ; j < n && (float64(col+j) < float64(from+1)*s.colStep || from == s.cols-2); j++ {
-			w.seeCell(ln, &p, &limits, row, col+j, j, at+j)
+	first := s.left(col)
+	s.row(&w.sights, w.grid, row, first, s.left(col+n-1))
+	c := sightCells{worker: w, ln: ln, swath: swathOf(look), row: row, col: col, z: w.sheet.heights(r)}
+	for i, j := first, 0; j < n; i++ {
+		end := n
+		if i < s.cols-2 {
+			end = min(n, int(math.Ceil(float64(i+1)*s.colStep))-col)
+		}
+		c.patch = s.patch(&w.sights, i)
+		c.see(j, end)
+		j = end
+	}
+}
+
+// sightCells are the cells of a row between two nodes.
+type sightCells struct {
+	*worker
+	ln       *lanes
+	row, col int // of the grid, of the first column of the sheet
+	z        []float32
+	patch
+	swath
+}
+
+// turnAsk marks a cell of which the vectors leave the answer open.
+const turnAsk = 0x80
+
+// see fills the turns of the columns [from, to) of the sheet.
+func (c *sightCells) see(from, to int) {
+	if !vectors || c.wantFacets || !c.seen || !c.abreast || to-from < 4 {
+		for j := from; j < to; j++ {
+			c.seeCell(j)
+		}
+		return
+	}
+	clear(c.unseen[from:to])
+	for j := from; j < to; j += 4 {
+		sightVector(c, min(j, to-4))
+	}
+	for j := from; j < to; j++ {
+		if c.turns[j] == turnAsk {
+			c.seeCell(j)
 		}
 	}
 }
 
+// leanMost is the square of how much a range plane may lean, times the square
+// of a facet's normal, up to which foreshortening is the second component of
+// the facet over that of level ground to within 4 %: with l the lean and n the
+// normal, the divisor that is left out is between 1 - l n and 1 + l n and a part of
+// 10^-3, and l n is at most 0.0316. sureShare is a little more.
+const (
+	leanMost  = 1e-3
+	sureShare = 0.06
+)
+
 // seeCell fills the turns of one cell, and its facet and view when they are
 // wanted.
-func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j, at int) {
-	s := ln.sights
-	h := float64(w.sheet.z[at])
+func (c *sightCells) seeCell(j int) {
+	s, col, h := c.ln.sights, c.col+j, float64(c.z[j])
 	if h != h {
-		w.turns[j], w.unseen[j] = 0, true
+		c.turns[j], c.unseen[j] = 0, true
 		return
 	}
-	t := float64(col)/s.colStep - float64(p.from)
-	way, travel := p.at(t, h-ln.datum)
-	if !p.abreast {
-		a, _ := abreastOf(w.grid, ln.platform, float64(row), float64(col), ln.datum, h-ln.datum)
+	t := float64(col)/s.colStep - float64(c.from)
+	way, travel := c.at(t, h-c.ln.datum)
+	if !c.abreast {
+		a, _ := abreastOf(c.grid, c.ln.platform, float64(c.row), float64(col), c.ln.datum, h-c.ln.datum)
 		way, travel = a.way, a.travel
-		way.Up -= h - ln.datum
+		way.Up -= h - c.ln.datum
 	}
-	if limits.upright { // a tripod turns; its range planes are upright
+	if c.upright { // a tripod turns; its range planes are upright
 		travel = geometry.ENU{East: way.North, North: -way.East}
 	}
-	r2 := way.Dot(way)
-	w.unseen[j] = (!p.seen || limits.close(way.Up, r2)) && !w.asked(ln, row, col, h) || limits.outside(way.Up, r2)
-	c, d := float64(w.sheet.zc[at]), float64(w.sheet.zr[at])
-	gE := float64((p.ec+float64(t*p.dec))*c) + float64((p.er+float64(t*p.der))*d)
-	gN := float64((p.nc+float64(t*p.dnc))*c) + float64((p.nr+float64(t*p.dnr))*d)
+	r2 := float64(way.East*way.East) + float64(way.North*way.North) + float64(way.Up*way.Up)
+	c.unseen[j] = (!c.seen || c.close(way.Up, r2)) && !c.asked(c.ln, c.row, col, h) || c.outside(way.Up, r2)
+	per := func(i int) float64 { return c.per[i] + float64(t*c.dper[i]) }
+	zc, zr := float64(c.zc[j]), float64(c.zr[j])
+	gE := float64(per(0)*zc) + float64(per(1)*zr)
+	gN := float64(per(2)*zc) + float64(per(3)*zr)
 	// As geometry.SightFrom and Facet, but for the lengths of the vectors.
-	above := travel.Cross(way)
+	above := geometry.ENU{
+		East:  float64(travel.North*way.Up) - float64(travel.Up*way.North),
+		North: float64(travel.Up*way.East) - float64(travel.East*way.Up),
+		Up:    float64(travel.East*way.North) - float64(travel.North*way.East),
+	}
 	if above.Up < 0 {
 		above = geometry.ENU{East: -above.East, North: -above.North, Up: -above.Up}
 	}
@@ -199,11 +278,14 @@ func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j, at int
 	if gain <= 0 {
 		turn |= turnLayover
 	}
-	limit := w.job.Options.CompressedBelow
-	// Where the range plane leans little, foreshortening is gain / above.Up to
-	// within a few parts in a hundred.
-	maybe := gain < 2*limit*above.Up || travel.Up*travel.Up*(1+gE*gE+gN*gN) > 1e-3
-	if maybe || w.wantFacets {
+	limit := c.job.Options.CompressedBelow
+	level := float64(limit * above.Up)
+	lean := float64(travel.Up*travel.Up) * (1 + float64(gE*gE) + float64(gN*gN))
+	maybe := !(gain > float64(level*(1+sureShare))) && !(gain < float64(level*(1-sureShare))) || lean > leanMost || !(limit > 0)
+	if gain < level && !maybe {
+		turn |= turnCompressed
+	}
+	if maybe || c.wantFacets {
 		r := math.Sqrt(r2)
 		los := geometry.ENU{East: way.East / r, North: way.North / r, Up: way.Up / r}
 		sight := geometry.SightFrom(los, travel)
@@ -211,14 +293,14 @@ func (w *worker) seeCell(ln *lanes, p *patch, limits *swath, row, col, j, at int
 		if maybe && sight.Foreshortening(f) < limit {
 			turn |= turnCompressed
 		}
-		if w.wantFacets {
-			w.facets[j], w.ups[j] = f, [3]float64{los.Up, sight.Above.Up, sight.Across.Up}
+		if c.wantFacets {
+			c.facets[j], c.ups[j] = f, [3]float64{los.Up, sight.Above.Up, sight.Across.Up}
 		}
-		if w.wantViews {
-			w.views[j] = view{east: los.East, north: los.North, s: r}
+		if c.wantViews {
+			c.views[j] = view{east: los.East, north: los.North, s: r}
 		}
 	}
-	w.turns[j] = turn
+	c.turns[j] = turn
 }
 
 // asked reports whether the platform sees a cell.

@@ -96,11 +96,15 @@ func resize[T any](a []T, n int) []T {
 	return a[:n]
 }
 
+// chunkCells is about how many heights are read at once: few enough that they
+// are still in a processor's cache when they are put in their rows.
+const chunkCells = 96 << 10
+
 // load reads the heights, a chunk of rows at a time, and notes whether any
 // unknown terrain is among them.
 func (f *field) load(src dem.Source) error {
-	const chunk = 64
 	o := f.ln.orient
+	chunk := max(chunkCells/max(f.width, 1)&^7, 32)
 	f.sure = f.lim.openEdge || f.ua > 0 && f.ub < o.u
 	for a := f.ua; a < f.ub; a += chunk {
 		b := min(a+chunk, f.ub)
@@ -121,15 +125,37 @@ func (f *field) load(src dem.Source) error {
 		if err := src.Read(w, f.row); err != nil {
 			return err
 		}
-		f.fillHoles(f.row)
+		if !complete(f.row) {
+			f.fillHoles(f.row)
+		}
 		f.place(a, b, lo, hi)
 	}
 	return nil
 }
 
+// complete reports whether no height is missing.
+func complete(z []float32) bool {
+	if vectors {
+		return completeVector(z)
+	}
+	return completeScalar(z)
+}
+
+func completeScalar(z []float32) bool {
+	for _, h := range z {
+		if h != h {
+			return false
+		}
+	}
+	return true
+}
+
 func fillWith(a []float32, x float32) {
-	for i := range a {
-		a[i] = x
+	if len(a) > 0 {
+		a[0] = x
+	}
+	for n := 1; n < len(a); n *= 2 { // copying beats storing one by one
+		copy(a[n:], a[:n])
 	}
 }
 
@@ -152,24 +178,66 @@ func (f *field) place(a, b, lo, hi int) {
 	for u := a; u < b; u++ {
 		dst := f.z[(u-f.ua)*f.width : (u-f.ua+1)*f.width]
 		at := f.at[u-f.ua]
-		from, to := max(at, lo), min(at+f.width, hi)
-		fillWith(dst[:min(max(from-at, 0), len(dst))], float32(nan))
-		fillWith(dst[min(max(to-at, 0), len(dst)):], float32(nan))
-		if from >= to {
+		from, to := f.stored(u, lo, hi)
+		fillWith(dst[:min(from-at, len(dst))], float32(nan))
+		fillWith(dst[max(to-at, 0):], float32(nan))
+		if from >= to || o.transposed {
 			continue
 		}
 		i := u - a
 		if o.flip {
 			i = b - 1 - u
 		}
-		if o.transposed {
-			from := f.row[(from-lo)*(b-a)+i:]
-			for v := range dst[max(f.at[u-f.ua], lo)-at : to-at] {
-				dst[max(at, lo)-at+v] = from[v*(b-a)]
-			}
-			continue
-		}
 		copy(dst[from-at:to-at], f.row[i*(hi-lo)+from-lo:i*(hi-lo)+to-lo])
+	}
+	if o.transposed {
+		for i := 0; i < b-a; i += 8 {
+			f.turn(a, b, lo, hi, i)
+		}
+	}
+}
+
+// stored returns the columns of [lo, hi) that row u stores.
+func (f *field) stored(u, lo, hi int) (from, to int) {
+	at := f.at[u-f.ua]
+	return max(at, lo), min(at+f.width, hi)
+}
+
+// turn copies the columns i to i+7 of a transposed chunk to their rows: eight
+// heights of each at a time where all of them are stored.
+func (f *field) turn(a, b, lo, hi, i int) {
+	n, m := b-a, min(8, b-a-i)
+	var rows [8]int // index of column 0 in f.z
+	row := func(k int) int {
+		if f.ln.orient.flip {
+			return b - 1 - i - k
+		}
+		return a + i + k
+	}
+	va, vb := lo, hi
+	for k := range m {
+		u := row(k)
+		from, to := f.stored(u, lo, hi)
+		rows[k] = (u-f.ua)*f.width - f.at[u-f.ua]
+		va, vb = max(va, from), min(vb, to)
+	}
+	if m < 8 || !vectors {
+		vb = va
+	}
+	vb = va + max(vb-va, 0)&^7
+	if va < vb {
+		turnVector(f.z, &rows, f.row[i:], n, lo, va, vb)
+	}
+	for k := range m {
+		from, to := f.stored(row(k), lo, hi)
+		for v := from; v < to; v++ {
+			if v == va {
+				if v = max(vb, v); v >= to {
+					break
+				}
+			}
+			f.z[rows[k]+v] = f.row[(v-lo)*n+i+k]
+		}
 	}
 }
 

@@ -1,6 +1,7 @@
 package mask
 
 import (
+	"encoding/binary"
 	"math"
 
 	"foldshade/geometry"
@@ -10,14 +11,17 @@ import (
 type tileBuffers struct {
 	out                   *Tile
 	verdict               []uint8
-	left                  view
-	right                 view
+	nodes                 nodeViews
+	sights                sightRow
+	zc, zr                []float32        // of one row: change of height
 	turns                 []uint8          // of one row
 	facets                []geometry.Facet // of one row
 	ups                   [][3]float64     // of one row: up components of the sights
 	views                 []view           // of one row, when a layer asks for more
 	unseen                []bool           // of one row: cells that the look does not see
+	gaps                  bool             // the row may have cells without a height, or unseen
 	wantReturns           bool
+	wantWindows           bool
 	wantViews, wantFacets bool
 }
 
@@ -28,6 +32,7 @@ func (w *worker) fill(i int) *Tile {
 	ln, look := w.looks[i], &w.job.Looks[i]
 	win := w.sheet.w
 	w.turns = resize(w.turns, win.Cols)
+	w.zc, w.zr = resize(w.zc, win.Cols), resize(w.zr, win.Cols)
 	if w.wantFacets {
 		w.facets, w.ups = resize(w.facets, win.Cols), resize(w.ups, win.Cols)
 	}
@@ -36,11 +41,14 @@ func (w *worker) fill(i int) *Tile {
 	}
 	w.unseen = resize(w.unseen, win.Cols)
 	clear(w.unseen)
+	w.nodes.setUp(ln, w.grid, win, w.wantViews)
 	for r := range win.Rows {
+		w.gaps = !w.sheet.slopes(r, w.zc, w.zr)
 		if ln.places == nil {
-			w.see(ln, win.Row+r, win.Col, r*win.Cols)
+			w.see(win.Row+r, win.Col)
 		} else {
-			w.seeAbreast(ln, look, win.Row+r, win.Col, r*win.Cols)
+			w.gaps = true
+			w.seeAbreast(ln, look, r)
 		}
 		w.classRow(t, r)
 		for l, bands := range t.Values {
@@ -50,7 +58,8 @@ func (w *worker) fill(i int) *Tile {
 	return t
 }
 
-// newTile returns the worker's tile with slices of the sheet's size.
+// newTile returns the worker's tile with slices of the sheet's size, the
+// sheet's own margins among them.
 func (w *worker) newTile() *Tile {
 	n := w.sheet.w.Rows * w.sheet.w.Cols
 	if w.out == nil {
@@ -70,6 +79,10 @@ func (w *worker) newTile() *Tile {
 			if t.Values[l] == nil {
 				t.Values[l] = make([][]float32, len(info.Bands))
 			}
+			if a := w.sheet.kept(l); a != nil {
+				t.Values[l][0], *a = *a, t.Values[l][0]
+				continue
+			}
 			for b := range t.Values[l] {
 				t.Values[l][b] = resize(t.Values[l][b], n)
 			}
@@ -78,17 +91,31 @@ func (w *worker) newTile() *Tile {
 	return t
 }
 
-// see fills the turns of one row of the sheet, its facets and sights when a
-// layer of values is wanted, and its views when a layer asks for more.
-func (w *worker) see(ln *lanes, row, col, at int) {
-	n := w.sheet.w.Cols
-	zc, zr := w.sheet.zc[at:at+n], w.sheet.zr[at:at+n]
-	block := col / viewStep * viewStep
-	w.right = ln.viewOf(w.grid, float64(row), float64(block), w.wantViews)
-	for j := 0; j < n; block += viewStep {
-		w.left, w.right = w.right, ln.viewOf(w.grid, float64(row), float64(block+viewStep), w.wantViews)
-		end := min(n, block+viewStep-col)
-		w.seeBlock(zc[j:end], zr[j:end], j, col+j-block)
+// kept returns the values that the sheet keeps for a layer, nil for others.
+func (t *sheet) kept(l Layer) *[]float32 {
+	switch l {
+	case Clearance:
+		return &t.clear
+	case FoldMargin:
+		return &t.fold
+	case Returns:
+		return &t.returns
+	case Share:
+		return &t.share
+	}
+	return nil
+}
+
+// see fills the turns of one row, its facets and sights when a layer of values
+// is wanted, and its views when a layer asks for more.
+func (w *worker) see(row, col int) {
+	v := &w.nodes
+	v.stand(row)
+	n := len(w.turns)
+	for j, i := 0, 0; j < n; i++ {
+		left := v.col + i*viewStep
+		end := min(n, left+viewStep-col)
+		w.seeBlock(&v.row[i], &v.row[i+1], j, end, col+j-left)
 		j = end
 	}
 }
@@ -100,46 +127,51 @@ const (
 	turnCompressed             // foreshortening below the limit
 )
 
-// seeBlock is see for the columns from j on that lie between two views, first
+// seeBlock is see for the columns [from, to) that lie between two views, first
 // columns from the left one.
-func (w *worker) seeBlock(zc, zr []float32, j, first int) {
-	a, b := &w.left, &w.right
-	var d view
-	for i := range 3 {
-		d.up[i], d.c[i], d.r[i] = b.up[i]-a.up[i], b.c[i]-a.c[i], b.r[i]-a.r[i]
-	}
+func (w *worker) seeBlock(a, b *view, from, to, first int) {
 	limit := w.job.Options.CompressedBelow
-	turns := w.turns[j : j+len(zc)]
-	for i := range zc {
+	if vectors && to-from == viewStep && !w.wantFacets {
+		turnsVector((*[viewStep]uint8)(w.turns[from:]), (*[viewStep]float32)(w.zc[from:]), (*[viewStep]float32)(w.zr[from:]), a, b, limit)
+		return
+	}
+	d := b.minus(a)
+	turns, zc, zr := w.turns[from:to], w.zc[from:to], w.zr[from:to]
+	for i := range turns {
 		t := float64(first+i) * (1. / viewStep)
 		c, r := float64(zc[i]), float64(zr[i])
 		up0, up1 := a.up[0]+float64(t*d.up[0]), a.up[1]+float64(t*d.up[1])
 		along := up0 + float64(c*(a.c[0]+float64(t*d.c[0]))) + float64(r*(a.r[0]+float64(t*d.r[0])))
 		above := up1 + float64(c*(a.c[1]+float64(t*d.c[1]))) + float64(r*(a.r[1]+float64(t*d.r[1])))
-		turn := uint8(0)
-		if above < limit*up1 { // level range planes; leaning ones follow below
-			turn = turnCompressed
-			if above <= 0 {
-				turn |= turnLayover
-			}
-		}
-		if along <= 0 {
-			turn |= turnShadow
-		}
-		turns[i] = turn
+		turns[i] = turnOf(along, above, limit*up1)
 		if !w.wantFacets {
 			continue
 		}
 		up2 := a.up[2] + float64(t*d.up[2])
-		w.ups[j+i] = [3]float64{up0, up1, up2}
-		w.facets[j+i] = geometry.Facet{
+		w.ups[from+i] = [3]float64{up0, up1, up2}
+		w.facets[from+i] = geometry.Facet{
 			Along: along, Above: above,
 			Across: up2 + float64(c*(a.c[2]+float64(t*d.c[2]))) + float64(r*(a.r[2]+float64(t*d.r[2]))),
 		}
 		if w.wantViews {
-			w.views[j+i] = between(a, b, t)
+			w.views[from+i] = view{east: a.east + float64(t*d.east), north: a.north + float64(t*d.north), s: a.s + float64(t*d.s)}
 		}
 	}
+}
+
+// turnOf returns the turns of a facet from two of its components, and the limit
+// of the second at which it is compressed where range planes are level.
+func turnOf(along, above, limit float64) (turn uint8) {
+	if above < limit {
+		turn = turnCompressed
+		if above <= 0 {
+			turn |= turnLayover
+		}
+	}
+	if along <= 0 {
+		turn |= turnShadow
+	}
+	return turn
 }
 
 // sight returns the sight of column j of the row as far as the quantities of a
@@ -157,36 +189,71 @@ func (w *worker) sight(j int) *geometry.Sight {
 func (w *worker) classRow(t *Tile, row int) {
 	n := t.Window.Cols
 	raw := w.sheet.raw[row*n : (row+1)*n]
-	for j, h := range w.sheet.z[row*n : (row+1)*n] {
-		if h != h || w.unseen[j] { // also where a hole height was given
-			raw[j] = uint8(NoData)
+	if w.gaps {
+		for j, h := range w.sheet.heights(row) {
+			if h != h || w.unseen[j] { // also where a hole height was given
+				raw[j] = uint8(NoData)
+			}
 		}
 	}
-	turns := w.turns[:n]
-	verdict := w.verdict[row*n : (row+1)*n]
-	for j, c := range raw {
-		verdict[j] = verdictOf[turns[j]&7][c&63]
-	}
+	classes(w.verdict[row*n:(row+1)*n], raw, w.turns, &verdictOf)
 	if out := t.Classes[LayoverLayer]; out != nil {
-		out = out[row*n : (row+1)*n]
-		for j, c := range raw {
-			out[j] = layoverOf[turns[j]&3][c&63]
-		}
+		classes(out[row*n:(row+1)*n], raw, w.turns, &layoverOf)
 	}
 	if out := t.Classes[ShadowLayer]; out != nil {
-		out = out[row*n : (row+1)*n]
-		for j, c := range raw {
-			out[j] = shadowOf[turns[j]&3][c&63]
-		}
+		classes(out[row*n:(row+1)*n], raw, w.turns, &shadowOf)
 	}
 }
 
-// The classes by the turns of the facet and the raw code.
-var layoverOf, shadowOf, verdictOf = func() (layover, shadow [4][64]uint8, verdict [8][64]uint8) {
+// classTable gives the class by the turns of the facet and the raw code.
+type classTable [8][64]uint8
+
+// classes looks a row of classes up, eight cells at a time where they are alike.
+func classes(out, raw, turns []uint8, of *classTable) {
+	n := len(out)
+	raw, turns = raw[:n], turns[:n]
+	j := 0
+	for ; j+8 <= n; j += 8 {
+		if c, d := raw[j], turns[j]; alike(raw[j:j+8], c) && alike(turns[j:j+8], d) {
+			binary.LittleEndian.PutUint64(out[j:j+8], each8*uint64(of[d&7][c&63]))
+			continue
+		}
+		for i := j; i < j+8; i++ {
+			out[i] = of[turns[i]&7][raw[i]&63]
+		}
+	}
+	for ; j < n; j++ {
+		out[j] = of[turns[j]&7][raw[j]&63]
+	}
+}
+
+// each8 times a byte is eight of them.
+const each8 = 0x0101010101010101
+
+// alike reports whether the first eight bytes of a are all c.
+func alike(a []uint8, c uint8) bool { return binary.LittleEndian.Uint64(a) == each8*uint64(c) }
+
+// countClasses adds the cells of a to a tally of classes.
+func countClasses(tally *[256]int64, a []uint8) {
+	for ; len(a) >= 8; a = a[8:] {
+		if alike(a, a[0]) {
+			tally[a[0]] += 8
+			continue
+		}
+		for _, c := range a[:8] {
+			tally[c]++
+		}
+	}
+	for _, c := range a {
+		tally[c]++
+	}
+}
+
+var layoverOf, shadowOf, verdictOf = func() (layover, shadow, verdict classTable) {
 	for turns := range verdict {
 		for raw := range verdict[turns] {
 			l := layoverClass(Class(raw), turns)
-			layover[turns&3][raw], shadow[turns&3][raw] = uint8(l), uint8(shadowClass(Class(raw), turns))
+			layover[turns][raw], shadow[turns][raw] = uint8(l), uint8(shadowClass(Class(raw), turns))
 			if l == Open && turns&turnCompressed != 0 {
 				l = Compressed
 			}
@@ -199,7 +266,7 @@ var layoverOf, shadowOf, verdictOf = func() (layover, shadow [4][64]uint8, verdi
 // valueRow writes one row of one layer of values.
 func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *geometry.Look) {
 	n := w.sheet.w.Cols
-	z := w.sheet.z[row*n : (row+1)*n]
+	z := w.sheet.heights(row)
 	out := bands[0][row*n : (row+1)*n]
 	each := func(f func(j int, fc geometry.Facet, s *geometry.Sight) float64) {
 		for j := range out {
@@ -233,19 +300,11 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 		})
 	case RangeIncidence:
 		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.RangeIncidence().Degrees() })
-	case Clearance:
-		w.known(out, w.sheet.clear[row*n:], z)
+	case Clearance, Returns, Share:
+		w.known(out, z)
 	case FoldMargin:
-		w.known(out, w.sheet.fold[row*n:], z)
-		for j, x := range out { // active layover overlaps itself
-			if w.turns[j]&turnLayover != 0 && x > 0 {
-				out[j] = 0
-			}
-		}
-	case Returns:
-		w.known(out, w.sheet.returns[row*n:], z)
-	case Share:
-		w.known(out, w.sheet.share[row*n:], z)
+		w.known(out, z)
+		w.foldActive(out)
 	case LineOfSight:
 		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
 		out = bands[1][row*n : (row+1)*n]
@@ -272,12 +331,30 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	}
 }
 
-// known copies values where the DEM has a height, no hole height counted, and
-// the look sees the cell.
-func (w *worker) known(dst, src, z []float32) {
+// known leaves values only where the DEM has a height, no hole height counted,
+// and the look sees the cell.
+func (w *worker) known(a, z []float32) {
+	if !w.gaps {
+		return
+	}
 	for j, h := range z {
-		if dst[j] = src[j]; h != h || w.unseen[j] {
-			dst[j] = float32(nan)
+		if h != h || w.unseen[j] {
+			a[j] = float32(nan)
+		}
+	}
+}
+
+// foldActive says of a row of fold margins that active layover overlaps itself.
+func (w *worker) foldActive(a []float32) {
+	for j := 0; j < len(a); {
+		if j+8 <= len(a) && binary.LittleEndian.Uint64(w.turns[j:])&(each8*turnLayover) == 0 {
+			j += 8
+			continue
+		}
+		for end := min(j+8, len(a)); j < end; j++ {
+			if w.turns[j]&turnLayover != 0 && a[j] > 0 {
+				a[j] = 0
+			}
 		}
 	}
 }

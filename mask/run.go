@@ -318,6 +318,7 @@ func (r *runner) newWorker() *worker {
 		info, _ := Info(l)
 		w.wantFacets = w.wantFacets || !info.IsClass && l != Clearance && l != FoldMargin
 	}
+	w.wantWindows = has(WindowLow) || has(WindowHigh)
 	w.wantReturns = has(Returns) || has(Share)
 	w.sheet.wantClear, w.sheet.wantFold = has(Clearance), has(FoldMargin)
 	return w
@@ -325,7 +326,11 @@ func (r *runner) newWorker() *worker {
 
 // tile computes one tile for every look.
 func (w *worker) tile(ctx context.Context, win dem.Window) error {
-	if err := w.sheet.load(w.job.Source, win); err != nil {
+	load := w.sheet.read
+	if w.wantWindows {
+		load = w.sheet.load
+	}
+	if err := load(w.job.Source, win); err != nil {
 		return err
 	}
 	for i := range w.looks {
@@ -368,9 +373,7 @@ func (w *worker) look(i int, win dem.Window) error {
 	}
 	w.locks[i].Lock()
 	defer w.locks[i].Unlock()
-	for _, c := range w.verdict {
-		w.tally[i][c]++
-	}
+	countClasses(&w.tally[i], w.verdict)
 	if w.job.Emit != nil {
 		if err := w.job.Emit(i, t); err != nil {
 			return err

@@ -1,0 +1,126 @@
+//go:build goexperiment.simd && amd64 && !go1.27
+
+package mask
+
+import "simd/archsimd"
+
+// Each function of vectors ends with ClearAVXUpperBits: the compiler leaves the
+// upper halves of the registers as they are, and the scalar code that follows
+// would take twice its time.
+
+// centralVector is centralScalar, eight at a time.
+func centralVector(d, before, mid, after []float32) bool {
+	n := len(d) &^ 7
+	before, mid, after = before[:len(d)], mid[:len(d)], after[:len(d)]
+	half := archsimd.BroadcastFloat32x8(0.5)
+	ok := half.Equal(half)
+	for j := 0; j < n; j += 8 {
+		x := archsimd.LoadFloat32x8((*[8]float32)(after[j:])).Sub(archsimd.LoadFloat32x8((*[8]float32)(before[j:]))).Mul(half)
+		x.Store((*[8]float32)(d[j:]))
+		h := archsimd.LoadFloat32x8((*[8]float32)(mid[j:]))
+		ok = ok.And(x.Equal(x)).And(h.Equal(h))
+	}
+	whole := allOf(ok)
+	archsimd.ClearAVXUpperBits()
+	return centralScalar(d[n:], before[n:], mid[n:], after[n:]) && whole
+}
+
+// completeVector is completeScalar, eight at a time.
+func completeVector(z []float32) bool {
+	n := len(z) &^ 7
+	one := archsimd.BroadcastFloat32x8(1)
+	ok := one.Equal(one)
+	for j := 0; j < n; j += 8 {
+		h := archsimd.LoadFloat32x8((*[8]float32)(z[j:]))
+		ok = ok.And(h.Equal(h))
+	}
+	whole := allOf(ok)
+	archsimd.ClearAVXUpperBits()
+	return whole && completeScalar(z[n:])
+}
+
+// allOf reports whether a mask holds everywhere.
+func allOf(m archsimd.Mask32x8) bool {
+	return m.ToInt32x8().Xor(archsimd.BroadcastInt32x8(-1)).IsZero()
+}
+
+// turnVector copies eight columns of src, the rows lo and following of which are n
+// long, to as many rows of dst, for the rows va to vb of src: a multiple of eight.
+// rows says where in dst the row of each column begins, at row 0 of src.
+func turnVector(dst []float32, rows *[8]int, src []float32, n, lo, va, vb int) {
+	for v := va; v < vb; v += 8 {
+		s := src[(v-lo)*n:]
+		load := func(k int) archsimd.Int32x8 {
+			return archsimd.LoadFloat32x8((*[8]float32)(s[k*n:])).AsInt32x8()
+		}
+		// Pairs of rows, then fours, by halves of a vector.
+		p0, p1, p2, p3 := load(0), load(1), load(2), load(3)
+		q0, q1, q2, q3 := load(4), load(5), load(6), load(7)
+		a, b, c, d := fours(p0, p1, p2, p3)
+		e, f, g, h := fours(q0, q1, q2, q3)
+		store := func(k int, x archsimd.Int32x8) {
+			x.AsFloat32x8().Store((*[8]float32)(dst[rows[k]+v:]))
+		}
+		store(0, a.Select128FromPair(0, 2, e))
+		store(1, b.Select128FromPair(0, 2, f))
+		store(2, c.Select128FromPair(0, 2, g))
+		store(3, d.Select128FromPair(0, 2, h))
+		store(4, a.Select128FromPair(1, 3, e))
+		store(5, b.Select128FromPair(1, 3, f))
+		store(6, c.Select128FromPair(1, 3, g))
+		store(7, d.Select128FromPair(1, 3, h))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// fours returns the columns of four rows: the first to fourth column in the low
+// halves, the fifth to eighth in the high ones.
+func fours(p, q, r, s archsimd.Int32x8) (a, b, c, d archsimd.Int32x8) {
+	lo, hi := p.InterleaveLoGrouped(q).AsInt64x4(), p.InterleaveHiGrouped(q).AsInt64x4()
+	lo2, hi2 := r.InterleaveLoGrouped(s).AsInt64x4(), r.InterleaveHiGrouped(s).AsInt64x4()
+	return lo.InterleaveLoGrouped(lo2).AsInt32x8(), lo.InterleaveHiGrouped(lo2).AsInt32x8(),
+		hi.InterleaveLoGrouped(hi2).AsInt32x8(), hi.InterleaveHiGrouped(hi2).AsInt32x8()
+}
+
+// turnsVector fills the turns of a whole block, four cells at a time, as
+// seeBlock does.
+func turnsVector(turns *[viewStep]uint8, zc, zr *[viewStep]float32, a, b *view, limit float64) {
+	all := archsimd.BroadcastFloat64x4
+	aUp0, aUp1, dUp0, dUp1 := all(a.up[0]), all(a.up[1]), all(b.up[0]-a.up[0]), all(b.up[1]-a.up[1])
+	aC0, aC1, dC0, dC1 := all(a.c[0]), all(a.c[1]), all(b.c[0]-a.c[0]), all(b.c[1]-a.c[1])
+	aR0, aR1, dR0, dR1 := all(a.r[0]), all(a.r[1]), all(b.r[0]-a.r[0]), all(b.r[1]-a.r[1])
+	lim, zero := all(limit), all(0)
+	layover, shadow, compressed := archsimd.BroadcastInt64x4(turnLayover), archsimd.BroadcastInt64x4(turnShadow), archsimd.BroadcastInt64x4(turnCompressed)
+	// Lane l collects the turns of the cells l, 4 + l, 8 + l and so on, one a byte.
+	var sum archsimd.Int64x4
+	for i := viewStep - 4; i >= 0; i -= 4 {
+		t := archsimd.LoadFloat64x4((*[4]float64)(blockParts[i:]))
+		c := archsimd.LoadFloat32x4((*[4]float32)(zc[i:])).ConvertToFloat64()
+		r := archsimd.LoadFloat32x4((*[4]float32)(zr[i:])).ConvertToFloat64()
+		up0, up1 := aUp0.Add(t.Mul(dUp0)), aUp1.Add(t.Mul(dUp1))
+		along := up0.Add(c.Mul(aC0.Add(t.Mul(dC0)))).Add(r.Mul(aR0.Add(t.Mul(dR0))))
+		above := up1.Add(c.Mul(aC1.Add(t.Mul(dC1)))).Add(r.Mul(aR1.Add(t.Mul(dR1))))
+		low := above.Less(lim.Mul(up1))
+		turn := low.ToInt64x4().And(compressed)
+		turn = turn.Or(low.And(above.LessEqual(zero)).ToInt64x4().And(layover))
+		turn = turn.Or(along.LessEqual(zero).ToInt64x4().And(shadow))
+		sum = sum.ShiftAllLeft(8).Or(turn)
+	}
+	pairs := archsimd.LoadInt8x16(&bytePairs)
+	lo := sum.GetLo().AsUint8x16().PermuteOrZero(pairs).AsUint16x8()
+	hi := sum.GetHi().AsUint8x16().PermuteOrZero(pairs).AsUint16x8()
+	lo.InterleaveLo(hi).AsUint8x16().Store((*[16]uint8)(turns[:]))
+	lo.InterleaveHi(hi).AsUint8x16().Store((*[16]uint8)(turns[16:]))
+	archsimd.ClearAVXUpperBits()
+}
+
+// bytePairs brings the bytes of two 64-bit numbers side by side.
+var bytePairs = [16]int8{0, 8, 1, 9, 2, 10, 3, 11, 4, 12, 5, 13, 6, 14, 7, 15}
+
+// blockParts holds the places of a block's columns between its two views.
+var blockParts = func() (t [viewStep]float64) {
+	for i := range t {
+		t[i] = float64(i) / viewStep
+	}
+	return t
+}()
