@@ -36,6 +36,7 @@ func heightsBetweenVector(h, z []float32, rest linear, from int) (k int) {
 		a := load(z, k)
 		store(a.Add(rest.spread(from+k).Mul(load(z, k+1).Sub(a))), h, k)
 	}
+	archsimd.ClearAVXUpperBits()
 	return k
 }
 
@@ -50,6 +51,7 @@ func (g *guide) advanceVector(h *laneRow, d linear, row float32) {
 			store(higherOf(z, t), top, 0)
 		}
 	}
+	archsimd.ClearAVXUpperBits()
 }
 
 func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n int) (out uint32) {
@@ -79,6 +81,7 @@ func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n
 		m := low.Add(high.Sub(low).Mul(above.Div(above.Sub(below))))
 		out |= uint32(m.Greater(load(most, c)).ToBits()) << c
 	}
+	archsimd.ClearAVXUpperBits()
 	return out & uint32(1<<n-1)
 }
 
@@ -109,6 +112,7 @@ func (b *besideLine) slopesVector(j int, up, down []float32) int {
 			store(higherOf(archsimd.BroadcastFloat32x8(0).Sub(low), load(down, c)), down, c)
 		}
 	}
+	archsimd.ClearAVXUpperBits()
 	return c
 }
 
@@ -130,6 +134,7 @@ func (q *steepness) searchVector(n int) int {
 	var m, rows [vectorWidth]float32
 	best.Store(&m)
 	row.Store(&rows)
+	archsimd.ClearAVXUpperBits()
 	k := 0
 	for i := range m {
 		if m[i] > m[k] || m[i] == m[k] && rows[i] >= 0 && rows[i] < rows[k] {
