@@ -143,3 +143,56 @@ func (q *steepness) searchVector(n int) int {
 	}
 	return int(rows[k])
 }
+
+func alongLineVector(out, zc, zr []float32, c, r linear, from int) (j int) {
+	for ; j+vectorWidth <= len(out); j += vectorWidth {
+		store(load(zc, j).Mul(c.spread(from+j)).Add(load(zr, j).Mul(r.spread(from+j))), out, j)
+	}
+	archsimd.ClearAVXUpperBits()
+	return j
+}
+
+func (e *endsBlock) fillVector(s *steps, x *windower, rise []float32, at int) bool {
+	var differ archsimd.Int32x8
+	n := archsimd.BroadcastInt32x8(int32(s.n))
+	for k := 0; k < len(e[0]); k += vectorWidth {
+		r := load(rise, at+k)
+		fold := higherOf(r, load(x.fold, at+k))
+		hide := n.Sub(s.cot.upToVector(load(x.shade, at+k)))
+		folded := s.tan.upToVector(fold)
+		open, mayFold := hide, folded
+		if !x.sure {
+			open = n.Sub(s.cot.upToVector(load(x.shadeU, at+k))).Min(hide)
+			mayFold = s.tan.upToVector(higherOf(r, load(x.foldU, at+k))).Max(folded)
+		}
+		folded, mayFold = folded.Min(open), mayFold.Min(open)
+		compressed := s.few.belowVector(r).Max(mayFold).Min(open)
+		for end, v := range [endCount]archsimd.Int32x8{folded, mayFold, compressed, open, hide} {
+			v.Store((*[vectorWidth]int32)(e[end][k:]))
+		}
+		differ = differ.Or(compressed).Or(n.Sub(open)).Or(n.Sub(hide)).Or(mayFold)
+	}
+	any := !differ.IsZero()
+	archsimd.ClearAVXUpperBits()
+	return any
+}
+
+func (l *ladder) upToVector(x float32x8) (n archsimd.Int32x8) {
+	if x.GreaterEqual(archsimd.BroadcastFloat32x8(l.low)).ToBits() == 0 {
+		return n
+	}
+	for _, r := range l.rungs {
+		n = n.Sub(x.GreaterEqual(archsimd.BroadcastFloat32x8(r)).ToInt32x8())
+	}
+	return n
+}
+
+func (l *ladder) belowVector(x float32x8) (n archsimd.Int32x8) {
+	if x.Greater(archsimd.BroadcastFloat32x8(l.low)).ToBits() == 0 {
+		return n
+	}
+	for _, r := range l.rungs {
+		n = n.Sub(x.Greater(archsimd.BroadcastFloat32x8(r)).ToInt32x8())
+	}
+	return n
+}
