@@ -218,13 +218,13 @@ func (s *sweep) tiles() []dem.Window {
 		memory = 1 << 30
 	}
 	// Slopes, sheet, the cell's part of the results, and the open incidences of
-	// every azimuth; beside them counts, heights and lanes of a stripe.
+	// every azimuth; beside them counts, heights and lanes of a band.
 	cell := int64(16 + 26 + 16 + 2*len(s.job.Azimuths))
 	room := memory/int64(s.threads) - s.count.bytes()
 	w := s.job.Window
 	size := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(s.threads)))
 	size = min(max(size, minTile), maxSweepTile)
-	for size > minTile && size*size*cell+s.stripe(size) > room {
+	for size > minTile && size*size*cell+s.band(size) > room {
 		size = size * 7 / 8
 	}
 	if t := s.job.Options.Tile; t > 0 {
@@ -252,16 +252,17 @@ func parts(first, cells, size int) (out [][2]int) {
 	return out
 }
 
-const maxSweepTile = 1536
+const maxSweepTile = 2048
 
-// stripe is the memory of the heights and lanes of one stripe of a tile.
-func (s *sweep) stripe(size int64) int64 {
+// band is the memory of the heights and lanes of one band of a tile.
+func (s *sweep) band(size int64) int64 {
 	rows := int64(0)
 	for _, ln := range s.lanes {
 		near, far := ln.reach(s.lim)
 		rows = max(rows, min(size+int64(near+far), int64(ln.orient.u)))
 	}
-	return rows * (5*(windowStripe+2*laneStep) + 40*(laneStep+1))
+	// Heights, once more by lane, what stands where, and the cells of a strip.
+	return rows * (5*(windowBand*laneStep+2*bandMargin) + 4*(laneStep+1) + 48 + 16*laneStep)
 }
 
 // crop shrinks a tile to the cells that count.

@@ -62,9 +62,9 @@ type windower struct {
 	shadeGuide, nearerGuide, fartherGuide guide
 }
 
-// windowStripe is the most columns that are held at once. Stripes along the
-// lanes cost nothing: the halo lies at their ends.
-const windowStripe = 256
+// windowBand is how many strips share a field. A band follows its lanes all the
+// way through the rectangle, so that its halo lies at their ends only.
+const windowBand = 8
 
 // run fills the slices for a window of the grid. The results do not depend on
 // the window: what is marched is tied to the grid, and ground that is out of
@@ -79,17 +79,21 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 	x.shade, x.fold = resize(x.shade, n), resize(x.fold, n)
 	x.sure, x.shadeU, x.foldU = true, x.shade, x.fold
 	u0, u1, v0, v1 := ln.window(win)
-	for v := v0; v < v1; v += windowStripe {
-		x.field.setUp(ln, lim, u0, u1, v, min(v+windowStripe, v1))
-		if err := x.field.load(src); err != nil {
+	first, end := ln.strips(u0, u1, v0, v1)
+	f := &x.field
+	for ; first < end; first += windowBand {
+		if !f.band(ln, lim, u0, u1, v0, v1, first, min(first+windowBand, end)) {
+			continue
+		}
+		if err := f.load(src); err != nil {
 			return err
 		}
-		if x.sure && !x.field.sure {
+		f.z = append(f.z, make([]float32, vectorSlack)...)
+		if x.sure && !f.sure {
 			x.part()
 		}
-		x.field.z = append(x.field.z, make([]float32, vectorSlack)...)
-		for j := range x.field.strips {
-			if x.strip.setUp(&x.field, x.field.first+j) {
+		for j := range f.strips {
+			if x.strip.setUp(f, f.first+j) {
 				x.forward()
 				x.backward()
 			}
@@ -97,6 +101,52 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 	}
 	return nil
 }
+
+// strips returns the columns [first, end) of the lane lattice that the cells
+// [u0, u1) x [v0, v1) lie in. A cell on the line between two may fall to either.
+func (ln *lanes) strips(u0, u1, v0, v1 int) (first, end int) {
+	a, b := math.Inf(1), math.Inf(-1)
+	for _, u := range [2]int{u0, u1 - 1} { // a lane drifts one way only
+		a = math.Min(a, ln.lane(float64(u), float64(v0)))
+		b = math.Max(b, ln.lane(float64(u), float64(v1-1)))
+	}
+	column := func(lane float64) int { return (int(math.Floor(lane)) - ln.first) / laneStep }
+	return max(column(a-1e-6), 0), min(column(b+1e-6)+1, ln.nk-1)
+}
+
+// band sizes the field for the cells [u0, u1) x [v0, v1) that lie in columns
+// [first, end) of the lattice. It returns false when there are none.
+func (f *field) band(ln *lanes, lim limits, u0, u1, v0, v1, first, end int) bool {
+	f.ln, f.lim = ln, lim
+	f.u0, f.u1, f.v0, f.v1 = u1, u0, v0, v1
+	f.first, f.strips = first, end-first
+	f.k0 = ln.first + laneStep*first
+	k0, k1 := float64(f.k0), float64(f.k0+laneStep*f.strips)
+	for u := u0; u < u1; u++ {
+		if ln.vAt(float64(u), k0) <= float64(v1) && ln.vAt(float64(u), k1) >= float64(v0-1) {
+			f.u0, f.u1 = min(f.u0, u), u+1
+		}
+	}
+	if f.u0 >= f.u1 {
+		return false
+	}
+	f.near, f.far = ln.reach(lim)
+	f.ua, f.ub = max(f.u0-f.near, 0), min(f.u1+f.far, ln.orient.u)
+	rows := f.ub - f.ua
+	f.at = resize(f.at, rows)
+	f.width = 0
+	for i := range rows {
+		u := float64(f.ua + i)
+		f.at[i] = int(math.Floor(ln.vAt(u, k0))) - bandMargin
+		f.width = max(f.width, int(math.Ceil(ln.vAt(u, k1)))+bandMargin+1-f.at[i])
+	}
+	f.z = resize(f.z, rows*f.width)
+	return true
+}
+
+// bandMargin is how many columns beside its lanes a band holds: lines of cells
+// run between lanes, and slopes take the columns beside a line.
+const bandMargin = 4
 
 // part gives the slopes with unknown terrain their own memory. Until there is
 // some they are the others.
