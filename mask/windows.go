@@ -163,8 +163,11 @@ const vectorSlack = 16
 
 // standing says where a strip's lanes cross a row: lane k of the strip is at
 // column v + dv k and ground distance s + ds k. end is where the next strip
-// begins, to the last bit.
-type standing struct{ v, end, dv, s, ds float64 }
+// begins, to the last bit; base is the index of column 0 in the field's heights.
+type standing struct {
+	v, end, dv, s, ds float64
+	base              int
+}
 
 // place returns column and ground distance at lane k, which may be fractional.
 func (st *standing) place(k float64) (v, s float64) {
@@ -187,6 +190,8 @@ type windowStrip struct {
 	cells          windowCells // of the rows from u0 on
 	width          int         // cells that are held a row
 	heights        laneRow     // of the row that is sampled
+	allRuns        []windowRun
+	runAt          []int // by row from u0 on: the first run
 	// Of the rows that were sampled: heights by lane and row, and the distance of
 	// the middle lane.
 	tall, along []float32
@@ -224,6 +229,8 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	p.along = resize(p.along, p.rows+vectorSlack)
 	for i := range p.at {
 		p.at[i] = p.stand(p.ua + i)
+		r := p.ua + i - f.ua
+		p.at[i].base = r*f.width - f.at[r]
 		_, s := p.at[i].place(laneStep / 2)
 		p.along[i] = float32(s)
 	}
@@ -236,6 +243,7 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
 	p.unknown = !f.sure
 	p.findMissing()
+	p.findRuns()
 	return true
 }
 
@@ -274,8 +282,7 @@ func (p *windowStrip) columns(st *standing) (va, vb int) {
 // row returns the stored heights of row ua + i from a column on. They go on
 // behind the row's last column.
 func (p *windowStrip) row(i, v int) []float32 {
-	r := p.ua + i - p.f.ua
-	return p.f.z[r*p.f.width+v-p.f.at[r]:]
+	return p.f.z[p.at[i].base+v:]
 }
 
 // lane returns the heights of a lane by row, as far as they were sampled.
@@ -355,10 +362,11 @@ func (x *windower) forward() {
 		c := p.rowCells(i)
 		fillWith(c.shade[:p.width], float32(x.minShade))
 		fillWith(c.fold[:p.width], float32(x.minFold))
-		for r := p.run(i); r.n > 0; r.next() {
-			p.beside(&r, &c)
-			x.seek(&r, &x.shadeGuide, -1, c.shade)
-			x.seek(&r, &x.nearerGuide, -1, c.fold)
+		for k := range p.runs(i) {
+			r := &p.runs(i)[k]
+			p.beside(r, &c)
+			x.seek(r, &x.shadeGuide, -1, c.shade)
+			x.seek(r, &x.nearerGuide, -1, c.fold)
 		}
 		if p.unknown {
 			x.unknownBefore(i, &c)
@@ -378,8 +386,8 @@ func (x *windower) backward() {
 			x.fartherGuide.advance(&p.heights, p.rowDistance(reached, reached+1), reached)
 		}
 		c := p.rowCells(i)
-		for r := p.run(i); r.n > 0; r.next() {
-			x.seek(&r, &x.fartherGuide, 1, c.fold)
+		for k := range p.runs(i) {
+			x.seek(&p.runs(i)[k], &x.fartherGuide, 1, c.fold)
 		}
 		if p.unknown {
 			x.unknownBehind(i, &c)

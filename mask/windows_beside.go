@@ -25,33 +25,48 @@ type windowRun struct {
 	i    int // row from ua on
 	j, v int // the first cell, by column from the first of the row and of the DEM
 	n    int
-	end  int // the first column behind the row's cells
 	lane int // before the first cell
+	// Columns and lanes, which may be fractional, of the places 0 and laneStep
+	// columns from the first of the row: what lies between is linear.
+	places [2]windowPlace
 	course
 }
 
-// run returns the first run of row ua + i.
-func (p *windowStrip) run(i int) windowRun {
-	st := &p.at[i]
-	va, vb := p.columns(st)
-	r := windowRun{p: p, i: i, v: va, j: va - st.first(), end: vb - st.first()}
-	r.find()
-	return r
-}
+type windowPlace struct{ v, k, s float64 }
 
-func (r *windowRun) next() {
-	r.j, r.v = r.j+r.n, r.v+r.n
-	r.find()
-}
-
-// find takes the cells from j on that have the course of the first: courses
-// change one way only.
-func (r *windowRun) find() {
-	r.n = 0
-	if r.j >= r.end {
-		return
+// findRuns finds the runs of all rows with cells.
+func (p *windowStrip) findRuns() {
+	p.allRuns, p.runAt = p.allRuns[:0], p.runAt[:0]
+	for i := p.u0 - p.ua; i < p.u1-p.ua; i++ {
+		st := &p.at[i]
+		va, vb := p.columns(st)
+		first := st.first()
+		r := windowRun{p: p, i: i, v: va, j: va - first}
+		for n := range r.places {
+			x := &r.places[n]
+			x.v = float64(first + n*laneStep)
+			x.k = st.lane(x.v)
+			_, x.s = st.place(x.k)
+		}
+		p.runAt = append(p.runAt, len(p.allRuns))
+		for end := vb - first; r.j < end; r.j, r.v = r.j+r.n, r.v+r.n {
+			r.find(end)
+			p.allRuns = append(p.allRuns, r)
+		}
 	}
-	r.n = r.end - r.j
+	p.runAt = append(p.runAt, len(p.allRuns))
+}
+
+// runs returns those of row ua + i.
+func (p *windowStrip) runs(i int) []windowRun {
+	u := p.ua + i - p.u0
+	return p.allRuns[p.runAt[u]:p.runAt[u+1]]
+}
+
+// find takes the cells from j on, before the end, that have the course of the
+// first: courses change one way only.
+func (r *windowRun) find(end int) {
+	r.n = end - r.j
 	r.course = r.p.course(r.i, r.j)
 	r.lane = r.j + r.course.lane
 	if r.p.f.ln.uniform {
@@ -62,10 +77,18 @@ func (r *windowRun) find() {
 	}
 }
 
+// away returns the columns and the ground distance from one of the run's places
+// to where its line crosses another row.
+func (r *windowRun) away(n, row int) (columns, distance float64) {
+	x := &r.places[n]
+	v, s := r.p.at[row].place(x.k)
+	return v - x.v, math.Abs(s - x.s)
+}
+
 // distance returns the ground distance of the cells to another row.
 func (r *windowRun) distance(row int) linear {
-	_, first := r.p.away(r.i, row, 0)
-	_, last := r.p.away(r.i, row, laneStep)
+	_, first := r.away(0, row)
+	_, last := r.away(1, row)
 	return linearOf(first, last)
 }
 
@@ -79,39 +102,32 @@ func (r *windowRun) line(c int) ownLine {
 	return o
 }
 
-// away returns the columns and the ground distance from a cell of row ua + i, by
-// column, to where its line crosses another row.
-func (p *windowStrip) away(i, row int, j float64) (columns, distance float64) {
-	st := &p.at[i]
-	v := float64(st.first()) + j
-	k := st.lane(v)
-	_, s := st.place(k)
-	to, far := p.at[row].place(k)
-	return to - v, math.Abs(far - s)
-}
-
 func (p *windowStrip) course(i, j int) course {
 	st := &p.at[i]
-	k := st.lane(float64(st.first() + j))
+	v := float64(st.first() + j)
+	k := st.lane(v)
 	lane := min(max(int(math.Floor(k)), 0), laneStep-1)
-	return course{lane - j, float64(lane) == k, p.sideCourse(i, j, -1), p.sideCourse(i, j, 1)}
+	return course{lane - j, float64(lane) == k, p.sideCourse(i, v, k, -1), p.sideCourse(i, v, k, 1)}
 }
 
-func (p *windowStrip) sideCourse(i, j, dir int) (c sideCourse) {
-	if r := i + dir; r < 0 || r >= p.rows {
+func (p *windowStrip) sideCourse(i int, v, k float64, dir int) (c sideCourse) {
+	r := i + dir
+	if r < 0 || r >= p.rows {
 		return c
 	}
-	a, _ := p.away(i, i+dir, float64(j))
+	a, _ := p.at[r].place(k)
+	a -= v
 	switch {
 	case a > onColumn:
 		c.neighbour = 1
 	case a < -onColumn:
 		c.neighbour = -1
 	}
-	if r := i + 2*dir; r < 0 || r >= p.rows {
+	if r += dir; r < 0 || r >= p.rows {
 		return c
 	}
-	b, _ := p.away(i, i+2*dir, float64(j))
+	b, _ := p.at[r].place(k)
+	b -= v
 	c.second = int(math.Floor(b + onColumn))
 	// The last column that is passed before the second row.
 	if k := int(math.Floor(b - onColumn)); c.neighbour > 0 && float64(k) > a {
@@ -150,14 +166,14 @@ func (p *windowStrip) besideLine(r *windowRun, c sideCourse, dir int) (b besideL
 	b.here = p.row(r.i, r.v)
 	b.aside = p.row(r.i, r.v+c.neighbour)
 	b.first, b.firstA = p.row(first, r.v), p.row(first, r.v+c.neighbour)
-	a0, d0 := p.away(r.i, first, 0)
-	a1, d1 := p.away(r.i, first, laneStep)
+	a0, d0 := r.away(0, first)
+	a1, d1 := r.away(1, first)
 	b.across, b.firstD = linearOf(math.Abs(a0), math.Abs(a1)), linearOf(d0, d1)
 	if second < 0 || second >= p.rows {
 		return b
 	}
-	b0, e0 := p.away(r.i, second, 0)
-	b1, e1 := p.away(r.i, second, laneStep)
+	b0, e0 := r.away(0, second)
+	b1, e1 := r.away(1, second)
 	from := float64(c.second)
 	b.second, b.after = p.row(second, r.v+c.second), p.row(second, r.v+c.second+1)
 	b.rest, b.secondD = linearOf(b0-from, b1-from), linearOf(e0, e1)

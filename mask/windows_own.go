@@ -22,11 +22,12 @@ type station struct {
 const stationMargin = 2
 
 func (o *ownLine) cross(row int) (x station) {
-	x.v, x.s = o.p.at[row].place(o.k)
+	st := &o.p.at[row]
+	x.v, x.s = st.place(o.k)
 	c := math.Floor(x.v)
 	x.c = int(c)
-	x.z = o.p.row(row, x.c-stationMargin)
-	x.h = lerp(x.z, x.v-c+stationMargin)
+	x.z = o.p.f.z[st.base+x.c-stationMargin:][:2*stationMargin+2]
+	x.h = lerp(x.z[stationMargin:], x.v-c)
 	return x
 }
 
@@ -130,46 +131,51 @@ func (m *slope) raise(h, s float64) {
 	}
 }
 
-// between raises the slope to that of the ground between two rows next to each
-// other. The surface is a parabola on each side of the column that the line
-// crosses.
+// between raises the slope to that of the ground from one row to the next. The
+// surface is a parabola on each side of the column that the line crosses.
 func (m *slope) between(a, b *station) {
+	m.raise(b.h, b.s)
 	if a.v == b.v { // straight
-		m.raise(b.h, b.s)
 		return
 	}
 	if a.c == b.c {
-		m.piece(a, b, a.c, 0, 1)
+		m.bulge(a, b, a.c, 0, 1)
 		return
 	}
 	c := max(a.c, b.c)
 	t := (float64(c) - a.v) / (b.v - a.v)
-	m.piece(a, b, a.c, 0, t)
-	m.piece(a, b, b.c, t, 1)
+	p, q := float64(a.z[c-a.c+stationMargin]), float64(b.z[c-b.c+stationMargin])
+	m.raise(p+float64(t*(q-p)), a.s+float64(t*(b.s-a.s)))
+	m.bulge(a, b, a.c, 0, t)
+	m.bulge(a, b, b.c, t, 1)
 }
 
-// piece is between for the way from t0 to t1, behind column c.
-func (m *slope) piece(a, b *station, c int, t0, t1 float64) {
+// bulge is between for the ground above the ends of the way from t0 to t1, behind
+// column c.
+func (m *slope) bulge(a, b *station, c int, t0, t1 float64) {
 	p, q := a.z[c-a.c+stationMargin:], b.z[c-b.c+stationMargin:]
-	p0, e := float64(p[0]), float64(p[1]-p[0])
-	q0, g := float64(q[0]), float64(q[1]-q[0])
-	x, dx := a.v-float64(c), b.v-a.v
-	// Heights along the way: h + t (b + t d).
-	h, r, d := p0+float64(e*x), q0-p0+float64(e*dx)+float64((g-e)*x), (g-e)*dx
-	ds := b.s - a.s
-	count := func(t float64) { m.raise(h+float64(t*(r+float64(t*d))), a.s+float64(t*ds)) }
-	count(t1)
+	e, g := float64(p[1]-p[0]), float64(q[1]-q[0])
+	dx := b.v - a.v
+	d := (g - e) * dx
 	if m.sign*d >= 0 {
-		return // no ground above the ends
+		return
+	}
+	// Heights along the way: h + t (r + t d).
+	x := a.v - float64(c)
+	r := float64(q[0]) - float64(p[0]) + float64(e*dx) + float64((g-e)*x)
+	ds := b.s - a.s
+	away := math.Copysign(ds, ds*(a.s-m.s)) // change of distance to the point for t
+	if m.sign*(r+2*t0*d) <= m.most*away {
+		return // falls below the steepest line from the beginning
 	}
 	// The ground farthest above the steepest line so far; twice, since that line
 	// is then steeper.
-	away := math.Copysign(ds, ds*(a.s-m.s)) // change of distance to the point for t
+	h := float64(p[0]) + float64(e*x)
 	for range 2 {
 		t := (m.sign*m.most*away - r) / (2 * d)
 		if !(t > t0 && t < t1) {
 			return
 		}
-		count(t)
+		m.raise(h+float64(t*(r+float64(t*d))), a.s+float64(t*ds))
 	}
 }

@@ -126,7 +126,7 @@ func (p *windowStrip) eachUnknown(i int, visit func(j int, h, d float64)) {
 		_, s := st.place(float64(k))
 		away[k] = math.Abs(p.places[k] - s)
 	}
-	for r := p.run(i); r.n > 0; r.next() {
+	for _, r := range p.runs(i) {
 		z := p.row(i, r.v)
 		for c := range r.n {
 			d := away[r.lane+c]
@@ -159,7 +159,7 @@ func raise(slope *float32, rise, distance float64) {
 func (x *windower) mend(i int, c *windowCells) {
 	p := &x.strip
 	p.sample(i)
-	for r := p.run(i); r.n > 0; r.next() {
+	for _, r := range p.runs(i) {
 		for n := range r.n {
 			o, j := r.line(n), r.j+n
 			if o.h != o.h {
@@ -181,8 +181,14 @@ func (x *windower) walk(o *ownLine, c *windowCells, j int) {
 	p := o.p
 	lim := &p.f.lim
 	shade, fold := float64(c.shade[j]), float64(c.fold[j])
-	rise := max(lim.high, lim.ceiling) - lim.low
-	enough := rise / min(x.minShade, x.minFold) // beyond it nothing counts
+	up, down := max(lim.high, lim.ceiling)-o.h, o.h-lim.low
+	// far reports whether nothing counts from a distance on.
+	far := func(d float64, dir int) bool {
+		if dir < 0 {
+			return d*shade > up && d*fold > down
+		}
+		return d*fold > up
+	}
 	side := func(dir int, edge bool) (unknown float64) {
 		unknown = math.Inf(1)
 		last := o.s
@@ -190,11 +196,11 @@ func (x *windower) walk(o *ownLine, c *windowCells, j int) {
 			x := o.cross(r)
 			h, s := x.h, x.s
 			d := math.Abs(s - o.s)
-			if d > enough {
-				return unknown
-			}
 			if p.unknown && p.gap(min(r, r-dir), o.k) {
 				unknown = min(unknown, math.Abs(last-o.s))
+			}
+			if far(d, dir) {
+				return unknown
 			}
 			last = s
 			m := (h - o.h) / d
