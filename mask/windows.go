@@ -60,6 +60,7 @@ type windower struct {
 	strip             windowStrip
 
 	shadeGuide, nearerGuide, fartherGuide guide
+	summits                               summits
 }
 
 // windowBand is how many strips share a field. A band follows its lanes all the
@@ -95,7 +96,9 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 		for j := range f.strips {
 			if x.strip.setUp(f, f.first+j) {
 				x.forward()
+				x.summits.finish()
 				x.backward()
+				x.handOut()
 			}
 		}
 	}
@@ -160,6 +163,9 @@ func (x *windower) part() {
 
 // vectorSlack is how many numbers beyond those that are meant vectors may read.
 const vectorSlack = 16
+
+// vectorWidth is the number of heights of a vector.
+const vectorWidth = 8
 
 // standing says where a strip's lanes cross a row: lane k of the strip is at
 // column v + dv k and ground distance s + ds k. end is where the next strip
@@ -374,7 +380,7 @@ func (x *windower) forward() {
 	}
 }
 
-// backward marches towards the radar: farther ground. It hands out the cells.
+// backward marches towards the radar: farther ground.
 func (x *windower) backward() {
 	p := &x.strip
 	x.fartherGuide.reset()
@@ -392,7 +398,6 @@ func (x *windower) backward() {
 		if p.unknown {
 			x.unknownBehind(i, &c)
 		}
-		x.put(i, &c)
 	}
 }
 
@@ -404,6 +409,16 @@ func (p *windowStrip) rowDistance(i, from int) linear {
 	}
 	a, b := &p.at[i], &p.at[from]
 	return linear{float32(math.Abs(a.s - b.s)), float32(math.Copysign(1, a.s-b.s) * (a.ds - b.ds))}
+}
+
+// handOut puts the slopes where they belong.
+func (x *windower) handOut() {
+	x.summits.finish()
+	p := &x.strip
+	for i := p.u0 - p.ua; i < p.u1-p.ua; i++ {
+		c := p.rowCells(i)
+		x.put(i, &c)
+	}
 }
 
 // put hands out the slopes of a row.

@@ -153,6 +153,8 @@ func (x *windower) seek(r *windowRun, g *guide, dir int, most []float32) {
 				near, far = a, b
 			}
 		}
-		o.search(r.lane+c, near, far, dir, float64(g.sign), &most[r.j+c])
+		if row := o.find(r.lane+c, near, far, dir, g.sign); row >= 0 {
+			x.summits.add(summit{o: o, row: row, sign: g.sign, most: &most[r.j+c]})
+		}
 	}
 }

@@ -9,68 +9,31 @@ type ownLine struct {
 	k, s, h float64
 }
 
-// station is where a line crosses a row: the heights from stationMargin columns
-// before column c on, the one before the line, and the line's own column,
-// distance and height.
-type station struct {
-	z       []float32
-	c       int
-	v, s, h float64
-}
-
-// stationMargin is the most columns that a line passes between two rows.
-const stationMargin = 2
-
-func (o *ownLine) cross(row int) (x station) {
+// cross returns where the line crosses a row: the column, that before it, the
+// ground distance, and the height.
+func (o *ownLine) cross(row int) (v float64, c int, s float64, h float32) {
 	st := &o.p.at[row]
-	x.v, x.s = st.place(o.k)
-	c := math.Floor(x.v)
-	x.c = int(c)
-	x.z = o.p.f.z[st.base+x.c-stationMargin:][:2*stationMargin+2]
-	x.h = lerp(x.z[stationMargin:], x.v-c)
-	return x
+	v, s = st.place(o.k)
+	f := math.Floor(v)
+	c = int(f)
+	return v, c, s, float32(lerp(o.p.f.z[st.base+c:], v-f))
 }
 
-// search raises most to the largest slope up to the ground of the line, down
-// with sign -1, that lies about the rows from near to far. The lanes beside it
-// say where; from there the line itself is followed to where it is steepest.
-func (o *ownLine) search(lane, near, far, dir int, sign float64, most *float32) {
+// find returns the row about which the line's ground is seen at the largest
+// slope, down with sign -1, between two rows that a guide points to; -1 for none.
+func (o *ownLine) find(lane, near, far, dir int, sign float32) int {
 	near, far = near-dir, far+dir
 	if (near-o.i)*dir < guideRows {
 		near = o.i + guideRows*dir
 	}
 	far = min(max(far, 0), o.p.rows-1)
-	n := (far-near)*dir + 1
-	row := near + n/2*dir
-	if n > 3 {
-		row = o.steepest(lane, min(near, far), n, float32(sign))
+	switch n := (far-near)*dir + 1; {
+	case n > 3:
+		return o.steepest(lane, min(near, far), n, sign)
+	case n > 0:
+		return near + n/2*dir
 	}
-	if n <= 0 || row < 0 {
-		return
-	}
-	m := slope{float64(*most), sign, o.h, o.s}
-	at := o.cross(row)
-	m.raise(at.h, at.s)
-	m.follow(o, row, -1, at)
-	m.follow(o, row, 1, at)
-	*most = float32(m.most)
-}
-
-// follow looks at the ground from one row to the next, and on as long as that is
-// seen at a larger slope.
-func (m *slope) follow(o *ownLine, row, dir int, at station) {
-	for range guideRows - 1 {
-		row += dir
-		if row < 0 || row >= o.p.rows {
-			return
-		}
-		next := o.cross(row)
-		m.between(&at, &next)
-		if !m.above(&next, &at) {
-			return
-		}
-		at = next
-	}
+	return -1
 }
 
 // steepest returns the row of n from one on at which the ground on the lanes
@@ -94,7 +57,9 @@ func (o *ownLine) steepest(lane, from, n int, sign float32) int {
 	}
 	best, row := float32(math.Inf(-1)), -1
 	for r := range n {
-		if m := q.at(r); m > best {
+		m := q.at(r)
+		// Of equal ones the vectors' first.
+		if m > best || m == best && r%vectorWidth < (row-from)%vectorWidth {
 			best, row = m, from+r
 		}
 	}
@@ -116,66 +81,162 @@ func (q *steepness) at(r int) float32 {
 	return float32(q.sign*(h-q.h0)) / d
 }
 
-// slope is the largest slope from a point up to ground, down with sign -1.
-type slope struct{ most, sign, h, s float64 }
-
-// above reports whether a place is seen at a larger slope than another.
-func (m *slope) above(a, b *station) bool {
-	return m.sign*(a.h-m.h)*math.Abs(b.s-m.s) > m.sign*(b.h-m.h)*math.Abs(a.s-m.s)
+// summits are places of lines about which the largest slopes are sought, several
+// at a time: rises less the cell's height, down with sign -1, and distances from
+// the cell. By place.
+type summits struct {
+	n     int
+	of    [summitCount]summit
+	least bySummit
+	// The row itself, and on both sides the column that the line crosses on the
+	// way to the next row, and the next row.
+	rise, away [summitPoints]bySummit
+	// The ground on the way: parabolas on both sides of that column.
+	arc [summitArcs]arcs
 }
 
-func (m *slope) raise(h, s float64) {
-	rise, away := m.sign*(h-m.h), math.Abs(s-m.s)
-	if rise > m.most*away {
-		m.most = rise / away
-	}
+const (
+	summitCount  = vectorWidth
+	summitPoints = 5
+	summitArcs   = 4
+)
+
+type bySummit = [summitCount]float32
+
+// summit is a place at a row of a line, and the slope that it may raise. moved
+// says that it was another row's neighbour.
+type summit struct {
+	o     ownLine
+	row   int
+	sign  float32
+	most  *float32
+	moved bool
 }
 
-// between raises the slope to that of the ground from one row to the next. The
-// surface is a parabola on each side of the column that the line crosses.
-func (m *slope) between(a, b *station) {
-	m.raise(b.h, b.s)
-	if a.v == b.v { // straight
-		return
-	}
-	if a.c == b.c {
-		m.bulge(a, b, a.c, 0, 1)
-		return
-	}
-	c := max(a.c, b.c)
-	t := (float64(c) - a.v) / (b.v - a.v)
-	p, q := float64(a.z[c-a.c+stationMargin]), float64(b.z[c-b.c+stationMargin])
-	m.raise(p+float64(t*(q-p)), a.s+float64(t*(b.s-a.s)))
-	m.bulge(a, b, a.c, 0, t)
-	m.bulge(a, b, b.c, t, 1)
-}
+// arcs are parabolas h + t (r + t d), t from t0 to t1, at distances away + t step
+// from the cells.
+type arcs struct{ h, r, d, t0, t1, away, step bySummit }
 
-// bulge is between for the ground above the ends of the way from t0 to t1, behind
-// column c.
-func (m *slope) bulge(a, b *station, c int, t0, t1 float64) {
-	p, q := a.z[c-a.c+stationMargin:], b.z[c-b.c+stationMargin:]
-	e, g := float64(p[1]-p[0]), float64(q[1]-q[0])
-	dx := b.v - a.v
-	d := (g - e) * dx
-	if m.sign*d >= 0 {
-		return
-	}
-	// Heights along the way: h + t (r + t d).
-	x := a.v - float64(c)
-	r := float64(q[0]) - float64(p[0]) + float64(e*dx) + float64((g-e)*x)
-	ds := b.s - a.s
-	away := math.Copysign(ds, ds*(a.s-m.s)) // change of distance to the point for t
-	if m.sign*(r+2*t0*d) <= m.most*away {
-		return // falls below the steepest line from the beginning
-	}
-	// The ground farthest above the steepest line so far; twice, since that line
-	// is then steeper.
-	h := float64(p[0]) + float64(e*x)
-	for range 2 {
-		t := (m.sign*m.most*away - r) / (2 * d)
-		if !(t > t0 && t < t1) {
-			return
+// add takes a place. It is looked at when there are enough of them, or by flush.
+func (q *summits) add(s summit) {
+	i := q.n
+	q.of[i] = s
+	o := &s.o
+	v, c, at, h := o.cross(s.row)
+	h0, away := float32(o.h), float32(math.Abs(at-o.s))
+	q.rise[0][i], q.away[0][i] = s.sign*(h-h0), away
+	for side := range 2 {
+		row := s.row - 1 + 2*side
+		if row < 0 || row >= o.p.rows {
+			row = s.row // says nothing new
 		}
-		m.raise(h+float64(t*(r+float64(t*d))), a.s+float64(t*ds))
+		q.addSide(i, 1+2*side, 2*side, &s, row, v, c, away, h0)
 	}
+	if q.n++; q.n == summitCount {
+		q.flush()
+	}
+}
+
+// addSide takes the way to a row: points from point on, arcs from arc on.
+func (q *summits) addSide(i, point, arc int, s *summit, row int, v float64, c int, away, h0 float32) {
+	o := &s.o
+	w, e, to, h := o.cross(row)
+	end := float32(math.Abs(to - o.s))
+	base, next := o.p.at[s.row].base, o.p.at[row].base
+	z := o.p.f.z
+	// The column that is crossed, or the way's end.
+	column, t := max(c, e), float32(1)
+	if c != e {
+		t = float32((float64(column) - v) / (w - v))
+	}
+	a, b := z[base+column], z[next+column]
+	q.rise[point][i], q.away[point][i] = s.sign*(a+float32(t*(b-a))-h0), away+float32(t*(end-away))
+	if c == e {
+		q.rise[point][i] = s.sign * (h - h0)
+	}
+	q.rise[point+1][i], q.away[point+1][i] = s.sign*(h-h0), end
+	dx := float32(w - v)
+	for k, c := range [2]int{c, e} {
+		p, g := z[base+c:][:2], z[next+c:][:2]
+		x := float32(v - float64(c))
+		slope := p[1] - p[0]
+		twist := (g[1] - g[0]) - slope
+		r := &q.arc[arc+k]
+		r.h[i] = s.sign * (p[0] + float32(slope*x) - h0)
+		r.r[i] = s.sign * ((g[0] - p[0]) + float32(slope*dx) + float32(twist*x))
+		r.d[i] = s.sign * float32(twist*dx)
+		r.away[i], r.step[i] = away, end-away
+		r.t0[i], r.t1[i] = 0, t
+		if k == 1 {
+			r.t0[i], r.t1[i] = t, 1
+		}
+	}
+}
+
+// flush looks at the places.
+func (q *summits) flush() {
+	n := q.n
+	for i := range n {
+		q.least[i] = *q.of[i].most
+	}
+	if vectors {
+		q.raiseVector()
+	} else {
+		for i := range n {
+			q.raise(i)
+		}
+	}
+	q.n = 0
+	for i := range n {
+		s := q.of[i]
+		if q.least[i] > *s.most {
+			*s.most = q.least[i]
+		}
+		if q.moveOn(&s, i) {
+			q.add(s)
+		}
+	}
+}
+
+// finish looks at all places that are left.
+func (q *summits) finish() {
+	for q.n > 0 {
+		q.flush()
+	}
+}
+
+// moveOn moves a place to the row beside it that is seen at a larger slope.
+func (q *summits) moveOn(s *summit, i int) bool {
+	steeper := func(a, b int) bool { return q.rise[a][i]*q.away[b][i] > q.rise[b][i]*q.away[a][i] }
+	if s.moved {
+		return false
+	}
+	s.moved = true
+	switch {
+	case steeper(2, 0) && !steeper(4, 2):
+		s.row--
+	case steeper(4, 0):
+		s.row++
+	default:
+		return false
+	}
+	return s.row > s.o.i+1 || s.row < s.o.i-1
+}
+
+// raise raises least to the largest slope of a place.
+func (q *summits) raise(i int) {
+	m := q.least[i]
+	for k := range q.rise {
+		m = higher(q.rise[k][i]/q.away[k][i], m)
+	}
+	for k := range q.arc {
+		a := &q.arc[k]
+		// The ground farthest above the steepest line so far.
+		t := (float32(m*a.step[i]) - a.r[i]) / (2 * a.d[i])
+		if a.d[i] < 0 && t > a.t0[i] && t < a.t1[i] {
+			h := a.h[i] + float32(t*(a.r[i]+float32(t*a.d[i])))
+			m = higher(h/(a.away[i]+float32(t*a.step[i])), m)
+		}
+	}
+	q.least[i] = m
 }

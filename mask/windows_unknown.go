@@ -193,8 +193,8 @@ func (x *windower) walk(o *ownLine, c *windowCells, j int) {
 		unknown = math.Inf(1)
 		last := o.s
 		for r := o.i + dir; r >= 0 && r < p.rows; r += dir {
-			x := o.cross(r)
-			h, s := x.h, x.s
+			_, _, s, height := o.cross(r)
+			h := float64(height)
 			d := math.Abs(s - o.s)
 			if p.unknown && p.gap(min(r, r-dir), o.k) {
 				unknown = min(unknown, math.Abs(last-o.s))

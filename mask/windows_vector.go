@@ -9,8 +9,6 @@ import (
 
 type float32x8 = archsimd.Float32x8
 
-const vectorWidth = 8
-
 func load(s []float32, at int) float32x8 {
 	return archsimd.LoadFloat32x8((*[vectorWidth]float32)(s[at:]))
 }
@@ -135,13 +133,13 @@ func (q *steepness) searchVector(n int) int {
 	best.Store(&m)
 	row.Store(&rows)
 	archsimd.ClearAVXUpperBits()
-	k := 0
+	most := max(m[0], m[1], m[2], m[3], m[4], m[5], m[6], m[7])
 	for i := range m {
-		if m[i] > m[k] || m[i] == m[k] && rows[i] >= 0 && rows[i] < rows[k] {
-			k = i
+		if m[i] == most {
+			return int(rows[i])
 		}
 	}
-	return int(rows[k])
+	return -1
 }
 
 func alongLineVector(out, zc, zr []float32, c, r linear, from int) (j int) {
@@ -195,4 +193,24 @@ func (l *ladder) belowVector(x float32x8) (n archsimd.Int32x8) {
 		n = n.Sub(x.Greater(archsimd.BroadcastFloat32x8(r)).ToInt32x8())
 	}
 	return n
+}
+
+func (q *summits) raiseVector() {
+	m := archsimd.LoadFloat32x8(&q.least)
+	for k := range q.rise {
+		m = higherOf(archsimd.LoadFloat32x8(&q.rise[k]).Div(archsimd.LoadFloat32x8(&q.away[k])), m)
+	}
+	var zero float32x8
+	two := archsimd.BroadcastFloat32x8(2)
+	for k := range q.arc {
+		a := &q.arc[k]
+		r, d, step := archsimd.LoadFloat32x8(&a.r), archsimd.LoadFloat32x8(&a.d), archsimd.LoadFloat32x8(&a.step)
+		t := m.Mul(step).Sub(r).Div(two.Mul(d))
+		ok := d.Less(zero).And(t.Greater(archsimd.LoadFloat32x8(&a.t0))).And(t.Less(archsimd.LoadFloat32x8(&a.t1)))
+		h := archsimd.LoadFloat32x8(&a.h).Add(t.Mul(r.Add(t.Mul(d))))
+		x := h.Div(archsimd.LoadFloat32x8(&a.away).Add(t.Mul(step)))
+		m = x.Merge(m, ok.And(x.Greater(m)))
+	}
+	m.Store(&q.least)
+	archsimd.ClearAVXUpperBits()
 }

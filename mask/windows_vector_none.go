@@ -15,3 +15,5 @@ func heightsBetweenVector([]float32, []float32, linear, int) int { return 0 }
 func alongLineVector(_, _, _ []float32, _, _ linear, _ int) int { return 0 }
 
 func (e *endsBlock) fillVector(*steps, *windower, []float32, int) bool { return false }
+
+func (q *summits) raiseVector() {}
