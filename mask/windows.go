@@ -89,7 +89,7 @@ func (x *windower) run(src dem.Source, ln *lanes, lim limits, from, to geometry.
 		if err := f.load(src); err != nil {
 			return err
 		}
-		f.z = append(f.z, make([]float32, vectorSlack)...)
+		f.z = f.z[:len(f.z)+vectorSlack]
 		if x.sure && !f.sure {
 			x.part()
 		}
@@ -143,7 +143,7 @@ func (f *field) band(ln *lanes, lim limits, u0, u1, v0, v1, first, end int) bool
 		f.at[i] = int(math.Floor(ln.vAt(u, k0))) - bandMargin
 		f.width = max(f.width, int(math.Ceil(ln.vAt(u, k1)))+bandMargin+1-f.at[i])
 	}
-	f.z = resize(f.z, rows*f.width)
+	f.z = resize(f.z, rows*f.width+vectorSlack)[:rows*f.width]
 	return true
 }
 

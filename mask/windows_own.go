@@ -49,27 +49,33 @@ func (o *ownLine) steepest(lane, from, n int, sign float32) int {
 	if q.mix == 0 {
 		q.b = q.a
 	}
-	if vectors {
-		if r := q.searchVector(n); r >= 0 {
-			return from + r
-		}
-		return -1
+	if r := q.search(n); r >= 0 {
+		return from + r
 	}
-	best, row := float32(math.Inf(-1)), -1
-	for r := range n {
-		m := q.at(r)
-		// Of equal ones the vectors' first.
-		if m > best || m == best && r%vectorWidth < (row-from)%vectorWidth {
-			best, row = m, from+r
-		}
-	}
-	return row
+	return -1
 }
 
 // steepness is what steepest looks at: heights of two lanes, and distances.
 type steepness struct {
 	a, b, s           []float32
 	mix, h0, s0, sign float32
+}
+
+// search returns the row of the first n at which the slope is largest, -1 where
+// there is none.
+func (q *steepness) search(n int) int {
+	if vectors {
+		return q.searchVector(n)
+	}
+	best, row := float32(math.Inf(-1)), -1
+	for r := range n {
+		m := q.at(r)
+		// Of equal ones the vectors' first.
+		if m > best || m == best && r%vectorWidth < row%vectorWidth {
+			best, row = m, r
+		}
+	}
+	return row
 }
 
 func (q *steepness) at(r int) float32 {
@@ -179,13 +185,7 @@ func (q *summits) flush() {
 	for i := range n {
 		q.least[i] = *q.of[i].most
 	}
-	if vectors {
-		q.raiseVector()
-	} else {
-		for i := range n {
-			q.raise(i)
-		}
-	}
+	q.raiseAll(n)
 	q.n = 0
 	for i := range n {
 		s := q.of[i]
@@ -221,6 +221,17 @@ func (q *summits) moveOn(s *summit, i int) bool {
 		return false
 	}
 	return s.row > s.o.i+1 || s.row < s.o.i-1
+}
+
+// raiseAll raises least to the largest slopes of n places.
+func (q *summits) raiseAll(n int) {
+	if vectors {
+		q.raiseVector()
+		return
+	}
+	for i := range n {
+		q.raise(i)
+	}
 }
 
 // raise raises least to the largest slope of a place.

@@ -8,6 +8,8 @@ import (
 	"testing"
 
 	"github.com/stretchr/testify/require"
+
+	"foldshade/geometry"
 )
 
 // TestWindowVectors: vectors and the portable loops give the same bits, missing
@@ -72,6 +74,78 @@ func windowLoops(rng *rand.Rand) []float32 {
 	out = append(append(out, up...), down...)
 	for l := range g.top {
 		out = append(append(out, g.top[l][:]...), g.row[l][:]...)
+	}
+	out = append(out, windowSearches(rng, heights)...)
+	return append(out, sweepLoops(rng, heights, line)...)
+}
+
+// windowSearches returns what the loops along a line say.
+func windowSearches(rng *rand.Rand, heights func(n int) []float32) (out []float32) {
+	n := 4 + rng.IntN(60)
+	q := steepness{a: heights(n), b: heights(n), s: make([]float32, n+vectorSlack), mix: rng.Float32(), h0: 3, s0: -100, sign: -1}
+	for i := range q.s {
+		q.s[i] = float32(30 * i)
+	}
+	out = append(out, float32(q.search(n)))
+	var p summits
+	fill := func(a *bySummit, scale float32) {
+		for i, h := range heights(0)[:len(a)] {
+			a[i] = scale * h
+		}
+	}
+	fill(&p.least, 0.01)
+	for k := range p.rise {
+		fill(&p.rise[k], 1)
+		fill(&p.away[k], 3)
+	}
+	for k := range p.arc {
+		a := &p.arc[k]
+		for _, v := range []*bySummit{&a.h, &a.r, &a.d, &a.away, &a.step} {
+			fill(v, 1)
+		}
+		fill(&a.t0, 0.01)
+		fill(&a.t1, 0.02)
+	}
+	p.raiseAll(len(p.least))
+	return append(out, p.least[:]...)
+}
+
+// sweepLoops returns what the loops over the cells of a sweep say.
+func sweepLoops(rng *rand.Rand, heights func(n int) []float32, line func(a, b float64) linear) []float32 {
+	n := 1 + rng.IntN(40)
+	lanes, slopes := make([]float32, n), make([]float32, n)
+	heightsBetween(lanes, heights(n+1), line(0.3, 0.01), 2)
+	alongLine(slopes, heights(n)[:n], heights(n)[:n], line(0.02, 0.01), line(-0.01, 0.01), 5)
+	out := append(lanes, slopes...)
+	x := windower{sure: rng.IntN(2) == 0}
+	rise := heights(32)
+	for _, a := range []*[]float32{&x.shade, &x.shadeU, &x.fold, &x.foldU, &rise} {
+		*a = heights(32)
+		for i := range *a {
+			(*a)[i] /= 40
+		}
+	}
+	cells := make([]int32, 32)
+	for i := range cells {
+		cells[i] = int32(i)
+		x.shadeU[i], x.foldU[i] = higher(x.shadeU[i], x.shade[i]), higher(x.foldU[i], x.fold[i])
+	}
+	if x.sure {
+		x.shadeU, x.foldU = x.shade, x.fold
+	}
+	var incidences []geometry.Angle
+	for i := range 1 + rng.IntN(40) {
+		incidences = append(incidences, geometry.Angle(15+i)*geometry.Degree)
+	}
+	s := newSteps(incidences, 0.3)
+	var e endsBlock
+	if e.fill(&s, &x, rise, cells) {
+		out = append(out, 1)
+	}
+	for _, ends := range e {
+		for _, b := range ends {
+			out = append(out, float32(b))
+		}
 	}
 	return out
 }
