@@ -192,7 +192,7 @@ type windowStrip struct {
 	j, k0          int
 	u0, u1, ua, ub int
 	rows           int
-	at             []standing  // by row from ua on
+	allAt, at      []standing  // by row, of the field and from ua on
 	cells          windowCells // of the rows from u0 on
 	width          int         // cells that are held a row
 	heights        laneRow     // of the row that is sampled
@@ -202,6 +202,7 @@ type windowStrip struct {
 	// the middle lane.
 	tall, along []float32
 
+	doubt           []bool                // by row from u0 on: unknown terrain counts
 	missing         []bool                // by row from ua on: heights, or lanes outside the DEM
 	unknown         bool                  // what is missing is unknown terrain
 	last            float64               // column of the DEM
@@ -219,9 +220,13 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	ln := f.ln
 	p.f, p.j, p.k0 = f, j, ln.first+laneStep*j
 	p.u0, p.u1, p.width = f.u1, f.u0, 0
-	for u := f.u0; u < f.u1; u++ {
-		st := p.stand(u)
-		if va, vb := p.columns(&st); va < vb {
+	p.allAt = resize(p.allAt, f.ub-f.ua)
+	for i := range p.allAt {
+		st := &p.allAt[i]
+		*st = p.stand(f.ua + i)
+		st.base = i*f.width - f.at[i]
+		u := f.ua + i
+		if va, vb := p.columns(st); va < vb && u >= f.u0 && u < f.u1 {
 			p.u0, p.u1 = min(p.u0, u), u+1
 			p.width = max(p.width, vb-st.first())
 		}
@@ -231,12 +236,9 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	}
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
 	p.rows = p.ub - p.ua
-	p.at = resize(p.at, p.rows)
+	p.at = p.allAt[p.ua-f.ua:][:p.rows]
 	p.along = resize(p.along, p.rows+vectorSlack)
 	for i := range p.at {
-		p.at[i] = p.stand(p.ua + i)
-		r := p.ua + i - f.ua
-		p.at[i].base = r*f.width - f.at[r]
 		_, s := p.at[i].place(laneStep / 2)
 		p.along[i] = float32(s)
 	}
@@ -248,6 +250,8 @@ func (p *windowStrip) setUp(f *field, j int) bool {
 	p.last = float64(ln.orient.v - 1)
 	p.nearEnd, p.farEnd = p.ua == 0, p.ub == ln.orient.u
 	p.unknown = !f.sure
+	p.doubt = resize(p.doubt, p.u1-p.u0)
+	clear(p.doubt)
 	p.findMissing()
 	p.findRuns()
 	return true
@@ -435,9 +439,12 @@ func (x *windower) put(i int, c *windowCells) {
 	if p.f.ln.transposed {
 		stride = x.win.Cols
 	}
-	if p.unknown {
+	if p.doubt[p.ua+i-p.u0] {
 		raiseTo(c.shadeU[:p.width], c.shade)
 		raiseTo(c.foldU[:p.width], c.fold)
+	} else if p.missing[i] { // walks need both
+		copy(c.shadeU, c.shade[:p.width])
+		copy(c.foldU, c.fold[:p.width])
 	} else {
 		c.shadeU, c.foldU = c.shade, c.fold
 	}

@@ -13,18 +13,9 @@ func (p *windowStrip) findMissing() {
 		a, b := int(math.Floor(st.v))-1, int(math.Ceil(st.end))+1
 		p.missing[i] = a < 0 || float64(b) > p.last
 		if !p.missing[i] && p.unknown {
-			p.missing[i] = anyMissing(p.row(i, a)[:b-a+1])
+			p.missing[i] = !complete(p.row(i, a)[:b-a+1])
 		}
 	}
-}
-
-func anyMissing(z []float32) bool {
-	for _, h := range z {
-		if h != h {
-			return true
-		}
-	}
-	return false
 }
 
 // gap reports whether the surface along a lane, which may be fractional, is not
@@ -45,7 +36,7 @@ func (p *windowStrip) gap(i int, k float64) bool {
 	}
 	c := int(math.Floor(lo))
 	n := int(math.Ceil(hi)) - c + 1
-	return n > 0 && (anyMissing(p.row(i, c)[:n]) || anyMissing(p.row(i+1, c)[:n]))
+	return n > 0 && !(completeScalar(p.row(i, c)[:n]) && completeScalar(p.row(i+1, c)[:n]))
 }
 
 // forget starts a march at a row: nothing unknown was passed yet but, with edge,
@@ -84,8 +75,6 @@ func (p *windowStrip) pass(i, dir int) {
 // towards the radar. It is called row by row.
 func (x *windower) unknownBefore(i int, c *windowCells) {
 	p := &x.strip
-	fillWith(c.shadeU[:p.width], float32(x.minShade))
-	fillWith(c.foldU[:p.width], float32(x.minFold))
 	if i == p.u0-p.ua {
 		for r := range i {
 			p.pass(r, 1)
@@ -95,6 +84,7 @@ func (x *windower) unknownBefore(i int, c *windowCells) {
 	if i-p.noted > p.f.near {
 		return
 	}
+	x.doubt(i, c)
 	lim := &p.f.lim
 	p.eachUnknown(i, func(j int, h, d float64) {
 		raise(&c.shadeU[j], lim.ceiling-h, d)
@@ -114,7 +104,18 @@ func (x *windower) unknownBehind(i int, c *windowCells) {
 	if p.noted-i > p.f.far || p.noted == noRow {
 		return
 	}
+	x.doubt(i, c)
 	p.eachUnknown(i, func(j int, h, d float64) { raise(&c.foldU[j], p.f.lim.ceiling-h, d) })
+}
+
+// doubt prepares a row for which unknown terrain counts.
+func (x *windower) doubt(i int, c *windowCells) {
+	p := &x.strip
+	if row := &p.doubt[p.ua+i-p.u0]; !*row {
+		*row = true
+		fillWith(c.shadeU[:p.width], float32(x.minShade))
+		fillWith(c.foldU[:p.width], float32(x.minFold))
+	}
 }
 
 // eachUnknown visits the cells of a row with their heights and the distances to
