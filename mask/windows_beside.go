@@ -94,12 +94,11 @@ func (r *windowRun) distance(row int) linear {
 
 // line returns the range line of a cell of the run.
 func (r *windowRun) line(c int) ownLine {
-	p := r.p
-	st := &p.at[r.i]
-	o := ownLine{p: p, i: r.i, v: r.v + c, h: float64(p.row(r.i, r.v)[c])}
-	o.k = st.lane(float64(o.v))
-	_, o.s = st.place(o.k)
-	return o
+	a, b, q := &r.places[0], &r.places[1], float64(r.j+c)/laneStep
+	return ownLine{
+		p: r.p, i: r.i, h: float64(r.p.row(r.i, r.v)[c]),
+		k: a.k + float64(q*(b.k-a.k)), s: a.s + float64(q*(b.s-a.s)),
+	}
 }
 
 func (p *windowStrip) course(i, j int) course {

@@ -5,7 +5,7 @@ import "math"
 // ownLine is the range line through one cell.
 type ownLine struct {
 	p       *windowStrip
-	i, v    int
+	i       int
 	k, s, h float64
 }
 

@@ -4,6 +4,7 @@ package mask
 
 import (
 	"math"
+	"math/bits"
 	"simd/archsimd"
 )
 
@@ -132,14 +133,10 @@ func (q *steepness) searchVector(n int) int {
 	var m, rows [vectorWidth]float32
 	best.Store(&m)
 	row.Store(&rows)
-	archsimd.ClearAVXUpperBits()
 	most := max(m[0], m[1], m[2], m[3], m[4], m[5], m[6], m[7])
-	for i := range m {
-		if m[i] == most {
-			return int(rows[i])
-		}
-	}
-	return -1
+	first := bits.TrailingZeros8(best.Equal(archsimd.BroadcastFloat32x8(most)).ToBits())
+	archsimd.ClearAVXUpperBits()
+	return int(rows[first])
 }
 
 func alongLineVector(out, zc, zr []float32, c, r linear, from int) (j int) {
