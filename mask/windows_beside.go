@@ -15,9 +15,12 @@ type course struct {
 
 // sideCourse is a course on one side, in columns from the cell's: the neighbour
 // towards which the line runs, 0 for none; the column before the line two rows
-// on; and the column that it crosses between the first and the second row, 0 for
-// none.
-type sideCourse struct{ neighbour, second, kink int }
+// on; and the columns that it crosses between the first and the second row and
+// between that and the third, 0 for none.
+type sideCourse struct {
+	neighbour, second int
+	kinks             [2]int
+}
 
 // windowRun is a run of cells of one course.
 type windowRun struct {
@@ -128,14 +131,25 @@ func (p *windowStrip) sideCourse(i int, v, k float64, dir int) (c sideCourse) {
 	b, _ := p.at[r].place(k)
 	b -= v
 	c.second = int(math.Floor(b + onColumn))
-	// The last column that is passed before the second row.
-	if k := int(math.Floor(b - onColumn)); c.neighbour > 0 && float64(k) > a {
-		c.kink = k
+	c.kinks[0] = crossed(a, b)
+	if r += dir; r < 0 || r >= p.rows {
+		return c
 	}
-	if k := int(math.Ceil(b + onColumn)); c.neighbour < 0 && float64(k) < a {
-		c.kink = k
-	}
+	d, _ := p.at[r].place(k)
+	c.kinks[1] = crossed(b, d-v)
 	return c
+}
+
+// crossed returns the last column that a line passes on the way from a to b, 0 for
+// none.
+func crossed(a, b float64) int {
+	if k := int(math.Floor(b - onColumn)); b > 0 && float64(k) > a {
+		return k
+	}
+	if k := int(math.Ceil(b + onColumn)); b < 0 && float64(k) < a {
+		return k
+	}
+	return 0
 }
 
 // besideLine is one side of a run: heights by cell, and where the lines cross.
@@ -143,11 +157,18 @@ func (p *windowStrip) sideCourse(i int, v, k float64, dir int) (c sideCourse) {
 type besideLine struct {
 	here, aside   []float32 // the cells and the neighbours towards which the lines run
 	first, firstA []float32 // the same in the next row
-	second, after []float32 // before and behind the lines in the second row
-	kink, kinkEnd []float32 // at the column between, in the two rows
+	across        linear    // the way from first to firstA
+	firstD        linear    // ground distance
+	// Before and behind the lines in the second row, and at the columns that they
+	// cross, in the rows before and behind.
+	points [3]besidePoint
+}
 
-	across, rest, part         linear // of the way to firstA, to after, and from kink to kinkEnd
-	firstD, secondD, kinkPlace linear // ground distances
+// besidePoint is a place between two heights, part of the way from one to the
+// other, at a ground distance.
+type besidePoint struct {
+	a, b           []float32
+	part, distance linear
 }
 
 // beside raises the slopes of a run's cells to those of the next two rows.
@@ -171,23 +192,35 @@ func (p *windowStrip) besideLine(r *windowRun, c sideCourse, dir int) (b besideL
 	if second < 0 || second >= p.rows {
 		return b
 	}
+	q := &b.points[0]
+	from := float64(c.second)
 	b0, e0 := r.away(0, second)
 	b1, e1 := r.away(1, second)
-	from := float64(c.second)
-	b.second, b.after = p.row(second, r.v+c.second), p.row(second, r.v+c.second+1)
-	b.rest, b.secondD = linearOf(b0-from, b1-from), linearOf(e0, e1)
+	q.a, q.b = p.row(second, r.v+c.second), p.row(second, r.v+c.second+1)
+	q.part, q.distance = linearOf(b0-from, b1-from), linearOf(e0, e1)
 	if b0-from < onColumn && p.f.ln.uniform {
-		b.after = b.second // no neighbour counts
+		q.b = q.a // no neighbour counts
 	}
-	if c.kink == 0 {
-		return b
+	for k, column := range c.kinks {
+		if column != 0 {
+			b.points[1+k] = r.kink(r.i+(1+k)*dir, r.i+(2+k)*dir, column)
+		}
 	}
-	b.kink, b.kinkEnd = p.row(first, r.v+c.kink), p.row(second, r.v+c.kink)
-	at := float64(c.kink)
-	t0, t1 := (at-a0)/(b0-a0), (at-a1)/(b1-a1)
-	b.part = linearOf(t0, t1)
-	b.kinkPlace = linearOf(d0+t0*(e0-d0), d1+t1*(e1-d1))
 	return b
+}
+
+// kink returns where the lines cross a column between two rows.
+func (r *windowRun) kink(before, behind, column int) (q besidePoint) {
+	q.a, q.b = r.p.row(before, r.v+column), r.p.row(behind, r.v+column)
+	var t, d [2]float64
+	for n := range t {
+		va, da := r.away(n, before)
+		vb, db := r.away(n, behind)
+		t[n] = (float64(column) - va) / (vb - va)
+		d[n] = da + t[n]*(db-da)
+	}
+	q.part, q.distance = linearOf(t[0], t[1]), linearOf(d[0], d[1])
+	return q
 }
 
 // slopes raises up to the largest slope from the cells up to the ground on the
@@ -224,17 +257,14 @@ func (b *besideLine) cell(c, j int) (high, low float32) {
 	start := q + float32(a*side) + float32(ownGround*float32(a*(turn-side)))
 	d := 1 / b.firstD.at(j)
 	high, low = higher(start, end)*d, lower(start, end)*d
-	count := func(rise, away float32) {
-		m := rise / away
+	for k := range b.points {
+		p := &b.points[k]
+		if p.a == nil {
+			continue
+		}
+		q := p.a[c] - h
+		m := (q + float32(p.part.at(j)*((p.b[c]-h)-q))) / p.distance.at(j)
 		high, low = higher(m, high), lower(m, low)
-	}
-	if b.second != nil {
-		q := b.second[c] - h
-		count(q+float32(b.rest.at(j)*((b.after[c]-h)-q)), b.secondD.at(j))
-	}
-	if b.kink != nil {
-		q := b.kink[c] - h
-		count(q+float32(b.part.at(j)*((b.kinkEnd[c]-h)-q)), b.kinkPlace.at(j))
 	}
 	return high, low
 }

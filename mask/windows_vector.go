@@ -96,14 +96,13 @@ func (b *besideLine) slopesVector(j int, up, down []float32) int {
 		start := q.Add(a.Mul(side)).Add(own.Mul(a.Mul(turn.Sub(side))))
 		d := one.Div(b.firstD.spread(j + c))
 		high, low := higherOf(start, end).Mul(d), lowerOf(start, end).Mul(d)
-		if b.second != nil {
-			q := load(b.second, c).Sub(h)
-			m := q.Add(b.rest.spread(j + c).Mul(load(b.after, c).Sub(h).Sub(q))).Div(b.secondD.spread(j + c))
-			high, low = higherOf(m, high), lowerOf(m, low)
-		}
-		if b.kink != nil {
-			q := load(b.kink, c).Sub(h)
-			m := q.Add(b.part.spread(j + c).Mul(load(b.kinkEnd, c).Sub(h).Sub(q))).Div(b.kinkPlace.spread(j + c))
+		for k := range b.points {
+			p := &b.points[k]
+			if p.a == nil {
+				continue
+			}
+			q := load(p.a, c).Sub(h)
+			m := q.Add(p.part.spread(j + c).Mul(load(p.b, c).Sub(h).Sub(q))).Div(p.distance.spread(j + c))
 			high, low = higherOf(m, high), lowerOf(m, low)
 		}
 		store(higherOf(high, load(up, c)), up, c)

@@ -58,13 +58,11 @@ func windowLoops(rng *rand.Rand) []float32 {
 	out := []float32{float32(seen & 0xffff), float32(seen >> 16)}
 	b := besideLine{
 		here: h0, aside: heights(n), first: heights(n), firstA: heights(n),
-		across: line(0.3, 0.01), rest: line(0.6, 0.01), part: line(0.5, -0.01),
-		firstD: line(20, 0.01), secondD: line(40, 0.01), kinkPlace: line(33, 0.01),
+		across: line(0.3, 0.01), firstD: line(20, 0.01),
 	}
-	if rng.IntN(3) > 0 {
-		b.second, b.after = heights(n), heights(n)
-		if rng.IntN(2) > 0 {
-			b.kink, b.kinkEnd = heights(n), heights(n)
+	for k := range b.points {
+		if rng.IntN(3) > 0 {
+			b.points[k] = besidePoint{heights(n), heights(n), line(0.6, 0.01), line(40, 0.01)}
 		}
 	}
 	if up, down = up[:n], down[:n]; rng.IntN(2) == 0 {
