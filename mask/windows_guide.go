@@ -5,9 +5,10 @@ import (
 	"math/bits"
 )
 
-// guideShare is the part of the bounds that a slope of a lane must pass for the
-// cell to look there on its own range line, where it may be steeper.
-const guideShare = 0.7
+// guideShare is the part of the bounds that a slope of a lane must pass for a cell
+// that has seen none above them to look there on its own range line, where it may
+// be steeper.
+const guideShare = 0.8
 
 // guideRows is the number of rows from which on a guide sees ground. In those
 // between, a cell looks on its own range line throughout, see beside.
@@ -30,6 +31,7 @@ const guideLanes = 40
 // to look.
 type guide struct {
 	sign   float32   // -1 turns heights upside down
+	bound  float32   // slopes that are not larger do not count
 	slopes []float32 // ascending
 	top    []laneRow // by slope
 	row    []laneRow
@@ -39,7 +41,7 @@ type guide struct {
 func (g *guide) setUp(bound, highest float64, sign float32) {
 	low := guideShare * bound
 	n := int(math.Ceil(math.Log(highest/low)/math.Log(guideStep))) + 1
-	g.sign = sign
+	g.sign, g.bound = sign, float32(bound)
 	g.slopes = resize(g.slopes, n)
 	g.top, g.row = resize(g.top, n), resize(g.row, n)
 	for l := range n {
@@ -76,7 +78,7 @@ func (g *guide) advance(h *laneRow, d linear, row int) {
 }
 
 // sees returns which of the cells from column j on may see ground at a larger
-// slope than most, one bit each. Cell c lies between lanes lane + c and the next,
+// slope than most, one bit each; where most is the bound, at a share of it. Cell c lies between lanes lane + c and the next,
 // or on the former. h0 are the heights, d is the distance of the cells from the
 // row passed last.
 //
@@ -108,7 +110,7 @@ func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) 
 		case l < len(g.slopes):
 			slope = g.slopes[l-1] + float32((g.slopes[l]-g.slopes[l-1])*(above/(above-below)))
 		}
-		if slope > most[c] {
+		if slope > most[c] || most[c] == g.bound {
 			out |= 1 << c
 		}
 	}

@@ -54,6 +54,11 @@ func windowLoops(rng *rand.Rand) []float32 {
 	lane, n := rng.IntN(laneStep), 0
 	n = 1 + rng.IntN(laneStep-lane)
 	h0, up, down := heights(n), heights(n), heights(n)
+	for c := range up {
+		if rng.IntN(2) == 0 {
+			up[c] = g.bound
+		}
+	}
 	seen := g.sees(lane, rng.IntN(3) == 0, h0, up, line(60, 0.1), 3, n)
 	out := []float32{float32(seen & 0xffff), float32(seen >> 16)}
 	b := besideLine{
