@@ -147,7 +147,7 @@ func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt 
 	if w == 0 {
 		next = k
 	}
-	wk.quick(p, u, v, k, next, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
+	wk.quick(p, u, v, k, next, p.laneOf(v, 1/p.dv), &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 	return m
 }
 
