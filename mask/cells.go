@@ -143,12 +143,7 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 	if doubt != 0 {
 		m = t.ask(p, wk, u, v, k, w, m, doubt)
 	}
-	t.raw[i] = uint8(m.raw())
-	fold := float32(nan)
-	if m.clear > 0 {
-		fold = min(m.near, m.far)
-	}
-	t.keep(i, m.clear, fold)
+	fold := t.set(i, m)
 	if t.bin > 0 {
 		if m.clearU > 0 {
 			t.count(p, wk, u, v, i, fold)
@@ -156,6 +151,17 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 			t.returns[i], t.share[i] = float32(nan), float32(nan)
 		}
 	}
+}
+
+// set stores what a cell's margins say and returns its fold margin.
+func (t *sheet) set(i int, m lane) (fold float32) {
+	t.raw[i] = uint8(m.raw())
+	fold = float32(nan)
+	if m.clear > 0 {
+		fold = min(m.near, m.far)
+	}
+	t.keep(i, m.clear, fold)
+	return fold
 }
 
 // ask settles a doubtful cell.

@@ -96,24 +96,24 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineU
 		lit &= absolute(mU).Greater(slackM).ToBits()
 		unlit, unfolded = mU.LessEqual(zero).ToBits(), nU.LessEqual(zero).ToBits()|gU.LessEqual(zero).ToBits()
 	}
-	if r.sure && ^(lit|dark) != 0 {
-		yes := (&early{p, r, u, v, k, z}).lit(^(lit | dark))
-		m, lit = positive(m, yes, r.tinyM), lit|yes
-	}
-	if lit&(doubtN|doubtG) != 0 {
+	dim := ^(lit | dark) // doubtful whether lit
+	if dim|lit&(doubtN|doubtG) != 0 {
 		steep := p.steep8(u, v)
-		doubtN, doubtG = doubtN&lit&^steep, doubtG&lit&^steep
-		if r.sure {
-			e := early{p, r, u, v, k, z}
-			yes := e.alone(doubtN, -1)
-			n, doubtN = positive(n, yes, r.tinyR), doubtN&^yes
-			yes = e.alone(doubtG, 1)
-			g, doubtG = positive(g, yes, r.tinyR), doubtG&^yes
-		}
+		doubtN, doubtG = doubtN&^(dark|steep), doubtG&^(dark|steep)
 	}
-	doubtful := ^(lit | dark) | lit&(doubtN|doubtG)
+	if r.sure && dim|doubtN|doubtG != 0 {
+		e := early{p, r, u, v, k, z}
+		yes := e.lit(dim)
+		m, lit, dim = positive(m, yes, r.tinyM), lit|yes, dim&^yes
+		yes = e.alone(doubtN&lit, -1)
+		n, doubtN = positive(n, yes, r.tinyR), doubtN&^yes
+		yes = e.alone(doubtG&lit, 1)
+		g, doubtG = positive(g, yes, r.tinyR), doubtG&^yes
+	}
+	doubtful := dim | lit&(doubtN|doubtG)
+	on := uint8(0)
 	if !r.exact { // cells on a lane are treated alike on both sides
-		doubtful |= part.Equal(zero).ToBits()
+		on = part.Equal(zero).ToBits()
 	}
 	fold := none.Merge(n.Min(g), shadow)
 	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
@@ -129,13 +129,43 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineU
 	} else {
 		t.scatter(i, stride, skip, codes, m, fold)
 	}
-	var w [bundle]float32
-	part.Store(&w)
-	archsimd.ClearAVXUpperBits()
-	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
-		j := bits.TrailingZeros8(doubtful)
-		t.classifyCell(p, wk, u, v+j, k+j, w[j], z[j])
+	doubtful, on = doubtful>>skip<<skip, on>>skip<<skip
+	if doubtful|on == 0 {
+		return
 	}
+	c := bundled{doubtM: dim, doubtN: doubtN, doubtG: doubtG}
+	part.Store(&c.w)
+	m.Store(&c.clear)
+	n.Store(&c.near)
+	g.Store(&c.far)
+	archsimd.ClearAVXUpperBits()
+	single := on
+	if !r.sure {
+		single |= doubtful
+	}
+	for ; single != 0; single &= single - 1 {
+		j := bits.TrailingZeros8(single)
+		doubtful &^= 1 << j
+		t.classifyCell(p, wk, u, v+j, k+j, c.w[j], z[j])
+	}
+	for ; doubtful != 0; doubtful &= doubtful - 1 {
+		j := bits.TrailingZeros8(doubtful)
+		m, doubt := c.of(j)
+		t.set(i+j*stride, t.ask(p, wk, u, v+j, k+j, c.w[j], m, doubt))
+	}
+}
+
+// bundled holds the margins of a bundle, and which are doubtful.
+type bundled struct {
+	w, clear, near, far    [bundle]float32
+	doubtM, doubtN, doubtG uint8
+}
+
+// of returns the margins of cell j where no terrain is unknown.
+func (c *bundled) of(j int) (m lane, d doubts) {
+	m = lane{clear: c.clear[j], near: c.near[j], far: c.far[j], clearU: c.clear[j], nearU: c.near[j], farU: c.far[j]}
+	d = doubts(c.doubtM>>j&1)*doubtClear | doubts(c.doubtN>>j&1)*doubtNear | doubts(c.doubtG>>j&1)*doubtFar
+	return m, d
 }
 
 // steep8 is strip.steep for the cells from column v on.
