@@ -210,7 +210,7 @@ const turnAsk = 0x80
 
 // see fills the turns of the columns [from, to) of the sheet.
 func (c *sightCells) see(from, to int) {
-	if !vectors || c.wantFacets || !c.seen || !c.abreast || to-from < 4 {
+	if !vectors || !c.seen || !c.abreast || to-from < 4 {
 		for j := from; j < to; j++ {
 			c.seeCell(j)
 		}
@@ -294,10 +294,10 @@ func (c *sightCells) seeCell(j int) {
 			turn |= turnCompressed
 		}
 		if c.wantFacets {
-			c.facets[j], c.ups[j] = f, [3]float64{los.Up, sight.Above.Up, sight.Across.Up}
+			c.facets.set(j, f, los.Up, sight.Above.Up, sight.Across.Up)
 		}
 		if c.wantViews {
-			c.views[j] = view{east: los.East, north: los.North, s: r}
+			c.facets.setView(j, los.East, los.North, r)
 		}
 	}
 	c.turns[j] = turn
