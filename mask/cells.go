@@ -62,61 +62,66 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	if va >= vb {
 		return
 	}
-	at, stride := t.place(f, u, va)
-	z := f.z[(u-f.ua)*f.width+va-f.at[u-f.ua]:][:vb-va]
-	r := &t.margins
-	r.fill(p, u, p.sure[u-p.ua] == 3)
+	z, base := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
+	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
+	bundles := vectors && t.margins.sure && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
 	per := 1 / p.dv
-	x := (float64(va) - p.v0) * per
-	for j, h := range z {
-		i := at + j*stride
-		if p.dv != 1 {
-			x = (float64(va+j) - p.v0) * per
-		}
-		k := min(max(int(x+onLane), 1), laneStep)
-		w := float32(max(x-float64(k), 0))
-		if w < onLane {
-			w = 0
-		}
-		x++
-		// Most cells are clearly open: all margins are wide.
-		c, n, g := mix(r.clear[k], r.clear[k+1], w), mix(r.near[k], r.near[k+1], w), mix(r.far[k], r.far[k+1], w)
-		bump := abs32(h - mix(r.h[k], r.h[k+1], w))
-		if r.sure && c > r.slackM+bump+r.roughM[k] && n > r.slackR+bump+r.roughN[k] && g > r.slackR+bump+r.roughF[k] {
-			t.raw[i] = uint8(Open)
-			t.keep(i, c, min(n, g))
-			if t.bin > 0 {
-				t.count(f, wk, u, va+j, i, min(n, g))
+	for v := va; v < vb; v++ {
+		if bundles {
+			from := min(v, vb-bundle)
+			if k := p.before(from, per); k >= 1 && k+bundle-1 <= laneStep && p.before(from+bundle-1, per) == k+bundle-1 {
+				t.classifyBundle(p, wk, u, from, v-from, k, per, (*[bundle]float32)(z[from-base:]))
+				v = from + bundle - 1
+				continue
 			}
-			continue
 		}
-		if h != h {
-			t.raw[i] = uint8(NoData)
-			t.keep(i, float32(nan), float32(nan))
-			continue
-		}
-		t.classifyCell(p, wk, u, va+j, k, w, bump, i)
+		k := min(max(p.before(v, per), 1), laneStep)
+		t.classifyCell(p, wk, u, v, k, weight(p.laneOf(v, per), k), z[v-base])
 	}
 }
 
+// bundle is the number of cells that a vector holds.
+const bundle = 8
+
+// laneOf returns the lane of the strip, fractional, on which column v lies in the
+// row where the strip stands; per is 1 / dv.
+func (p *strip) laneOf(v int, per float64) float64 { return (float64(v) - p.v0) * per }
+
+// before returns the last lane that does not lie beyond column v.
+func (p *strip) before(v int, per float64) int { return int(p.laneOf(v, per) + onLane) }
+
+// weight returns how far, in lanes, a cell at lane x lies beyond lane k; 0 where
+// it lies on it.
+func weight(x float64, k int) float32 {
+	if w := float32(x - float64(k)); w >= onLane {
+		return w
+	}
+	return 0
+}
+
 // mix interpolates between two lanes.
-func mix(x, y, w float32) float32 { return x + w*(y-x) }
+func mix(x, y, w float32) float32 { return x + float32(w*(y-x)) }
 
 func abs32(x float32) float32 { return math.Float32frombits(math.Float32bits(x) &^ (1 << 31)) }
 
-// classifyCell classifies the cell (u, v) between lanes k and k+1.
-func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, bump float32, i int) {
-	m, doubt := t.margins.at(k, w, bump)
-	if doubt != 0 {
-		if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum == sum {
-			next := k + 1
-			if w == 0 {
-				next = k
-			}
-			wk.quick(p, u, v, k, next, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
-		} else {
-			m = t.settle(p.f, wk, u, v, m)
+// classifyCell classifies the cell (u, v) of height h between lanes k and k+1.
+func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
+	i, _ := t.place(p.f, u, v)
+	if h != h {
+		t.raw[i] = uint8(NoData)
+		t.keep(i, h, h)
+		if t.bin > 0 {
+			t.returns[i], t.share[i] = h, h
 		}
+		return
+	}
+	m, doubt := t.margins.at(k, w, h)
+	folds := doubt&^(doubtClear|doubtClearU) != 0
+	if folds && p.steep(u, v) { // layover by its own slope, whatever shares its range
+		doubt &= doubtClear | doubtClearU
+	}
+	if doubt != 0 {
+		m = t.ask(p, wk, u, v, k, w, m, doubt)
 	}
 	t.raw[i] = uint8(m.raw())
 	fold := float32(nan)
@@ -126,35 +131,51 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, bump float32,
 	t.keep(i, m.clear, fold)
 	if t.bin > 0 {
 		if m.clearU > 0 {
-			t.count(p.f, wk, u, v, i, fold)
+			t.count(p, wk, u, v, i, fold)
 		} else {
 			t.returns[i], t.share[i] = float32(nan), float32(nan)
 		}
 	}
 }
 
+// ask settles a doubtful cell.
+func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt doubts) lane {
+	if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum != sum {
+		return t.settle(p.f, wk, u, v, m)
+	}
+	next := k + 1
+	if w == 0 {
+		next = k
+	}
+	wk.quick(p, u, v, k, next, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
+	return m
+}
+
 // count fills what shares the slant range of a cell. Where nothing comes within
 // a bin, the cell is alone.
-func (t *sheet) count(f *field, wk *walker, u, v, i int, fold float32) {
+func (t *sheet) count(p *strip, wk *walker, u, v, i int, fold float32) {
 	t.returns[i], t.share[i] = 1, 1
 	if fold != fold {
 		t.returns[i], t.share[i] = fold, fold
-	} else if float64(fold) < t.bin {
-		n, share := wk.returns(f, u, v, t.bin)
+	} else if float64(fold) < t.bin || p.steep(u, v) {
+		n, share := wk.returns(p.f, u, v, t.bin)
 		t.returns[i], t.share[i] = float32(n), float32(share)
 	}
 }
 
 // laneMargins are the lanes' margins along one row.
 type laneMargins struct {
-	clear, near, far    [marchLanes]float32
-	clearU, nearU, farU [marchLanes]float32
-	h                   [marchLanes]float32 // heights
-	sure                bool                // the U margins are those without
-	exact               bool                // lanes run through cell centres
+	clear, near, far    byLane32
+	clearU, nearU, farU byLane32
+	h                   byLane32 // heights
+	sure                bool     // the U margins are those without
+	exact               bool     // lanes run through cell centres
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
-	roughM, roughN, roughF [marchLanes]float32
+	perM, perR             float32 // rows a metre
+	tinyM, tinyR           float32 // see atLimit
+	cos                    float32 // slant range for a metre of height
+	roughM, roughN, roughF byLane32
 }
 
 // fill takes the margins from the lines and the heights of the row that the
@@ -169,33 +190,30 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	row := ln.minDS * max(sin, levelShare)
 	r.slackM, r.slackR = float32(settleShare*ln.minDS*max(math.Abs(cosine)/sin, levelShare)), float32(settleShare*row)
 	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
-	cos := float32(cosine)
+	r.perM, r.perR = settleShare/r.slackM, settleShare/r.slackR
+	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
+	r.cos = float32(math.Abs(cosine))
 	l := p.inDEM()
-	for k, x := range p.row(u) {
-		h := float32(p.h[k])
-		if k < l.a || k >= l.b {
-			h = float32(nan)
+	if vectors && ln.places == nil && l == whole {
+		marginsVector(r, &p.h, p.row(u), float32(cosine))
+	} else {
+		r.fromLines(p, u, l, float32(cosine))
+		if ln.places != nil && ln.fan == nil {
+			r.trackRanges(p, u)
 		}
-		r.h[k] = h
-		r.clear[k] = h - x.shade
-		if ln.fan != nil && h == h {
-			q := p.place(k)
-			cos = float32(ln.steepness(&q, float64(h)))
-		}
-		r.near[k] = (x.nearer - h) * cos
-		r.far[k] = (h - x.farther) * cos
 	}
-	if ln.places != nil && ln.fan == nil {
-		r.trackRanges(p, u)
+	if !r.exact {
+		roughness(&r.clear, &r.roughM, r.perM)
+		roughness(&r.near, &r.roughN, r.perR)
+		roughness(&r.far, &r.roughF, r.perR)
 	}
-	roughness(&r.clear, &r.roughM, settleShare/r.slackM)
-	roughness(&r.near, &r.roughN, settleShare/r.slackR)
-	roughness(&r.far, &r.roughF, settleShare/r.slackR)
 	if sure {
 		return
 	}
 	bits := p.sure[u-p.ua]
-	for k, x := range p.unsureRow(u) {
+	cos := float32(cosine)
+	x := p.unsureRow(u)
+	for k := range marchLanes {
 		h := float32(p.h[k])
 		r.clearU[k], r.nearU[k], r.farU[k] = r.clear[k], r.near[k], r.far[k]
 		if ln.fan != nil && h == h {
@@ -203,15 +221,34 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 			cos = float32(ln.steepness(&q, float64(h)))
 		}
 		if bits&1 == 0 {
-			r.clearU[k] = h - x.shade
-			r.nearU[k] = (x.nearer - h) * cos
+			r.clearU[k] = h - x.shade[k]
+			r.nearU[k] = (x.nearer[k] - h) * cos
 		}
 		if bits&2 == 0 {
-			r.farU[k] = (h - x.farther) * cos
+			r.farU[k] = (h - x.farther[k]) * cos
 		}
 	}
 	if ln.places != nil && ln.fan == nil {
 		r.trackRangesU(p, u)
+	}
+}
+
+// fromLines fills the margins of the lanes l in the DEM; the others have none.
+func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
+	ln, row := p.f.ln, p.row(u)
+	for k := range marchLanes {
+		h := float32(p.h[k])
+		if k < l.a || k >= l.b {
+			h = float32(nan)
+		}
+		if ln.fan != nil && h == h {
+			q := p.place(k)
+			cos = float32(ln.steepness(&q, float64(h)))
+		}
+		r.h[k] = h
+		r.clear[k] = h - row.shade[k]
+		r.near[k] = float32((row.nearer[k] - h) * cos)
+		r.far[k] = float32((h - row.farther[k]) * cos)
 	}
 }
 
@@ -222,8 +259,8 @@ func (r *laneMargins) trackRanges(p *strip, u int) {
 	row := p.row(u)
 	for k := l.a; k < l.b; k++ {
 		q := p.place(k)
-		nearer := p.f.ln.viewR(&q, float64(row[k].nearer))
-		farther := p.f.ln.viewR(&q, float64(row[k].farther))
+		nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
+		farther := p.f.ln.viewR(&q, float64(row.farther[k]))
 		r.near[k], r.far[k] = float32(p.r[k]-nearer), float32(farther-p.r[k])
 	}
 }
@@ -237,11 +274,11 @@ func (r *laneMargins) trackRangesU(p *strip, u int) {
 		q := p.place(k)
 		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
 		if bits&1 == 0 {
-			nearer := p.f.ln.viewR(&q, float64(row[k].nearer))
+			nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
 			r.nearU[k] = float32(p.r[k] - nearer)
 		}
 		if bits&2 == 0 {
-			farther := p.f.ln.viewR(&q, float64(row[k].farther))
+			farther := p.f.ln.viewR(&q, float64(row.farther[k]))
 			r.farU[k] = float32(farther - p.r[k])
 		}
 	}
@@ -251,14 +288,18 @@ func (r *laneMargins) trackRangesU(p *strip, u int) {
 // those around each gap: it shows how much the ground that decides varies within
 // a cell, and counts for more where it exceeds a row's worth of ground. NaN,
 // which a missing lane brings, counts as the largest.
-func roughness(a, rough *[marchLanes]float32, perRow float32) {
+func roughness(a, rough *byLane32, perRow float32) {
+	if vectors {
+		roughnessVector(a, rough, perRow)
+		return
+	}
 	// The bits of numbers that are not negative order as the numbers do.
 	gap := func(k int) uint32 { return math.Float32bits(a[k+1]-a[k]) &^ (1 << 31) }
 	before, here := gap(0), gap(1)
 	for k := 1; k <= laneStep; k++ {
 		next := gap(k + 1)
 		d := math.Float32frombits(max(before, here, next))
-		rough[k] = d * (roughShare + roughGrowth*d*perRow)
+		rough[k] = d * (roughShare + float32(float32(roughGrowth*d)*perRow))
 		before, here = here, next
 	}
 }
@@ -278,28 +319,35 @@ const (
 	doubtFarU
 )
 
-// at returns the margins at weight w between lanes k and k+1, and which are
-// doubtful: missing, or small against one row's worth of ground and the
-// roughness of the ground that decides. bump is how far the cell itself lies
-// above or below the ground between the lanes, metres.
-func (r *laneMargins) at(k int, w, bump float32) (m lane, d doubts) {
-	blend := func(a, rough *[marchLanes]float32, slack float32, bit doubts) float32 {
-		x, perRow := a[k], settleShare/slack
-		switch {
-		case w != 0: // at weight 0 the second does not count, also when it is NaN
-			y := a[k+1]
-			switch {
+// at returns the margins of a cell of height h at weight w between lanes k and
+// k+1, and which are doubtful: missing, or small against one row's worth of ground,
+// the roughness of the ground that decides, and how far the cell itself lies
+// above or below the ground between the lanes.
+func (r *laneMargins) at(k int, w, h float32) (m lane, d doubts) {
+	bump := abs32(h - r.h[k])
+	if w != 0 {
+		bump = abs32(h - mix(r.h[k], r.h[k+1], w))
+	}
+	blend := func(a, rough *byLane32, base float32, bit doubts) float32 {
+		x, slack := a[k], base
+		slack += bump
+		if w != 0 { // at weight 0 the second does not count, also when it is NaN
+			switch y := a[k+1]; {
 			case x != x: // a lane outside the DEM: the other stands alone
 				x, slack = y, float32(math.Inf(1))
 			case y != y:
 				slack = float32(math.Inf(1))
 			default:
-				x += w * (y - x)
-				slack += bump + rough[k]
+				x = mix(x, y, w)
 			}
-		case !r.exact:
+		}
+		switch {
+		case r.exact:
+		case w != 0:
+			slack += rough[k]
+		default: // as much on one side as on the other
 			d := max(abs32(a[k]-a[k-1]), abs32(a[k+1]-a[k]))
-			slack += d * (roughShare + roughGrowth*d*perRow)
+			slack += d * (roughShare + float32(float32(roughGrowth*d)*(settleShare/base)))
 		}
 		if !(x > slack || x < -slack) {
 			d |= bit

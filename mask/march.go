@@ -8,25 +8,28 @@ import "math"
 // between its lanes 1 and 1+laneStep, and one lane more on each side that shows
 // how rough the ground is.
 type strip struct {
-	f      *field
-	j      int // column of the lattice
-	k0     int // lane 0
-	ua, ub int // rows that are marched
-	u0, u1 int // rows with cells
+	f      *field // the panel
+	panel  field  // the part of the field that the strip needs, close together
+	j      int    // column of the lattice
+	k0     int    // lane 0
+	ua, ub int    // rows that are marched
+	u0, u1 int    // rows with cells
 
 	// At the row that is sampled: column and ground distance of lane k0, and
 	// their change for one lane.
 	v0, dv, s0, ds float64
 	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
 	p0, dp         place   // of a platform: place of lane 0, change for one lane
-	h, m, r        [marchLanes]float64
+	h, m, r        byLane
 
 	// What the marches find, by row from ua to ub and lane.
 	lines  []lines
 	unsure []unsureLines // nil where no unknown terrain is within reach
 	// sure says of each row from ua on that no unknown terrain is in reach of
 	// it: bit 0 towards the radar, bit 1 away from it.
-	sure []uint8
+	sure   []uint8
+	gentle []gentle  // by row from ua on
+	at     []lateral // the same
 
 	fwd forwardState
 	bwd backwardState
@@ -34,7 +37,16 @@ type strip struct {
 
 const marchLanes = laneStep + 3
 
-// lines are the limits that other ground sets at one sample of a lane, as
+// padLanes is marchLanes and room for whole vectors of eight.
+const padLanes = laneStep + 8
+
+// byLane holds a number of each lane of a strip, byLane32 a smaller one.
+type (
+	byLane   [padLanes]float64
+	byLane32 [padLanes]float32
+)
+
+// lines are the limits that other ground sets at the samples of a row, as
 // heights there: ground above shade is lit, ground below nearer shares no slant
 // range with lit ground nearer to the radar, ground above farther shares none
 // with lit ground farther away.
@@ -42,15 +54,26 @@ const marchLanes = laneStep + 3
 // dip is NaN where the sample is hidden or has no height; else how much less
 // slant range than the sample's own the lit ground begins with, and negative,
 // -0 included, where unknown terrain may hide it.
-type lines struct{ shade, nearer, farther, dip float32 }
+type lines struct{ shade, nearer, farther, dip byLane32 }
 
 // unsureLines are the same limits when unknown terrain counts at its worst.
-type unsureLines struct{ shade, nearer, farther float32 }
+type unsureLines struct{ shade, nearer, farther byLane32 }
 
-var (
-	noLines  = lines{float32(nan), float32(nan), float32(nan), float32(nan)}
-	noUnsure = unsureLines{float32(nan), float32(nan), float32(nan)}
-)
+// clear says of lane k that it has no lines.
+func (l *lines) clear(k int) {
+	x := float32(nan)
+	l.shade[k], l.nearer[k], l.farther[k], l.dip[k] = x, x, x, x
+}
+
+func (l *unsureLines) clear(k int) {
+	x := float32(nan)
+	l.shade[k], l.nearer[k], l.farther[k] = x, x, x
+}
+
+// lateral says where the lanes cross a row: lane k at column v0 + dv k.
+type lateral struct{ v0, dv float64 }
+
+func (a lateral) column(lane float64) float64 { return a.v0 + float64(a.dv*lane) }
 
 // span is a range of lanes [a, b) of a strip.
 type span struct{ a, b int }
@@ -69,9 +92,10 @@ func (p *strip) setUp(f *field, j int) bool {
 		return false
 	}
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
-	n := (p.ub - p.ua) * marchLanes
+	p.copyPanel(f)
+	n := p.ub - p.ua
 	p.lines = resize(p.lines, n)
-	p.sure = resize(p.sure, p.ub-p.ua)
+	p.sure, p.gentle = resize(p.sure, n), resize(p.gentle, n)
 	p.unsure = p.unsure[:0]
 	if !f.sure {
 		p.unsure = resize(p.unsure, n)
@@ -79,15 +103,50 @@ func (p *strip) setUp(f *field, j int) bool {
 	return true
 }
 
+// panelColumns is the least number of columns of a panel: room for the corners of
+// all patches.
+const panelColumns = patches + 8
+
+// copyPanel copies the strip's heights from the field. A strip's rows lie far
+// apart there; close together they stay in the cache while it is marched to and
+// fro.
+func (p *strip) copyPanel(f *field) {
+	z, at := p.panel.z, p.panel.at
+	p.panel = *f
+	q := &p.panel
+	p.f = q
+	q.ua, q.ub = p.ua, p.ub
+	rows := p.ub - p.ua
+	p.at, q.at = resize(p.at, rows), resize(at, rows)
+	q.width = panelColumns
+	for i := range rows {
+		p.stand(p.ua + i)
+		p.at[i] = lateral{p.v0, p.dv}
+		q.at[i] = int(math.Floor(p.v0)) - 2
+		q.width = max(q.width, int(math.Floor(p.at[i].column(marchLanes-1)))+4-q.at[i])
+	}
+	q.z = resize(z, rows*q.width+padLanes) // vectors may read past the last row
+	for i := range rows {
+		from := q.at[i] - f.at[p.ua-f.ua+i]
+		row, to := f.z[(p.ua-f.ua+i)*f.width:][:f.width], q.z[i*q.width:][:q.width]
+		for from < 0 { // by rounding
+			to[0] = float32(nan)
+			to, from = to[1:], from+1
+		}
+		n := copy(to, row[min(from, f.width):])
+		fillWith(to[n:], float32(nan))
+	}
+}
+
 // row returns the lines of row u.
-func (p *strip) row(u int) []lines { return p.lines[(u-p.ua)*marchLanes:][:marchLanes] }
+func (p *strip) row(u int) *lines { return &p.lines[u-p.ua] }
 
 // unsureRow returns the unsure lines of row u, nil where there are none.
-func (p *strip) unsureRow(u int) []unsureLines {
+func (p *strip) unsureRow(u int) *unsureLines {
 	if len(p.unsure) == 0 {
 		return nil
 	}
-	return p.unsure[(u-p.ua)*marchLanes:][:marchLanes]
+	return &p.unsure[u-p.ua]
 }
 
 // cells stands at row u and returns the columns [va, vb) of the field's cells
@@ -157,36 +216,98 @@ func (p *strip) inDEM() span {
 	return l
 }
 
+// whole is all lanes of a strip.
+var whole = span{0, marchLanes}
+
 // sample stands at row u and fills h, m and r for the lanes in the DEM, which
 // it returns.
 func (p *strip) sample(u int) span {
 	p.stand(u)
 	l := p.inDEM()
 	f, ln := p.f, p.f.ln
-	z, at := f.z[(u-f.ua)*f.width:(u-f.ua+1)*f.width], f.at[u-f.ua]
-	h := p.h[l.a:l.b]
-	if ln.uniform && len(h) > 0 {
+	z, at := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
+	switch {
+	case ln.uniform && l == whole:
+		i := math.Floor(p.v0)
+		p.heights(z[int(i)-at:], p.v0-i)
+	case ln.uniform && l.a < l.b:
 		v := p.v0 + float64(l.a)
 		i := math.Floor(v)
-		heightsAt(h, z[int(i)-at:], v-i)
-	} else {
-		v := p.v0 - float64(at)
-		for i := range h {
-			h[i] = lerp(z, v+float64(p.dv*float64(l.a+i)))
-		}
+		heightsAt(p.h[l.a:l.b], z[int(i)-at:], v-i)
+	default:
+		p.spread(z, p.v0-float64(at), l)
 	}
 	if ln.places != nil {
 		return p.viewLanes(l)
 	}
-	m, r, number := p.m[l.a:l.b], p.r[l.a:l.b], laneNumbers[l.a:l.b]
+	p.view(l)
+	return l
+}
+
+// spread fills h with the heights of lanes l at columns v, v + dv and so on of z.
+func (p *strip) spread(z []float32, v float64, l span) {
+	if vectors && l == whole {
+		if turn, shift := shiftOf(v, p.dv); shift*shift <= 1 {
+			spreadVector(&p.h, z, v, p.dv, turn, shift)
+			return
+		}
+	}
+	for k := l.a; k < l.b; k++ {
+		p.h[k] = lerp(z, v+float64(p.dv*float64(k)))
+	}
+}
+
+// shiftOf returns by how much the whole columns of lanes at v, v + dv and so on
+// leave those that follow the first one by one, and from which lane on where that
+// is one.
+func shiftOf(v, dv float64) (turn, shift int) {
+	beside := func(k int) int { return int(v+float64(dv*float64(k))) - k }
+	first := int(v)
+	if shift = beside(marchLanes-1) - first; shift == 0 {
+		return padLanes, 0
+	}
+	lo, hi := 0, marchLanes-1
+	for hi-lo > 1 {
+		if mid := (lo + hi) / 2; beside(mid) == first {
+			lo = mid
+		} else {
+			hi = mid
+		}
+	}
+	return hi, shift
+}
+
+// heights fills h with the heights at the same fraction of every step of z.
+func (p *strip) heights(z []float32, rest float64) {
+	if !vectors {
+		heightsAt(p.h[:marchLanes], z, rest)
+		return
+	}
+	next := z[1:]
+	switch { // a neighbour that does not count may be missing
+	case rest < onColumn:
+		next = z
+	case rest > 1-onColumn:
+		z = next
+	}
+	heightsVector(&p.h, (*byLane36)(z), (*byLane36)(next), rest)
+}
+
+// view fills m and r of a plane wave from h.
+func (p *strip) view(l span) {
+	ln := p.f.ln
 	m0, dm := float64(ln.cot*p.s0), float64(ln.cot*p.ds)
 	r0, dr := float64(ln.sin*p.s0), float64(ln.sin*p.ds)
+	if vectors && l == whole {
+		viewVector(p, m0, dm, r0, dr, ln.cos)
+		return
+	}
+	m, r, number := p.m[l.a:l.b], p.r[l.a:l.b], laneNumbers[l.a:l.b]
 	cos := ln.cos
-	for k, h := range h {
+	for k, h := range p.h[l.a:l.b] {
 		m[k] = h + (m0 + float64(dm*number[k]))
 		r[k] = (r0 + float64(dr*number[k])) - float64(cos*h)
 	}
-	return l
 }
 
 // place returns the place of lane k at the row where the strip stands.
@@ -254,7 +375,7 @@ func (p *strip) equalRange(k int, r float64) float64 {
 }
 
 // laneNumbers holds the numbers of the lanes.
-var laneNumbers = func() (n [marchLanes]float64) {
+var laneNumbers = func() (n byLane) {
 	for k := range n {
 		n[k] = float64(k)
 	}
@@ -263,26 +384,26 @@ var laneNumbers = func() (n [marchLanes]float64) {
 
 // forwardState is the march away from the radar, by lane.
 type forwardState struct {
-	top     [marchLanes]float64 // largest m so far
-	topU    [marchLanes]float64 // the same of unknown terrain at the ceiling
-	most    [marchLanes]float64 // largest slant range of surely lit ground so far
-	mostU   [marchLanes]float64 // the same of all ground that may be lit
-	m, r    [marchLanes]float64 // the row before, where it was hidden
-	hid     [marchLanes]bool    // the row before was hidden
-	unknown [marchLanes]bool    // the row before was unknown terrain
+	top     byLane         // largest m so far
+	topU    byLane         // the same of unknown terrain at the ceiling
+	most    byLane         // largest slant range of surely lit ground so far
+	mostU   byLane         // the same of all ground that may be lit
+	m, r    byLane         // the row before where it was hidden, else m is NaN
+	unknown [padLanes]bool // the row before was unknown terrain
 }
 
 func (st *forwardState) reset() {
 	*st = forwardState{}
-	for k := range marchLanes {
+	for k := range padLanes {
 		st.top[k], st.topU[k] = math.Inf(-1), math.Inf(-1)
 		st.most[k], st.mostU[k] = math.Inf(-1), math.Inf(-1)
+		st.m[k] = nan
 	}
 }
 
 // entering marks the lanes that are in the DEM at row u, where they are l, but
 // not one row back in direction dir, and reports whether there are any.
-func (p *strip) entering(l span, u, dir int, unknown *[marchLanes]bool) (any bool) {
+func (p *strip) entering(l span, u, dir int, unknown *[padLanes]bool) (any bool) {
 	before := span{}
 	if back := u + dir; back >= 0 && back < p.f.ln.orient.u {
 		p.stand(back)
@@ -321,25 +442,19 @@ func (p *strip) forward() {
 	last := p.ua - f.near - 1 // last row at which terrain was unknown
 	for u := p.ua; u < p.ub; u++ {
 		l := p.sample(u)
+		p.mark(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ua) {
 			if p.entering(l, u, -1, &p.fwd.unknown) {
 				last = u
 			}
 		}
 		row, unsure := p.row(u), p.unsureRow(u)
-		for k := range marchLanes {
-			if k < l.a || k >= l.b {
-				row[k] = noLines
-			}
-		}
-		for k := range unsure {
-			if k < l.a || k >= l.b {
-				unsure[k] = noUnsure
-			}
+		if l != whole {
+			p.clearOutside(row, unsure, l)
 		}
 		if !f.sure {
-			for k := l.a; k < l.b; k++ {
-				if h := p.h[k]; h != h {
+			for _, h := range p.h[l.a:l.b] {
+				if h != h {
 					last = u
 				}
 			}
@@ -353,64 +468,76 @@ func (p *strip) forward() {
 	}
 }
 
-// forwardSure marches one row where no unknown terrain is within reach and no
-// height is missing.
-func (p *strip) forwardSure(row []lines, l span) {
-	st, ln := &p.fwd, p.f.ln
-	if ln.places != nil {
-		p.forwardLines(row, l)
-	}
-	minShade, maxNearer, _ := p.f.limitLines()
-	perCos := 1 / ln.cos
-	n := l.b - l.a
-	row = row[l.a:][:n]
-	h, m, r := p.h[l.a:][:n], p.m[l.a:][:n], p.r[l.a:][:n]
-	top, most, hid := st.top[l.a:][:n], st.most[l.a:][:n], st.hid[l.a:][:n]
-	for k := range row {
-		mk, rk, tk := m[k], r[k], top[k]
-		shade := h[k] + (tk - mk)
-		if shade < minShade {
-			shade = minShade
-		}
-		nearer := h[k] + (rk-most[k])*perCos
-		if nearer > maxNearer {
-			nearer = maxNearer
-		}
-		c := &row[k]
-		if ln.places == nil {
-			c.shade, c.nearer = float32(shade), float32(nearer)
-		}
-		if mk <= tk {
-			hid[k] = true
-			st.m[l.a+k], st.r[l.a+k] = mk, rk
-			c.dip = float32(nan)
+// clearOutside says of the lanes outside the DEM that they have no lines.
+func (p *strip) clearOutside(row *lines, unsure *unsureLines, l span) {
+	for k := range marchLanes {
+		if k >= l.a && k < l.b {
 			continue
 		}
-		best, d := rk, 0.0
-		if hid[k] {
-			best, d = st.edge(l.a+k, mk, rk)
+		row.clear(k)
+		if unsure != nil {
+			unsure.clear(k)
 		}
-		top[k] = mk
-		if best > most[k] {
-			most[k] = best
+	}
+}
+
+// forwardSure marches one row where no unknown terrain is within reach and no
+// height is missing.
+func (p *strip) forwardSure(row *lines, l span) {
+	ln := p.f.ln
+	minShade, maxNearer, _ := p.f.limitLines()
+	switch {
+	case ln.places != nil:
+		p.forwardLines(row, l)
+		p.forwardMove(row, l)
+	case vectors && l == whole:
+		forwardVector(p, row, minShade, maxNearer, 1/ln.cos)
+	default:
+		st, perCos := &p.fwd, 1/ln.cos
+		for k := l.a; k < l.b; k++ {
+			h := p.h[k]
+			row.shade[k] = float32(max(h+(st.top[k]-p.m[k]), minShade))
+			row.nearer[k] = float32(min(h+float64((p.r[k]-st.most[k])*perCos), maxNearer))
 		}
-		c.dip = float32(d)
+		p.forwardMove(row, l)
+	}
+}
+
+// forwardMove takes the ground of a row into account, all of it known.
+func (p *strip) forwardMove(row *lines, l span) {
+	st := &p.fwd
+	for k := l.a; k < l.b; k++ {
+		m, r := p.m[k], p.r[k]
+		if m <= st.top[k] {
+			st.m[k], st.r[k] = m, r
+			row.dip[k] = float32(nan)
+			continue
+		}
+		best, dip := r, 0.0
+		if st.m[k] == st.m[k] {
+			best, dip = st.edge(k, m, r)
+		}
+		st.top[k] = m
+		if best > st.most[k] {
+			st.most[k] = best
+		}
+		row.dip[k] = float32(dip)
 	}
 }
 
 // forwardLines fills the lines of one row that the forward march sets.
-func (p *strip) forwardLines(row []lines, l span) {
+func (p *strip) forwardLines(row *lines, l span) {
 	st, ln := &p.fwd, p.f.ln
 	minShade, maxNearer, _ := p.f.limitLines()
 	for k := l.a; k < l.b; k++ {
 		if ln.fan != nil || math.IsInf(st.top[k], -1) {
-			row[k].shade = float32(max(p.shade(k, st.top[k]), minShade))
-			row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
+			row.shade[k] = float32(max(p.shade(k, st.top[k]), minShade))
+			row.nearer[k] = float32(min(p.equalRange(k, st.most[k]), maxNearer))
 			continue
 		}
 		q := p.place(k)
-		row[k].shade = float32(max(ln.shadeHeight(&q, st.top[k]), minShade))
-		row[k].nearer = float32(min(ln.rangeHeight(&q, max(st.most[k], 0)), maxNearer))
+		row.shade[k] = float32(max(ln.shadeHeight(&q, st.top[k]), minShade))
+		row.nearer[k] = float32(min(ln.rangeHeight(&q, max(st.most[k], 0)), maxNearer))
 	}
 }
 
@@ -418,8 +545,8 @@ func (p *strip) forwardLines(row []lines, l span) {
 // r, the largest slant range of the lit ground between the two rows, and how
 // much below r the smallest lies.
 func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
-	st.hid[k] = false
-	edge := st.r[k] + (st.top[k]-st.m[k])/(m-st.m[k])*(r-st.r[k])
+	edge := st.r[k] + float64((st.top[k]-st.m[k])/(m-st.m[k])*(r-st.r[k]))
+	st.m[k] = nan
 	if edge > r {
 		return edge, 0
 	}
@@ -427,14 +554,15 @@ func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
 }
 
 // forwardUnsure marches one row where terrain may be unknown.
-func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
+func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 	st, f, lim := &p.fwd, p.f, &p.f.lim
 	minShade, maxNearer, _ := f.limitLines()
 	for k := l.a; k < l.b; k++ {
 		mk, rk := p.m[k], p.r[k]
 		if mk != mk {
-			st.unknown[k], st.hid[k] = true, false
-			row[k], unsure[k] = noLines, noUnsure
+			st.unknown[k], st.m[k] = true, nan
+			row.clear(k)
+			unsure.clear(k)
 			continue
 		}
 		if st.unknown[k] {
@@ -446,23 +574,22 @@ func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 			st.mostU[k] = max(st.mostU[k], far)
 		}
 		tk := st.top[k]
-		row[k].shade = float32(max(p.shade(k, tk), minShade))
-		row[k].nearer = float32(min(p.equalRange(k, st.most[k]), maxNearer))
-		unsure[k] = unsureLines{shade: row[k].shade, nearer: row[k].nearer}
+		row.shade[k] = float32(max(p.shade(k, tk), minShade))
+		row.nearer[k] = float32(min(p.equalRange(k, st.most[k]), maxNearer))
+		unsure.shade[k], unsure.nearer[k] = row.shade[k], row.nearer[k]
 		if st.topU[k] != tk {
-			unsure[k].shade = float32(max(p.shade(k, st.topU[k]), minShade))
+			unsure.shade[k] = float32(max(p.shade(k, st.topU[k]), minShade))
 		}
 		if st.mostU[k] != st.most[k] {
-			unsure[k].nearer = float32(min(p.equalRange(k, st.mostU[k]), maxNearer))
+			unsure.nearer[k] = float32(min(p.equalRange(k, st.mostU[k]), maxNearer))
 		}
 		if mk <= tk {
-			st.hid[k] = true
 			st.m[k], st.r[k] = mk, rk
-			row[k].dip = float32(nan)
+			row.dip[k] = float32(nan)
 			continue
 		}
 		best, d := rk, 0.0
-		if st.hid[k] {
+		if st.m[k] == st.m[k] {
 			best, d = st.edge(k, mk, rk)
 		}
 		st.top[k] = mk
@@ -472,14 +599,14 @@ func (p *strip) forwardUnsure(row []lines, unsure []unsureLines, l span) {
 		} else {
 			d = math.Copysign(d, -1)
 		}
-		row[k].dip = float32(d)
+		row.dip[k] = float32(d)
 	}
 }
 
 // backwardState is the march towards the radar, by lane.
 type backwardState struct {
-	least, leastU [marchLanes]float64 // smallest slant range of lit ground so far
-	unknown       [marchLanes]bool
+	least, leastU byLane // smallest slant range of lit ground so far
+	unknown       [padLanes]bool
 }
 
 // backward walks from far range to near range over what forward left. When it
@@ -488,7 +615,7 @@ type backwardState struct {
 func (p *strip) backward(cells func(u int)) {
 	f, st := p.f, &p.bwd
 	*st = backwardState{}
-	for k := range marchLanes {
+	for k := range padLanes {
 		st.least[k], st.leastU[k] = math.Inf(1), math.Inf(1)
 	}
 	last := p.ub + f.far + 1 // last row at which terrain was unknown or unsure
@@ -502,7 +629,7 @@ func (p *strip) backward(cells func(u int)) {
 		row := p.row(u)
 		if !f.sure {
 			for k := l.a; k < l.b; k++ {
-				if d := row[k].dip; p.h[k] != p.h[k] || math.Signbit(float64(d)) && d == d {
+				if d := row.dip[k]; p.h[k] != p.h[k] || math.Signbit(float64(d)) && d == d {
 					last = u
 				}
 			}
@@ -516,37 +643,37 @@ func (p *strip) backward(cells func(u int)) {
 		if u < p.u1 {
 			cells(u)
 		}
-		p.backwardMove(row, l)
+		p.backwardMove(row, u, l)
 	}
 }
 
-func (p *strip) backwardSure(row []lines, l span) {
-	st := &p.bwd
+func (p *strip) backwardSure(row *lines, l span) {
+	st, ln := &p.bwd, p.f.ln
 	_, _, minFarther := p.f.limitLines()
-	perCos := 1 / p.f.ln.cos
-	n := l.b - l.a
-	if p.f.ln.places != nil {
+	perCos := 1 / ln.cos
+	switch {
+	case ln.places != nil:
 		for k := l.a; k < l.b; k++ {
-			row[k].farther = float32(max(p.equalRange(k, st.least[k]), minFarther))
+			row.farther[k] = float32(max(p.equalRange(k, st.least[k]), minFarther))
 		}
+	case vectors && l == whole:
+		backwardVector(p, row, minFarther, perCos)
+	default:
+		for k := l.a; k < l.b; k++ {
+			row.farther[k] = float32(max(p.h[k]-float64((st.least[k]-p.r[k])*perCos), minFarther))
+		}
+	}
+}
+
+// backwardMove takes the lit ground of row u into account.
+func (p *strip) backwardMove(row *lines, u int, l span) {
+	if vectors && l == whole && p.sure[u-p.ua]&1 != 0 {
+		backwardMoveVector(p, row)
 		return
 	}
-	row = row[l.a:][:n]
-	h, r, least := p.h[l.a:][:n], p.r[l.a:][:n], st.least[l.a:][:n]
-	for k := range row {
-		farther := h[k] - (least[k]-r[k])*perCos
-		if farther < minFarther {
-			farther = minFarther
-		}
-		row[k].farther = float32(farther)
-	}
-}
-
-// backwardMove takes the lit ground of a row into account.
-func (p *strip) backwardMove(row []lines, l span) {
 	st := &p.bwd
 	for k := l.a; k < l.b; k++ {
-		d := row[k].dip
+		d := row.dip[k]
 		if d != d {
 			continue
 		}
@@ -560,7 +687,7 @@ func (p *strip) backwardMove(row []lines, l span) {
 	}
 }
 
-func (p *strip) backwardUnsure(row []lines, unsure []unsureLines, l span) {
+func (p *strip) backwardUnsure(row *lines, unsure *unsureLines, l span) {
 	st, f, lim := &p.bwd, p.f, &p.f.lim
 	_, _, minFarther := f.limitLines()
 	for k := l.a; k < l.b; k++ {
@@ -573,9 +700,9 @@ func (p *strip) backwardUnsure(row []lines, unsure []unsureLines, l span) {
 			_, near := p.seen(k, lim.ceiling)
 			st.leastU[k] = min(st.leastU[k], near)
 		}
-		row[k].farther = float32(max(p.equalRange(k, st.least[k]), minFarther))
-		if unsure[k].farther = row[k].farther; st.leastU[k] != st.least[k] {
-			unsure[k].farther = float32(max(p.equalRange(k, st.leastU[k]), minFarther))
+		row.farther[k] = float32(max(p.equalRange(k, st.least[k]), minFarther))
+		if unsure.farther[k] = row.farther[k]; st.leastU[k] != st.least[k] {
+			unsure.farther[k] = float32(max(p.equalRange(k, st.leastU[k]), minFarther))
 		}
 	}
 }

@@ -90,10 +90,10 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		if row == nil || q.p.sure[u-q.p.ua]&1 != 0 {
 			return never
 		}
-		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
+		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	} else {
 		row := q.p.row(u)
-		a, b = float64(row[q.k].shade), float64(row[q.next].shade)
+		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	}
 	a = q.y.seeM(s, a)
 	b = q.y.seeM(s, b)
@@ -120,9 +120,9 @@ func around(a, b, perRow float64) bounds {
 // reaches, counting ground that may be lit when possible is set.
 func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	row := q.p.row(u)
-	a, b := row[q.k].nearer, row[q.next].nearer
+	a, b := row.nearer[q.k], row.nearer[q.next]
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
-		a, b = unsure[q.k].nearer, unsure[q.next].nearer
+		a, b = unsure.nearer[q.k], unsure.nearer[q.next]
 	}
 	return q.ranges(u, a, b, s)
 }
@@ -131,9 +131,9 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 // range there.
 func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	row := q.p.row(u)
-	a, b := row[q.k].farther, row[q.next].farther
+	a, b := row.farther[q.k], row.farther[q.next]
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
-		a, b = unsure[q.k].farther, unsure[q.next].farther
+		a, b = unsure.farther[q.k], unsure.farther[q.next]
 	}
 	return q.ranges(u, a, b, s)
 }
@@ -185,9 +185,22 @@ func (q *quickWalk) left(v float64) bool { return q.y.ln.places != nil && q.outs
 // lit reports whether no ground towards the radar reaches the point's m: none
 // that the DEM shows, or no unknown terrain.
 func (q *quickWalk) lit(unknown bool) bool {
+	own := true // the look angle grows up to the point itself
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
+		if own = own && q.p.gentle[u-1-q.p.ua].lightening(vb, va); own {
+			if (q.u-u)%2 == 1 {
+				b := q.shade(u-1, sb, unknown)
+				if b.high < q.m-q.slackM {
+					return true
+				}
+				if b.low > q.m+q.slackM {
+					return false
+				}
+			}
+			continue
+		}
 		_, high := q.between(u, -1, va, vb)
 		if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
 			q.step(u, -1, va, vb, sa, sb)
@@ -229,9 +242,22 @@ func (q *quickWalk) edgePoint(u int, h float64) (g point) {
 func (q *quickWalk) foldedNearer(possible bool) bool {
 	none := math.Inf(-1)
 	best := none
+	own := true // slant range grows up to the point itself
 	for u := q.u; u > q.p.ua; u-- {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u - 1)
+		if own = own && q.p.gentle[u-1-q.p.ua].rising(vb, va); own {
+			if (q.u-u)%2 == 1 {
+				b := q.nearer(u-1, sb, possible)
+				if b.high < q.r-q.slackR {
+					return false
+				}
+				if b.low > q.r+q.slackR {
+					return true
+				}
+			}
+			continue
+		}
 		q.pieces = q.pieces[:0]
 		if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
 			q.step(u, -1, va, vb, sa, sb)
@@ -289,9 +315,22 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 // lit, or unknown terrain, does.
 func (q *quickWalk) foldedFarther(possible bool) bool {
 	top, topU, prev, hidden := q.m, math.Inf(-1), point{m: q.m, r: q.r}, false
+	own := true // slant range grows from the point on
 	for u := q.u; u < q.p.ub-1; u++ {
 		va, sa := q.y.at(u)
 		vb, sb := q.y.at(u + 1)
+		if own = own && q.p.gentle[u-q.p.ua].rising(va, vb); own {
+			if (u-q.u)%2 == 1 {
+				b := q.farther(u+1, sb, possible)
+				if b.low > q.r+q.slackR {
+					return false
+				}
+				if b.high < q.r-q.slackR {
+					return true
+				}
+			}
+			continue
+		}
 		// Ground beyond the point's slant range cannot hide any that is within
 		// it: it lies below the line of equal range, the other above.
 		q.pieces = q.pieces[:0]

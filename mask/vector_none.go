@@ -4,3 +4,21 @@ package mask
 
 // vectors says that the inner loops run on vectors: not in this build.
 const vectors = false
+
+type byLane36 [0]float32
+
+const noVectors = "built without vectors"
+
+func spreadVector(*byLane, []float32, float64, float64, int, int)    { panic(noVectors) }
+func heightsVector(*byLane, *byLane36, *byLane36, float64)           { panic(noVectors) }
+func markVector(*byLane41, *byLane41, *grade) (rises, lit uint64)    { panic(noVectors) }
+func viewVector(*strip, float64, float64, float64, float64, float64) { panic(noVectors) }
+func forwardVector(*strip, *lines, float64, float64, float64)        { panic(noVectors) }
+func backwardVector(*strip, *lines, float64, float64)                { panic(noVectors) }
+func backwardMoveVector(*strip, *lines)                              { panic(noVectors) }
+func marginsVector(*laneMargins, *byLane, *lines, float32)           { panic(noVectors) }
+func roughnessVector(*byLane32, *byLane32, float32)                  { panic(noVectors) }
+
+func (*sheet) classifyBundle(*strip, *walker, int, int, int, int, float64, *[bundle]float32) {
+	panic(noVectors)
+}

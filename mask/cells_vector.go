@@ -1,0 +1,270 @@
+//go:build goexperiment.simd && amd64 && !go1.27
+
+package mask
+
+import (
+	"encoding/binary"
+	"math"
+	"math/bits"
+
+	"simd/archsimd"
+)
+
+// The margins of the lanes and of the cells between them on vectors of eight: what
+// the loops of cells.go do.
+
+func eight(x float32) archsimd.Float32x8 { return archsimd.BroadcastFloat32x8(x) }
+
+func lanes8(a *byLane32, k int) archsimd.Float32x8 {
+	return archsimd.LoadFloat32x8((*[8]float32)(a[k:]))
+}
+
+func put8(a *byLane32, k int, x archsimd.Float32x8) { x.Store((*[8]float32)(a[k:])) }
+
+func absolute(x archsimd.Float32x8) archsimd.Float32x8 {
+	return x.AsInt32x8().And(archsimd.BroadcastInt32x8(math.MaxInt32)).AsFloat32x8()
+}
+
+// marginsVector is laneMargins.fromLines for a plane wave.
+func marginsVector(r *laneMargins, heights *byLane, row *lines, cos float32) {
+	c := eight(cos)
+	for k := 0; k < marchVectors; k += 4 {
+		put4as32(&r.h, k, lanes4(heights, k))
+	}
+	for k := 0; k < padLanes; k += 8 {
+		h := lanes8(&r.h, k)
+		put8(&r.clear, k, h.Sub(lanes8(&row.shade, k)))
+		put8(&r.near, k, lanes8(&row.nearer, k).Sub(h).Mul(c))
+		put8(&r.far, k, h.Sub(lanes8(&row.farther, k)).Mul(c))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// roughnessVector is roughness: the bits of numbers that are not negative order as
+// the numbers do, and NaN above all.
+func roughnessVector(a, rough *byLane32, perRow float32) {
+	share, growth, per := eight(roughShare), eight(roughGrowth), eight(perRow)
+	gap := func(k int) archsimd.Int32x8 {
+		return absolute(lanes8(a, k+1).Sub(lanes8(a, k))).AsInt32x8()
+	}
+	for k := 1; k <= laneStep; k += 8 {
+		d := gap(k - 1).Max(gap(k)).Max(gap(k + 1)).AsFloat32x8()
+		put8(rough, k, d.Mul(share.Add(growth.Mul(d).Mul(per))))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// weights8 are the weights of the cells from column v on after lanes k, k+1 and so
+// on, as weight gives them.
+func (p *strip) weights8(v, k int, per float64) archsimd.Float32x8 {
+	var w [bundle]float32
+	perLane, first := four(per), four(p.v0)
+	number := archsimd.LoadInt32x4(&[4]int32{0, 1, 2, 3})
+	from := func(i int) archsimd.Float64x4 {
+		return archsimd.BroadcastInt32x4(int32(i)).Add(number).ConvertToFloat64()
+	}
+	for j := 0; j < bundle; j += 4 {
+		lane := from(v + j).Sub(first).Mul(perLane)
+		lane.Sub(from(k + j)).ConvertToFloat32().Store((*[4]float32)(w[j:]))
+	}
+	x := archsimd.LoadFloat32x8(&w)
+	return x.Masked(x.GreaterEqual(eight(onLane)))
+}
+
+// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1) after lanes
+// k+skip and so on, where no terrain is unknown: those that are not doubtful at
+// once, the others one by one. z are the heights from column v on.
+func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per float64, z *[bundle]float32) {
+	r := &t.margins
+	part, zero, none := p.weights8(v, k, per), eight(0), eight(float32(nan))
+	blend := func(a *byLane32) archsimd.Float32x8 {
+		x := lanes8(a, k)
+		return x.Add(part.Mul(lanes8(a, k+1).Sub(x)))
+	}
+	m, n, g := blend(&r.clear), blend(&r.near), blend(&r.far)
+	bump := absolute(archsimd.LoadFloat32x8(z).Sub(blend(&r.h)))
+	slackM, slackN := eight(r.slackM).Add(bump), eight(r.slackR).Add(bump)
+	slackG := slackN
+	if !r.exact {
+		slackM = slackM.Add(lanes8(&r.roughM, k))
+		slackN, slackG = slackN.Add(lanes8(&r.roughN, k)), slackG.Add(lanes8(&r.roughF, k))
+	}
+	dark := zero.Sub(slackM).Greater(m)
+	lit := m.Greater(slackM).ToBits()
+	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
+	doubtful := ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	if doubtful != 0 {
+		e := early{strip: p, laneMargins: r, u: u, v: v, k: k, z: z}
+		yes := e.lit(doubtful &^ lit)
+		m, lit = positive(m, yes, r.tinyM), lit|yes
+		doubtful = lit & (doubtN | doubtG)
+		if doubtful != 0 {
+			steep := p.steep8(u, v)
+			yes = e.alone(doubtN&doubtful&^steep, -1)
+			n, doubtN = positive(n, yes, r.tinyR), doubtN&^(yes|steep)
+			yes = e.alone(doubtG&doubtful&^steep, 1)
+			g, doubtG = positive(g, yes, r.tinyR), doubtG&^(yes|steep)
+		}
+		doubtful = ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	}
+	if !r.exact { // cells on a lane are treated alike on both sides
+		doubtful |= part.Equal(zero).ToBits()
+	}
+	fold := none.Merge(n.Min(g), dark)
+	codes := codesOf(dark.ToBits(), n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+	i, stride := t.place(p.f, u, v)
+	if stride == 1 && skip == 0 {
+		binary.LittleEndian.PutUint64(t.raw[i:], codes)
+		if t.wantClear {
+			m.Store((*[bundle]float32)(t.clear[i:]))
+		}
+		if t.wantFold {
+			fold.Store((*[bundle]float32)(t.fold[i:]))
+		}
+	} else {
+		t.scatter(i, stride, skip, codes, m, fold)
+	}
+	var w [bundle]float32
+	part.Store(&w)
+	archsimd.ClearAVXUpperBits()
+	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
+		j := bits.TrailingZeros8(doubtful)
+		t.classifyCell(p, wk, u, v+j, k+j, w[j], z[j])
+	}
+}
+
+// steep8 is strip.steep for the cells from column v on.
+func (p *strip) steep8(u, v int) uint8 {
+	at, ok := p.vicinity(u, v)
+	if !ok {
+		return 0
+	}
+	z := p.f.z
+	load := func(i int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[bundle]float32)(z[i:])) }
+	half := eight(0.5)
+	along := load(at.after).Sub(load(at.before)).Mul(half)
+	across := load(at.here + 1).Sub(load(at.here - 1)).Mul(half)
+	return along.Add(across.Mul(eight(at.drift))).Greater(eight(at.limit)).ToBits()
+}
+
+// early settles cells of a bundle, as quickWalk does, on gentle ground: where the
+// lines of limits of a row nearby leave no doubt. What it cannot tell is for
+// quickWalk to say.
+type early struct {
+	*strip
+	*laneMargins
+	u, v, k int
+	z       *[bundle]float32
+}
+
+// earlyRows is how far early looks.
+const earlyRows = 8
+
+// path is strip.along for the row before or after u; no vectors are alive here.
+//
+//go:noinline
+func (e *early) path(u, next int, good uint64) uint8 {
+	archsimd.ClearAVXUpperBits()
+	return e.along(e.v, e.u, u, next, good)
+}
+
+// lit returns which of the doubtful cells are lit.
+func (e *early) lit(doubtful uint8) (yes uint8) {
+	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
+		g := &e.gentle[u-1-e.ua]
+		doubtful &= e.path(u, u-1, g.lit)
+		if doubtful != 0 && (e.u-u)%2 == 1 {
+			line := &e.row(u - 1).shade
+			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
+			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(g.worthM, e.u-u+1))
+			now := clears(rise, absolute(x.Sub(y)), e.perM, e.slackM) & doubtful
+			yes, doubtful = yes|now, doubtful&^now
+		}
+	}
+	return yes
+}
+
+// alone returns which of the doubtful cells have no partner towards the radar, dir
+// -1, or away from it, 1.
+func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
+	for n := 1; doubtful != 0 && n <= earlyRows; n++ {
+		u := e.u + dir*n
+		if u < e.ua || u >= e.ub {
+			break
+		}
+		g := &e.gentle[min(u, u-dir)-e.ua]
+		doubtful &= e.path(u-dir, u, g.rises)
+		if doubtful == 0 || n%2 == 1 {
+			continue
+		}
+		h := archsimd.LoadFloat32x8(e.z)
+		line := &e.row(u).nearer
+		if dir > 0 {
+			line = &e.row(u).farther
+		}
+		x, y := lanes8(line, e.k), lanes8(line, e.k+1)
+		rise := x.Min(y).Sub(h)
+		if dir > 0 {
+			rise = h.Sub(x.Max(y))
+		}
+		cos := eight(e.cos)
+		rise = rise.Add(e.worth(g.worthR, n)).Mul(cos)
+		now := clears(rise, absolute(x.Sub(y)).Mul(cos), e.perR, e.slackR) & doubtful
+		yes, doubtful = yes|now, doubtful&^now
+	}
+	return yes
+}
+
+// worth is what n rows are worth.
+func (e *early) worth(row float32, n int) archsimd.Float32x8 {
+	return eight(row).Mul(archsimd.BroadcastInt32x8(int32(n)).ConvertToFloat32())
+}
+
+// clears returns which margins are larger than the slack, for which the
+// difference of the lanes beside them counts as in roughness.
+func clears(margin, gap archsimd.Float32x8, perRow, slack float32) uint8 {
+	rough := gap.Mul(eight(roughShare).Add(gap.Mul(eight(roughGrowth)).Mul(eight(perRow))))
+	return margin.Sub(rough).Greater(eight(slack)).ToBits()
+}
+
+// positive returns the margins x, with those of the cells yes positive.
+func positive(x archsimd.Float32x8, yes uint8, tiny float32) archsimd.Float32x8 {
+	if yes == 0 {
+		return x
+	}
+	bit := archsimd.LoadInt32x8(&[8]int32{1, 2, 4, 8, 16, 32, 64, 128})
+	asked := archsimd.BroadcastInt32x8(int32(yes)).And(bit).Equal(bit)
+	wrong := asked.And(x.LessEqual(eight(0)))
+	return eight(tiny).Merge(x, wrong)
+}
+
+// scatter stores the cells from skip on of a bundle whose first is at index i.
+func (t *sheet) scatter(i, stride, skip int, codes uint64, clear, fold archsimd.Float32x8) {
+	var c, f [bundle]float32
+	clear.Store(&c)
+	fold.Store(&f)
+	for j := skip; j < bundle; j++ {
+		t.raw[i+j*stride] = uint8(codes >> (8 * j))
+		t.keep(i+j*stride, c[j], f[j])
+	}
+}
+
+// codesOf returns the raw codes of a bundle of cells, a byte each, as lane.raw has
+// them, from bits that say which are hidden and which have partners.
+func codesOf(dark, near, far uint8) uint64 {
+	near, far = near&^dark, far&^dark
+	codes := spread[0xff] * uint64(Open)
+	codes += spread[dark] * uint64(CastShadow-Open)
+	codes += spread[near|far] * uint64(ActiveLayover-Open)
+	return codes + spread[far]*uint64(LayoverFarther-ActiveLayover) + spread[near]*uint64(LayoverNearer-ActiveLayover)
+}
+
+// spread has bit j of its index in byte j.
+var spread = func() (s [256]uint64) {
+	for i := range s {
+		for j := range 8 {
+			s[i] |= uint64(i>>j&1) << (8 * j)
+		}
+	}
+	return s
+}()

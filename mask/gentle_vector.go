@@ -1,0 +1,27 @@
+//go:build goexperiment.simd && amd64 && !go1.27
+
+package mask
+
+import "simd/archsimd"
+
+// markVector is the loop of strip.mark on vectors of eight patches.
+func markVector(a, b *byLane41, g *grade) (rises, lit uint64) {
+	rise, fall := eight(g.rise), eight(g.fall)
+	least, most := eight(g.drift[0]), eight(g.drift[1])
+	load := func(z *byLane41, k int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[8]float32)(z[k:])) }
+	for k := 0; k < patches; k += 8 {
+		a0, a1, b0, b1 := load(a, k), load(a, k+1), load(b, k), load(b, k+1)
+		e0, e1 := b0.Sub(a0), b1.Sub(a1)
+		da, db := a1.Sub(a0), b1.Sub(b0)
+		s, t, x, y := da.Mul(least), da.Mul(most), db.Mul(least), db.Mul(most)
+		lo := e0.Min(e1).Add(s.Min(t).Min(x.Min(y)))
+		hi := e0.Max(e1).Add(s.Max(t).Max(x.Max(y)))
+		// A missing corner shows in both sums of all four, whatever Min makes of it.
+		sum := e0.Add(e1)
+		known := sum.Equal(sum)
+		rises |= uint64(hi.Less(rise).And(known).ToBits()) << k
+		lit |= uint64(lo.Greater(fall).And(known).ToBits()) << k
+	}
+	archsimd.ClearAVXUpperBits()
+	return rises, lit
+}
