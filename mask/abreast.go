@@ -100,25 +100,43 @@ type sightRow struct {
 	first int // node
 	nodes []abreast
 	state []nodeState  // what holds at all nodes around
-	per   [][4]float64 // perMetre
+	per   [][4]float64 // perMetre, as nodeViews computed at some rows only
+	from  int          // the row of the first of two of these
+	pers  [2][][4]float64
 }
 
 // row prepares what the patches right of nodes j0 to j1 need in a row.
 func (s *sights) row(r *sightRow, g *dem.Grid, row, j0, j1 int) {
-	r.first = min(j0, s.cols-3)
-	n := min(j1+3, s.cols) - r.first
+	first := min(j0, s.cols-3)
+	n := min(j1+3, s.cols) - first
 	r.nodes, r.state, r.per = resize(r.nodes, n), resize(r.state, n), resize(r.per, n)
 	i0, w := weights(float64(row)/s.rowStep, s.rows)
 	for q := range n {
 		var node abreast
 		state := nodeSeen | nodeAbreast
 		for k := range 3 {
-			i := (i0+k)*s.cols + r.first + q
+			i := (i0+k)*s.cols + first + q
 			node = node.plus(s.nodes[i], w[k])
 			state &= s.state[i]
 		}
 		r.nodes[q], r.state[q] = node, state
-		r.per[q] = perMetre(g.At(float64(row), float64(r.first+q)*s.colStep))
+	}
+	from := row / viewStep * viewStep
+	to := min(from+viewStep, g.Rows-1)
+	if from != r.from || first != r.first || n != len(r.pers[0]) {
+		for k, row := range [2]int{from, to} {
+			r.pers[k] = resize(r.pers[k], n)
+			for q := range n {
+				r.pers[k][q] = perMetre(g.At(float64(row), float64(first+q)*s.colStep))
+			}
+		}
+	}
+	r.first, r.from = first, from
+	t := float64(row-from) / float64(max(to-from, 1))
+	for q := range n {
+		for i, x := range r.pers[0][q] {
+			r.per[q][i] = x + float64(t*(r.pers[1][q][i]-x))
+		}
 	}
 }
 

@@ -25,7 +25,7 @@ func centralVector(d, before, mid, after []float32) bool {
 		h := archsimd.LoadFloat32x8((*[8]float32)(mid[j:]))
 		ok = ok.And(x.Equal(x)).And(h.Equal(h))
 	}
-	whole := allOf(ok)
+	whole := ok.ToBits() == 0xff
 	archsimd.ClearAVXUpperBits()
 	return centralScalar(d[n:], before[n:], mid[n:], after[n:]) && whole
 }
@@ -39,14 +39,9 @@ func completeVector(z []float32) bool {
 		h := archsimd.LoadFloat32x8((*[8]float32)(z[j:]))
 		ok = ok.And(h.Equal(h))
 	}
-	whole := allOf(ok)
+	whole := ok.ToBits() == 0xff
 	archsimd.ClearAVXUpperBits()
 	return whole && completeScalar(z[n:])
-}
-
-// allOf reports whether a mask holds everywhere.
-func allOf(m archsimd.Mask32x8) bool {
-	return m.ToInt32x8().Xor(archsimd.BroadcastInt32x8(-1)).IsZero()
 }
 
 // turnVector copies eight columns of src, the rows lo and following of which are n
@@ -174,7 +169,7 @@ func localIncidencesVector(f *facetRow, a []float32) int {
 		z = z.Mul(z)
 		angle := quarter.Add(x.Mul(low.Add(z.Mul(high.Add(z.Mul(all(geometry.Arctan17)))))))
 		angle.Mul(perRadian).ConvertToFloat32().Store((*[4]float32)(a[j:]))
-		if !along.Greater(zero).ToInt64x4().Xor(archsimd.BroadcastInt64x4(-1)).IsZero() { // facets that turn their backs
+		if along.Greater(zero).ToBits() != 0xf { // facets that turn their backs
 			archsimd.ClearAVXUpperBits()
 			f.localIncidences(a[:j+4], j)
 		}
