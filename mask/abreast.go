@@ -1,6 +1,7 @@
 package mask
 
 import (
+	"bytes"
 	"math"
 
 	"foldshade/dem"
@@ -154,19 +155,34 @@ func (s *sights) left(col int) int {
 // patch prepares the columns right of node j.
 func (s *sights) patch(r *sightRow, j int) (p patch) {
 	q := min(j, s.cols-3) - r.first
-	node := r.nodes[q : q+3]
 	state := r.state[q] & r.state[q+1] & r.state[q+2]
 	p.from, p.seen, p.abreast = j, state&nodeSeen != 0, state&nodeAbreast != 0
-	p.c = abreast{}.plus(node[0].plus(node[1], -2).plus(node[2], 1), 0.5)
-	p.a, p.b = node[0], node[1].plus(node[0], -1).plus(p.c, -1)
-	if j -= r.first; j > q { // the last two nodes: count from the middle one of the three
-		p.a, p.b = p.a.plus(p.b, 1).plus(p.c, 1), p.b.plus(p.c, 2)
-	}
+	j -= r.first
+	x, y, z := &r.nodes[q], &r.nodes[q+1], &r.nodes[q+2]
+	p.a.way, p.b.way, p.c.way = quadratics(&x.way, &y.way, &z.way, j > q)
+	p.a.travel, p.b.travel, p.c.travel = quadratics(&x.travel, &y.travel, &z.travel, j > q)
 	p.per = r.per[j]
 	for i := range p.per {
 		p.dper[i] = r.per[j+1][i] - p.per[i]
 	}
 	return p
+}
+
+// quadratics returns the coefficients of the quadratics through three nodes, a + b t
+// + c t^2 with t = 0 at the first of them, or at the second when that is asked.
+func quadratics(x, y, z *geometry.ENU, second bool) (a, b, c geometry.ENU) {
+	one := func(x, y, z float64) (a, b, c float64) {
+		c = 0.5 * (x - float64(2*y) + z)
+		a, b = x, y-x-c
+		if second {
+			a, b = a+b+c, b+float64(2*c)
+		}
+		return a, b, c
+	}
+	a.East, b.East, c.East = one(x.East, y.East, z.East)
+	a.North, b.North, c.North = one(x.North, y.North, z.North)
+	a.Up, b.Up, c.Up = one(x.Up, y.Up, z.Up)
+	return a, b, c
 }
 
 // perMetre returns the columns and rows of a metre east and of one north.
@@ -238,10 +254,14 @@ func (c *sightCells) see(from, to int) {
 	for j := from; j < to; j += 4 {
 		sightVector(c, min(j, to-4))
 	}
-	for j := from; j < to; j++ {
-		if c.turns[j] == turnAsk {
-			c.seeCell(j)
+	for {
+		j := bytes.IndexByte(c.turns[from:to], turnAsk)
+		if j < 0 {
+			return
 		}
+		from += j
+		c.seeCell(from)
+		from++
 	}
 }
 
@@ -260,7 +280,7 @@ const (
 func (c *sightCells) seeCell(j int) {
 	s, col, h := c.ln.sights, c.col+j, float64(c.z[j])
 	if h != h {
-		c.turns[j], c.unseen[j] = 0, true
+		c.turns[j], c.unseen[j], c.gaps = 0, true, true
 		return
 	}
 	t := float64(col)/s.colStep - float64(c.from)
@@ -275,6 +295,7 @@ func (c *sightCells) seeCell(j int) {
 	}
 	r2 := float64(way.East*way.East) + float64(way.North*way.North) + float64(way.Up*way.Up)
 	c.unseen[j] = (!c.seen || c.close(way.Up, r2)) && !c.asked(c.ln, c.row, col, h) || c.outside(way.Up, r2)
+	c.gaps = c.gaps || c.unseen[j]
 	per := func(i int) float64 { return c.per[i] + float64(t*c.dper[i]) }
 	zc, zr := float64(c.zc[j]), float64(c.zr[j])
 	gE := float64(per(0)*zc) + float64(per(1)*zr)

@@ -42,7 +42,6 @@ func (w *worker) fill(i int) *Tile {
 		if ln.places == nil {
 			w.see(win.Row+r, win.Col)
 		} else {
-			w.gaps = true
 			w.seeAbreast(ln, look, r)
 		}
 		w.classRow(t, r)
