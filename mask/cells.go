@@ -64,39 +64,59 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	}
 	z, base := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
-	bundles := vectors && t.margins.sure && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
-	per := 1 / p.dv
+	line := p.line()
+	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
 	for v := va; v < vb; v++ {
 		if bundles {
 			from := min(v, vb-bundle)
-			if k := p.before(from, per); k >= 1 && k+bundle-1 <= laneStep && p.before(from+bundle-1, per) == k+bundle-1 {
-				t.classifyBundle(p, wk, u, from, v-from, k, per, (*[bundle]float32)(z[from-base:]))
+			k, _ := line.at(from)
+			if last, _ := line.at(from + bundle - 1); last == k+bundle-1 && k >= 1 && last <= laneStep {
+				t.classifyBundle(p, wk, u, from, v-from, &line, (*[bundle]float32)(z[from-base:]))
 				v = from + bundle - 1
 				continue
 			}
 		}
-		k := min(max(p.before(v, per), 1), laneStep)
-		t.classifyCell(p, wk, u, v, k, weight(p.laneOf(v, per), k), z[v-base])
+		k, w := line.at(v)
+		if k < 1 || k > laneStep { // by rounding, at the strip's own edge
+			k, w = min(max(k, 1), laneStep), float32(k/laneStep)
+		}
+		t.classifyCell(p, wk, u, v, k, w, z[v-base])
 	}
 }
 
 // bundle is the number of cells that a vector holds.
 const bundle = 8
 
-// laneOf returns the lane of the strip, fractional, on which column v lies in the
-// row where the strip stands; per is 1 / dv.
-func (p *strip) laneOf(v int, per float64) float64 { return (float64(v) - p.v0) * per }
+// lineUp says where the columns of a row lie between the lanes of a strip: column
+// first beyond lane k by w lanes, every next column by a lane and dw more.
+type lineUp struct {
+	first, k int
+	w, dw    float32
+}
 
-// before returns the last lane that does not lie beyond column v.
-func (p *strip) before(v int, per float64) int { return int(p.laneOf(v, per) + onLane) }
+// line returns the line-up of the row where the strip stands. It does not depend
+// on which of its cells are asked for.
+func (p *strip) line() lineUp {
+	per := 1 / p.dv
+	first := int(math.Ceil(p.edgeA))
+	x := (float64(first) - p.v0) * per
+	k := int(x + onLane)
+	return lineUp{first: first, k: k, w: float32(x - float64(k)), dw: float32(per - 1)}
+}
 
-// weight returns how far, in lanes, a cell at lane x lies beyond lane k; 0 where
-// it lies on it.
-func weight(x float64, k int) float32 {
-	if w := float32(x - float64(k)); w >= onLane {
-		return w
+// at returns the lane before column v, or under it, and how far, in lanes, the
+// column lies beyond it; 0 where it lies on it.
+func (l *lineUp) at(v int) (k int, w float32) {
+	k = l.k + v - l.first
+	w = l.w + float32(l.dw*float32(v-l.first))
+	if w < -onLane || w >= 1-onLane {
+		n := math.Floor(float64(w) + onLane)
+		k, w = k+int(n), w-float32(n)
 	}
-	return 0
+	if w < onLane {
+		w = 0
+	}
+	return k, w
 }
 
 // mix interpolates between two lanes.
@@ -147,7 +167,7 @@ func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt 
 	if w == 0 {
 		next = k
 	}
-	wk.quick(p, u, v, k, next, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
+	wk.quick(p, u, v, k, next, (float64(v)-p.v0)/p.dv, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 	return m
 }
 

@@ -54,29 +54,25 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// weights8 are the weights of the cells from column v on after lanes k, k+1 and so
-// on, as weight gives them.
-func (p *strip) weights8(v, k int, per float64) archsimd.Float32x8 {
-	var w [bundle]float32
-	perLane, first := four(per), four(p.v0)
-	number := archsimd.LoadInt32x4(&[4]int32{0, 1, 2, 3})
-	from := func(i int) archsimd.Float64x4 {
-		return archsimd.BroadcastInt32x4(int32(i)).Add(number).ConvertToFloat64()
-	}
-	for j := 0; j < bundle; j += 4 {
-		lane := from(v + j).Sub(first).Mul(perLane)
-		lane.Sub(from(k + j)).ConvertToFloat32().Store((*[4]float32)(w[j:]))
-	}
-	x := archsimd.LoadFloat32x8(&w)
-	return x.Masked(x.GreaterEqual(eight(onLane)))
+// at8 returns the lane before column v and how far the cells from there on lie
+// beyond the lanes before them, which follow each other.
+func (l *lineUp) at8(v int) (k int, w archsimd.Float32x8) {
+	k, _ = l.at(v)
+	number := archsimd.LoadInt32x8(&[8]int32{0, 1, 2, 3, 4, 5, 6, 7})
+	column := archsimd.BroadcastInt32x8(int32(v - l.first)).Add(number).ConvertToFloat32()
+	w = eight(l.w).Add(eight(l.dw).Mul(column))
+	turns := archsimd.BroadcastInt32x8(int32(k - l.k - v + l.first)).ConvertToFloat32()
+	w = w.Sub(turns)
+	return k, w.Masked(w.GreaterEqual(eight(onLane)))
 }
 
-// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1) after lanes
-// k+skip and so on, where no terrain is unknown: those that are not doubtful at
-// once, the others one by one. z are the heights from column v on.
-func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per float64, z *[bundle]float32) {
+// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1): those that
+// are not doubtful at once, the others one by one. The lanes before them follow
+// each other; z are the heights from column v on.
+func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineUp, z *[bundle]float32) {
 	r := &t.margins
-	part, zero, none := p.weights8(v, k, per), eight(0), eight(float32(nan))
+	k, part := line.at8(v)
+	zero, none := eight(0), eight(float32(nan))
 	blend := func(a *byLane32) archsimd.Float32x8 {
 		x := lanes8(a, k)
 		return x.Add(part.Mul(lanes8(a, k+1).Sub(x)))
@@ -89,29 +85,38 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 		slackM = slackM.Add(lanes8(&r.roughM, k))
 		slackN, slackG = slackN.Add(lanes8(&r.roughN, k)), slackG.Add(lanes8(&r.roughF, k))
 	}
-	dark := zero.Sub(slackM).Greater(m)
-	lit := m.Greater(slackM).ToBits()
+	shadow := zero.Sub(slackM).Greater(m)
+	dark, lit := shadow.ToBits(), m.Greater(slackM).ToBits()
 	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
-	doubtful := ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
-	if doubtful != 0 {
-		e := early{strip: p, laneMargins: r, u: u, v: v, k: k, z: z}
-		yes := e.lit(doubtful &^ lit)
-		m, lit = positive(m, yes, r.tinyM), lit|yes
-		doubtful = lit & (doubtN | doubtG)
-		if doubtful != 0 {
-			steep := p.steep8(u, v)
-			yes = e.alone(doubtN&doubtful&^steep, -1)
-			n, doubtN = positive(n, yes, r.tinyR), doubtN&^(yes|steep)
-			yes = e.alone(doubtG&doubtful&^steep, 1)
-			g, doubtG = positive(g, yes, r.tinyR), doubtG&^(yes|steep)
-		}
-		doubtful = ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	unlit, unfolded := uint8(0), uint8(0) // undetermined: whether lit, whether folded
+	if !r.sure {
+		mU, nU, gU := blend(&r.clearU), blend(&r.nearU), blend(&r.farU)
+		doubtN |= ^absolute(nU).Greater(slackN).ToBits()
+		doubtG |= ^absolute(gU).Greater(slackG).ToBits()
+		lit &= absolute(mU).Greater(slackM).ToBits()
+		unlit, unfolded = mU.LessEqual(zero).ToBits(), nU.LessEqual(zero).ToBits()|gU.LessEqual(zero).ToBits()
 	}
+	if r.sure && ^(lit|dark) != 0 {
+		yes := (&early{p, r, u, v, k, z}).lit(^(lit | dark))
+		m, lit = positive(m, yes, r.tinyM), lit|yes
+	}
+	if lit&(doubtN|doubtG) != 0 {
+		steep := p.steep8(u, v)
+		doubtN, doubtG = doubtN&lit&^steep, doubtG&lit&^steep
+		if r.sure {
+			e := early{p, r, u, v, k, z}
+			yes := e.alone(doubtN, -1)
+			n, doubtN = positive(n, yes, r.tinyR), doubtN&^yes
+			yes = e.alone(doubtG, 1)
+			g, doubtG = positive(g, yes, r.tinyR), doubtG&^yes
+		}
+	}
+	doubtful := ^(lit | dark) | lit&(doubtN|doubtG)
 	if !r.exact { // cells on a lane are treated alike on both sides
 		doubtful |= part.Equal(zero).ToBits()
 	}
-	fold := none.Merge(n.Min(g), dark)
-	codes := codesOf(dark.ToBits(), n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+	fold := none.Merge(n.Min(g), shadow)
+	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
 	i, stride := t.place(p.f, u, v)
 	if stride == 1 && skip == 0 {
 		binary.LittleEndian.PutUint64(t.raw[i:], codes)
@@ -250,12 +255,16 @@ func (t *sheet) scatter(i, stride, skip int, codes uint64, clear, fold archsimd.
 }
 
 // codesOf returns the raw codes of a bundle of cells, a byte each, as lane.raw has
-// them, from bits that say which are hidden and which have partners.
-func codesOf(dark, near, far uint8) uint64 {
-	near, far = near&^dark, far&^dark
+// them, from bits that say which are hidden, which may be, which may be folded,
+// and which have partners.
+func codesOf(dark, unlit, unfolded, near, far uint8) uint64 {
+	unlit &^= dark
+	near, far = near&^(dark|unlit), far&^(dark|unlit)
+	folded := near | far
+	unfolded &^= dark | unlit | folded
 	codes := spread[0xff] * uint64(Open)
-	codes += spread[dark] * uint64(CastShadow-Open)
-	codes += spread[near|far] * uint64(ActiveLayover-Open)
+	codes += spread[dark]*uint64(CastShadow-Open) + spread[unlit]*uint64(Undetermined-Open)
+	codes += spread[unfolded]*uint64(foldUnknown-Open) + spread[folded]*uint64(ActiveLayover-Open)
 	return codes + spread[far]*uint64(LayoverFarther-ActiveLayover) + spread[near]*uint64(LayoverNearer-ActiveLayover)
 }
 

@@ -11,9 +11,9 @@ const atLimit = 1. / (1 << 14)
 // from the cell's own centre over the bilinear surface, as settle does, but only
 // as far as the lines of the two lanes do not decide the rest with a slack of
 // their own.
-func (w *walker) quick(p *strip, u, v, k, next int, m *lane, doubt doubts, slackM, slackR float64) {
+func (w *walker) quick(p *strip, u, v, k, next int, x float64, m *lane, doubt doubts, slackM, slackR float64) {
 	w.f = p.f
-	w.y = newRay(p.f.ln, u, v)
+	w.y = p.ray(u, v, x)
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
 	q := quickWalk{walker: w, p: p, u: u, k: k, next: next, slackM: slackM * w.y.gain(s, h), slackR: slackR}
@@ -185,33 +185,31 @@ func (q *quickWalk) left(v float64) bool { return q.y.ln.places != nil && q.outs
 // lit reports whether no ground towards the radar reaches the point's m: none
 // that the DEM shows, or no unknown terrain.
 func (q *quickWalk) lit(unknown bool) bool {
-	own := true // the look angle grows up to the point itself
+	reached := q.m // no less than the line's m at row u
+	vb, sb := q.y.at(q.u)
 	for u := q.u; u > q.p.ua; u-- {
-		va, sa := q.y.at(u)
-		vb, sb := q.y.at(u - 1)
-		if own = own && q.p.gentle[u-1-q.p.ua].lightening(vb, va); own {
-			if (q.u-u)%2 == 1 {
-				b := q.shade(u-1, sb, unknown)
-				if b.high < q.m-q.slackM {
-					return true
-				}
-				if b.low > q.m+q.slackM {
-					return false
+		va, sa := vb, sb
+		vb, sb = q.y.at(u - 1)
+		if reached <= q.m && q.p.gentle[u-1-q.p.ua].lightening(vb, va) {
+			if (q.u-u)%2 == 0 {
+				continue
+			}
+		} else {
+			reached = math.Inf(-1)
+			_, high := q.between(u, -1, va, vb)
+			if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
+				q.step(u, -1, va, vb, sa, sb)
+				for i := range q.pieces {
+					g := &q.pieces[i]
+					if g.m >= q.m && g.unknown == unknown {
+						return false
+					}
+					reached = g.m
 				}
 			}
-			continue
-		}
-		_, high := q.between(u, -1, va, vb)
-		if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
-			q.step(u, -1, va, vb, sa, sb)
-			for i := range q.pieces {
-				if g := &q.pieces[i]; g.m >= q.m && g.unknown == unknown {
-					return false
-				}
+			if q.left(vb) { // the lanes may go on inside
+				return true
 			}
-		}
-		if q.left(vb) { // the lanes may go on inside
-			return true
 		}
 		b := q.shade(u-1, sb, unknown)
 		if b.high < q.m-q.slackM {
@@ -242,42 +240,39 @@ func (q *quickWalk) edgePoint(u int, h float64) (g point) {
 func (q *quickWalk) foldedNearer(possible bool) bool {
 	none := math.Inf(-1)
 	best := none
-	own := true // slant range grows up to the point itself
+	reached := q.r // no less than the line's slant range at row u
+	vb, sb := q.y.at(q.u)
 	for u := q.u; u > q.p.ua; u-- {
-		va, sa := q.y.at(u)
-		vb, sb := q.y.at(u - 1)
-		if own = own && q.p.gentle[u-1-q.p.ua].rising(vb, va); own {
-			if (q.u-u)%2 == 1 {
-				b := q.nearer(u-1, sb, possible)
-				if b.high < q.r-q.slackR {
-					return false
-				}
-				if b.low > q.r+q.slackR {
-					return true
+		va, sa := vb, sb
+		vb, sb = q.y.at(u - 1)
+		if best == none && reached <= q.r && q.p.gentle[u-1-q.p.ua].rising(vb, va) {
+			if (q.u-u)%2 == 0 {
+				continue
+			}
+		} else {
+			reached = none
+			q.pieces = q.pieces[:0]
+			if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
+				q.step(u, -1, va, vb, sa, sb)
+			}
+			for i := range q.pieces {
+				g := &q.pieces[i]
+				reached = g.r
+				switch {
+				case g.unknown && possible:
+					if g.r >= q.r {
+						return true
+					}
+				case g.m >= best:
+					best = none
+					if g.r >= q.r && !g.unknown {
+						best = g.m
+					}
 				}
 			}
-			continue
-		}
-		q.pieces = q.pieces[:0]
-		if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
-			q.step(u, -1, va, vb, sa, sb)
-		}
-		for i := range q.pieces {
-			g := &q.pieces[i]
-			switch {
-			case g.unknown && possible:
-				if g.r >= q.r {
-					return true
-				}
-			case g.m >= best:
-				best = none
-				if g.r >= q.r && !g.unknown {
-					best = g.m
-				}
+			if q.left(vb) {
+				return best != none
 			}
-		}
-		if q.left(vb) {
-			return best != none
 		}
 		if best != none {
 			b := q.shade(u-1, sb, false)
@@ -315,57 +310,54 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 // lit, or unknown terrain, does.
 func (q *quickWalk) foldedFarther(possible bool) bool {
 	top, topU, prev, hidden := q.m, math.Inf(-1), point{m: q.m, r: q.r}, false
-	own := true // slant range grows from the point on
+	reached := q.r // no more than the line's slant range at row u
+	vb, sb := q.y.at(q.u)
 	for u := q.u; u < q.p.ub-1; u++ {
-		va, sa := q.y.at(u)
-		vb, sb := q.y.at(u + 1)
-		if own = own && q.p.gentle[u-q.p.ua].rising(va, vb); own {
-			if (u-q.u)%2 == 1 {
-				b := q.farther(u+1, sb, possible)
-				if b.low > q.r+q.slackR {
-					return false
-				}
-				if b.high < q.r-q.slackR {
-					return true
-				}
-			}
-			continue
-		}
-		// Ground beyond the point's slant range cannot hide any that is within
-		// it: it lies below the line of equal range, the other above.
-		q.pieces = q.pieces[:0]
-		_, high := q.between(u, 1, va, vb)
-		if top, least := q.y.see(sa, high); !(least > q.r) || q.overhead(top) {
-			q.step(u, 1, va, vb, sa, sb)
-		} else {
-			hidden = false
-		}
-		for i := range q.pieces {
-			g := q.pieces[i]
-			if g.unknown {
-				if possible && g.r <= q.r {
-					return true
-				}
-				topU, hidden = max(topU, g.m), false
+		va, sa := vb, sb
+		vb, sb = q.y.at(u + 1)
+		if reached >= q.r && q.p.gentle[u-q.p.ua].rising(va, vb) {
+			if hidden = false; (u-q.u)%2 == 0 {
 				continue
 			}
-			if g.m > top {
-				best := g.r
-				if hidden {
-					best = min(best, prev.r+(top-prev.m)/(g.m-prev.m)*(g.r-prev.r))
-				}
-				if best <= q.r && (possible || g.m > topU) {
-					return true
-				}
-				top = g.m
-				hidden = false
+		} else {
+			reached = math.Inf(1)
+			// Ground beyond the point's slant range cannot hide any that is within
+			// it: it lies below the line of equal range, the other above.
+			q.pieces = q.pieces[:0]
+			_, high := q.between(u, 1, va, vb)
+			if top, least := q.y.see(sa, high); !(least > q.r) || q.overhead(top) {
+				q.step(u, 1, va, vb, sa, sb)
 			} else {
-				hidden = true
+				hidden = false
 			}
-			prev = g
-		}
-		if q.left(vb) {
-			return false
+			for i := range q.pieces {
+				g := q.pieces[i]
+				reached = g.r
+				if g.unknown {
+					if possible && g.r <= q.r {
+						return true
+					}
+					topU, hidden = max(topU, g.m), false
+					continue
+				}
+				if g.m > top {
+					best := g.r
+					if hidden {
+						best = min(best, prev.r+(top-prev.m)/(g.m-prev.m)*(g.r-prev.r))
+					}
+					if best <= q.r && (possible || g.m > topU) {
+						return true
+					}
+					top = g.m
+					hidden = false
+				} else {
+					hidden = true
+				}
+				prev = g
+			}
+			if q.left(vb) {
+				return false
+			}
 		}
 		b := q.farther(u+1, sb, possible)
 		if b.low > q.r+q.slackR {
