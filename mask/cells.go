@@ -22,6 +22,27 @@ const foldUnknown Class = 51
 // the cells, settles the doubtful ones and leaves the raw codes, with the
 // margins when they are wanted.
 func (t *sheet) classify(f *field, p *strip, wk *walker) {
+	t.turned = f.ln.transposed && f.ln.fan == nil
+	if t.turned { // rows stay together while the strips are marched
+		t.findings, t.beside = t.beside, t.findings
+		t.raw = resize(t.raw, t.w.Rows*t.w.Cols)
+	}
+	t.room()
+	for j := range f.strips {
+		if p.setUp(f, f.first+j) {
+			p.forward()
+			p.backward(func(u int) { t.classifyRow(p, wk, u) })
+		}
+	}
+	if t.turned {
+		t.findings, t.beside = t.beside, t.findings
+		t.room()
+		t.turn(f.ln.flip)
+	}
+}
+
+// room makes room for what is wanted beside the raw codes.
+func (t *sheet) room() {
 	n := t.w.Rows * t.w.Cols
 	if t.wantClear {
 		t.clear = resize(t.clear, n)
@@ -32,15 +53,26 @@ func (t *sheet) classify(f *field, p *strip, wk *walker) {
 	if t.bin > 0 {
 		t.returns, t.share = resize(t.returns, n), resize(t.share, n)
 	}
-	for j := range f.strips {
-		if p.setUp(f, f.first+j) {
-			p.forward()
-			p.backward(func(u int) { t.classifyRow(p, wk, u) })
-		}
+}
+
+// turn brings the findings beside, which are those of transposed rows, to the
+// grid's own.
+func (t *sheet) turn(flip bool) {
+	rows, cols := t.w.Rows, t.w.Cols
+	turnBytes(t.raw, t.beside.raw, rows, cols, flip)
+	if t.wantClear {
+		turnNumbers(t.clear, t.beside.clear, rows, cols, flip)
+	}
+	if t.wantFold {
+		turnNumbers(t.fold, t.beside.fold, rows, cols, flip)
+	}
+	if t.bin > 0 {
+		turnNumbers(t.returns, t.beside.returns, rows, cols, flip)
+		turnNumbers(t.share, t.beside.share, rows, cols, flip)
 	}
 }
 
-// place returns the index in the sheet of marching position (u, v) and the
+// place returns the index in the findings of marching position (u, v) and the
 // stride of v.
 func (t *sheet) place(f *field, u, v int) (at, stride int) {
 	o := f.ln.orient
@@ -48,7 +80,12 @@ func (t *sheet) place(f *field, u, v int) (at, stride int) {
 	if o.flip {
 		a = o.u - 1 - u
 	}
-	if o.transposed {
+	switch {
+	case t.turned && o.flip:
+		return (t.w.Cols-1-(a-t.w.Col))*t.w.Rows + v - t.w.Row, 1
+	case t.turned:
+		return (a-t.w.Col)*t.w.Rows + v - t.w.Row, 1
+	case o.transposed:
 		return (v-t.w.Row)*t.w.Cols + a - t.w.Col, t.w.Cols
 	}
 	return (a-t.w.Row)*t.w.Cols + v - t.w.Col, 1
@@ -476,17 +513,14 @@ func shadowClass(raw Class, turns int) Class {
 // blank says of all cells that nothing is known.
 func (t *sheet) blank() {
 	clear(t.raw)
-	n := t.w.Rows * t.w.Cols
+	t.room()
 	if t.wantClear {
-		t.clear = resize(t.clear, n)
 		fillWith(t.clear, float32(nan))
 	}
 	if t.wantFold {
-		t.fold = resize(t.fold, n)
 		fillWith(t.fold, float32(nan))
 	}
 	if t.bin > 0 {
-		t.returns, t.share = resize(t.returns, n), resize(t.share, n)
 		fillWith(t.returns, float32(nan))
 		fillWith(t.share, float32(nan))
 	}

@@ -58,7 +58,7 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 // beyond the lanes before them, which follow each other.
 func (l *lineUp) at8(v int) (k int, w archsimd.Float32x8) {
 	k, _ = l.at(v)
-	number := archsimd.LoadInt32x8(&[8]int32{0, 1, 2, 3, 4, 5, 6, 7})
+	number := archsimd.LoadInt32x8(&numbers8)
 	column := archsimd.BroadcastInt32x8(int32(v - l.first)).Add(number).ConvertToFloat32()
 	w = eight(l.w).Add(eight(l.dw).Mul(column))
 	turns := archsimd.BroadcastInt32x8(int32(k - l.k - v + l.first)).ConvertToFloat32()
@@ -267,7 +267,7 @@ func positive(x archsimd.Float32x8, yes uint8, tiny float32) archsimd.Float32x8 
 	if yes == 0 {
 		return x
 	}
-	bit := archsimd.LoadInt32x8(&[8]int32{1, 2, 4, 8, 16, 32, 64, 128})
+	bit := archsimd.LoadInt32x8(&bits8)
 	asked := archsimd.BroadcastInt32x8(int32(yes)).And(bit).Equal(bit)
 	wrong := asked.And(x.LessEqual(eight(0)))
 	return eight(tiny).Merge(x, wrong)
@@ -307,3 +307,33 @@ var spread = func() (s [256]uint64) {
 	}
 	return s
 }()
+
+// turnVectors transposes a stripe of eight rows of src, at first, first + step and
+// so on, rows long, to columns of dst.
+func turnVectors(dst, src []float32, rows, cols, first, step int) {
+	for r := 0; r < rows; r += turnBlock {
+		load := func(k int) archsimd.Int32x8 {
+			return archsimd.LoadFloat32x8((*[8]float32)(src[first+k*step+r:])).AsInt32x8()
+		}
+		store := func(k int, x archsimd.Int32x8) {
+			x.AsFloat32x8().Store((*[8]float32)(dst[(r+k)*cols:]))
+		}
+		a, b, c, d := fours(load(0), load(1), load(2), load(3))
+		e, f, g, h := fours(load(4), load(5), load(6), load(7))
+		store(0, a.Select128FromPair(0, 2, e))
+		store(1, b.Select128FromPair(0, 2, f))
+		store(2, c.Select128FromPair(0, 2, g))
+		store(3, d.Select128FromPair(0, 2, h))
+		store(4, a.Select128FromPair(1, 3, e))
+		store(5, b.Select128FromPair(1, 3, f))
+		store(6, c.Select128FromPair(1, 3, g))
+		store(7, d.Select128FromPair(1, 3, h))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// numbers8 are the numbers of the cells of a bundle, bits8 their bits.
+var (
+	numbers8 = [bundle]int32{0, 1, 2, 3, 4, 5, 6, 7}
+	bits8    = [bundle]int32{1, 2, 4, 8, 16, 32, 64, 128}
+)
