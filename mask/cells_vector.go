@@ -66,12 +66,53 @@ func (l *lineUp) at8(v int) (k int, w archsimd.Float32x8) {
 	return k, w.Masked(w.GreaterEqual(eight(onLane)))
 }
 
-// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1): those that
-// are not doubtful at once, the others one by one. The lanes before them follow
-// each other; z are the heights from column v on.
+// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1). The lanes
+// before them follow each other; z are the heights from column v on. Most bundles
+// are open, with all margins wide.
 func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineUp, z *[bundle]float32) {
 	r := &t.margins
 	k, part := line.at8(v)
+	i, stride := t.place(p.f, u, v)
+	if skip > 0 || stride != 1 || !r.sure || r.exact {
+		archsimd.ClearAVXUpperBits()
+		t.classifyMixed(p, wk, u, v, skip, k, line, z)
+		return
+	}
+	x := lanes8(&r.h, k)
+	bump := absolute(archsimd.LoadFloat32x8(z).Sub(x.Add(part.Mul(lanes8(&r.h, k+1).Sub(x)))))
+	x = lanes8(&r.clear, k)
+	m := x.Add(part.Mul(lanes8(&r.clear, k+1).Sub(x)))
+	open := m.Greater(eight(r.slackM).Add(bump).Add(lanes8(&r.roughM, k)))
+	slack := eight(r.slackR).Add(bump)
+	x = lanes8(&r.near, k)
+	n := x.Add(part.Mul(lanes8(&r.near, k+1).Sub(x)))
+	open = open.And(n.Greater(slack.Add(lanes8(&r.roughN, k))))
+	x = lanes8(&r.far, k)
+	g := x.Add(part.Mul(lanes8(&r.far, k+1).Sub(x)))
+	open = open.And(g.Greater(slack.Add(lanes8(&r.roughF, k)))).And(part.Greater(eight(0)))
+	if open.ToBits() != 0xff {
+		archsimd.ClearAVXUpperBits()
+		t.classifyMixed(p, wk, u, v, skip, k, line, z)
+		return
+	}
+	binary.LittleEndian.PutUint64(t.raw[i:], allOpen)
+	if t.wantClear {
+		m.Store((*[bundle]float32)(t.clear[i:]))
+	}
+	if t.wantFold {
+		n.Min(g).Store((*[bundle]float32)(t.fold[i:]))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// allOpen is a bundle of open cells.
+const allOpen = 0x0101010101010101 * uint64(Open)
+
+// classifyMixed is classifyBundle for any cells: those that are not doubtful at
+// once, the others one by one.
+func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lineUp, z *[bundle]float32) {
+	r := &t.margins
+	_, part := line.at8(v)
 	zero, none := eight(0), eight(float32(nan))
 	blend := func(a *byLane32) archsimd.Float32x8 {
 		x := lanes8(a, k)
