@@ -144,14 +144,20 @@ func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lin
 	}
 	if r.sure && dim|doubtN|doubtG != 0 {
 		e := early{p, r, u, v, k, z}
-		yes := e.lit(dim)
+		yes := e.lit(dim, false)
 		m, lit, dim = positive(m, yes, r.tinyM), lit|yes, dim&^yes
-		yes = e.alone(doubtN&lit, -1)
+		yes = e.alone(doubtN&lit, -1, false)
 		n, doubtN = positive(n, yes, r.tinyR), doubtN&^yes
-		yes = e.alone(doubtG&lit, 1)
+		yes = e.alone(doubtG&lit, 1, false)
 		g, doubtG = positive(g, yes, r.tinyR), doubtG&^yes
 	}
 	doubtful := dim | lit&(doubtN|doubtG)
+	if !r.sure && doubtful != 0 {
+		open := (&early{p, r, u, v, k, z}).open(part, slackM, slackN, slackG)
+		m, n, g = positive(m, open, r.tinyM), positive(n, open, r.tinyR), positive(g, open, r.tinyR)
+		dim, unlit, unfolded = dim&^open, unlit&^open, unfolded&^open
+		doubtful &^= open
+	}
 	on := uint8(0)
 	if !r.exact { // cells on a lane are treated alike on both sides
 		on = part.Equal(zero).ToBits()
@@ -244,13 +250,20 @@ func (e *early) path(u, next int, good uint64) uint8 {
 	return e.along(e.v, e.u, u, next, good)
 }
 
-// lit returns which of the doubtful cells are lit.
-func (e *early) lit(doubtful uint8) (yes uint8) {
+// lit returns which of the doubtful cells no ground hides, or no unknown terrain.
+func (e *early) lit(doubtful uint8, unknown bool) (yes uint8) {
 	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
 		g := &e.gentle[u-1-e.ua]
 		doubtful &= e.path(u, u-1, g.lit)
 		if doubtful != 0 && (e.u-u)%2 == 1 {
 			line := &e.row(u - 1).shade
+			if unknown {
+				unsure := e.unsureRow(u - 1)
+				if unsure == nil || e.sureAt(u-1)&1 != 0 {
+					return yes | doubtful
+				}
+				line = &unsure.shade
+			}
 			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
 			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(g.worthM, e.u-u+1))
 			now := clears(rise, absolute(x.Sub(y)), e.perM, e.slackM) & doubtful
@@ -261,8 +274,9 @@ func (e *early) lit(doubtful uint8) (yes uint8) {
 }
 
 // alone returns which of the doubtful cells have no partner towards the radar, dir
-// -1, or away from it, 1.
-func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
+// -1, or away from it, 1; when possible is set, none that may be lit, nor unknown
+// terrain.
+func (e *early) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 	for n := 1; doubtful != 0 && n <= earlyRows; n++ {
 		u := e.u + dir*n
 		if u < e.ua || u >= e.ub {
@@ -274,10 +288,7 @@ func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
 			continue
 		}
 		h := archsimd.LoadFloat32x8(e.z)
-		line := &e.row(u).nearer
-		if dir > 0 {
-			line = &e.row(u).farther
-		}
+		line := e.line(u, dir, possible)
 		x, y := lanes8(line, e.k), lanes8(line, e.k+1)
 		rise := x.Min(y).Sub(h)
 		if dir > 0 {
@@ -289,6 +300,53 @@ func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
 		yes, doubtful = yes|now, doubtful&^now
 	}
 	return yes
+}
+
+// line returns the line of row u that ground towards the radar or away from it
+// sets.
+func (e *early) line(u, dir int, possible bool) *byLane32 {
+	unsure := e.unsureRow(u)
+	if possible && unsure != nil {
+		switch {
+		case dir < 0 && e.sureAt(u)&1 == 0:
+			return &unsure.nearer
+		case dir > 0 && e.sureAt(u)&2 == 0:
+			return &unsure.farther
+		}
+	}
+	if dir < 0 {
+		return &e.row(u).nearer
+	}
+	return &e.row(u).farther
+}
+
+func (e *early) sureAt(u int) uint8 { return e.strip.sure[u-e.ua] }
+
+// open returns which cells are open whatever stands where terrain is unknown; not
+// those with a lane that has no margins.
+//
+//go:noinline
+func (e *early) open(part, slackM, slackN, slackG archsimd.Float32x8) (cells uint8) {
+	cells = 0xff
+	for _, x := range [...]struct {
+		margins *byLane32
+		slack   archsimd.Float32x8
+		yes     func(doubtful uint8) uint8
+	}{
+		{&e.laneMargins.clear, slackM, func(d uint8) uint8 { return e.lit(d, false) }},
+		{&e.clearU, slackM, func(d uint8) uint8 { return e.lit(d, true) }},
+		{&e.laneMargins.near, slackN, func(d uint8) uint8 { return e.alone(d, -1, false) }},
+		{&e.nearU, slackN, func(d uint8) uint8 { return e.alone(d, -1, true) }},
+		{&e.laneMargins.far, slackG, func(d uint8) uint8 { return e.alone(d, 1, false) }},
+		{&e.farU, slackG, func(d uint8) uint8 { return e.alone(d, 1, true) }},
+	} {
+		a := lanes8(x.margins, e.k)
+		a = a.Add(part.Mul(lanes8(x.margins, e.k+1).Sub(a)))
+		cells &= a.Greater(eight(0).Sub(x.slack)).ToBits() // else surely not, or missing
+		doubtful := cells &^ a.Greater(x.slack).ToBits()
+		cells &^= doubtful &^ x.yes(doubtful)
+	}
+	return cells
 }
 
 // worth is what n rows are worth.
