@@ -265,12 +265,40 @@ func (w *walker) between(u, dir int, va, vb float64) (low, high float64) {
 	return float64(lo), float64(hi)
 }
 
-// matters reports whether ground between two heights from distance s on, towards
-// the radar, may share the point's slant range or hide ground that reaches best.
-func (q *quickWalk) matters(s, low, high, best float64) bool {
-	top := q.y.seeM(s, high)
-	most := q.y.seeR(s, low)
-	return q.overhead(top) || !(most < q.r) || !(top < best) && !math.IsInf(best, -1)
+// dull reports whether ground between row u and the next one towards the radar can
+// neither share the point's slant range nor hide ground that reaches best, by the
+// extremes of its heights. For a plane wave the walk costs less than to ask.
+func (q *quickWalk) dull(u int, va, vb, sa, best float64) bool {
+	if q.y.ln.places == nil {
+		return false
+	}
+	low, high := q.between(u, -1, va, vb)
+	top := q.y.seeM(sa, high)
+	most := q.y.seeR(sa, low)
+	return !q.overhead(top) && most < q.r && (top < best || math.IsInf(best, -1))
+}
+
+// below reports whether ground between row u and the next one towards the radar
+// lies below the point's line of sight; as dull.
+func (q *quickWalk) below(u int, va, vb, sa float64) bool {
+	if q.y.ln.places == nil {
+		return false
+	}
+	_, high := q.between(u, -1, va, vb)
+	top := q.y.seeM(sa, high)
+	return top < q.m && !q.overhead(top)
+}
+
+// beyond reports whether ground between row u and the next one away from the radar
+// lies beyond the point's slant range; as dull. It cannot hide any that is within
+// it: it lies below the line of equal range, the other above.
+func (q *quickWalk) beyond(u int, va, vb, sa float64) bool {
+	if q.y.ln.places == nil {
+		return false
+	}
+	_, high := q.between(u, 1, va, vb)
+	top, least := q.y.see(sa, high)
+	return least > q.r && !q.overhead(top)
 }
 
 // overhead reports whether ground at m stands above the antenna of a platform:
@@ -295,8 +323,7 @@ func (q *quickWalk) lit(unknown bool) bool {
 			}
 		} else {
 			reached = math.Inf(-1)
-			_, high := q.between(u, -1, va, vb)
-			if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
+			if !q.below(u, va, vb, sa) {
 				q.walk(u, -1, va, vb, sa, sb)
 				for i := range q.cuts {
 					g := &q.cuts[i]
@@ -351,7 +378,7 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 		} else {
 			reached = none
 			q.cuts = q.cuts[:0]
-			if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
+			if !q.dull(u, va, vb, sa, best) {
 				q.walk(u, -1, va, vb, sa, sb)
 			}
 			for i := range q.cuts {
@@ -420,11 +447,8 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 			}
 		} else {
 			reached = math.Inf(1)
-			// Ground beyond the point's slant range cannot hide any that is within
-			// it: it lies below the line of equal range, the other above.
 			q.cuts = q.cuts[:0]
-			_, high := q.between(u, 1, va, vb)
-			if top, least := q.y.see(sa, high); !(least > q.r) || q.overhead(top) {
+			if !q.beyond(u, va, vb, sa) {
 				q.walk(u, 1, va, vb, sa, sb)
 			} else {
 				hidden = false
