@@ -233,57 +233,6 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	}
 }
 
-// fromLines fills the margins of the lanes l in the DEM; the others have none.
-func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
-	ln, row := p.f.ln, p.row(u)
-	for k := range marchLanes {
-		h := float32(p.h[k])
-		if k < l.a || k >= l.b {
-			h = float32(nan)
-		}
-		if ln.fan != nil && h == h {
-			q := p.place(k)
-			cos = float32(ln.steepness(&q, float64(h)))
-		}
-		r.h[k] = h
-		r.clear[k] = h - row.shade[k]
-		r.near[k] = float32((row.nearer[k] - h) * cos)
-		r.far[k] = float32((h - row.farther[k]) * cos)
-	}
-}
-
-// trackRanges fills the margins of range of a platform, in which slant range is
-// not linear.
-func (r *laneMargins) trackRanges(p *strip, u int) {
-	l := p.inDEM()
-	row := p.row(u)
-	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
-		nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
-		farther := p.f.ln.viewR(&q, float64(row.farther[k]))
-		r.near[k], r.far[k] = float32(p.r[k]-nearer), float32(farther-p.r[k])
-	}
-}
-
-// trackRangesU is trackRanges with unknown terrain at its worst.
-func (r *laneMargins) trackRangesU(p *strip, u int) {
-	l := p.inDEM()
-	bits := p.sure[u-p.ua]
-	row := p.unsureRow(u)
-	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
-		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
-		if bits&1 == 0 {
-			nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
-			r.nearU[k] = float32(p.r[k] - nearer)
-		}
-		if bits&2 == 0 {
-			farther := p.f.ln.viewR(&q, float64(row.farther[k]))
-			r.farU[k] = float32(farther - p.r[k])
-		}
-	}
-}
-
 // roughness fills rough with the largest difference of neighbouring lanes among
 // those around each gap: it shows how much the ground that decides varies within
 // a cell, and counts for more where it exceeds a row's worth of ground. NaN,

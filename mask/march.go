@@ -323,57 +323,6 @@ func (p *strip) middleHeight() float64 {
 	return p.f.ln.datum
 }
 
-// viewLanes fills m and r as a platform sees them and returns the lanes that
-// count: ground under the track and beyond it is none of the look's.
-func (p *strip) viewLanes(l span) span {
-	ln := p.f.ln
-	for l.a < l.b && p.place(l.a).x <= 0 {
-		l.a++
-	}
-	for l.a < l.b && p.place(l.b-1).x <= 0 {
-		l.b--
-	}
-	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
-		p.m[k], p.r[k] = ln.view(&q, p.h[k])
-	}
-	return l
-}
-
-// seen returns m and r of a height at lane k of the row that is sampled.
-func (p *strip) seen(k int, h float64) (m, r float64) {
-	if p.f.ln.places == nil {
-		d := h - p.h[k]
-		return p.m[k] + d, p.r[k] - float64(d*p.f.ln.cos)
-	}
-	q := p.place(k)
-	return p.f.ln.view(&q, h)
-}
-
-// shade returns the height at which lane k reaches top.
-func (p *strip) shade(k int, top float64) float64 {
-	if p.f.ln.places == nil || math.IsInf(top, -1) {
-		return p.h[k] + (top - p.m[k])
-	}
-	q := p.place(k)
-	return p.f.ln.shadeHeight(&q, top)
-}
-
-// equalRange returns the height at which lane k has slant range r.
-func (p *strip) equalRange(k int, r float64) float64 {
-	if p.f.ln.places == nil {
-		return p.h[k] + (p.r[k]-r)/p.f.ln.cos
-	}
-	q := p.place(k)
-	switch {
-	case p.f.ln.fan != nil && !math.IsInf(r, 0):
-		return p.h[k] + (p.r[k]-r)/p.f.ln.steepness(&q, p.h[k])
-	case math.IsInf(r, 1) || p.f.ln.fan != nil:
-		return -r
-	}
-	return p.f.ln.rangeHeight(&q, max(r, 0))
-}
-
 // laneNumbers holds the numbers of the lanes.
 var laneNumbers = func() (n byLane) {
 	for k := range n {
@@ -522,22 +471,6 @@ func (p *strip) forwardMove(row *lines, l span) {
 			st.most[k] = best
 		}
 		row.dip[k] = float32(dip)
-	}
-}
-
-// forwardLines fills the lines of one row that the forward march sets.
-func (p *strip) forwardLines(row *lines, l span) {
-	st, ln := &p.fwd, p.f.ln
-	minShade, maxNearer, _ := p.f.limitLines()
-	for k := l.a; k < l.b; k++ {
-		if ln.fan != nil || math.IsInf(st.top[k], -1) {
-			row.shade[k] = float32(max(p.shade(k, st.top[k]), minShade))
-			row.nearer[k] = float32(min(p.equalRange(k, st.most[k]), maxNearer))
-			continue
-		}
-		q := p.place(k)
-		row.shade[k] = float32(max(ln.shadeHeight(&q, st.top[k]), minShade))
-		row.nearer[k] = float32(min(ln.rangeHeight(&q, max(st.most[k], 0)), maxNearer))
 	}
 }
 
