@@ -194,13 +194,13 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
 	r.cos = float32(math.Abs(cosine))
 	l := p.inDEM()
-	if vectors && ln.places == nil && l == whole {
+	switch {
+	case ln.places != nil:
+		r.fromTrack(p, u, l)
+	case vectors && l == whole:
 		marginsVector(r, &p.h, p.row(u), float32(cosine))
-	} else {
+	default:
 		r.fromLines(p, u, l, float32(cosine))
-		if ln.places != nil && ln.fan == nil {
-			r.trackRanges(p, u)
-		}
 	}
 	if !r.exact {
 		roughness(&r.clear, &r.roughM, r.perM)
@@ -217,8 +217,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		h := float32(p.h[k])
 		r.clearU[k], r.nearU[k], r.farU[k] = r.clear[k], r.near[k], r.far[k]
 		if ln.fan != nil && h == h {
-			q := p.place(k)
-			cos = float32(ln.steepness(&q, float64(h)))
+			cos = float32(p.share[k])
 		}
 		if bits&1 == 0 {
 			r.clearU[k] = h - x.shade[k]

@@ -117,11 +117,16 @@ func (ln *lanes) placeAt(i, j int, p, q float64) place {
 const levelShare = 0.05
 
 // steepness returns by how much a metre of height of a line counts in slant
-// range at a place, the same for every use of the line. Ground above the
-// antenna moves away from it when it rises; the lines turn with it.
-func (l *lens) steepness(p *place, h float64) float64 {
-	_, cos := l.angle(p, h)
-	return max(math.Abs(cos), levelShare)
+// range at a place of height h and slant range r, the same for every use of the
+// line. Ground above the antenna moves away from it when it rises; the lines turn
+// with it. The normal of the ground is taken to lie in the range plane.
+func (l *lens) steepness(p *place, h, r float64) float64 {
+	h -= l.datum
+	x, y := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	if cos := math.Abs(float64(x*p.nx)+float64(y*p.ny)) / r; cos > levelShare {
+		return cos
+	}
+	return levelShare
 }
 
 // laneRange returns the slant range of a line at lane k of row u of a fan.
@@ -136,5 +141,5 @@ func (q *quickWalk) laneRange(u, k int, line float32) float64 {
 	i := min(u/laneStep, ln.nu-2)
 	p := ln.placeAt(i, q.p.j, float64(u-laneStep*i)/laneStep, (lane-float64(q.p.k0+1))/laneStep)
 	_, r := ln.view(&p, h)
-	return r - (float64(line)-h)*ln.steepness(&p, h)
+	return r - (float64(line)-h)*ln.steepness(&p, h, r)
 }

@@ -21,6 +21,7 @@ type strip struct {
 	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
 	p0, dp         place   // of a platform: place of lane 0, change for one lane
 	h, m, r        byLane
+	share          byLane // of a fan: see lens.steepness
 
 	// What the marches find, by row from ua to ub and lane.
 	lines  []lines
@@ -437,8 +438,7 @@ func (p *strip) forwardSure(row *lines, l span) {
 	minShade, maxNearer, _ := p.f.limitLines()
 	switch {
 	case ln.places != nil:
-		p.forwardLines(row, l)
-		p.forwardMove(row, l)
+		p.forwardTrack(row, l)
 	case vectors && l == whole:
 		forwardVector(p, row, minShade, maxNearer, 1/ln.cos)
 	default:
@@ -480,10 +480,13 @@ func (p *strip) forwardMove(row *lines, l span) {
 func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
 	edge := st.r[k] + float64((st.top[k]-st.m[k])/(m-st.m[k])*(r-st.r[k]))
 	st.m[k] = nan
-	if edge > r {
+	switch {
+	case edge > r:
 		return edge, 0
+	case edge <= r:
+		return r, r - edge
 	}
-	return r, r - edge
+	return r, 0
 }
 
 // forwardUnsure marches one row where terrain may be unknown.
@@ -586,9 +589,7 @@ func (p *strip) backwardSure(row *lines, l span) {
 	perCos := 1 / ln.cos
 	switch {
 	case ln.places != nil:
-		for k := l.a; k < l.b; k++ {
-			row.farther[k] = float32(max(p.equalRange(k, st.least[k]), minFarther))
-		}
+		p.backwardTrack(row, l)
 	case vectors && l == whole:
 		backwardVector(p, row, minFarther, perCos)
 	default:

@@ -58,16 +58,16 @@ func (l *lens) viewR(p *place, h float64) float64 {
 
 // shadeHeight returns the height at which a place has the given m.
 func (l *lens) shadeHeight(p *place, m float64) float64 {
-	t := m / l.scale
-	return l.datum + (float64(t*p.x)-p.y)/(p.ny-float64(t*p.nx))
+	return l.datum + (float64(m*p.x)-float64(l.scale*p.y))/(float64(l.scale*p.ny)-float64(m*p.nx))
 }
 
 // rangeHeight returns the height below the antenna at which a place has slant
 // range r; where it has none, the height of its least slant range.
 func (l *lens) rangeHeight(p *place, r float64) float64 {
-	n := p.nx*p.nx + p.ny*p.ny
-	b := p.x*p.nx + p.y*p.ny
-	return l.datum - (b+math.Sqrt(max(b*b-n*(p.x*p.x+p.y*p.y-r*r), 0)))/n
+	n := float64(p.nx*p.nx) + float64(p.ny*p.ny)
+	b := float64(p.x*p.nx) + float64(p.y*p.ny)
+	c := float64(p.x*p.x) + float64(p.y*p.y) - float64(r*r)
+	return l.datum - (b+math.Sqrt(max(float64(b*b)-float64(n*c), 0)))/n
 }
 
 // angle returns sine and cosine of the incidence at a place and height.
@@ -339,9 +339,16 @@ func (p *strip) viewLanes(l span) span {
 	for l.a < l.b && p.place(l.b-1).x <= 0 {
 		l.b--
 	}
+	if vectors && l == whole {
+		viewTrackVector(p)
+		return l
+	}
 	for k := l.a; k < l.b; k++ {
 		q := p.place(k)
 		p.m[k], p.r[k] = ln.view(&q, p.h[k])
+		if ln.fan != nil {
+			p.share[k] = ln.steepness(&q, p.h[k], p.r[k])
+		}
 	}
 	return l
 }
@@ -358,8 +365,11 @@ func (p *strip) seen(k int, h float64) (m, r float64) {
 
 // shade returns the height at which lane k reaches top.
 func (p *strip) shade(k int, top float64) float64 {
-	if p.f.ln.places == nil || math.IsInf(top, -1) {
+	if p.f.ln.places == nil {
 		return p.h[k] + (top - p.m[k])
+	}
+	if math.IsInf(top, -1) {
+		return top
 	}
 	q := p.place(k)
 	return p.f.ln.shadeHeight(&q, top)
@@ -367,46 +377,53 @@ func (p *strip) shade(k int, top float64) float64 {
 
 // equalRange returns the height at which lane k has slant range r.
 func (p *strip) equalRange(k int, r float64) float64 {
-	if p.f.ln.places == nil {
-		return p.h[k] + (p.r[k]-r)/p.f.ln.cos
+	ln := p.f.ln
+	switch {
+	case ln.places == nil:
+		return p.h[k] + (p.r[k]-r)/ln.cos
+	case ln.fan != nil:
+		return p.h[k] + (p.r[k]-r)/p.share[k]
 	}
 	q := p.place(k)
-	switch {
-	case p.f.ln.fan != nil && !math.IsInf(r, 0):
-		return p.h[k] + (p.r[k]-r)/p.f.ln.steepness(&q, p.h[k])
-	case math.IsInf(r, 1) || p.f.ln.fan != nil:
-		return -r
-	}
-	return p.f.ln.rangeHeight(&q, max(r, 0))
+	return ln.rangeHeight(&q, max(r, 0))
 }
 
-// forwardLines fills the lines of one row that the forward march sets.
-func (p *strip) forwardLines(row *lines, l span) {
-	st, ln := &p.fwd, p.f.ln
+// forwardTrack marches one row of a platform, all of its ground known.
+func (p *strip) forwardTrack(row *lines, l span) {
 	minShade, maxNearer, _ := p.f.limitLines()
+	if vectors && l == whole {
+		forwardTrackVector(p, row, minShade, maxNearer)
+		forwardMoveVector(p, row)
+		return
+	}
 	for k := l.a; k < l.b; k++ {
-		if ln.fan != nil || math.IsInf(st.top[k], -1) {
-			row.shade[k] = float32(max(p.shade(k, st.top[k]), minShade))
-			row.nearer[k] = float32(min(p.equalRange(k, st.most[k]), maxNearer))
-			continue
-		}
-		q := p.place(k)
-		row.shade[k] = float32(max(ln.shadeHeight(&q, st.top[k]), minShade))
-		row.nearer[k] = float32(min(ln.rangeHeight(&q, max(st.most[k], 0)), maxNearer))
+		row.shade[k] = float32(max(p.shade(k, p.fwd.top[k]), minShade))
+		row.nearer[k] = float32(min(p.equalRange(k, p.fwd.most[k]), maxNearer))
+	}
+	p.forwardMove(row, l)
+}
+
+// backwardTrack fills the lines of one row of a platform that the backward
+// march sets.
+func (p *strip) backwardTrack(row *lines, l span) {
+	_, _, minFarther := p.f.limitLines()
+	if vectors && l == whole {
+		backwardTrackVector(p, row, minFarther)
+		return
+	}
+	for k := l.a; k < l.b; k++ {
+		row.farther[k] = float32(max(p.equalRange(k, p.bwd.least[k]), minFarther))
 	}
 }
 
-// fromLines fills the margins of the lanes l in the DEM; the others have none.
+// fromLines fills the margins of a plane wave of the lanes l in the DEM; the
+// others have none.
 func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
-	ln, row := p.f.ln, p.row(u)
+	row := p.row(u)
 	for k := range marchLanes {
 		h := float32(p.h[k])
 		if k < l.a || k >= l.b {
 			h = float32(nan)
-		}
-		if ln.fan != nil && h == h {
-			q := p.place(k)
-			cos = float32(ln.steepness(&q, float64(h)))
 		}
 		r.h[k] = h
 		r.clear[k] = h - row.shade[k]
@@ -415,20 +432,35 @@ func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
 	}
 }
 
-// trackRanges fills the margins of range of a platform, in which slant range is
-// not linear.
-func (r *laneMargins) trackRanges(p *strip, u int) {
-	l := p.inDEM()
-	row := p.row(u)
-	for k := l.a; k < l.b; k++ {
+// fromTrack is fromLines for a platform, for which slant range is not linear
+// in height; the lines of a fan are taken as if it were.
+func (r *laneMargins) fromTrack(p *strip, u int, l span) {
+	ln, row := p.f.ln, p.row(u)
+	if vectors && l == whole {
+		trackMarginsVector(r, p, row)
+		return
+	}
+	for k := range marchLanes {
+		if k < l.a || k >= l.b {
+			x := float32(nan)
+			r.h[k], r.clear[k], r.near[k], r.far[k] = x, x, x, x
+			continue
+		}
+		h := float32(p.h[k])
+		r.h[k], r.clear[k] = h, h-row.shade[k]
+		if ln.fan != nil {
+			share := float32(p.share[k])
+			r.near[k] = float32((row.nearer[k] - h) * share)
+			r.far[k] = float32((h - row.farther[k]) * share)
+			continue
+		}
 		q := p.place(k)
-		nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
-		farther := p.f.ln.viewR(&q, float64(row.farther[k]))
-		r.near[k], r.far[k] = float32(p.r[k]-nearer), float32(farther-p.r[k])
+		r.near[k] = float32(p.r[k] - ln.viewR(&q, float64(row.nearer[k])))
+		r.far[k] = float32(ln.viewR(&q, float64(row.farther[k])) - p.r[k])
 	}
 }
 
-// trackRangesU is trackRanges with unknown terrain at its worst.
+// trackRangesU is fromTrack with unknown terrain at its worst.
 func (r *laneMargins) trackRangesU(p *strip, u int) {
 	l := p.inDEM()
 	bits := p.sure[u-p.ua]
