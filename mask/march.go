@@ -29,7 +29,9 @@ type strip struct {
 	// sure says of each row from ua on that no unknown terrain is in reach of
 	// it: bit 0 towards the radar, bit 1 away from it.
 	sure   []uint8
-	gentle []gentle  // by row from ua on
+	gentle []gentle // by row from ua on
+	graded int      // of a platform: the row of the lattice that bounds are of
+	bounds grade
 	at     []lateral // the same
 
 	fwd forwardState
@@ -338,6 +340,7 @@ type forwardState struct {
 	topU    byLane         // the same of unknown terrain at the ceiling
 	most    byLane         // largest slant range of surely lit ground so far
 	mostU   byLane         // the same of all ground that may be lit
+	doubt   byLane         // the same of ground that may be lit or not, or unknown
 	m, r    byLane         // the row before where it was hidden, else m is NaN
 	unknown [padLanes]bool // the row before was unknown terrain
 }
@@ -346,7 +349,7 @@ func (st *forwardState) reset() {
 	*st = forwardState{}
 	for k := range padLanes {
 		st.top[k], st.topU[k] = math.Inf(-1), math.Inf(-1)
-		st.most[k], st.mostU[k] = math.Inf(-1), math.Inf(-1)
+		st.most[k], st.mostU[k], st.doubt[k] = math.Inf(-1), math.Inf(-1), math.Inf(-1)
 		st.m[k] = nan
 	}
 }
@@ -408,6 +411,9 @@ func (p *strip) forward() {
 					last = u
 				}
 			}
+		}
+		if last < u && u-last <= f.near && p.freeForward(l) {
+			last = u - f.near - 1
 		}
 		if p.sure[u-p.ua] = 0; u-last > f.near {
 			p.sure[u-p.ua] = 1
@@ -507,7 +513,7 @@ func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 			high, _ := p.seen(k, lim.ceiling)
 			_, far := p.seen(k, lim.low)
 			st.topU[k] = max(st.topU[k], high)
-			st.mostU[k] = max(st.mostU[k], far)
+			st.mostU[k], st.doubt[k] = max(st.mostU[k], far), max(st.doubt[k], far)
 		}
 		tk := st.top[k]
 		row.shade[k] = float32(max(p.shade(k, tk), minShade))
@@ -533,6 +539,7 @@ func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 		if mk > st.topU[k] {
 			st.most[k] = max(st.most[k], best)
 		} else {
+			st.doubt[k] = max(st.doubt[k], best)
 			d = math.Copysign(d, -1)
 		}
 		row.dip[k] = float32(d)
@@ -542,6 +549,7 @@ func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 // backwardState is the march towards the radar, by lane.
 type backwardState struct {
 	least, leastU byLane // smallest slant range of lit ground so far
+	doubt         byLane // the same of ground that may be lit or not, or unknown
 	unknown       [padLanes]bool
 }
 
@@ -552,7 +560,7 @@ func (p *strip) backward(cells func(u int)) {
 	f, st := p.f, &p.bwd
 	*st = backwardState{}
 	for k := range padLanes {
-		st.least[k], st.leastU[k] = math.Inf(1), math.Inf(1)
+		st.least[k], st.leastU[k], st.doubt[k] = math.Inf(1), math.Inf(1), math.Inf(1)
 	}
 	last := p.ub + f.far + 1 // last row at which terrain was unknown or unsure
 	for u := p.ub - 1; u >= p.u0; u-- {
@@ -569,6 +577,9 @@ func (p *strip) backward(cells func(u int)) {
 					last = u
 				}
 			}
+		}
+		if last > u && last-u <= f.far && p.freeBackward(l) {
+			last = u + f.far + 1
 		}
 		if last-u > f.far {
 			p.sure[u-p.ua] |= 2
@@ -615,7 +626,9 @@ func (p *strip) backwardMove(row *lines, u int, l span) {
 		if e < st.leastU[k] {
 			st.leastU[k] = e
 		}
-		if e < st.least[k] && !math.Signbit(float64(d)) {
+		if math.Signbit(float64(d)) {
+			st.doubt[k] = min(st.doubt[k], e)
+		} else if e < st.least[k] {
 			st.least[k] = e
 		}
 	}
@@ -632,7 +645,7 @@ func (p *strip) backwardUnsure(row *lines, unsure *unsureLines, l span) {
 		if st.unknown[k] {
 			st.unknown[k] = false
 			_, near := p.seen(k, lim.ceiling)
-			st.leastU[k] = min(st.leastU[k], near)
+			st.leastU[k], st.doubt[k] = min(st.leastU[k], near), min(st.doubt[k], near)
 		}
 		row.farther[k] = float32(max(p.equalRange(k, st.least[k]), minFarther))
 		if unsure.farther[k] = row.farther[k]; st.leastU[k] != st.least[k] {

@@ -416,6 +416,51 @@ func (p *strip) backwardTrack(row *lines, l span) {
 	}
 }
 
+// spareRows are the rows' worths of ground by which unknown terrain must be out
+// of the way of all lanes to be out of that of the cells between them.
+const spareRows = 8
+
+// freeForward reports whether no unknown terrain that the forward march of a
+// platform has met matters to the row where it stands, nor to those that follow:
+// even the lowest ground is seen above it, and even the highest lies farther away.
+// The reach of the field, by which it would be, is that of the worst place.
+func (p *strip) freeForward(l span) bool {
+	ln, lim, st := p.f.ln, &p.f.lim, &p.fwd
+	if ln.places == nil || ln.fan != nil || l != whole {
+		return false
+	}
+	spare := spareRows * ln.minDS
+	mid := p.place(marchLanes / 2)
+	sin, cos := ln.angle(&mid, lim.low)
+	low := lim.low - spare*cos/sin
+	for k := range marchLanes {
+		q := p.place(k)
+		high, r := ln.view(&q, lim.high)
+		if st.unknown[k] || !(high < 0) || !(r > st.doubt[k]+spare) || !(ln.viewM(&q, low) > st.topU[k]) {
+			return false
+		}
+	}
+	return true
+}
+
+// freeBackward is freeForward for the backward march: even the lowest ground, and
+// the highest beside a fan's antenna, lies nearer to the radar.
+func (p *strip) freeBackward(l span) bool {
+	ln, lim, st := p.f.ln, &p.f.lim, &p.bwd
+	if ln.places == nil || l != whole {
+		return false
+	}
+	spare := spareRows * ln.minDS
+	for k := range marchLanes {
+		q := p.place(k)
+		r := max(ln.viewR(&q, lim.low), ln.viewR(&q, lim.high))
+		if st.unknown[k] || !(r < st.doubt[k]-spare) {
+			return false
+		}
+	}
+	return true
+}
+
 // fromLines fills the margins of a plane wave of the lanes l in the DEM; the
 // others have none.
 func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
