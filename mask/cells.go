@@ -257,13 +257,13 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
 	r.cos = float32(math.Abs(cosine))
 	l := p.inDEM()
-	if vectors && ln.places == nil && l == whole {
+	switch {
+	case ln.places != nil:
+		r.fromTrack(p, u, l)
+	case vectors && l == whole:
 		marginsVector(r, &p.h, p.row(u), float32(cosine))
-	} else {
+	default:
 		r.fromLines(p, u, l, float32(cosine))
-		if ln.places != nil && ln.fan == nil {
-			r.trackRanges(p, u)
-		}
 	}
 	if !r.exact {
 		roughness(&r.clear, &r.roughM, r.perM)
@@ -280,8 +280,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		h := float32(p.h[k])
 		r.clearU[k], r.nearU[k], r.farU[k] = r.clear[k], r.near[k], r.far[k]
 		if ln.fan != nil && h == h {
-			q := p.place(k)
-			cos = float32(ln.steepness(&q, float64(h)))
+			cos = float32(p.share[k])
 		}
 		if bits&1 == 0 {
 			r.clearU[k] = h - x.shade[k]
@@ -293,57 +292,6 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	}
 	if ln.places != nil && ln.fan == nil {
 		r.trackRangesU(p, u)
-	}
-}
-
-// fromLines fills the margins of the lanes l in the DEM; the others have none.
-func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
-	ln, row := p.f.ln, p.row(u)
-	for k := range marchLanes {
-		h := float32(p.h[k])
-		if k < l.a || k >= l.b {
-			h = float32(nan)
-		}
-		if ln.fan != nil && h == h {
-			q := p.place(k)
-			cos = float32(ln.steepness(&q, float64(h)))
-		}
-		r.h[k] = h
-		r.clear[k] = h - row.shade[k]
-		r.near[k] = float32((row.nearer[k] - h) * cos)
-		r.far[k] = float32((h - row.farther[k]) * cos)
-	}
-}
-
-// trackRanges fills the margins of range of a platform, in which slant range is
-// not linear.
-func (r *laneMargins) trackRanges(p *strip, u int) {
-	l := p.inDEM()
-	row := p.row(u)
-	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
-		nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
-		farther := p.f.ln.viewR(&q, float64(row.farther[k]))
-		r.near[k], r.far[k] = float32(p.r[k]-nearer), float32(farther-p.r[k])
-	}
-}
-
-// trackRangesU is trackRanges with unknown terrain at its worst.
-func (r *laneMargins) trackRangesU(p *strip, u int) {
-	l := p.inDEM()
-	bits := p.sure[u-p.ua]
-	row := p.unsureRow(u)
-	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
-		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
-		if bits&1 == 0 {
-			nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
-			r.nearU[k] = float32(p.r[k] - nearer)
-		}
-		if bits&2 == 0 {
-			farther := p.f.ln.viewR(&q, float64(row.farther[k]))
-			r.farU[k] = float32(farther - p.r[k])
-		}
 	}
 }
 
