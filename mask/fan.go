@@ -117,11 +117,16 @@ func (ln *lanes) placeAt(i, j int, p, q float64) place {
 const levelShare = 0.05
 
 // steepness returns by how much a metre of height of a line counts in slant
-// range at a place, the same for every use of the line. Ground above the
-// antenna moves away from it when it rises; the lines turn with it.
-func (l *lens) steepness(p *place, h float64) float64 {
-	_, cos := l.angle(p, h)
-	return max(math.Abs(cos), levelShare)
+// range at a place of height h and slant range r, the same for every use of the
+// line. Ground above the antenna moves away from it when it rises; the lines turn
+// with it. The normal of the ground is taken to lie in the range plane.
+func (l *lens) steepness(p *place, h, r float64) float64 {
+	h -= l.datum
+	x, y := p.x+float64(h*p.nx), p.y+float64(h*p.ny)
+	if cos := math.Abs(float64(x*p.nx)+float64(y*p.ny)) / r; cos > levelShare {
+		return cos
+	}
+	return levelShare
 }
 
 // laneRange returns the slant range of a line at lane k of row u of a fan.
@@ -136,5 +141,77 @@ func (q *quickWalk) laneRange(u, k int, line float32) float64 {
 	i := min(u/laneStep, ln.nu-2)
 	p := ln.placeAt(i, q.p.j, float64(u-laneStep*i)/laneStep, (lane-float64(q.p.k0+1))/laneStep)
 	_, r := ln.view(&p, h)
-	return r - (float64(line)-h)*ln.steepness(&p, h)
+	return r - (float64(line)-h)*ln.steepness(&p, h, r)
+}
+
+// fanGrade is grade for a fan, where the change of height above which the look
+// angle grows depends on the height: fall and perHeight times it. Ground above
+// the antenna must not fall too much either for its slant range to grow.
+type fanGrade struct {
+	rise, fall, perHeight float32
+	drift                 [2]float32
+}
+
+// fanShare is the part of a row by which the limits are stricter than those at the
+// lanes at the edges of the strip, since there is ground between them.
+const fanShare = 1e-3
+
+// gradeFan returns the bounds of the row at which the strip stands, those of its
+// outermost lanes with cells between them, at that row and the next one, and at the
+// lowest and the highest ground.
+func (p *strip) gradeFan(u int) (g fanGrade, ok bool) {
+	ln, lim := p.f.ln, &p.f.lim
+	n := min(u/laneStep, ln.nu-2)*ln.nk + p.j
+	rise := math.Inf(1)
+	falls, ds := [2]float64{math.Inf(-1), math.Inf(-1)}, 0.0
+	for e := range 2 {
+		a, d := p.place(1+laneStep*e), place{}.plus(ln.places[n+e+ln.nk].minus(ln.places[n+e]), 1./laneStep)
+		if ds = max(ds, d.x); a.x <= 0 || d.x <= 0 {
+			return g, false
+		}
+		g.drift[e] = float32((ln.v[n+e+ln.nk] - ln.v[n+e]) * (1. / laneStep))
+		for range 2 {
+			per := 1 / (a.ny*a.x - a.nx*a.y)
+			for i, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
+				x, y, dx, dy := a.x+h*a.nx, a.y+h*a.ny, d.x+h*d.nx, d.y+h*d.ny
+				falls[i] = max(falls[i], (dx*y-dy*x)*per)
+				if level := math.Abs(x*a.nx + y*a.ny); (x*dx + y*dy) < rise*level {
+					rise = (x*dx + y*dy) / level
+				}
+			}
+			a = a.plus(d, 1)
+		}
+	}
+	relief := max(lim.high-lim.low, 1)
+	spare := fanShare*ds + (1-gradeShare)*max(math.Abs(falls[0]), math.Abs(falls[1]))
+	per := max(falls[1]-falls[0], 0) / relief
+	g.rise, g.perHeight = float32(rise*gradeShare), float32(per)
+	g.fall = float32(falls[0] + spare - per*lim.low)
+	return g, rise > 0
+}
+
+// markFan is the work of strip.mark for a fan, with the heights a and b of the two
+// rows.
+func (p *strip) markFan(g *gentle, u int, a, b *byLane41) {
+	limits, ok := p.gradeFan(u)
+	if !ok {
+		return
+	}
+	// What a row is worth in height at equal slant range is not asked: the lines of
+	// a fan do not say it.
+	g.worthR = float32(math.Inf(-1))
+	g.worthM = -(limits.fall + float32(limits.perHeight*float32(p.f.lim.high)))
+	if vectors {
+		g.rises, g.lit = markFanVector(a, b, &limits)
+		return
+	}
+	for k := range patches {
+		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
+		if hi < limits.rise && lo > -limits.rise {
+			g.rises |= 1 << k
+		}
+		if lo > limits.fall+float32(limits.perHeight*max(a[k], a[k+1], b[k], b[k+1])) {
+			g.lit |= 1 << k
+		}
+	}
 }

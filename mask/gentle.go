@@ -11,6 +11,8 @@ type gentle struct {
 	// What the row is worth, at the least: metres of height at equal slant range,
 	// and at an equal look angle.
 	worthR, worthM float32
+	// The rise in a row from which ground is surely layover by its own slope.
+	steep float32
 }
 
 // grade is a bound on how the height may change along a range line over one row:
@@ -18,6 +20,7 @@ type gentle struct {
 // columns that lines move in that row, at the least and at the most.
 type grade struct {
 	rise, fall float32
+	most       float32 // the largest limit of slant range, where rise is the least
 	drift      [2]float32
 }
 
@@ -38,17 +41,23 @@ func (p *strip) gradeOf(u int) grade {
 	ds := min(ln.s[m]-ln.s[n], ln.s[m+1]-ln.s[n+1]) * (gradeShare / laneStep)
 	g := grade{drift: [2]float32{drift(n, m), drift(n+1, m+1)}}
 	g.rise, g.fall = float32(ds*ln.tan), float32(-ds*ln.cot)
+	g.most = g.rise
 	if ln.places != nil {
-		g.rise, g.fall = p.gradeSeen(n, m)
+		if i != p.graded { // the same for all rows of the lattice's cell
+			p.bounds.rise, p.bounds.fall, p.bounds.most = p.gradeSeen(n, m)
+			p.graded = i
+		}
+		g.rise, g.fall, g.most = p.bounds.rise, p.bounds.fall, p.bounds.most
 	}
 	return g
 }
 
 // gradeSeen finds the bounds of a platform: the least of those at the corners of
-// the cell of the lattice and at the lowest and the highest ground.
-func (p *strip) gradeSeen(n, m int) (rise, fall float32) {
+// the cell of the lattice and at the lowest and the highest ground; most is the
+// largest there of those that rise is the least of.
+func (p *strip) gradeSeen(n, m int) (rise, fall, most float32) {
 	ln, lim := p.f.ln, &p.f.lim
-	r, f := math.Inf(1), math.Inf(-1)
+	r, f, top := math.Inf(1), math.Inf(-1), math.Inf(-1)
 	for _, at := range [2][2]int{{n, m}, {n + 1, m + 1}} {
 		a, b := ln.places[at[0]], ln.places[at[1]]
 		for _, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
@@ -56,23 +65,27 @@ func (p *strip) gradeSeen(n, m int) (rise, fall float32) {
 			for _, q := range [2]place{a, b} {
 				x, y := q.x+h*q.nx, q.y+h*q.ny
 				if x <= 0 || x*q.nx+y*q.ny >= 0 || q.ny*x-q.nx*y <= 0 { // under the track, above the antenna
-					return float32(math.Inf(-1)), float32(math.Inf(1))
+					return float32(math.Inf(-1)), float32(math.Inf(1)), float32(math.Inf(1))
 				}
-				r = min(r, -(x*dx+y*dy)/(x*q.nx+y*q.ny))
+				limit := -(x*dx + y*dy) / (x*q.nx + y*q.ny)
+				r, top = min(r, limit), max(top, limit)
 				f = max(f, -(dy*x-y*dx)/(q.ny*x-q.nx*y))
 			}
 		}
 	}
-	return float32(r * gradeShare / laneStep), float32(f * gradeShare / laneStep)
+	return float32(r * gradeShare / laneStep), float32(f * gradeShare / laneStep), float32(top * gradeShare / laneStep)
 }
 
 // mark finds the gentle patches between row u, where the strip stands, and the
 // next one.
 func (p *strip) mark(u int) {
 	f := p.f
+	if u == p.ua {
+		p.graded = -1
+	}
 	g := &p.gentle[u-p.ua]
-	*g = gentle{base: int(math.Floor(p.edgeA)) - 1}
-	if f.ln.fan != nil || u+1 >= p.ub {
+	*g = gentle{base: int(math.Floor(p.edgeA)) - 1, steep: float32(math.Inf(1))}
+	if u+1 >= p.ub {
 		return
 	}
 	i := u - f.ua
@@ -81,14 +94,18 @@ func (p *strip) mark(u int) {
 		return
 	}
 	a, b := f.z[from:], f.z[to:]
+	if f.ln.fan != nil {
+		p.markFan(g, u, (*byLane41)(a), (*byLane41)(b))
+		return
+	}
 	limits := p.gradeOf(u)
-	g.worthR, g.worthM = limits.rise, -limits.fall
+	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.most*surely
 	if vectors {
 		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
 		return
 	}
 	for k := range patches {
-		lo, hi := limits.of(a[k], a[k+1], b[k], b[k+1])
+		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
 		if hi < limits.rise {
 			g.rises |= 1 << k
 		}
@@ -101,13 +118,13 @@ func (p *strip) mark(u int) {
 // byLane41 holds the heights of the corners of the patches.
 type byLane41 [patches + 1]float32
 
-// of returns the least and the most that the height may change along a line over
-// the patch between a0, a1 of one row and b0, b1 of the next.
-func (g *grade) of(a0, a1, b0, b1 float32) (lo, hi float32) {
+// changes returns the least and the most that the height may change along a line
+// over the patch between a0, a1 of one row and b0, b1 of the next.
+func changes(a0, a1, b0, b1 float32, drift *[2]float32) (lo, hi float32) {
 	e0, e1 := b0-a0, b1-a1
 	da, db := a1-a0, b1-b0
-	s, t := float32(da*g.drift[0]), float32(da*g.drift[1])
-	x, y := float32(db*g.drift[0]), float32(db*g.drift[1])
+	s, t := float32(da*drift[0]), float32(da*drift[1])
+	x, y := float32(db*drift[0]), float32(db*drift[1])
 	lo = min(e0, e1) + min(min(s, t), min(x, y))
 	hi = max(e0, e1) + max(max(s, t), max(x, y))
 	return lo, hi
@@ -140,8 +157,8 @@ func (g *gentle) lightening(va, vb float64) bool {
 	return c != 0 && g.lit&c == c
 }
 
-// vicinity are the places in a field's heights of a cell of a plane wave and of
-// those before and after it, the columns that lines move in a row, and the rise in
+// vicinity are the places in a field's heights of a cell and of those before and
+// after it, the columns that lines move in a row, and the rise in
 // a row from which ground is layover by its own slope.
 type vicinity struct {
 	before, here, after int
@@ -153,20 +170,20 @@ type vicinity struct {
 const surely = 1.02 / gradeShare
 
 // vicinity finds the neighbours of the cell (u, v); ok is false where it lies at the
-// end of the field, and for platforms.
+// end of the field.
 func (p *strip) vicinity(u, v int) (a vicinity, ok bool) {
 	f := p.f
 	i := u - f.ua
-	if f.ln.places != nil || u <= p.ua || u >= p.ub-1 {
+	if u <= p.ua || u >= p.ub-1 {
 		return a, false
 	}
 	a.before, a.here, a.after = (i-1)*f.width+v-f.at[i-1], i*f.width+v-f.at[i], (i+1)*f.width+v-f.at[i+1]
 	n := u - p.ua
-	a.drift, a.limit = float32(p.at[n+1].v0-p.at[n].v0), p.gentle[n].worthR*surely
+	a.drift, a.limit = float32(p.at[n+1].v0-p.at[n].v0), p.gentle[n].steep
 	return a, true
 }
 
-// steep reports whether a plane wave has layover at the cell (u, v) by its own
+// steep reports whether a look has layover at the cell (u, v) by its own
 // slope, the central differences.
 func (p *strip) steep(u, v int) bool {
 	a, ok := p.vicinity(u, v)
@@ -177,30 +194,4 @@ func (p *strip) steep(u, v int) bool {
 	along := float32(float32(z[a.after]-z[a.before]) * 0.5)
 	across := float32(float32(z[a.here+1]-z[a.here-1]) * 0.5)
 	return along+float32(across*a.drift) > a.limit
-}
-
-// along returns which of a bundle of cells, a bit each, from column v of row u on,
-// have a path over one row, from row a to row b next to it, on which all patches
-// are among those given for it. The strip stands at row u.
-func (p *strip) along(v, u, a, b int, good uint64) uint8 {
-	here, from, to := p.at[u-p.ua], p.at[a-p.ua], p.at[b-p.ua]
-	first := (float64(v) - here.v0) / here.dv
-	last := first + (bundle-1)/here.dv
-	c0, c1 := from.column(first), to.column(first)
-	d0, d1 := from.column(last)-(bundle-1), to.column(last)-(bundle-1)
-	lo := min(min(c0, c1), min(d0, d1))
-	hi := max(max(c0, c1), max(d0, d1))
-	if lo < 0 {
-		return 0
-	}
-	base := p.gentle[min(a, b)-p.ua].base
-	x, y := int(lo)-base, int(hi)-base
-	if x < 0 || y+bundle > patches {
-		return 0
-	}
-	out := good >> x
-	for x++; x <= y; x++ {
-		out &= good >> x
-	}
-	return uint8(out)
 }

@@ -21,6 +21,7 @@ type strip struct {
 	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
 	p0, dp         place   // of a platform: place of lane 0, change for one lane
 	h, m, r        byLane
+	share          byLane // of a fan: see lens.steepness
 
 	// What the marches find, by row from ua to ub and lane.
 	lines  []lines
@@ -28,7 +29,9 @@ type strip struct {
 	// sure says of each row from ua on that no unknown terrain is in reach of
 	// it: bit 0 towards the radar, bit 1 away from it.
 	sure   []uint8
-	gentle []gentle  // by row from ua on
+	gentle []gentle // by row from ua on
+	graded int      // of a platform: the row of the lattice that bounds are of
+	bounds grade
 	at     []lateral // the same
 
 	fwd forwardState
@@ -323,57 +326,6 @@ func (p *strip) middleHeight() float64 {
 	return p.f.ln.datum
 }
 
-// viewLanes fills m and r as a platform sees them and returns the lanes that
-// count: ground under the track and beyond it is none of the look's.
-func (p *strip) viewLanes(l span) span {
-	ln := p.f.ln
-	for l.a < l.b && p.place(l.a).x <= 0 {
-		l.a++
-	}
-	for l.a < l.b && p.place(l.b-1).x <= 0 {
-		l.b--
-	}
-	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
-		p.m[k], p.r[k] = ln.view(&q, p.h[k])
-	}
-	return l
-}
-
-// seen returns m and r of a height at lane k of the row that is sampled.
-func (p *strip) seen(k int, h float64) (m, r float64) {
-	if p.f.ln.places == nil {
-		d := h - p.h[k]
-		return p.m[k] + d, p.r[k] - float64(d*p.f.ln.cos)
-	}
-	q := p.place(k)
-	return p.f.ln.view(&q, h)
-}
-
-// shade returns the height at which lane k reaches top.
-func (p *strip) shade(k int, top float64) float64 {
-	if p.f.ln.places == nil || math.IsInf(top, -1) {
-		return p.h[k] + (top - p.m[k])
-	}
-	q := p.place(k)
-	return p.f.ln.shadeHeight(&q, top)
-}
-
-// equalRange returns the height at which lane k has slant range r.
-func (p *strip) equalRange(k int, r float64) float64 {
-	if p.f.ln.places == nil {
-		return p.h[k] + (p.r[k]-r)/p.f.ln.cos
-	}
-	q := p.place(k)
-	switch {
-	case p.f.ln.fan != nil && !math.IsInf(r, 0):
-		return p.h[k] + (p.r[k]-r)/p.f.ln.steepness(&q, p.h[k])
-	case math.IsInf(r, 1) || p.f.ln.fan != nil:
-		return -r
-	}
-	return p.f.ln.rangeHeight(&q, max(r, 0))
-}
-
 // laneNumbers holds the numbers of the lanes.
 var laneNumbers = func() (n byLane) {
 	for k := range n {
@@ -388,6 +340,7 @@ type forwardState struct {
 	topU    byLane         // the same of unknown terrain at the ceiling
 	most    byLane         // largest slant range of surely lit ground so far
 	mostU   byLane         // the same of all ground that may be lit
+	doubt   byLane         // the same of ground that may be lit or not, or unknown
 	m, r    byLane         // the row before where it was hidden, else m is NaN
 	unknown [padLanes]bool // the row before was unknown terrain
 }
@@ -396,7 +349,7 @@ func (st *forwardState) reset() {
 	*st = forwardState{}
 	for k := range padLanes {
 		st.top[k], st.topU[k] = math.Inf(-1), math.Inf(-1)
-		st.most[k], st.mostU[k] = math.Inf(-1), math.Inf(-1)
+		st.most[k], st.mostU[k], st.doubt[k] = math.Inf(-1), math.Inf(-1), math.Inf(-1)
 		st.m[k] = nan
 	}
 }
@@ -459,6 +412,9 @@ func (p *strip) forward() {
 				}
 			}
 		}
+		if last < u && u-last <= f.near && p.freeForward(l) {
+			last = u - f.near - 1
+		}
 		if p.sure[u-p.ua] = 0; u-last > f.near {
 			p.sure[u-p.ua] = 1
 			p.forwardSure(row, l)
@@ -488,8 +444,7 @@ func (p *strip) forwardSure(row *lines, l span) {
 	minShade, maxNearer, _ := p.f.limitLines()
 	switch {
 	case ln.places != nil:
-		p.forwardLines(row, l)
-		p.forwardMove(row, l)
+		p.forwardTrack(row, l)
 	case vectors && l == whole:
 		forwardVector(p, row, minShade, maxNearer, 1/ln.cos)
 	default:
@@ -525,32 +480,19 @@ func (p *strip) forwardMove(row *lines, l span) {
 	}
 }
 
-// forwardLines fills the lines of one row that the forward march sets.
-func (p *strip) forwardLines(row *lines, l span) {
-	st, ln := &p.fwd, p.f.ln
-	minShade, maxNearer, _ := p.f.limitLines()
-	for k := l.a; k < l.b; k++ {
-		if ln.fan != nil || math.IsInf(st.top[k], -1) {
-			row.shade[k] = float32(max(p.shade(k, st.top[k]), minShade))
-			row.nearer[k] = float32(min(p.equalRange(k, st.most[k]), maxNearer))
-			continue
-		}
-		q := p.place(k)
-		row.shade[k] = float32(max(ln.shadeHeight(&q, st.top[k]), minShade))
-		row.nearer[k] = float32(min(ln.rangeHeight(&q, max(st.most[k], 0)), maxNearer))
-	}
-}
-
 // edge returns, for lane k that was hidden at the row before and is lit at m,
 // r, the largest slant range of the lit ground between the two rows, and how
 // much below r the smallest lies.
 func (st *forwardState) edge(k int, m, r float64) (best, dip float64) {
 	edge := st.r[k] + float64((st.top[k]-st.m[k])/(m-st.m[k])*(r-st.r[k]))
 	st.m[k] = nan
-	if edge > r {
+	switch {
+	case edge > r:
 		return edge, 0
+	case edge <= r:
+		return r, r - edge
 	}
-	return r, r - edge
+	return r, 0
 }
 
 // forwardUnsure marches one row where terrain may be unknown.
@@ -571,7 +513,7 @@ func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 			high, _ := p.seen(k, lim.ceiling)
 			_, far := p.seen(k, lim.low)
 			st.topU[k] = max(st.topU[k], high)
-			st.mostU[k] = max(st.mostU[k], far)
+			st.mostU[k], st.doubt[k] = max(st.mostU[k], far), max(st.doubt[k], far)
 		}
 		tk := st.top[k]
 		row.shade[k] = float32(max(p.shade(k, tk), minShade))
@@ -597,6 +539,7 @@ func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 		if mk > st.topU[k] {
 			st.most[k] = max(st.most[k], best)
 		} else {
+			st.doubt[k] = max(st.doubt[k], best)
 			d = math.Copysign(d, -1)
 		}
 		row.dip[k] = float32(d)
@@ -606,6 +549,7 @@ func (p *strip) forwardUnsure(row *lines, unsure *unsureLines, l span) {
 // backwardState is the march towards the radar, by lane.
 type backwardState struct {
 	least, leastU byLane // smallest slant range of lit ground so far
+	doubt         byLane // the same of ground that may be lit or not, or unknown
 	unknown       [padLanes]bool
 }
 
@@ -616,7 +560,7 @@ func (p *strip) backward(cells func(u int)) {
 	f, st := p.f, &p.bwd
 	*st = backwardState{}
 	for k := range padLanes {
-		st.least[k], st.leastU[k] = math.Inf(1), math.Inf(1)
+		st.least[k], st.leastU[k], st.doubt[k] = math.Inf(1), math.Inf(1), math.Inf(1)
 	}
 	last := p.ub + f.far + 1 // last row at which terrain was unknown or unsure
 	for u := p.ub - 1; u >= p.u0; u-- {
@@ -633,6 +577,9 @@ func (p *strip) backward(cells func(u int)) {
 					last = u
 				}
 			}
+		}
+		if last > u && last-u <= f.far && p.freeBackward(l) {
+			last = u + f.far + 1
 		}
 		if last-u > f.far {
 			p.sure[u-p.ua] |= 2
@@ -653,9 +600,7 @@ func (p *strip) backwardSure(row *lines, l span) {
 	perCos := 1 / ln.cos
 	switch {
 	case ln.places != nil:
-		for k := l.a; k < l.b; k++ {
-			row.farther[k] = float32(max(p.equalRange(k, st.least[k]), minFarther))
-		}
+		p.backwardTrack(row, l)
 	case vectors && l == whole:
 		backwardVector(p, row, minFarther, perCos)
 	default:
@@ -681,7 +626,9 @@ func (p *strip) backwardMove(row *lines, u int, l span) {
 		if e < st.leastU[k] {
 			st.leastU[k] = e
 		}
-		if e < st.least[k] && !math.Signbit(float64(d)) {
+		if math.Signbit(float64(d)) {
+			st.doubt[k] = min(st.doubt[k], e)
+		} else if e < st.least[k] {
 			st.least[k] = e
 		}
 	}
@@ -698,7 +645,7 @@ func (p *strip) backwardUnsure(row *lines, unsure *unsureLines, l span) {
 		if st.unknown[k] {
 			st.unknown[k] = false
 			_, near := p.seen(k, lim.ceiling)
-			st.leastU[k] = min(st.leastU[k], near)
+			st.leastU[k], st.doubt[k] = min(st.leastU[k], near), min(st.doubt[k], near)
 		}
 		row.farther[k] = float32(max(p.equalRange(k, st.least[k]), minFarther))
 		if unsure.farther[k] = row.farther[k]; st.leastU[k] != st.least[k] {

@@ -16,6 +16,7 @@ type margins struct {
 type ray struct {
 	ln             *lanes
 	k              float64
+	j              int     // column of the lattice
 	u0, v0         int     // the point itself, met without rounding
 	from, to       int     // the rows for which the following hold
 	va, dv, sa, ds float64 // at row from, and the change for one row
@@ -24,7 +25,21 @@ type ray struct {
 }
 
 func newRay(ln *lanes, u, v int) ray {
-	return ray{ln: ln, k: ln.lane(float64(u), float64(v)), u0: u, v0: v, from: -1, to: -2}
+	y := ln.rayAt(float64(u), float64(v))
+	y.u0, y.v0 = u, v
+	return y
+}
+
+// rayAt is newRay for any place.
+func (ln *lanes) rayAt(u, v float64) ray {
+	k := ln.lane(u, v)
+	j := min(max((int(math.Floor(k))-ln.first)/laneStep, 0), ln.nk-2)
+	return ray{ln: ln, k: k, j: j, u0: -1, from: -1, to: -2}
+}
+
+// ray is newRay for a cell between the lanes of a strip, on its lane x.
+func (p *strip) ray(u, v int, x float64) ray {
+	return ray{ln: p.f.ln, k: float64(p.k0) + x, j: p.j, u0: u, v0: v, from: -1, to: -2}
 }
 
 func (y *ray) at(u int) (v, s float64) {
@@ -44,9 +59,8 @@ func (y *ray) enter(u int) {
 	ln := y.ln
 	i := min(u/laneStep, ln.nu-2)
 	y.from, y.to = laneStep*i, laneStep*(i+1)
-	j := min(max((int(math.Floor(y.k))-ln.first)/laneStep, 0), ln.nk-2)
-	q := (y.k - float64(ln.first+laneStep*j)) / laneStep
-	n := i*ln.nk + j
+	q := (y.k - float64(ln.first+laneStep*y.j)) / laneStep
+	n := i*ln.nk + y.j
 	at := func(a []float64, n int) float64 { return a[n] + float64(q*(a[n+1]-a[n])) }
 	y.sa, y.va = at(ln.s, n), at(ln.v, n)
 	y.ds, y.dv = (at(ln.s, n+ln.nk)-y.sa)/laneStep, (at(ln.v, n+ln.nk)-y.va)/laneStep
@@ -164,6 +178,7 @@ type walker struct {
 	seq    []point // samples towards the radar, nearest to the point first
 	stack  []int   // those that no sample nearer to the radar hides
 	pieces []point // the samples of one row step
+	cuts   []cut   // the same in a quick walk
 }
 
 // settle returns the exact margins of the cell (u, v), as far as the field's

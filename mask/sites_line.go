@@ -35,7 +35,7 @@ func (l *line) trace(f *field, u, v float64, nearRows, farRows int) (ok bool) {
 		return false
 	}
 	l.f = f
-	l.y = ray{ln: f.ln, k: f.ln.lane(u, v), u0: -1, from: -1, to: -2}
+	l.y = f.ln.rayAt(u, v)
 	i := min(math.Floor(u), float64(f.ub-2))
 	h := f.surface(u, v)
 	_, s0 := l.y.at(int(i))

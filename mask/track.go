@@ -58,16 +58,16 @@ func (l *lens) viewR(p *place, h float64) float64 {
 
 // shadeHeight returns the height at which a place has the given m.
 func (l *lens) shadeHeight(p *place, m float64) float64 {
-	t := m / l.scale
-	return l.datum + (float64(t*p.x)-p.y)/(p.ny-float64(t*p.nx))
+	return l.datum + (float64(m*p.x)-float64(l.scale*p.y))/(float64(l.scale*p.ny)-float64(m*p.nx))
 }
 
 // rangeHeight returns the height below the antenna at which a place has slant
 // range r; where it has none, the height of its least slant range.
 func (l *lens) rangeHeight(p *place, r float64) float64 {
-	n := p.nx*p.nx + p.ny*p.ny
-	b := p.x*p.nx + p.y*p.ny
-	return l.datum - (b+math.Sqrt(max(b*b-n*(p.x*p.x+p.y*p.y-r*r), 0)))/n
+	n := float64(p.nx*p.nx) + float64(p.ny*p.ny)
+	b := float64(p.x*p.nx) + float64(p.y*p.ny)
+	c := float64(p.x*p.x) + float64(p.y*p.y) - float64(r*r)
+	return l.datum - (b+math.Sqrt(max(float64(b*b)-float64(n*c), 0)))/n
 }
 
 // angle returns sine and cosine of the incidence at a place and height.
@@ -327,4 +327,199 @@ func (tr *tracker) bound(lim dem.Range) {
 	ln.rowM = ln.minDS * max(minCos, 0.01) / sinOf(max(minCos, 0))
 	ln.rowR = ln.minDS * sinOf(maxCos)
 	ln.rowH = ln.minDS / ln.cotMost
+}
+
+// viewLanes fills m and r as a platform sees them and returns the lanes that
+// count: ground under the track and beyond it is none of the look's.
+func (p *strip) viewLanes(l span) span {
+	ln := p.f.ln
+	for l.a < l.b && p.place(l.a).x <= 0 {
+		l.a++
+	}
+	for l.a < l.b && p.place(l.b-1).x <= 0 {
+		l.b--
+	}
+	if vectors && l == whole {
+		viewTrackVector(p)
+		return l
+	}
+	for k := l.a; k < l.b; k++ {
+		q := p.place(k)
+		p.m[k], p.r[k] = ln.view(&q, p.h[k])
+		if ln.fan != nil {
+			p.share[k] = ln.steepness(&q, p.h[k], p.r[k])
+		}
+	}
+	return l
+}
+
+// seen returns m and r of a height at lane k of the row that is sampled.
+func (p *strip) seen(k int, h float64) (m, r float64) {
+	if p.f.ln.places == nil {
+		d := h - p.h[k]
+		return p.m[k] + d, p.r[k] - float64(d*p.f.ln.cos)
+	}
+	q := p.place(k)
+	return p.f.ln.view(&q, h)
+}
+
+// shade returns the height at which lane k reaches top.
+func (p *strip) shade(k int, top float64) float64 {
+	if p.f.ln.places == nil {
+		return p.h[k] + (top - p.m[k])
+	}
+	if math.IsInf(top, -1) {
+		return top
+	}
+	q := p.place(k)
+	return p.f.ln.shadeHeight(&q, top)
+}
+
+// equalRange returns the height at which lane k has slant range r.
+func (p *strip) equalRange(k int, r float64) float64 {
+	ln := p.f.ln
+	switch {
+	case ln.places == nil:
+		return p.h[k] + (p.r[k]-r)/ln.cos
+	case ln.fan != nil:
+		return p.h[k] + (p.r[k]-r)/p.share[k]
+	}
+	q := p.place(k)
+	return ln.rangeHeight(&q, max(r, 0))
+}
+
+// forwardTrack marches one row of a platform, all of its ground known.
+func (p *strip) forwardTrack(row *lines, l span) {
+	minShade, maxNearer, _ := p.f.limitLines()
+	if vectors && l == whole {
+		forwardTrackVector(p, row, minShade, maxNearer)
+		forwardMoveVector(p, row)
+		return
+	}
+	for k := l.a; k < l.b; k++ {
+		row.shade[k] = float32(max(p.shade(k, p.fwd.top[k]), minShade))
+		row.nearer[k] = float32(min(p.equalRange(k, p.fwd.most[k]), maxNearer))
+	}
+	p.forwardMove(row, l)
+}
+
+// backwardTrack fills the lines of one row of a platform that the backward
+// march sets.
+func (p *strip) backwardTrack(row *lines, l span) {
+	_, _, minFarther := p.f.limitLines()
+	if vectors && l == whole {
+		backwardTrackVector(p, row, minFarther)
+		return
+	}
+	for k := l.a; k < l.b; k++ {
+		row.farther[k] = float32(max(p.equalRange(k, p.bwd.least[k]), minFarther))
+	}
+}
+
+// spareRows are the rows' worths of ground by which unknown terrain must be out
+// of the way of all lanes to be out of that of the cells between them.
+const spareRows = 8
+
+// freeForward reports whether no unknown terrain that the forward march of a
+// platform has met matters to the row where it stands, nor to those that follow:
+// even the lowest ground is seen above it, and even the highest lies farther away.
+// The reach of the field, by which it would be, is that of the worst place.
+func (p *strip) freeForward(l span) bool {
+	ln, lim, st := p.f.ln, &p.f.lim, &p.fwd
+	if ln.places == nil || ln.fan != nil || l != whole {
+		return false
+	}
+	spare := spareRows * ln.minDS
+	mid := p.place(marchLanes / 2)
+	sin, cos := ln.angle(&mid, lim.low)
+	low := lim.low - spare*cos/sin
+	for k := range marchLanes {
+		q := p.place(k)
+		high, r := ln.view(&q, lim.high)
+		if st.unknown[k] || !(high < 0) || !(r > st.doubt[k]+spare) || !(ln.viewM(&q, low) > st.topU[k]) {
+			return false
+		}
+	}
+	return true
+}
+
+// freeBackward is freeForward for the backward march: even the lowest ground, and
+// the highest beside a fan's antenna, lies nearer to the radar.
+func (p *strip) freeBackward(l span) bool {
+	ln, lim, st := p.f.ln, &p.f.lim, &p.bwd
+	if ln.places == nil || l != whole {
+		return false
+	}
+	spare := spareRows * ln.minDS
+	for k := range marchLanes {
+		q := p.place(k)
+		r := max(ln.viewR(&q, lim.low), ln.viewR(&q, lim.high))
+		if st.unknown[k] || !(r < st.doubt[k]-spare) {
+			return false
+		}
+	}
+	return true
+}
+
+// fromLines fills the margins of a plane wave of the lanes l in the DEM; the
+// others have none.
+func (r *laneMargins) fromLines(p *strip, u int, l span, cos float32) {
+	row := p.row(u)
+	for k := range marchLanes {
+		h := float32(p.h[k])
+		if k < l.a || k >= l.b {
+			h = float32(nan)
+		}
+		r.h[k] = h
+		r.clear[k] = h - row.shade[k]
+		r.near[k] = float32((row.nearer[k] - h) * cos)
+		r.far[k] = float32((h - row.farther[k]) * cos)
+	}
+}
+
+// fromTrack is fromLines for a platform, for which slant range is not linear
+// in height; the lines of a fan are taken as if it were.
+func (r *laneMargins) fromTrack(p *strip, u int, l span) {
+	ln, row := p.f.ln, p.row(u)
+	if vectors && l == whole {
+		trackMarginsVector(r, p, row)
+		return
+	}
+	for k := range marchLanes {
+		if k < l.a || k >= l.b {
+			x := float32(nan)
+			r.h[k], r.clear[k], r.near[k], r.far[k] = x, x, x, x
+			continue
+		}
+		h := float32(p.h[k])
+		r.h[k], r.clear[k] = h, h-row.shade[k]
+		if ln.fan != nil {
+			share := float32(p.share[k])
+			r.near[k] = float32((row.nearer[k] - h) * share)
+			r.far[k] = float32((h - row.farther[k]) * share)
+			continue
+		}
+		q := p.place(k)
+		r.near[k] = float32(p.r[k] - ln.viewR(&q, float64(row.nearer[k])))
+		r.far[k] = float32(ln.viewR(&q, float64(row.farther[k])) - p.r[k])
+	}
+}
+
+// trackRangesU is fromTrack with unknown terrain at its worst.
+func (r *laneMargins) trackRangesU(p *strip, u int) {
+	l := p.inDEM()
+	bits := p.sure[u-p.ua]
+	row := p.unsureRow(u)
+	for k := l.a; k < l.b; k++ {
+		q := p.place(k)
+		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
+		if bits&1 == 0 {
+			nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
+			r.nearU[k] = float32(p.r[k] - nearer)
+		}
+		if bits&2 == 0 {
+			farther := p.f.ln.viewR(&q, float64(row.farther[k]))
+			r.farU[k] = float32(farther - p.r[k])
+		}
+	}
 }

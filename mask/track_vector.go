@@ -1,0 +1,150 @@
+//go:build goexperiment.simd && amd64 && !go1.27
+
+package mask
+
+import (
+	"math"
+
+	"simd/archsimd"
+)
+
+// The marches of a platform on vectors of four lanes: what the loops of track.go do
+// where all lanes lie in the DEM and none under the track.
+
+// between4 is a number of lanes k to k+3 that changes by d from each to the next.
+func between4(a, d float64, k int) archsimd.Float64x4 {
+	return four(a).Add(four(d).Mul(lanes4(&laneNumbers, k)))
+}
+
+func absolute4(x archsimd.Float64x4) archsimd.Float64x4 {
+	return x.AsInt64x4().And(archsimd.BroadcastInt64x4(math.MaxInt64)).AsFloat64x4()
+}
+
+func lanes4of32(a *byLane32, k int) archsimd.Float64x4 {
+	return archsimd.LoadFloat32x4((*[4]float32)(a[k:])).ConvertToFloat64()
+}
+
+// viewTrackVector is strip.viewLanes.
+func viewTrackVector(p *strip) {
+	ln := p.f.ln
+	scale, datum, zero := four(ln.scale), four(ln.datum), four(0)
+	none, least := four(math.Inf(-1)), four(levelShare)
+	for k := 0; k < marchVectors; k += 4 {
+		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		h := lanes4(&p.h, k).Sub(datum)
+		x := between4(p.p0.x, p.dp.x, k).Add(h.Mul(nx))
+		y := between4(p.p0.y, p.dp.y, k).Add(h.Mul(ny))
+		r := x.Mul(x).Add(y.Mul(y)).Sqrt()
+		under := x.LessEqual(zero)
+		put4(&p.m, k, none.Merge(scale.Mul(y).Div(x), under))
+		r = none.Merge(r, under)
+		put4(&p.r, k, r)
+		if ln.fan != nil {
+			cos := absolute4(x.Mul(nx).Add(y.Mul(ny))).Div(r)
+			put4(&p.share, k, cos.Merge(least, cos.Greater(least)))
+		}
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// forwardTrackVector fills the lines of strip.forwardTrack.
+func forwardTrackVector(p *strip, row *lines, minShade, maxNearer float64) {
+	ln, st := p.f.ln, &p.fwd
+	scale, datum, lowest, highest := four(ln.scale), four(ln.datum), four(minShade), four(maxNearer)
+	none, zero := four(math.Inf(-1)), four(0)
+	for k := 0; k < marchVectors; k += 4 {
+		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
+		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
+		shade := datum.Add(top.Mul(x).Sub(scale.Mul(y)).Div(scale.Mul(ny).Sub(top.Mul(nx))))
+		put4as32(&row.shade, k, shade.Merge(lowest, top.Greater(none)).Max(lowest))
+		if ln.fan != nil {
+			nearer := lanes4(&p.h, k).Add(lanes4(&p.r, k).Sub(most).Div(lanes4(&p.share, k)))
+			put4as32(&row.nearer, k, nearer.Min(highest))
+			continue
+		}
+		r := most.Max(zero)
+		n, b := nx.Mul(nx).Add(ny.Mul(ny)), x.Mul(nx).Add(y.Mul(ny))
+		c := x.Mul(x).Add(y.Mul(y)).Sub(r.Mul(r))
+		root := b.Mul(b).Sub(n.Mul(c)).Max(zero).Sqrt()
+		put4as32(&row.nearer, k, datum.Sub(b.Add(root).Div(n)).Min(highest))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// forwardMoveVector is strip.forwardMove.
+func forwardMoveVector(p *strip, row *lines) {
+	st := &p.fwd
+	none, zero := four(nan), four(0)
+	for k := 0; k < marchVectors; k += 4 {
+		m, r := lanes4(&p.m, k), lanes4(&p.r, k)
+		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
+		bm, br := lanes4(&st.m, k), lanes4(&st.r, k)
+		edge := br.Add(top.Sub(bm).Div(m.Sub(bm)).Mul(r.Sub(br)))
+		hidden := m.LessEqual(top)
+		dip := r.Sub(edge).Merge(zero, edge.LessEqual(r))
+		put4as32(&row.dip, k, none.Merge(dip, hidden))
+		best := edge.Merge(r, edge.Greater(r))
+		put4(&st.most, k, most.Merge(best.Merge(most, best.Greater(most)), hidden))
+		put4(&st.top, k, top.Merge(m, hidden))
+		put4(&st.m, k, m.Merge(none, hidden))
+		put4(&st.r, k, r)
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// backwardTrackVector is strip.backwardTrack.
+func backwardTrackVector(p *strip, row *lines, minFarther float64) {
+	ln, st := p.f.ln, &p.bwd
+	datum, lowest, zero := four(ln.datum), four(minFarther), four(0)
+	for k := 0; k < marchVectors; k += 4 {
+		r := lanes4(&st.least, k)
+		if ln.fan != nil {
+			farther := lanes4(&p.h, k).Add(lanes4(&p.r, k).Sub(r).Div(lanes4(&p.share, k)))
+			put4as32(&row.farther, k, farther.Max(lowest))
+			continue
+		}
+		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
+		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		r = r.Max(zero)
+		n, b := nx.Mul(nx).Add(ny.Mul(ny)), x.Mul(nx).Add(y.Mul(ny))
+		c := x.Mul(x).Add(y.Mul(y)).Sub(r.Mul(r))
+		root := b.Mul(b).Sub(n.Mul(c)).Max(zero).Sqrt()
+		put4as32(&row.farther, k, datum.Sub(b.Add(root).Div(n)).Max(lowest))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// trackMarginsVector is laneMargins.fromTrack.
+func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
+	ln := p.f.ln
+	var share byLane32
+	for k := 0; k < marchVectors; k += 4 {
+		put4as32(&r.h, k, lanes4(&p.h, k))
+		if ln.fan != nil {
+			put4as32(&share, k, lanes4(&p.share, k))
+			continue
+		}
+		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
+		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		datum, zero, none := four(ln.datum), four(0), four(math.Inf(-1))
+		rangeOf := func(line *byLane32) archsimd.Float64x4 {
+			h := lanes4of32(line, k).Sub(datum)
+			x, y := x.Add(h.Mul(nx)), y.Add(h.Mul(ny))
+			return none.Merge(x.Mul(x).Add(y.Mul(y)).Sqrt(), x.LessEqual(zero))
+		}
+		own := lanes4(&p.r, k)
+		put4as32(&r.near, k, own.Sub(rangeOf(&row.nearer)))
+		put4as32(&r.far, k, rangeOf(&row.farther).Sub(own))
+	}
+	for k := 0; k < padLanes; k += 8 {
+		h := lanes8(&r.h, k)
+		put8(&r.clear, k, h.Sub(lanes8(&row.shade, k)))
+		if ln.fan != nil {
+			s := lanes8(&share, k)
+			put8(&r.near, k, lanes8(&row.nearer, k).Sub(h).Mul(s))
+			put8(&r.far, k, h.Sub(lanes8(&row.farther, k)).Mul(s))
+		}
+	}
+	archsimd.ClearAVXUpperBits()
+}
