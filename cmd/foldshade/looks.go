@@ -137,7 +137,8 @@ type spot struct {
 
 // neededReach says how far terrain outside an area can matter to it, metres of
 // ground; null where there is no end to it. On the radar's side the two reaches
-// add up: what may share a cell's slant range may itself be hidden.
+// add up: what may share a cell's slant range may itself be hidden. Of a tripod all
+// ground up to the radar can matter.
 type neededReach struct {
 	Relief    float64    `json:"relief"`
 	Shadow    *float64   `json:"shadow_towards_radar"`
@@ -231,11 +232,14 @@ func (j *looksJob) overDEM(o *geometryOf, src *raster.DEM, found dem.Range) (loo
 		l.add(o, "place", position(src, row, col, middle))
 	}
 	relief := found.Max - found.Min
-	if s := o.over(g, found.Min, found.Max, relief); s.seen > 0 && o.look.Kind != geometry.Tripod {
+	if s := o.over(g, found.Min, found.Max, relief); s.seen > 0 {
 		l.Reach = &neededReach{
 			Relief: rounded(relief, 3), Shadow: finite(s.reach.shadow, 1), Towards: finite(s.reach.towards, 1), Away: finite(s.reach.away, 1),
 			NearSide: finite(s.reach.shadow+s.reach.towards, 1), FarSide: finite(s.reach.away, 1),
 			Incidence: [2]float64{rounded(s.least.Degrees(), 4), rounded(s.most.Degrees(), 4)},
+		}
+		if o.look.Kind == geometry.Tripod { // nothing lies beyond the radar
+			l.Reach.Towards, l.Reach.NearSide = l.Reach.Shadow, l.Reach.Shadow
 		}
 	}
 	return l, nil
@@ -318,12 +322,17 @@ func (l *lookGeometry) print(w io.Writer) {
 		pairs = append(pairs, [2]string{"time", l.UTC + ", " + l.Local + " local mean solar time"})
 	}
 	if r := l.Reach; r != nil {
+		near := text(r.NearSide, "%.0f m") + " beyond the area on the radar's side"
+		if l.Kind == string(geometry.Tripod) {
+			near = "all between the radar and the area, " + text(r.NearSide, "%.0f m") + " at most"
+		}
+		if l.Kind != string(geometry.Tripod) { // which looks at every angle, from its own foot on
+			pairs = append(pairs, [2]string{"incidence", fmt.Sprintf("%.3f to %.3f degrees over the DEM", r.Incidence[0], r.Incidence[1])})
+		}
 		pairs = append(pairs,
-			[2]string{"incidence", fmt.Sprintf("%.3f to %.3f degrees over the DEM", r.Incidence[0], r.Incidence[1])},
 			[2]string{"reach", fmt.Sprintf("shadow %s, layover %s towards the radar and %s away from it, relief %.0f m",
 				text(r.Shadow, "%.0f m"), text(r.Towards, "%.0f m"), text(r.Away, "%.0f m"), r.Relief)},
-			[2]string{"DEM needed", fmt.Sprintf("%s beyond the area on the radar's side, %s on the far side",
-				text(r.NearSide, "%.0f m"), text(r.FarSide, "%.0f m"))})
+			[2]string{"DEM needed", fmt.Sprintf("%s, %s on the far side", near, text(r.FarSide, "%.0f m"))})
 	}
 	printPairs(w, pairs)
 	fmt.Fprintln(w)

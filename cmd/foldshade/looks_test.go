@@ -88,6 +88,27 @@ func sphereRange(antenna, angle, height float64) float64 {
 	return math.Sqrt(a*a + b*b - 2*a*b*math.Cos(angle))
 }
 
+// TestReachOfTripod: all ground up to the radar can matter, as far as the farthest
+// corner of the DEM; away from it, what sinks by the relief at an equal slant range:
+// at most the relief and the antenna, right under it.
+func TestReachOfTripod(t *testing.T) {
+	const rows, cols, cell = 60, 80, 25. // of hill
+	name := hill(t, t.TempDir(), rows, cols)
+	centre := looksJSON(t, "--dem", name, "--look", "incidence=35,azimuth=90")[0].Spots[1]
+	position := fmt.Sprintf("%v/%v", centre.Lon, centre.Lat)
+	l := looksJSON(t, "--dem", name, "--look", "kind=tripod,antenna=5,position="+position)[0]
+	require.NotNil(t, l.Reach)
+	corner := math.Hypot((rows-1)/2.*cell, (cols-1)/2.*cell)
+	// Map metres are true to 1 part in 1000, half a cell is what the centre's
+	// rounding to 1e-5 degrees and more may take.
+	assert.InDelta(t, corner, *l.Reach.NearSide, corner*1e-3+cell/2)
+	assert.Greater(t, *l.Reach.FarSide, 0.)
+	assert.LessOrEqual(t, *l.Reach.FarSide, l.Reach.Relief+5)
+	shown := call(t.Context(), "looks", "--dem", name, "--look", "kind=tripod,antenna=5,position="+position)
+	require.Equal(t, exitDone, shown.code, shown.errOut)
+	assert.Contains(t, shown.out, "DEM needed  all between the radar and the area")
+}
+
 // TestReachOnASphere: the reach of layover against bisection on a sphere, for
 // altitudes from an aircraft to an orbit, and that of shadow at least as long as
 // the exact one.
