@@ -32,6 +32,7 @@ type strip struct {
 	gentle []gentle // by row from ua on
 	graded int      // of a platform: the row of the lattice that bounds are of
 	bounds grade
+	fan    fanBounds // the same of a fan
 	at     []lateral // the same
 
 	fwd forwardState
@@ -250,6 +251,10 @@ func (p *strip) sample(u int) span {
 // spread fills h with the heights of lanes l at columns v, v + dv and so on of z.
 func (p *strip) spread(z []float32, v float64, l span) {
 	if vectors && l == whole {
+		if p.dv > 0 && p.dv < narrow {
+			spreadNarrowVector(&p.h, z, v, p.dv)
+			return
+		}
 		if turn, shift := shiftOf(v, p.dv); shift*shift <= 1 {
 			spreadVector(&p.h, z, v, p.dv, turn, shift)
 			return
