@@ -1,6 +1,7 @@
 package mask
 
 import (
+	"bytes"
 	"math"
 
 	"foldshade/dem"
@@ -100,25 +101,43 @@ type sightRow struct {
 	first int // node
 	nodes []abreast
 	state []nodeState  // what holds at all nodes around
-	per   [][4]float64 // perMetre
+	per   [][4]float64 // perMetre, as nodeViews computed at some rows only
+	from  int          // the row of the first of two of these
+	pers  [2][][4]float64
 }
 
 // row prepares what the patches right of nodes j0 to j1 need in a row.
 func (s *sights) row(r *sightRow, g *dem.Grid, row, j0, j1 int) {
-	r.first = min(j0, s.cols-3)
-	n := min(j1+3, s.cols) - r.first
+	first := min(j0, s.cols-3)
+	n := min(j1+3, s.cols) - first
 	r.nodes, r.state, r.per = resize(r.nodes, n), resize(r.state, n), resize(r.per, n)
 	i0, w := weights(float64(row)/s.rowStep, s.rows)
 	for q := range n {
 		var node abreast
 		state := nodeSeen | nodeAbreast
 		for k := range 3 {
-			i := (i0+k)*s.cols + r.first + q
+			i := (i0+k)*s.cols + first + q
 			node = node.plus(s.nodes[i], w[k])
 			state &= s.state[i]
 		}
 		r.nodes[q], r.state[q] = node, state
-		r.per[q] = perMetre(g.At(float64(row), float64(r.first+q)*s.colStep))
+	}
+	from := row / viewStep * viewStep
+	to := min(from+viewStep, g.Rows-1)
+	if from != r.from || first != r.first || n != len(r.pers[0]) {
+		for k, row := range [2]int{from, to} {
+			r.pers[k] = resize(r.pers[k], n)
+			for q := range n {
+				r.pers[k][q] = perMetre(g.At(float64(row), float64(first+q)*s.colStep))
+			}
+		}
+	}
+	r.first, r.from = first, from
+	t := float64(row-from) / float64(max(to-from, 1))
+	for q := range n {
+		for i, x := range r.pers[0][q] {
+			r.per[q][i] = x + float64(t*(r.pers[1][q][i]-x))
+		}
 	}
 }
 
@@ -136,19 +155,34 @@ func (s *sights) left(col int) int {
 // patch prepares the columns right of node j.
 func (s *sights) patch(r *sightRow, j int) (p patch) {
 	q := min(j, s.cols-3) - r.first
-	node := r.nodes[q : q+3]
 	state := r.state[q] & r.state[q+1] & r.state[q+2]
 	p.from, p.seen, p.abreast = j, state&nodeSeen != 0, state&nodeAbreast != 0
-	p.c = abreast{}.plus(node[0].plus(node[1], -2).plus(node[2], 1), 0.5)
-	p.a, p.b = node[0], node[1].plus(node[0], -1).plus(p.c, -1)
-	if j -= r.first; j > q { // the last two nodes: count from the middle one of the three
-		p.a, p.b = p.a.plus(p.b, 1).plus(p.c, 1), p.b.plus(p.c, 2)
-	}
+	j -= r.first
+	x, y, z := &r.nodes[q], &r.nodes[q+1], &r.nodes[q+2]
+	p.a.way, p.b.way, p.c.way = quadratics(&x.way, &y.way, &z.way, j > q)
+	p.a.travel, p.b.travel, p.c.travel = quadratics(&x.travel, &y.travel, &z.travel, j > q)
 	p.per = r.per[j]
 	for i := range p.per {
 		p.dper[i] = r.per[j+1][i] - p.per[i]
 	}
 	return p
+}
+
+// quadratics returns the coefficients of the quadratics through three nodes, a + b t
+// + c t^2 with t = 0 at the first of them, or at the second when that is asked.
+func quadratics(x, y, z *geometry.ENU, second bool) (a, b, c geometry.ENU) {
+	one := func(x, y, z float64) (a, b, c float64) {
+		c = 0.5 * (x - float64(2*y) + z)
+		a, b = x, y-x-c
+		if second {
+			a, b = a+b+c, b+float64(2*c)
+		}
+		return a, b, c
+	}
+	a.East, b.East, c.East = one(x.East, y.East, z.East)
+	a.North, b.North, c.North = one(x.North, y.North, z.North)
+	a.Up, b.Up, c.Up = one(x.Up, y.Up, z.Up)
+	return a, b, c
 }
 
 // perMetre returns the columns and rows of a metre east and of one north.
@@ -210,7 +244,7 @@ const turnAsk = 0x80
 
 // see fills the turns of the columns [from, to) of the sheet.
 func (c *sightCells) see(from, to int) {
-	if !vectors || c.wantFacets || !c.seen || !c.abreast || to-from < 4 {
+	if !vectors || !c.seen || !c.abreast || to-from < 4 {
 		for j := from; j < to; j++ {
 			c.seeCell(j)
 		}
@@ -220,10 +254,14 @@ func (c *sightCells) see(from, to int) {
 	for j := from; j < to; j += 4 {
 		sightVector(c, min(j, to-4))
 	}
-	for j := from; j < to; j++ {
-		if c.turns[j] == turnAsk {
-			c.seeCell(j)
+	for {
+		j := bytes.IndexByte(c.turns[from:to], turnAsk)
+		if j < 0 {
+			return
 		}
+		from += j
+		c.seeCell(from)
+		from++
 	}
 }
 
@@ -242,7 +280,7 @@ const (
 func (c *sightCells) seeCell(j int) {
 	s, col, h := c.ln.sights, c.col+j, float64(c.z[j])
 	if h != h {
-		c.turns[j], c.unseen[j] = 0, true
+		c.turns[j], c.unseen[j], c.gaps = 0, true, true
 		return
 	}
 	t := float64(col)/s.colStep - float64(c.from)
@@ -257,6 +295,7 @@ func (c *sightCells) seeCell(j int) {
 	}
 	r2 := float64(way.East*way.East) + float64(way.North*way.North) + float64(way.Up*way.Up)
 	c.unseen[j] = (!c.seen || c.close(way.Up, r2)) && !c.asked(c.ln, c.row, col, h) || c.outside(way.Up, r2)
+	c.gaps = c.gaps || c.unseen[j]
 	per := func(i int) float64 { return c.per[i] + float64(t*c.dper[i]) }
 	zc, zr := float64(c.zc[j]), float64(c.zr[j])
 	gE := float64(per(0)*zc) + float64(per(1)*zr)
@@ -294,10 +333,10 @@ func (c *sightCells) seeCell(j int) {
 			turn |= turnCompressed
 		}
 		if c.wantFacets {
-			c.facets[j], c.ups[j] = f, [3]float64{los.Up, sight.Above.Up, sight.Across.Up}
+			c.facets.set(j, f, los.Up, sight.Above.Up, sight.Across.Up)
 		}
 		if c.wantViews {
-			c.views[j] = view{east: los.East, north: los.North, s: r}
+			c.facets.setView(j, los.East, los.North, r)
 		}
 	}
 	c.turns[j] = turn

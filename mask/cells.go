@@ -22,6 +22,27 @@ const foldUnknown Class = 51
 // the cells, settles the doubtful ones and leaves the raw codes, with the
 // margins when they are wanted.
 func (t *sheet) classify(f *field, p *strip, wk *walker) {
+	t.turned = f.ln.transposed && f.ln.fan == nil
+	if t.turned { // rows stay together while the strips are marched
+		t.findings, t.beside = t.beside, t.findings
+		t.raw = resize(t.raw, t.w.Rows*t.w.Cols)
+	}
+	t.room()
+	for j := range f.strips {
+		if p.setUp(f, f.first+j) {
+			p.forward()
+			p.backward(func(u int) { t.classifyRow(p, wk, u) })
+		}
+	}
+	if t.turned {
+		t.findings, t.beside = t.beside, t.findings
+		t.room()
+		t.turn(f.ln.flip)
+	}
+}
+
+// room makes room for what is wanted beside the raw codes.
+func (t *sheet) room() {
 	n := t.w.Rows * t.w.Cols
 	if t.wantClear {
 		t.clear = resize(t.clear, n)
@@ -32,15 +53,26 @@ func (t *sheet) classify(f *field, p *strip, wk *walker) {
 	if t.bin > 0 {
 		t.returns, t.share = resize(t.returns, n), resize(t.share, n)
 	}
-	for j := range f.strips {
-		if p.setUp(f, f.first+j) {
-			p.forward()
-			p.backward(func(u int) { t.classifyRow(p, wk, u) })
-		}
+}
+
+// turn brings the findings beside, which are those of transposed rows, to the
+// grid's own.
+func (t *sheet) turn(flip bool) {
+	rows, cols := t.w.Rows, t.w.Cols
+	turnBytes(t.raw, t.beside.raw, rows, cols, flip)
+	if t.wantClear {
+		turnNumbers(t.clear, t.beside.clear, rows, cols, flip)
+	}
+	if t.wantFold {
+		turnNumbers(t.fold, t.beside.fold, rows, cols, flip)
+	}
+	if t.bin > 0 {
+		turnNumbers(t.returns, t.beside.returns, rows, cols, flip)
+		turnNumbers(t.share, t.beside.share, rows, cols, flip)
 	}
 }
 
-// place returns the index in the sheet of marching position (u, v) and the
+// place returns the index in the findings of marching position (u, v) and the
 // stride of v.
 func (t *sheet) place(f *field, u, v int) (at, stride int) {
 	o := f.ln.orient
@@ -48,7 +80,12 @@ func (t *sheet) place(f *field, u, v int) (at, stride int) {
 	if o.flip {
 		a = o.u - 1 - u
 	}
-	if o.transposed {
+	switch {
+	case t.turned && o.flip:
+		return (t.w.Cols-1-(a-t.w.Col))*t.w.Rows + v - t.w.Row, 1
+	case t.turned:
+		return (a-t.w.Col)*t.w.Rows + v - t.w.Row, 1
+	case o.transposed:
 		return (v-t.w.Row)*t.w.Cols + a - t.w.Col, t.w.Cols
 	}
 	return (a-t.w.Row)*t.w.Cols + v - t.w.Col, 1
@@ -64,39 +101,59 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	}
 	z, base := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
-	bundles := vectors && t.margins.sure && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
-	per := 1 / p.dv
+	line := p.line()
+	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
 	for v := va; v < vb; v++ {
 		if bundles {
 			from := min(v, vb-bundle)
-			if k := p.before(from, per); k >= 1 && k+bundle-1 <= laneStep && p.before(from+bundle-1, per) == k+bundle-1 {
-				t.classifyBundle(p, wk, u, from, v-from, k, per, (*[bundle]float32)(z[from-base:]))
+			k, _ := line.at(from)
+			if last, _ := line.at(from + bundle - 1); last == k+bundle-1 && k >= 1 && last <= laneStep {
+				t.classifyBundle(p, wk, u, from, v-from, &line, (*[bundle]float32)(z[from-base:]))
 				v = from + bundle - 1
 				continue
 			}
 		}
-		k := min(max(p.before(v, per), 1), laneStep)
-		t.classifyCell(p, wk, u, v, k, weight(p.laneOf(v, per), k), z[v-base])
+		k, w := line.at(v)
+		if k < 1 || k > laneStep { // by rounding, at the strip's own edge
+			k, w = min(max(k, 1), laneStep), float32(k/laneStep)
+		}
+		t.classifyCell(p, wk, u, v, k, w, z[v-base])
 	}
 }
 
 // bundle is the number of cells that a vector holds.
 const bundle = 8
 
-// laneOf returns the lane of the strip, fractional, on which column v lies in the
-// row where the strip stands; per is 1 / dv.
-func (p *strip) laneOf(v int, per float64) float64 { return (float64(v) - p.v0) * per }
+// lineUp says where the columns of a row lie between the lanes of a strip: column
+// first beyond lane k by w lanes, every next column by a lane and dw more.
+type lineUp struct {
+	first, k int
+	w, dw    float32
+}
 
-// before returns the last lane that does not lie beyond column v.
-func (p *strip) before(v int, per float64) int { return int(p.laneOf(v, per) + onLane) }
+// line returns the line-up of the row where the strip stands. It does not depend
+// on which of its cells are asked for.
+func (p *strip) line() lineUp {
+	per := 1 / p.dv
+	first := int(math.Ceil(p.edgeA))
+	x := (float64(first) - p.v0) * per
+	k := int(x + onLane)
+	return lineUp{first: first, k: k, w: float32(x - float64(k)), dw: float32(per - 1)}
+}
 
-// weight returns how far, in lanes, a cell at lane x lies beyond lane k; 0 where
-// it lies on it.
-func weight(x float64, k int) float32 {
-	if w := float32(x - float64(k)); w >= onLane {
-		return w
+// at returns the lane before column v, or under it, and how far, in lanes, the
+// column lies beyond it; 0 where it lies on it.
+func (l *lineUp) at(v int) (k int, w float32) {
+	k = l.k + v - l.first
+	w = l.w + float32(l.dw*float32(v-l.first))
+	if w < -onLane || w >= 1-onLane {
+		n := math.Floor(float64(w) + onLane)
+		k, w = k+int(n), w-float32(n)
 	}
-	return 0
+	if w < onLane {
+		w = 0
+	}
+	return k, w
 }
 
 // mix interpolates between two lanes.
@@ -123,12 +180,7 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 	if doubt != 0 {
 		m = t.ask(p, wk, u, v, k, w, m, doubt)
 	}
-	t.raw[i] = uint8(m.raw())
-	fold := float32(nan)
-	if m.clear > 0 {
-		fold = min(m.near, m.far)
-	}
-	t.keep(i, m.clear, fold)
+	fold := t.set(i, m)
 	if t.bin > 0 {
 		if m.clearU > 0 {
 			t.count(p, wk, u, v, i, fold)
@@ -136,6 +188,17 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 			t.returns[i], t.share[i] = float32(nan), float32(nan)
 		}
 	}
+}
+
+// set stores what a cell's margins say and returns its fold margin.
+func (t *sheet) set(i int, m lane) (fold float32) {
+	t.raw[i] = uint8(m.raw())
+	fold = float32(nan)
+	if m.clear > 0 {
+		fold = min(m.near, m.far)
+	}
+	t.keep(i, m.clear, fold)
+	return fold
 }
 
 // ask settles a doubtful cell.
@@ -147,7 +210,7 @@ func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt 
 	if w == 0 {
 		next = k
 	}
-	wk.quick(p, u, v, k, next, p.laneOf(v, 1/p.dv), &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
+	wk.quick(p, u, v, k, next, (float64(v)-p.v0)/p.dv, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 	return m
 }
 
@@ -398,17 +461,14 @@ func shadowClass(raw Class, turns int) Class {
 // blank says of all cells that nothing is known.
 func (t *sheet) blank() {
 	clear(t.raw)
-	n := t.w.Rows * t.w.Cols
+	t.room()
 	if t.wantClear {
-		t.clear = resize(t.clear, n)
 		fillWith(t.clear, float32(nan))
 	}
 	if t.wantFold {
-		t.fold = resize(t.fold, n)
 		fillWith(t.fold, float32(nan))
 	}
 	if t.bin > 0 {
-		t.returns, t.share = resize(t.returns, n), resize(t.share, n)
 		fillWith(t.returns, float32(nan))
 		fillWith(t.share, float32(nan))
 	}

@@ -54,29 +54,66 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// weights8 are the weights of the cells from column v on after lanes k, k+1 and so
-// on, as weight gives them.
-func (p *strip) weights8(v, k int, per float64) archsimd.Float32x8 {
-	var w [bundle]float32
-	perLane, first := four(per), four(p.v0)
-	number := archsimd.LoadInt32x4(&[4]int32{0, 1, 2, 3})
-	from := func(i int) archsimd.Float64x4 {
-		return archsimd.BroadcastInt32x4(int32(i)).Add(number).ConvertToFloat64()
-	}
-	for j := 0; j < bundle; j += 4 {
-		lane := from(v + j).Sub(first).Mul(perLane)
-		lane.Sub(from(k + j)).ConvertToFloat32().Store((*[4]float32)(w[j:]))
-	}
-	x := archsimd.LoadFloat32x8(&w)
-	return x.Masked(x.GreaterEqual(eight(onLane)))
+// at8 returns the lane before column v and how far the cells from there on lie
+// beyond the lanes before them, which follow each other.
+func (l *lineUp) at8(v int) (k int, w archsimd.Float32x8) {
+	k, _ = l.at(v)
+	number := archsimd.LoadInt32x8(&numbers8)
+	column := archsimd.BroadcastInt32x8(int32(v - l.first)).Add(number).ConvertToFloat32()
+	w = eight(l.w).Add(eight(l.dw).Mul(column))
+	turns := archsimd.BroadcastInt32x8(int32(k - l.k - v + l.first)).ConvertToFloat32()
+	w = w.Sub(turns)
+	return k, w.Masked(w.GreaterEqual(eight(onLane)))
 }
 
-// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1) after lanes
-// k+skip and so on, where no terrain is unknown: those that are not doubtful at
-// once, the others one by one. z are the heights from column v on.
-func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per float64, z *[bundle]float32) {
+// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1). The lanes
+// before them follow each other; z are the heights from column v on. Most bundles
+// are open, with all margins wide.
+func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineUp, z *[bundle]float32) {
 	r := &t.margins
-	part, zero, none := p.weights8(v, k, per), eight(0), eight(float32(nan))
+	k, part := line.at8(v)
+	i, stride := t.place(p.f, u, v)
+	if skip > 0 || stride != 1 || !r.sure || r.exact {
+		archsimd.ClearAVXUpperBits()
+		t.classifyMixed(p, wk, u, v, skip, k, line, z)
+		return
+	}
+	x := lanes8(&r.h, k)
+	bump := absolute(archsimd.LoadFloat32x8(z).Sub(x.Add(part.Mul(lanes8(&r.h, k+1).Sub(x)))))
+	x = lanes8(&r.clear, k)
+	m := x.Add(part.Mul(lanes8(&r.clear, k+1).Sub(x)))
+	open := m.Greater(eight(r.slackM).Add(bump).Add(lanes8(&r.roughM, k)))
+	slack := eight(r.slackR).Add(bump)
+	x = lanes8(&r.near, k)
+	n := x.Add(part.Mul(lanes8(&r.near, k+1).Sub(x)))
+	open = open.And(n.Greater(slack.Add(lanes8(&r.roughN, k))))
+	x = lanes8(&r.far, k)
+	g := x.Add(part.Mul(lanes8(&r.far, k+1).Sub(x)))
+	open = open.And(g.Greater(slack.Add(lanes8(&r.roughF, k)))).And(part.Greater(eight(0)))
+	if open.ToBits() != 0xff {
+		archsimd.ClearAVXUpperBits()
+		t.classifyMixed(p, wk, u, v, skip, k, line, z)
+		return
+	}
+	binary.LittleEndian.PutUint64(t.raw[i:], allOpen)
+	if t.wantClear {
+		m.Store((*[bundle]float32)(t.clear[i:]))
+	}
+	if t.wantFold {
+		n.Min(g).Store((*[bundle]float32)(t.fold[i:]))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// allOpen is a bundle of open cells.
+const allOpen = 0x0101010101010101 * uint64(Open)
+
+// classifyMixed is classifyBundle for any cells: those that are not doubtful at
+// once, the others one by one.
+func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lineUp, z *[bundle]float32) {
+	r := &t.margins
+	_, part := line.at8(v)
+	zero, none := eight(0), eight(float32(nan))
 	blend := func(a *byLane32) archsimd.Float32x8 {
 		x := lanes8(a, k)
 		return x.Add(part.Mul(lanes8(a, k+1).Sub(x)))
@@ -89,29 +126,44 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 		slackM = slackM.Add(lanes8(&r.roughM, k))
 		slackN, slackG = slackN.Add(lanes8(&r.roughN, k)), slackG.Add(lanes8(&r.roughF, k))
 	}
-	dark := zero.Sub(slackM).Greater(m)
-	lit := m.Greater(slackM).ToBits()
+	shadow := zero.Sub(slackM).Greater(m)
+	dark, lit := shadow.ToBits(), m.Greater(slackM).ToBits()
 	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
-	doubtful := ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
-	if doubtful != 0 {
-		e := early{strip: p, laneMargins: r, u: u, v: v, k: k, z: z}
-		yes := e.lit(doubtful &^ lit)
-		m, lit = positive(m, yes, r.tinyM), lit|yes
-		doubtful = lit & (doubtN | doubtG)
-		if doubtful != 0 {
-			steep := p.steep8(u, v)
-			yes = e.alone(doubtN&doubtful&^steep, -1)
-			n, doubtN = positive(n, yes, r.tinyR), doubtN&^(yes|steep)
-			yes = e.alone(doubtG&doubtful&^steep, 1)
-			g, doubtG = positive(g, yes, r.tinyR), doubtG&^(yes|steep)
-		}
-		doubtful = ^(lit | dark.ToBits()) | lit&(doubtN|doubtG)
+	unlit, unfolded := uint8(0), uint8(0) // undetermined: whether lit, whether folded
+	if !r.sure {
+		mU, nU, gU := blend(&r.clearU), blend(&r.nearU), blend(&r.farU)
+		doubtN |= ^absolute(nU).Greater(slackN).ToBits()
+		doubtG |= ^absolute(gU).Greater(slackG).ToBits()
+		lit &= absolute(mU).Greater(slackM).ToBits()
+		unlit, unfolded = mU.LessEqual(zero).ToBits(), nU.LessEqual(zero).ToBits()|gU.LessEqual(zero).ToBits()
 	}
+	dim := ^(lit | dark) // doubtful whether lit
+	if dim|lit&(doubtN|doubtG) != 0 {
+		steep := p.steep8(u, v)
+		doubtN, doubtG = doubtN&^(dark|steep), doubtG&^(dark|steep)
+	}
+	if r.sure && dim|doubtN|doubtG != 0 {
+		e := early{p, r, u, v, k, z}
+		yes := e.lit(dim, false)
+		m, lit, dim = positive(m, yes, r.tinyM), lit|yes, dim&^yes
+		yes = e.alone(doubtN&lit, -1, false)
+		n, doubtN = positive(n, yes, r.tinyR), doubtN&^yes
+		yes = e.alone(doubtG&lit, 1, false)
+		g, doubtG = positive(g, yes, r.tinyR), doubtG&^yes
+	}
+	doubtful := dim | lit&(doubtN|doubtG)
+	if !r.sure && doubtful != 0 {
+		open := (&early{p, r, u, v, k, z}).open(part, slackM, slackN, slackG)
+		m, n, g = positive(m, open, r.tinyM), positive(n, open, r.tinyR), positive(g, open, r.tinyR)
+		dim, unlit, unfolded = dim&^open, unlit&^open, unfolded&^open
+		doubtful &^= open
+	}
+	on := uint8(0)
 	if !r.exact { // cells on a lane are treated alike on both sides
-		doubtful |= part.Equal(zero).ToBits()
+		on = part.Equal(zero).ToBits()
 	}
-	fold := none.Merge(n.Min(g), dark)
-	codes := codesOf(dark.ToBits(), n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+	fold := none.Merge(n.Min(g), shadow)
+	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
 	i, stride := t.place(p.f, u, v)
 	if stride == 1 && skip == 0 {
 		binary.LittleEndian.PutUint64(t.raw[i:], codes)
@@ -124,13 +176,43 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, per floa
 	} else {
 		t.scatter(i, stride, skip, codes, m, fold)
 	}
-	var w [bundle]float32
-	part.Store(&w)
-	archsimd.ClearAVXUpperBits()
-	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
-		j := bits.TrailingZeros8(doubtful)
-		t.classifyCell(p, wk, u, v+j, k+j, w[j], z[j])
+	doubtful, on = doubtful>>skip<<skip, on>>skip<<skip
+	if doubtful|on == 0 {
+		return
 	}
+	c := bundled{doubtM: dim, doubtN: doubtN, doubtG: doubtG}
+	part.Store(&c.w)
+	m.Store(&c.clear)
+	n.Store(&c.near)
+	g.Store(&c.far)
+	archsimd.ClearAVXUpperBits()
+	single := on
+	if !r.sure {
+		single |= doubtful
+	}
+	for ; single != 0; single &= single - 1 {
+		j := bits.TrailingZeros8(single)
+		doubtful &^= 1 << j
+		t.classifyCell(p, wk, u, v+j, k+j, c.w[j], z[j])
+	}
+	for ; doubtful != 0; doubtful &= doubtful - 1 {
+		j := bits.TrailingZeros8(doubtful)
+		m, doubt := c.of(j)
+		t.set(i+j*stride, t.ask(p, wk, u, v+j, k+j, c.w[j], m, doubt))
+	}
+}
+
+// bundled holds the margins of a bundle, and which are doubtful.
+type bundled struct {
+	w, clear, near, far    [bundle]float32
+	doubtM, doubtN, doubtG uint8
+}
+
+// of returns the margins of cell j where no terrain is unknown.
+func (c *bundled) of(j int) (m lane, d doubts) {
+	m = lane{clear: c.clear[j], near: c.near[j], far: c.far[j], clearU: c.clear[j], nearU: c.near[j], farU: c.far[j]}
+	d = doubts(c.doubtM>>j&1)*doubtClear | doubts(c.doubtN>>j&1)*doubtNear | doubts(c.doubtG>>j&1)*doubtFar
+	return m, d
 }
 
 // steep8 is strip.steep for the cells from column v on.
@@ -168,13 +250,20 @@ func (e *early) path(u, next int, good uint64) uint8 {
 	return e.along(e.v, e.u, u, next, good)
 }
 
-// lit returns which of the doubtful cells are lit.
-func (e *early) lit(doubtful uint8) (yes uint8) {
+// lit returns which of the doubtful cells no ground hides, or no unknown terrain.
+func (e *early) lit(doubtful uint8, unknown bool) (yes uint8) {
 	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
 		g := &e.gentle[u-1-e.ua]
 		doubtful &= e.path(u, u-1, g.lit)
 		if doubtful != 0 && (e.u-u)%2 == 1 {
 			line := &e.row(u - 1).shade
+			if unknown {
+				unsure := e.unsureRow(u - 1)
+				if unsure == nil || e.sureAt(u-1)&1 != 0 {
+					return yes | doubtful
+				}
+				line = &unsure.shade
+			}
 			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
 			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(g.worthM, e.u-u+1))
 			now := clears(rise, absolute(x.Sub(y)), e.perM, e.slackM) & doubtful
@@ -185,8 +274,9 @@ func (e *early) lit(doubtful uint8) (yes uint8) {
 }
 
 // alone returns which of the doubtful cells have no partner towards the radar, dir
-// -1, or away from it, 1.
-func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
+// -1, or away from it, 1; when possible is set, none that may be lit, nor unknown
+// terrain.
+func (e *early) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 	for n := 1; doubtful != 0 && n <= earlyRows; n++ {
 		u := e.u + dir*n
 		if u < e.ua || u >= e.ub {
@@ -198,10 +288,7 @@ func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
 			continue
 		}
 		h := archsimd.LoadFloat32x8(e.z)
-		line := &e.row(u).nearer
-		if dir > 0 {
-			line = &e.row(u).farther
-		}
+		line := e.line(u, dir, possible)
 		x, y := lanes8(line, e.k), lanes8(line, e.k+1)
 		rise := x.Min(y).Sub(h)
 		if dir > 0 {
@@ -213,6 +300,53 @@ func (e *early) alone(doubtful uint8, dir int) (yes uint8) {
 		yes, doubtful = yes|now, doubtful&^now
 	}
 	return yes
+}
+
+// line returns the line of row u that ground towards the radar or away from it
+// sets.
+func (e *early) line(u, dir int, possible bool) *byLane32 {
+	unsure := e.unsureRow(u)
+	if possible && unsure != nil {
+		switch {
+		case dir < 0 && e.sureAt(u)&1 == 0:
+			return &unsure.nearer
+		case dir > 0 && e.sureAt(u)&2 == 0:
+			return &unsure.farther
+		}
+	}
+	if dir < 0 {
+		return &e.row(u).nearer
+	}
+	return &e.row(u).farther
+}
+
+func (e *early) sureAt(u int) uint8 { return e.strip.sure[u-e.ua] }
+
+// open returns which cells are open whatever stands where terrain is unknown; not
+// those with a lane that has no margins.
+//
+//go:noinline
+func (e *early) open(part, slackM, slackN, slackG archsimd.Float32x8) (cells uint8) {
+	cells = 0xff
+	for _, x := range [...]struct {
+		margins *byLane32
+		slack   archsimd.Float32x8
+		yes     func(doubtful uint8) uint8
+	}{
+		{&e.laneMargins.clear, slackM, func(d uint8) uint8 { return e.lit(d, false) }},
+		{&e.clearU, slackM, func(d uint8) uint8 { return e.lit(d, true) }},
+		{&e.laneMargins.near, slackN, func(d uint8) uint8 { return e.alone(d, -1, false) }},
+		{&e.nearU, slackN, func(d uint8) uint8 { return e.alone(d, -1, true) }},
+		{&e.laneMargins.far, slackG, func(d uint8) uint8 { return e.alone(d, 1, false) }},
+		{&e.farU, slackG, func(d uint8) uint8 { return e.alone(d, 1, true) }},
+	} {
+		a := lanes8(x.margins, e.k)
+		a = a.Add(part.Mul(lanes8(x.margins, e.k+1).Sub(a)))
+		cells &= a.Greater(eight(0).Sub(x.slack)).ToBits() // else surely not, or missing
+		doubtful := cells &^ a.Greater(x.slack).ToBits()
+		cells &^= doubtful &^ x.yes(doubtful)
+	}
+	return cells
 }
 
 // worth is what n rows are worth.
@@ -232,7 +366,7 @@ func positive(x archsimd.Float32x8, yes uint8, tiny float32) archsimd.Float32x8 
 	if yes == 0 {
 		return x
 	}
-	bit := archsimd.LoadInt32x8(&[8]int32{1, 2, 4, 8, 16, 32, 64, 128})
+	bit := archsimd.LoadInt32x8(&bits8)
 	asked := archsimd.BroadcastInt32x8(int32(yes)).And(bit).Equal(bit)
 	wrong := asked.And(x.LessEqual(eight(0)))
 	return eight(tiny).Merge(x, wrong)
@@ -250,12 +384,16 @@ func (t *sheet) scatter(i, stride, skip int, codes uint64, clear, fold archsimd.
 }
 
 // codesOf returns the raw codes of a bundle of cells, a byte each, as lane.raw has
-// them, from bits that say which are hidden and which have partners.
-func codesOf(dark, near, far uint8) uint64 {
-	near, far = near&^dark, far&^dark
+// them, from bits that say which are hidden, which may be, which may be folded,
+// and which have partners.
+func codesOf(dark, unlit, unfolded, near, far uint8) uint64 {
+	unlit &^= dark
+	near, far = near&^(dark|unlit), far&^(dark|unlit)
+	folded := near | far
+	unfolded &^= dark | unlit | folded
 	codes := spread[0xff] * uint64(Open)
-	codes += spread[dark] * uint64(CastShadow-Open)
-	codes += spread[near|far] * uint64(ActiveLayover-Open)
+	codes += spread[dark]*uint64(CastShadow-Open) + spread[unlit]*uint64(Undetermined-Open)
+	codes += spread[unfolded]*uint64(foldUnknown-Open) + spread[folded]*uint64(ActiveLayover-Open)
 	return codes + spread[far]*uint64(LayoverFarther-ActiveLayover) + spread[near]*uint64(LayoverNearer-ActiveLayover)
 }
 
@@ -268,3 +406,33 @@ var spread = func() (s [256]uint64) {
 	}
 	return s
 }()
+
+// turnVectors transposes a stripe of eight rows of src, at first, first + step and
+// so on, rows long, to columns of dst.
+func turnVectors(dst, src []float32, rows, cols, first, step int) {
+	for r := 0; r < rows; r += turnBlock {
+		load := func(k int) archsimd.Int32x8 {
+			return archsimd.LoadFloat32x8((*[8]float32)(src[first+k*step+r:])).AsInt32x8()
+		}
+		store := func(k int, x archsimd.Int32x8) {
+			x.AsFloat32x8().Store((*[8]float32)(dst[(r+k)*cols:]))
+		}
+		a, b, c, d := fours(load(0), load(1), load(2), load(3))
+		e, f, g, h := fours(load(4), load(5), load(6), load(7))
+		store(0, a.Select128FromPair(0, 2, e))
+		store(1, b.Select128FromPair(0, 2, f))
+		store(2, c.Select128FromPair(0, 2, g))
+		store(3, d.Select128FromPair(0, 2, h))
+		store(4, a.Select128FromPair(1, 3, e))
+		store(5, b.Select128FromPair(1, 3, f))
+		store(6, c.Select128FromPair(1, 3, g))
+		store(7, d.Select128FromPair(1, 3, h))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// numbers8 are the numbers of the cells of a bundle, bits8 their bits.
+var (
+	numbers8 = [bundle]int32{0, 1, 2, 3, 4, 5, 6, 7}
+	bits8    = [bundle]int32{1, 2, 4, 8, 16, 32, 64, 128}
+)

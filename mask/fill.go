@@ -13,13 +13,11 @@ type tileBuffers struct {
 	verdict               []uint8
 	nodes                 nodeViews
 	sights                sightRow
-	zc, zr                []float32        // of one row: change of height
-	turns                 []uint8          // of one row
-	facets                []geometry.Facet // of one row
-	ups                   [][3]float64     // of one row: up components of the sights
-	views                 []view           // of one row, when a layer asks for more
-	unseen                []bool           // of one row: cells that the look does not see
-	gaps                  bool             // the row may have cells without a height, or unseen
+	zc, zr                []float32 // of one row: change of height
+	turns                 []uint8   // of one row
+	facets                facetRow  // of one row
+	unseen                []bool    // of one row: cells that the look does not see
+	gaps                  bool      // the row may have cells without a height, or unseen
 	wantReturns           bool
 	wantWindows           bool
 	wantViews, wantFacets bool
@@ -34,10 +32,7 @@ func (w *worker) fill(i int) *Tile {
 	w.turns = resize(w.turns, win.Cols)
 	w.zc, w.zr = resize(w.zc, win.Cols), resize(w.zr, win.Cols)
 	if w.wantFacets {
-		w.facets, w.ups = resize(w.facets, win.Cols), resize(w.ups, win.Cols)
-	}
-	if w.wantViews {
-		w.views = resize(w.views, win.Cols)
+		w.facets.resize(win.Cols)
 	}
 	w.unseen = resize(w.unseen, win.Cols)
 	clear(w.unseen)
@@ -47,7 +42,6 @@ func (w *worker) fill(i int) *Tile {
 		if ln.places == nil {
 			w.see(win.Row+r, win.Col)
 		} else {
-			w.gaps = true
 			w.seeAbreast(ln, look, r)
 		}
 		w.classRow(t, r)
@@ -131,8 +125,8 @@ const (
 // columns from the left one.
 func (w *worker) seeBlock(a, b *view, from, to, first int) {
 	limit := w.job.Options.CompressedBelow
-	if vectors && to-from == viewStep && !w.wantFacets {
-		turnsVector((*[viewStep]uint8)(w.turns[from:]), (*[viewStep]float32)(w.zc[from:]), (*[viewStep]float32)(w.zr[from:]), a, b, limit)
+	if vectors && to-from == viewStep {
+		blockVector(w, a, b, from)
 		return
 	}
 	d := b.minus(a)
@@ -148,13 +142,10 @@ func (w *worker) seeBlock(a, b *view, from, to, first int) {
 			continue
 		}
 		up2 := a.up[2] + float64(t*d.up[2])
-		w.ups[from+i] = [3]float64{up0, up1, up2}
-		w.facets[from+i] = geometry.Facet{
-			Along: along, Above: above,
-			Across: up2 + float64(c*(a.c[2]+float64(t*d.c[2]))) + float64(r*(a.r[2]+float64(t*d.r[2]))),
-		}
+		across := up2 + float64(c*(a.c[2]+float64(t*d.c[2]))) + float64(r*(a.r[2]+float64(t*d.r[2])))
+		w.facets.set(from+i, geometry.Facet{Along: along, Above: above, Across: across}, up0, up1, up2)
 		if w.wantViews {
-			w.views[from+i] = view{east: a.east + float64(t*d.east), north: a.north + float64(t*d.north), s: a.s + float64(t*d.s)}
+			w.facets.setView(from+i, a.east+float64(t*d.east), a.north+float64(t*d.north), a.s+float64(t*d.s))
 		}
 	}
 }
@@ -174,14 +165,58 @@ func turnOf(along, above, limit float64) (turn uint8) {
 	return turn
 }
 
-// sight returns the sight of column j of the row as far as the quantities of a
-// facet need it: the up components.
-func (w *worker) sight(j int) *geometry.Sight {
-	u := &w.ups[j]
+// facetRow holds what layers of values ask of the facets of one row, each
+// component by itself.
+type facetRow struct {
+	along, above, across []float64 // of the facet
+	up                   [3][]float64
+	// When a layer asks for more: of the line of sight, and the distance, for a
+	// platform the slant range.
+	east, north, s []float64
+}
+
+func (f *facetRow) resize(n int) {
+	for _, a := range []*[]float64{&f.along, &f.above, &f.across, &f.up[0], &f.up[1], &f.up[2], &f.east, &f.north, &f.s} {
+		*a = resize(*a, n)
+	}
+}
+
+// set stores the facet of column j and the up components of its sight.
+func (f *facetRow) set(j int, c geometry.Facet, up0, up1, up2 float64) {
+	f.along[j], f.above[j], f.across[j] = c.Along, c.Above, c.Across
+	f.up[0][j], f.up[1][j], f.up[2][j] = up0, up1, up2
+}
+
+func (f *facetRow) setView(j int, east, north, s float64) {
+	f.east[j], f.north[j], f.s[j] = east, north, s
+}
+
+// facet returns the facet of column j.
+func (f *facetRow) facet(j int) geometry.Facet {
+	return geometry.Facet{Along: f.along[j], Above: f.above[j], Across: f.across[j]}
+}
+
+// sight returns the sight of column j as far as the quantities of a facet need
+// it: the up components.
+func (f *facetRow) sight(j int) *geometry.Sight {
 	return &geometry.Sight{
-		Along:  geometry.ENU{Up: u[0]},
-		Above:  geometry.ENU{Up: u[1]},
-		Across: geometry.ENU{Up: u[2]},
+		Along:  geometry.ENU{Up: f.up[0][j]},
+		Above:  geometry.ENU{Up: f.up[1][j]},
+		Across: geometry.ENU{Up: f.up[2][j]},
+	}
+}
+
+// localIncidences fills a with the local incidences from column from on, degrees.
+func (f *facetRow) localIncidences(a []float32, from int) {
+	for j := from; j < len(a); j++ {
+		a[j] = float32(f.facet(j).LocalIncidence().Degrees())
+	}
+}
+
+// foreshortenings fills a with the foreshortenings from column from on.
+func (f *facetRow) foreshortenings(a []float32, from int) {
+	for j := from; j < len(a); j++ {
+		a[j] = float32(f.sight(j).Foreshortening(f.facet(j)))
 	}
 }
 
@@ -274,14 +309,14 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 				out[j] = float32(nan)
 				continue
 			}
-			out[j] = float32(f(j, w.facets[j], w.sight(j)))
+			out[j] = float32(f(j, w.facets.facet(j), w.facets.sight(j)))
 		}
 	}
 	slant := func(j int) float64 {
 		if ln.places != nil {
-			return w.views[j].s
+			return w.facets.s[j]
 		}
-		_, r := ln.at(w.views[j].s, float64(z[j]))
+		_, r := ln.at(w.facets.s[j], float64(z[j]))
 		if look.SlantRange == look.SlantRange {
 			r += look.SlantRange
 		}
@@ -289,11 +324,24 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 	}
 	switch l {
 	case LocalIncidence:
-		each(func(_ int, f geometry.Facet, _ *geometry.Sight) float64 { return f.LocalIncidence().Degrees() })
+		done := 0
+		if vectors {
+			done = localIncidencesVector(&w.facets, out)
+		}
+		w.facets.localIncidences(out, done)
+		w.known(out, z)
 	case SlantRange:
-		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return slant(j) })
+		for j := range out {
+			out[j] = float32(slant(j))
+		}
+		w.known(out, z)
 	case Foreshortening:
-		each(func(_ int, f geometry.Facet, s *geometry.Sight) float64 { return s.Foreshortening(f) })
+		done := 0
+		if vectors {
+			done = foreshorteningsVector(&w.facets, out)
+		}
+		w.facets.foreshortenings(out, done)
+		w.known(out, z)
 	case Incidence:
 		each(func(_ int, _ geometry.Facet, s *geometry.Sight) float64 {
 			return geometry.Angle(math.Acos(s.Along.Up)).Degrees()
@@ -306,9 +354,9 @@ func (w *worker) valueRow(l Layer, bands [][]float32, row int, ln *lanes, look *
 		w.known(out, z)
 		w.foldActive(out)
 	case LineOfSight:
-		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].east })
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.facets.east[j] })
 		out = bands[1][row*n : (row+1)*n]
-		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.views[j].north })
+		each(func(j int, _ geometry.Facet, _ *geometry.Sight) float64 { return w.facets.north[j] })
 		out = bands[2][row*n : (row+1)*n]
 		each(func(_ int, _ geometry.Facet, s *geometry.Sight) float64 { return s.Along.Up })
 	case GroundResolution:

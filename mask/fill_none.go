@@ -2,7 +2,7 @@
 
 package mask
 
-func turnsVector(*[viewStep]uint8, *[viewStep]float32, *[viewStep]float32, *view, *view, float64) {
+func blockVector(*worker, *view, *view, int) {
 	panic("mask: no vectors in this build")
 }
 
@@ -15,3 +15,7 @@ func turnVector([]float32, *[8]int, []float32, int, int, int, int) {
 }
 
 func sightVector(*sightCells, int) { panic("mask: no vectors in this build") }
+
+func localIncidencesVector(*facetRow, []float32) int { panic("mask: no vectors in this build") }
+
+func foreshorteningsVector(*facetRow, []float32) int { panic("mask: no vectors in this build") }

@@ -52,11 +52,44 @@ func TestVectorsOfFill(t *testing.T) {
 			b.up[i], b.c[i], b.r[i] = a.up[i]+0.1*rng.Float64(), a.c[i]+0.1*rng.Float64(), a.r[i]+0.1*rng.Float64()
 		}
 		w.turns = make([]uint8, viewStep)
+		w.wantFacets, w.wantViews = n%3 != 0, n%3 == 2
+		w.facets.resize(viewStep)
 		w.seeBlock(&a, &b, 0, viewStep, 0)
-		turns := append([]uint8{}, w.turns...)
+		turns, facets := append([]uint8{}, w.turns...), fmt.Sprint(w.facets)
 		w.seeBlock(&a, &b, 0, 11, 0) // parts of a block take the portable loop
 		w.seeBlock(&a, &b, 11, viewStep, 11)
 		require.Equal(t, w.turns, turns, what)
+		require.Equal(t, fmt.Sprint(w.facets), facets, what)
+	}
+}
+
+// The vectors of values give the bits of the portable loops.
+func TestVectorsOfValues(t *testing.T) {
+	seed := uint64(time.Now().UnixNano())
+	rng := rand.New(rand.NewPCG(seed, 3))
+	for n := range 300 {
+		var f facetRow
+		f.resize(n)
+		for j := range n {
+			lean := float64(n%2) * 0.1 * rng.NormFloat64()
+			f.set(j, geometry.Facet{Along: 0.5 + rng.NormFloat64(), Above: rng.NormFloat64(), Across: rng.NormFloat64()}, rng.Float64(), rng.Float64(), lean)
+			if rng.IntN(50) == 0 {
+				f.set(j, geometry.Facet{Along: nan, Above: nan, Across: nan}, 1, 1, lean)
+			}
+		}
+		row := func(layer Layer) []float32 {
+			w := worker{sheet: sheet{w: dem.Window{Rows: 1, Cols: n}, padded: dem.Window{Rows: 1, Cols: n}, pad: make([]float32, n)}}
+			w.facets = f
+			out := make([]float32, n)
+			w.valueRow(layer, [][]float32{out}, 0, nil, nil)
+			return out
+		}
+		incidence, foreshortening := row(LocalIncidence), row(Foreshortening)
+		for j := range n {
+			what := fmt.Sprintf("seed %d, row of %d, column %d", seed, n, j)
+			want := [2]float64{f.facet(j).LocalIncidence().Degrees(), f.sight(j).Foreshortening(f.facet(j))}
+			require.Equal(t, fmt.Sprint(float32(want[0]), float32(want[1])), fmt.Sprint(incidence[j], foreshortening[j]), what)
+		}
 	}
 }
 
@@ -113,7 +146,7 @@ func TestVectorsOfSights(t *testing.T) {
 	flight.NearIncidence, flight.FarIncidence = 30*geometry.Degree, 60*geometry.Degree
 	tripod.Position, tripod.Antenna, tripod.MaxRange = at(40, 30), 3, 1500
 	for _, l := range []geometry.Look{orbit, flight, tripod} {
-		run, err := newRunner(Job{Source: src, Range: r, Looks: []geometry.Look{l}, Layers: []Layer{VerdictLayer},
+		run, err := newRunner(Job{Source: src, Range: r, Looks: []geometry.Look{l}, Layers: []Layer{VerdictLayer, LineOfSight},
 			Window: src.Frame.Whole(), Options: DefaultOptions()})
 		require.NoError(t, err)
 		w := run.newWorker()
@@ -122,7 +155,7 @@ func TestVectorsOfSights(t *testing.T) {
 		for row := range 80 {
 			w.sheet.slopes(row, w.zc, w.zr)
 			w.seeAbreast(run.looks[0], &l, row)
-			turns, unseen := append([]uint8{}, w.turns...), append([]bool{}, w.unseen...)
+			turns, unseen, facets := append([]uint8{}, w.turns...), append([]bool{}, w.unseen...), fmt.Sprint(w.facets)
 			s := run.looks[0].sights
 			s.row(&w.sights, w.grid, 3+row, 0, s.cols-2)
 			c := sightCells{worker: w, ln: run.looks[0], swath: swathOf(&l), row: 3 + row, col: 1, z: w.sheet.heights(row)}
@@ -135,6 +168,7 @@ func TestVectorsOfSights(t *testing.T) {
 			}
 			require.Equal(t, w.turns, turns, "%v, row %d", l.Kind, row)
 			require.Equal(t, w.unseen, unseen, "%v, row %d", l.Kind, row)
+			require.Equal(t, fmt.Sprint(w.facets), facets, "%v, row %d", l.Kind, row)
 		}
 		require.Greater(t, seen, 1000, "%v", l.Kind)
 	}

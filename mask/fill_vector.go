@@ -2,7 +2,12 @@
 
 package mask
 
-import "simd/archsimd"
+import (
+	"math"
+	"simd/archsimd"
+
+	"foldshade/geometry"
+)
 
 // Each function of vectors ends with ClearAVXUpperBits: the compiler leaves the
 // upper halves of the registers as they are, and the scalar code that follows
@@ -20,7 +25,7 @@ func centralVector(d, before, mid, after []float32) bool {
 		h := archsimd.LoadFloat32x8((*[8]float32)(mid[j:]))
 		ok = ok.And(x.Equal(x)).And(h.Equal(h))
 	}
-	whole := allOf(ok)
+	whole := ok.ToBits() == 0xff
 	archsimd.ClearAVXUpperBits()
 	return centralScalar(d[n:], before[n:], mid[n:], after[n:]) && whole
 }
@@ -34,14 +39,9 @@ func completeVector(z []float32) bool {
 		h := archsimd.LoadFloat32x8((*[8]float32)(z[j:]))
 		ok = ok.And(h.Equal(h))
 	}
-	whole := allOf(ok)
+	whole := ok.ToBits() == 0xff
 	archsimd.ClearAVXUpperBits()
 	return whole && completeScalar(z[n:])
-}
-
-// allOf reports whether a mask holds everywhere.
-func allOf(m archsimd.Mask32x8) bool {
-	return m.ToInt32x8().Xor(archsimd.BroadcastInt32x8(-1)).IsZero()
 }
 
 // turnVector copies eight columns of src, the rows lo and following of which are n
@@ -82,14 +82,15 @@ func fours(p, q, r, s archsimd.Int32x8) (a, b, c, d archsimd.Int32x8) {
 		hi.InterleaveLoGrouped(hi2).AsInt32x8(), hi.InterleaveHiGrouped(hi2).AsInt32x8()
 }
 
-// turnsVector fills the turns of a whole block, four cells at a time, as
-// seeBlock does.
-func turnsVector(turns *[viewStep]uint8, zc, zr *[viewStep]float32, a, b *view, limit float64) {
+// blockVector is seeBlock for a whole block that begins at a column, four cells
+// at a time.
+func blockVector(w *worker, a, b *view, from int) {
 	all := archsimd.BroadcastFloat64x4
+	zc, zr := (*[viewStep]float32)(w.zc[from:]), (*[viewStep]float32)(w.zr[from:])
 	aUp0, aUp1, dUp0, dUp1 := all(a.up[0]), all(a.up[1]), all(b.up[0]-a.up[0]), all(b.up[1]-a.up[1])
 	aC0, aC1, dC0, dC1 := all(a.c[0]), all(a.c[1]), all(b.c[0]-a.c[0]), all(b.c[1]-a.c[1])
 	aR0, aR1, dR0, dR1 := all(a.r[0]), all(a.r[1]), all(b.r[0]-a.r[0]), all(b.r[1]-a.r[1])
-	lim, zero := all(limit), all(0)
+	lim, zero := all(w.job.Options.CompressedBelow), all(0)
 	layover, shadow, compressed := archsimd.BroadcastInt64x4(turnLayover), archsimd.BroadcastInt64x4(turnShadow), archsimd.BroadcastInt64x4(turnCompressed)
 	// Lane l collects the turns of the cells l, 4 + l, 8 + l and so on, one a byte.
 	var sum archsimd.Int64x4
@@ -105,10 +106,29 @@ func turnsVector(turns *[viewStep]uint8, zc, zr *[viewStep]float32, a, b *view, 
 		turn = turn.Or(low.And(above.LessEqual(zero)).ToInt64x4().And(layover))
 		turn = turn.Or(along.LessEqual(zero).ToInt64x4().And(shadow))
 		sum = sum.ShiftAllLeft(8).Or(turn)
+		if !w.wantFacets {
+			continue
+		}
+		part := func(a, b float64) archsimd.Float64x4 { return all(a).Add(t.Mul(all(b - a))) }
+		up2 := part(a.up[2], b.up[2])
+		across := up2.Add(c.Mul(part(a.c[2], b.c[2]))).Add(r.Mul(part(a.r[2], b.r[2])))
+		f, j := &w.facets, from+i
+		store4(f.along, j, along)
+		store4(f.above, j, above)
+		store4(f.across, j, across)
+		store4(f.up[0], j, up0)
+		store4(f.up[1], j, up1)
+		store4(f.up[2], j, up2)
+		if w.wantViews {
+			store4(f.east, j, part(a.east, b.east))
+			store4(f.north, j, part(a.north, b.north))
+			store4(f.s, j, part(a.s, b.s))
+		}
 	}
 	pairs := archsimd.LoadInt8x16(&bytePairs)
 	lo := sum.GetLo().AsUint8x16().PermuteOrZero(pairs).AsUint16x8()
 	hi := sum.GetHi().AsUint8x16().PermuteOrZero(pairs).AsUint16x8()
+	turns := (*[viewStep]uint8)(w.turns[from:])
 	lo.InterleaveLo(hi).AsUint8x16().Store((*[16]uint8)(turns[:]))
 	lo.InterleaveHi(hi).AsUint8x16().Store((*[16]uint8)(turns[16:]))
 	archsimd.ClearAVXUpperBits()
@@ -124,3 +144,56 @@ var blockParts = func() (t [viewStep]float64) {
 	}
 	return t
 }()
+
+func load4(a []float64, j int) archsimd.Float64x4 {
+	return archsimd.LoadFloat64x4((*[4]float64)(a[j:]))
+}
+
+func store4(a []float64, j int, x archsimd.Float64x4) { x.Store((*[4]float64)(a[j:])) }
+
+// localIncidencesVector is localIncidences for all columns but the last few, and
+// returns how many it filled.
+func localIncidencesVector(f *facetRow, a []float32) int {
+	all := archsimd.BroadcastFloat64x4
+	odd := func(even, k, y archsimd.Float64x4) archsimd.Float64x4 { return even.Add(k.Mul(y)) }
+	one, zero, quarter, perRadian := all(1), all(0), all(math.Pi/4), all(180/math.Pi)
+	n := len(a) &^ 3
+	for j := 0; j < n; j += 4 {
+		along, above, across := load4(f.along, j), load4(f.above, j), load4(f.across, j)
+		side := above.Mul(above).Add(across.Mul(across)).Sqrt()
+		x := side.Sub(along).Div(side.Add(along))
+		y := x.Mul(x)
+		z := y.Mul(y)
+		low := odd(one, all(geometry.Arctan3), y).Add(z.Mul(odd(all(geometry.Arctan5), all(geometry.Arctan7), y)))
+		high := odd(all(geometry.Arctan9), all(geometry.Arctan11), y).Add(z.Mul(odd(all(geometry.Arctan13), all(geometry.Arctan15), y)))
+		z = z.Mul(z)
+		angle := quarter.Add(x.Mul(low.Add(z.Mul(high.Add(z.Mul(all(geometry.Arctan17)))))))
+		angle.Mul(perRadian).ConvertToFloat32().Store((*[4]float32)(a[j:]))
+		if along.Greater(zero).ToBits() != 0xf { // facets that turn their backs
+			archsimd.ClearAVXUpperBits()
+			f.localIncidences(a[:j+4], j)
+		}
+	}
+	archsimd.ClearAVXUpperBits()
+	return n
+}
+
+// foreshorteningsVector is foreshortenings for all columns but the last few, and
+// returns how many it filled.
+func foreshorteningsVector(f *facetRow, a []float32) int {
+	one := archsimd.BroadcastFloat64x4(1)
+	n := len(a) &^ 3
+	for j := 0; j < n; j += 4 {
+		gain, level, lean := load4(f.above, j), load4(f.up[1], j), load4(f.up[2], j)
+		if !lean.AsInt64x4().IsZero() { // where it is, this would change nothing
+			along, across, lean2 := load4(f.along, j), load4(f.across, j), lean.Mul(lean)
+			in := along.Mul(along).Add(gain.Mul(gain))
+			x := one.Sub(lean.Mul(across))
+			gain = gain.Div(x.Mul(x).Add(lean2.Mul(in)).Sqrt())
+			level = level.Div(one.Sub(lean2).Sqrt())
+		}
+		gain.Div(level).ConvertToFloat32().Store((*[4]float32)(a[j:]))
+	}
+	archsimd.ClearAVXUpperBits()
+	return n
+}

@@ -195,29 +195,3 @@ func (p *strip) steep(u, v int) bool {
 	across := float32(float32(z[a.here+1]-z[a.here-1]) * 0.5)
 	return along+float32(across*a.drift) > a.limit
 }
-
-// along returns which of a bundle of cells, a bit each, from column v of row u on,
-// have a path over one row, from row a to row b next to it, on which all patches
-// are among those given for it. The strip stands at row u.
-func (p *strip) along(v, u, a, b int, good uint64) uint8 {
-	here, from, to := p.at[u-p.ua], p.at[a-p.ua], p.at[b-p.ua]
-	first := (float64(v) - here.v0) / here.dv
-	last := first + (bundle-1)/here.dv
-	c0, c1 := from.column(first), to.column(first)
-	d0, d1 := from.column(last)-(bundle-1), to.column(last)-(bundle-1)
-	lo := min(min(c0, c1), min(d0, d1))
-	hi := max(max(c0, c1), max(d0, d1))
-	if lo < 0 {
-		return 0
-	}
-	base := p.gentle[min(a, b)-p.ua].base
-	x, y := int(lo)-base, int(hi)-base
-	if x < 0 || y+bundle > patches {
-		return 0
-	}
-	out := good >> x
-	for x++; x <= y; x++ {
-		out &= good >> x
-	}
-	return uint8(out)
-}

@@ -41,7 +41,7 @@ func spreadVector(h *byLane, z []float32, v, dv float64, turn, shift int) {
 	first, step := four(v), four(dv)
 	nearly, close := four(1-onColumn), four(onColumn)
 	before := int(v)
-	number := archsimd.LoadInt32x4(&[4]int32{0, 1, 2, 3})
+	number := archsimd.LoadInt32x4((*[4]int32)(numbers8[:]))
 	for k := 0; k < marchVectors; k += 4 {
 		i := before + k
 		if k >= turn {

@@ -75,6 +75,12 @@ type quickWalk struct {
 	slackM, slackR float64
 }
 
+// cut is a sample of the surface between two rows.
+type cut struct {
+	m, r    float64
+	unknown bool // m, r are then those of unknown terrain at its worst
+}
+
 // bounds are what the two lanes say of a line at one place, with a slack for
 // the roughness that their difference shows.
 type bounds struct{ low, high float64 }
@@ -147,6 +153,99 @@ func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
 	return around(x, y, settleShare/q.slackR)
 }
 
+// walk fills q.cuts with the samples that walker.step finds between row u,
+// excluded, and the next row in direction dir, included: the surface is a parabola
+// from one crossing of the grid to the next.
+func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
+	f := q.f
+	i := u - f.ua
+	z0, z1 := f.z[i*f.width:(i+1)*f.width], f.z[(i+dir)*f.width:(i+dir+1)*f.width]
+	at0, at1 := f.at[i], f.at[i+dir]
+	q.cuts = q.cuts[:0]
+	t0 := 0.0
+	if u == q.y.u0 {
+		t0 = ownGround // ground this close counts as the point itself
+	}
+	c, last := int(math.Floor(va)), int(math.Floor(vb))
+	dx, next, turn := vb-va, 1, 1
+	if dx < 0 {
+		next, turn = 0, -1
+	}
+	for ; ; c += turn {
+		t1 := 1.0
+		if c != last {
+			if t1 = (float64(c+next) - va) / dx; t1 <= t0 {
+				continue
+			}
+			t1 = min(t1, 1)
+		}
+		p0, q0 := float64(z0[c-at0]), float64(z1[c-at1])
+		p1, q1 := p0, q0
+		x0 := va - float64(c)
+		if x0 != 0 || dx != 0 { // not along the column itself
+			p1, q1 = float64(z0[c-at0+1]), float64(z1[c-at1+1])
+		}
+		if sum := p0 + q0 + p1 + q1; sum != sum {
+			q.walkUnknown(u, dir, va, vb, sa, sb)
+			return
+		}
+		ep, eq := p1-p0, q1-q0
+		d := (eq - ep) * dx
+		g := arc{sa: sa, ds: sb - sa, a: p0 + ep*x0, b: (q0 - p0) + ep*dx + (eq-ep)*x0, d: d}
+		if len(q.cuts) == 0 && t0 > 0 {
+			q.emit(&g, t0)
+		}
+		if d != 0 {
+			q.vertices(&g, t0, t1)
+		}
+		q.emit(&g, t1)
+		if t0 = t1; t1 == 1 {
+			return
+		}
+	}
+}
+
+// arc is the surface along a stretch of a line: h = a + b t + d t^2 at ground
+// distance sa + ds t.
+type arc struct{ sa, ds, a, b, d float64 }
+
+func (q *quickWalk) emit(g *arc, t float64) {
+	m, r := q.y.see(g.sa+t*g.ds, g.a+t*(g.b+t*g.d))
+	q.cuts = append(q.cuts, cut{m: m, r: r})
+}
+
+// vertices emits the extremes of m and r between t0 and t1, in order.
+func (q *quickWalk) vertices(g *arc, t0, t1 float64) {
+	worthM, worthR := q.y.worth(g.sa, g.sa+g.ds, g.a)
+	a, b := g.b+2*g.d*t0, g.b+2*g.d*t1 // h' at both ends
+	tm, tr := math.Inf(1), math.Inf(1)
+	if (a+worthM)*(b+worthM) < 0 {
+		tm = -(g.b + worthM) / (2 * g.d)
+	}
+	if (a-worthR)*(b-worthR) < 0 {
+		tr = (worthR - g.b) / (2 * g.d)
+	}
+	if tr < tm {
+		tm, tr = tr, tm
+	}
+	if tm < t1 {
+		q.emit(g, tm)
+	}
+	if tr < t1 {
+		q.emit(g, tr)
+	}
+}
+
+// walkUnknown is walk where a height is missing.
+func (q *quickWalk) walkUnknown(u, dir int, va, vb, sa, sb float64) {
+	q.step(u, dir, va, vb, sa, sb)
+	q.cuts = q.cuts[:0]
+	for i := range q.pieces {
+		g := &q.pieces[i]
+		q.cuts = append(q.cuts, cut{g.m, g.r, g.unknown})
+	}
+}
+
 // between returns bounds of the heights on the path from row u, column va, to
 // the next row in direction dir, column vb: NaN where one is missing.
 func (w *walker) between(u, dir int, va, vb float64) (low, high float64) {
@@ -166,12 +265,40 @@ func (w *walker) between(u, dir int, va, vb float64) (low, high float64) {
 	return float64(lo), float64(hi)
 }
 
-// matters reports whether ground between two heights from distance s on, towards
-// the radar, may share the point's slant range or hide ground that reaches best.
-func (q *quickWalk) matters(s, low, high, best float64) bool {
-	top := q.y.seeM(s, high)
-	most := q.y.seeR(s, low)
-	return q.overhead(top) || !(most < q.r) || !(top < best) && !math.IsInf(best, -1)
+// dull reports whether ground between row u and the next one towards the radar can
+// neither share the point's slant range nor hide ground that reaches best, by the
+// extremes of its heights. For a plane wave the walk costs less than to ask.
+func (q *quickWalk) dull(u int, va, vb, sa, best float64) bool {
+	if q.y.ln.places == nil {
+		return false
+	}
+	low, high := q.between(u, -1, va, vb)
+	top := q.y.seeM(sa, high)
+	most := q.y.seeR(sa, low)
+	return !q.overhead(top) && most < q.r && (top < best || math.IsInf(best, -1))
+}
+
+// below reports whether ground between row u and the next one towards the radar
+// lies below the point's line of sight; as dull.
+func (q *quickWalk) below(u int, va, vb, sa float64) bool {
+	if q.y.ln.places == nil {
+		return false
+	}
+	_, high := q.between(u, -1, va, vb)
+	top := q.y.seeM(sa, high)
+	return top < q.m && !q.overhead(top)
+}
+
+// beyond reports whether ground between row u and the next one away from the radar
+// lies beyond the point's slant range; as dull. It cannot hide any that is within
+// it: it lies below the line of equal range, the other above.
+func (q *quickWalk) beyond(u int, va, vb, sa float64) bool {
+	if q.y.ln.places == nil {
+		return false
+	}
+	_, high := q.between(u, 1, va, vb)
+	top, least := q.y.see(sa, high)
+	return least > q.r && !q.overhead(top)
 }
 
 // overhead reports whether ground at m stands above the antenna of a platform:
@@ -196,11 +323,10 @@ func (q *quickWalk) lit(unknown bool) bool {
 			}
 		} else {
 			reached = math.Inf(-1)
-			_, high := q.between(u, -1, va, vb)
-			if top := q.y.seeM(sa, high); !(top < q.m) || q.overhead(top) {
-				q.step(u, -1, va, vb, sa, sb)
-				for i := range q.pieces {
-					g := &q.pieces[i]
+			if !q.below(u, va, vb, sa) {
+				q.walk(u, -1, va, vb, sa, sb)
+				for i := range q.cuts {
+					g := &q.cuts[i]
 					if g.m >= q.m && g.unknown == unknown {
 						return false
 					}
@@ -251,12 +377,12 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 			}
 		} else {
 			reached = none
-			q.pieces = q.pieces[:0]
-			if low, high := q.between(u, -1, va, vb); q.matters(sa, low, high, best) {
-				q.step(u, -1, va, vb, sa, sb)
+			q.cuts = q.cuts[:0]
+			if !q.dull(u, va, vb, sa, best) {
+				q.walk(u, -1, va, vb, sa, sb)
 			}
-			for i := range q.pieces {
-				g := &q.pieces[i]
+			for i := range q.cuts {
+				g := &q.cuts[i]
 				reached = g.r
 				switch {
 				case g.unknown && possible:
@@ -309,7 +435,7 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 // the point's slant range; when possible is set, whether ground that may be
 // lit, or unknown terrain, does.
 func (q *quickWalk) foldedFarther(possible bool) bool {
-	top, topU, prev, hidden := q.m, math.Inf(-1), point{m: q.m, r: q.r}, false
+	top, topU, prev, hidden := q.m, math.Inf(-1), cut{m: q.m, r: q.r}, false
 	reached := q.r // no more than the line's slant range at row u
 	vb, sb := q.y.at(q.u)
 	for u := q.u; u < q.p.ub-1; u++ {
@@ -321,17 +447,14 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 			}
 		} else {
 			reached = math.Inf(1)
-			// Ground beyond the point's slant range cannot hide any that is within
-			// it: it lies below the line of equal range, the other above.
-			q.pieces = q.pieces[:0]
-			_, high := q.between(u, 1, va, vb)
-			if top, least := q.y.see(sa, high); !(least > q.r) || q.overhead(top) {
-				q.step(u, 1, va, vb, sa, sb)
+			q.cuts = q.cuts[:0]
+			if !q.beyond(u, va, vb, sa) {
+				q.walk(u, 1, va, vb, sa, sb)
 			} else {
 				hidden = false
 			}
-			for i := range q.pieces {
-				g := q.pieces[i]
+			for i := range q.cuts {
+				g := q.cuts[i]
 				reached = g.r
 				if g.unknown {
 					if possible && g.r <= q.r {

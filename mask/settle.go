@@ -178,6 +178,7 @@ type walker struct {
 	seq    []point // samples towards the radar, nearest to the point first
 	stack  []int   // those that no sample nearer to the radar hides
 	pieces []point // the samples of one row step
+	cuts   []cut   // the same in a quick walk
 }
 
 // settle returns the exact margins of the cell (u, v), as far as the field's

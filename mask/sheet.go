@@ -12,15 +12,21 @@ type sheet struct {
 	padded dem.Window // what pad holds
 	cols   int        // of the grid
 
-	raw       []uint8 // class codes before the cells' own slopes are looked at
-	clear     []float32
-	fold      []float32
+	findings
+	turned    bool     // the findings lie row by row of the marching frame, for now
+	beside    findings // room for them
 	margins   laneMargins
-	returns   []float32
-	share     []float32
 	bin       float64 // metres of slant range, 0 when neither is wanted
 	wantClear bool
 	wantFold  bool
+}
+
+// findings are what the march finds of the cells of a sheet; returns and share are
+// filled where they are wanted, clear and fold as well.
+type findings struct {
+	raw            []uint8 // class codes before the cells' own slopes are looked at
+	clear, fold    []float32
+	returns, share []float32
 }
 
 // load reads the heights of the window and their central differences.

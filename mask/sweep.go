@@ -218,13 +218,13 @@ func (s *sweep) tiles() []dem.Window {
 		memory = 1 << 30
 	}
 	// Slopes, sheet, the cell's part of the results, and the open incidences of
-	// every azimuth; beside them counts, heights and lanes of a stripe.
+	// every azimuth; beside them counts, heights and lanes of a band.
 	cell := int64(16 + 26 + 16 + 2*len(s.job.Azimuths))
 	room := memory/int64(s.threads) - s.count.bytes()
 	w := s.job.Window
 	size := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(s.threads)))
 	size = min(max(size, minTile), maxSweepTile)
-	for size > minTile && size*size*cell+s.stripe(size) > room {
+	for size > minTile && size*size*cell+s.band(size) > room {
 		size = size * 7 / 8
 	}
 	if t := s.job.Options.Tile; t > 0 {
@@ -252,16 +252,17 @@ func parts(first, cells, size int) (out [][2]int) {
 	return out
 }
 
-const maxSweepTile = 1536
+const maxSweepTile = 2048
 
-// stripe is the memory of the heights and lanes of one stripe of a tile.
-func (s *sweep) stripe(size int64) int64 {
+// band is the memory of the heights and lanes of one band of a tile.
+func (s *sweep) band(size int64) int64 {
 	rows := int64(0)
 	for _, ln := range s.lanes {
 		near, far := ln.reach(s.lim)
 		rows = max(rows, min(size+int64(near+far), int64(ln.orient.u)))
 	}
-	return rows * (5*(windowStripe+2*laneStep) + 40*windowLaneCount)
+	// Heights, once more by lane, what stands where, and the cells of a strip.
+	return rows * (5*(windowBand*laneStep+2*bandMargin) + 4*(laneStep+1) + 48 + 16*laneStep)
 }
 
 // crop shrinks a tile to the cells that count.
@@ -323,7 +324,9 @@ func (w *sweepWorker) tile(ctx context.Context, win dem.Window) error {
 		w.tick()
 	}
 	w.count.cells += int64(len(w.cells))
-	w.count.addPairs(w.from, w.to)
+	if w.job.Best >= 2 {
+		w.count.addPairs(w.from, w.to)
+	}
 	if w.pattern != nil {
 		w.words = w.pattern.add(w.from, w.to, len(w.job.Incidences), w.words)
 	}
@@ -366,18 +369,24 @@ func (w *sweepWorker) azimuth(a int) error {
 	if err := x.run(w.job.Source, w.lanes[a], w.lim, w.sweep.from, w.sweep.to, t); err != nil {
 		return err
 	}
-	w.from[a], w.to[a] = resize(w.from[a], len(w.cells)), resize(w.to[a], len(w.cells))
+	n := len(w.cells)
+	w.from[a], w.to[a] = resize(w.from[a], n), resize(w.to[a], n)
 	w.rise = resize(w.rise, t.Rows*t.Cols)
+	d := newDirections(w.grid, w.lanes[a])
 	for r := range t.Rows {
-		w.sheet.rangeSlopes(w.grid, w.lanes[a], r, w.rise[r*t.Cols:][:t.Cols])
+		w.sheet.rangeSlopes(d, r, w.rise[r*t.Cols:][:t.Cols])
 	}
-	from, to, ends := w.from[a], w.to[a], &w.count.ends[a]
-	for n, i := range w.cells {
-		e := w.steps.ends(x.shade[i], x.shadeU[i], x.fold[i], x.foldU[i], w.rise[i])
-		for k, b := range e {
-			ends[k][b]++
+	var block endsBlock
+	for c := 0; c < n; c += len(block[0]) {
+		cells := w.cells[c:min(c+len(block[0]), n)]
+		if block.fill(&w.steps, x, w.rise, cells) {
+			w.count.add(a, &block, len(cells))
+		} else {
+			w.count.addOpen(a, len(cells))
 		}
-		from[n], to[n] = e[endCompressed], e[endOpen]
+		for k := range cells {
+			w.from[a][c+k], w.to[a][c+k] = uint8(block[endCompressed][k]), uint8(block[endOpen][k])
+		}
 	}
 	return nil
 }
@@ -411,16 +420,35 @@ func newSteps(incidences []geometry.Angle, limit float64) steps {
 	return steps{newLadder(tan), newLadder(cot), newLadder(few), uint8(n)}
 }
 
+// endsBlock holds the ends of some cells, as numbers of incidences.
+type endsBlock [endCount][32]int32
+
+// fill takes the ends of up to 32 cells from their slopes, and reports whether
+// any of them is not open throughout.
+func (e *endsBlock) fill(s *steps, x *windower, rise []float32, cells []int32) bool {
+	n := len(cells)
+	if first := cells[0]; vectors && n == len(e[0]) && cells[n-1] == first+int32(n-1) && len(s.tan.rungs) <= fewRungs {
+		return e.fillVector(s, x, rise, int(first))
+	}
+	any := false
+	for k, i := range cells {
+		ends := s.ends(x.shade[i], x.shadeU[i], x.fold[i], x.foldU[i], rise[i])
+		any = any || ends != [endCount]uint8{endOpen: s.n, endMayHide: s.n}
+		for end, b := range ends {
+			e[end][k] = int32(b)
+		}
+	}
+	return any
+}
+
+// fewRungs is the most rungs that are compared one by one.
+const fewRungs = 64
+
 // ends returns the ends of the runs, as numbers of incidences. The order of
 // the classes is that of the verdict layer: hidden, perhaps hidden, folded,
 // perhaps folded, compressed, open.
 func (s *steps) ends(shade, shadeU, fold, foldU, rise float32) (e [endCount]uint8) {
-	if rise > fold {
-		fold = rise
-	}
-	if rise > foldU {
-		foldU = rise
-	}
+	fold, foldU = higher(rise, fold), higher(rise, foldU)
 	e[endMayHide] = s.n - s.cot.upTo(shade)
 	e[endOpen] = min(s.n-s.cot.upTo(shadeU), e[endMayHide])
 	top := e[endOpen]
@@ -545,7 +573,7 @@ func (s *sweep) result(ctx context.Context) (*SweepResult, error) {
 			open = append(open, share.Open)
 		}
 	}
-	search := setSearch{open: open, both: s.count.both(), apart: separating(sights, s.job.Condition)}
+	search := setSearch{open: open, both: s.count.both(open), apart: separating(sights, s.job.Condition)}
 	switch {
 	case s.pattern != nil:
 		s.pattern.gather()
@@ -564,10 +592,11 @@ type sweepCounts struct {
 	n     int // incidences
 	// ends[a][k][b] counts the cells whose run k ends after b incidences.
 	ends [][endCount][]int64
-	// pairs[p] is a table of (n+1) x (n+1): the differences, along both axes, of
-	// the numbers of cells that are open at an incidence of one azimuth and at
-	// one of another.
-	pairs [][]int64
+	// pairs[p] is a table of (n+1) x (n+1): entry (x, y) counts cells that are not
+	// open at incidences below x of one azimuth and below y of another; less those
+	// that are open from there on, see addPairs.
+	pairs  [][]int64
+	closed []closedCells // by azimuth, of the cells being counted
 }
 
 func (c *sweepCounts) init(azimuths, n int) {
@@ -578,6 +607,7 @@ func (c *sweepCounts) init(azimuths, n int) {
 			c.ends[a][k] = make([]int64, n+1)
 		}
 	}
+	c.closed = make([]closedCells, azimuths)
 	c.pairs = make([][]int64, azimuths*(azimuths+1)/2)
 	for p := range c.pairs {
 		c.pairs[p] = make([]int64, (n+1)*(n+1))
@@ -586,28 +616,99 @@ func (c *sweepCounts) init(azimuths, n int) {
 
 func (c *sweepCounts) bytes() int64 { return 8 * int64(len(c.pairs)) * int64((c.n+1)*(c.n+1)) }
 
+// add counts the ends of cells.
+func (c *sweepCounts) add(a int, e *endsBlock, cells int) {
+	for k := range e {
+		ends := c.ends[a][k]
+		for _, b := range e[k][:cells] {
+			ends[b]++
+		}
+	}
+}
+
+// addOpen counts cells that are open throughout.
+func (c *sweepCounts) addOpen(a, cells int) {
+	ends, n := &c.ends[a], int64(cells)
+	ends[endFolded][0] += n
+	ends[endMayFold][0] += n
+	ends[endCompressed][0] += n
+	ends[endOpen][c.n] += n
+	ends[endMayHide][c.n] += n
+}
+
+// closedCells are those of a run of cells that are not open at all incidences of
+// an azimuth. A cell is closed below incidence from and from incidence to on; one
+// that is closed throughout, below the end.
+type closedCells struct {
+	from, to []uint8
+	low      []uint16 // cells with from above 0, in the run
+	lowRow   []uint16 // where the table's row of their from begins
+	high     []uint16 // cells with to before the end
+}
+
+// pairRun is how many cells are counted at once, so that they stay in the cache
+// while all pairs of azimuths are.
+const pairRun = 1 << 14
+
+func (d *closedCells) take(from, to []uint8, n int) {
+	d.from, d.to = append(d.from[:0], from...), append(d.to[:0], to...)
+	d.low, d.lowRow, d.high = d.low[:0], d.lowRow[:0], d.high[:0]
+	for c, f := range from {
+		if f >= to[c] {
+			d.from[c], d.to[c] = uint8(n), uint8(n)
+		} else if f == 0 && int(to[c]) == n {
+			continue
+		}
+		if f := d.from[c]; f > 0 {
+			d.low, d.lowRow = append(d.low, uint16(c)), append(d.lowRow, uint16(f)*uint16(n+1))
+		}
+		if int(d.to[c]) < n {
+			d.high = append(d.high, uint16(c))
+		}
+	}
+}
+
 // addPairs counts the cells of a tile for every pair of azimuths, one with
-// itself included.
+// itself included: only where they are closed. With [x] for "below incidence x",
+// a cell is closed in [from] - [to] + [n].
 func (c *sweepCounts) addPairs(from, to [][]uint8) {
-	w := c.n + 1
-	p := 0
-	for a := range from {
-		for b := a; b < len(from); b++ {
-			table := c.pairs[p]
-			p++
-			fa, ta := from[a], to[a][:len(from[a])]
-			fb, tb := from[b][:len(fa)], to[b][:len(fa)]
-			for i, f := range fa {
-				t, g, u := ta[i], fb[i], tb[i]
-				if f >= t || g >= u {
-					continue
-				}
-				top, end := table[int(f)*w:][:w], table[int(t)*w:][:w]
-				top[g]++
-				top[u]--
-				end[g]--
-				end[u]++
+	for at := 0; at < len(from[0]); at += pairRun {
+		end := min(at+pairRun, len(from[0]))
+		for a := range c.closed {
+			c.closed[a].take(from[a][at:end], to[a][at:end], c.n)
+		}
+		p := 0
+		for a := range c.closed {
+			for b := a; b < len(c.closed); b++ {
+				c.pair(c.pairs[p], &c.closed[a], &c.closed[b])
+				p++
 			}
+		}
+	}
+}
+
+func (c *sweepCounts) pair(table []int64, a, b *closedCells) {
+	n, w := c.n, c.n+1
+	row := func(x uint8) []int64 { return table[int(x)*w:][:w] }
+	last := row(uint8(n))
+	low, lowRow := a.low, a.lowRow[:len(a.low)]
+	for i, k := range low {
+		table[int(lowRow[i])+int(b.from[k])]++
+	}
+	for _, k := range b.high {
+		r := row(a.from[k])
+		r[b.to[k]]--
+		r[n]++
+	}
+	for _, k := range a.high {
+		r, f, t := row(a.to[k]), b.from[k], b.to[k]
+		r[f]--
+		last[f]++
+		if int(t) < n {
+			r[t]++
+			r[n]--
+			last[t]--
+			last[n]++
 		}
 	}
 }
@@ -652,17 +753,19 @@ func (c *sweepCounts) shares(a int) []LookShare {
 	return out
 }
 
-// both returns, for every two looks, the cells that are open in both.
-func (c *sweepCounts) both() func(a, b int) int64 {
+// both returns, for every two looks, the cells that are open in both, from those
+// that are open in each.
+func (c *sweepCounts) both(open []int64) func(a, b int) int64 {
 	n, w := c.n, c.n+1
+	// From entries for "below x and below y" to cells closed in both.
 	for _, t := range c.pairs {
 		for i := range w {
-			for j := 1; j < w; j++ {
-				t[i*w+j] += t[i*w+j-1]
+			for j := n - 1; j >= 0; j-- {
+				t[i*w+j] += t[i*w+j+1]
 			}
 		}
-		for i := w; i < len(t); i++ {
-			t[i] += t[i-w]
+		for i := n*w - 1; i >= 0; i-- {
+			t[i] += t[i+w]
 		}
 	}
 	azimuths := len(c.ends)
@@ -672,7 +775,7 @@ func (c *sweepCounts) both() func(a, b int) int64 {
 		}
 		a, b := x/n, y/n
 		p := a*azimuths - a*(a-1)/2 + b - a
-		return c.pairs[p][x%n*w+y%n]
+		return open[x] + open[y] - c.cells + c.pairs[p][(x%n+1)*w+y%n+1]
 	}
 }
 

@@ -10,6 +10,7 @@ type byLane36 [0]float32
 const noVectors = "built without vectors"
 
 func spreadVector(*byLane, []float32, float64, float64, int, int)    { panic(noVectors) }
+func turnVectors([]float32, []float32, int, int, int, int)           { panic(noVectors) }
 func heightsVector(*byLane, *byLane36, *byLane36, float64)           { panic(noVectors) }
 func markVector(*byLane41, *byLane41, *grade) (rises, lit uint64)    { panic(noVectors) }
 func viewVector(*strip, float64, float64, float64, float64, float64) { panic(noVectors) }
@@ -19,6 +20,6 @@ func backwardMoveVector(*strip, *lines)                              { panic(noV
 func marginsVector(*laneMargins, *byLane, *lines, float32)           { panic(noVectors) }
 func roughnessVector(*byLane32, *byLane32, float32)                  { panic(noVectors) }
 
-func (*sheet) classifyBundle(*strip, *walker, int, int, int, int, float64, *[bundle]float32) {
+func (*sheet) classifyBundle(*strip, *walker, int, int, int, *lineUp, *[bundle]float32) {
 	panic(noVectors)
 }

@@ -3,11 +3,16 @@
 package mask
 
 import (
+	"context"
+	"math"
 	"math/rand/v2"
 	"testing"
 	"unsafe"
 
 	"github.com/stretchr/testify/require"
+
+	"foldshade/dem"
+	"foldshade/geometry"
 )
 
 // bits32 returns the bits of the lanes of a strip.
@@ -70,6 +75,66 @@ func TestVectorsAreTheLoops(t *testing.T) {
 					func(r *laneMargins) *byLane32 { return &r.far },
 				} {
 					require.Equal(t, bits32(of(&others[i])), bits32(of(&margins[i])), "strip %d, %d rows from the end", j, i)
+				}
+			}
+		}
+	}
+}
+
+// TestVectorsGiveTheSameLayers runs looks of several kinds with vectors and
+// without, over rough ground with holes, and compares the layers to the bit.
+func TestVectorsGiveTheSameLayers(t *testing.T) {
+	defer func() { vectors = true }()
+	const seed = 20261202
+	rng := rand.New(rand.NewPCG(seed, 1))
+	layers := []Layer{VerdictLayer, LayoverLayer, ShadowLayer, Clearance, FoldMargin, Returns, LocalIncidence}
+	for n := range 24 {
+		src := mountainSquare(t, 150)
+		for i := range src.Heights {
+			src.Heights[i] += float32(n) * rng.Float32()
+			if n%3 == 0 && rng.IntN(2000) == 0 {
+				src.Heights[i] = float32(nan)
+			}
+		}
+		span, err := dem.Scan(context.Background(), src)
+		require.NoError(t, err)
+		look := fixed(20+50*rng.Float64(), 360*rng.Float64())
+		look.Bandwidth = 50e6
+		if n%4 == 1 {
+			look.Kind, look.Altitude, look.Heading, look.Side = geometry.Orbit, 600e3, look.Azimuth, geometry.Left
+			look.Azimuth = geometry.NotGiven
+		}
+		run := func(on bool) map[Layer][]uint32 {
+			vectors = on
+			out := map[Layer][]uint32{}
+			o := DefaultOptions()
+			o.OpenEdge, o.Tile, o.Threads = n%2 == 0, 97, 1
+			_, err := Run(context.Background(), Job{Source: src, Range: span, Looks: []geometry.Look{look}, Layers: layers,
+				Window: src.Frame.Whole(), Options: o, Emit: func(_ int, tile *Tile) error {
+					for l, a := range tile.Classes {
+						for _, x := range a {
+							out[l] = append(out[l], uint32(x))
+						}
+					}
+					for l, bands := range tile.Values {
+						for _, x := range bands[0] {
+							if x != x {
+								x = float32(nan)
+							}
+							out[l] = append(out[l], math.Float32bits(x))
+						}
+					}
+					return nil
+				}})
+			require.NoError(t, err)
+			return out
+		}
+		with, without := run(true), run(false)
+		for _, l := range layers {
+			require.Len(t, with[l], len(without[l]))
+			for i, x := range without[l] {
+				if x != with[l][i] {
+					t.Fatalf("seed %d, grid %d, %v, %s: cell %d of the tiles has %d without vectors, %d with them", seed, n, look, l, i, x, with[l][i])
 				}
 			}
 		}
