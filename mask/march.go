@@ -425,7 +425,9 @@ func (p *strip) forward() {
 			p.forwardSure(row, l)
 			continue
 		}
-		p.forwardUnsure(row, unsure, l)
+		if last == u || !p.forwardTrackUnsure(row, unsure, l) {
+			p.forwardUnsure(row, unsure, l)
+		}
 	}
 }
 
@@ -590,7 +592,9 @@ func (p *strip) backward(cells func(u int)) {
 			p.sure[u-p.ua] |= 2
 			p.backwardSure(row, l)
 		} else {
-			p.backwardUnsure(row, p.unsureRow(u), l)
+			if last == u || !p.backwardTrackUnsure(row, p.unsureRow(u), l) {
+				p.backwardUnsure(row, p.unsureRow(u), l)
+			}
 		}
 		if u < p.u1 {
 			cells(u)
