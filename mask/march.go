@@ -15,11 +15,11 @@ type strip struct {
 	ua, ub int    // rows that are marched
 	u0, u1 int    // rows with cells
 
-	// At the row that is sampled: column and ground distance of lane k0, and
-	// their change for one lane.
+	// At the row where the strip stands: column and ground distance of lane k0,
+	// and their change for one lane.
 	v0, dv, s0, ds float64
 	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
-	p0, dp         place   // of a platform: place of lane 0, change for one lane
+	p0, dp         place   // of a platform, at the row that is sampled: place of lane 0, change for one lane
 	h, m, r        byLane
 	share          byLane // of a fan: see lens.steepness
 
@@ -175,12 +175,6 @@ func (p *strip) stand(u int) {
 	s := at(ln.s, n)
 	p.ds = (at(ln.s, n+1) - s) / laneStep
 	p.s0 = s - p.ds
-	if ln.places != nil {
-		place := func(n int) place { return ln.places[n].plus(ln.places[n+ln.nk].minus(ln.places[n]), q) }
-		a, b := place(n), place(n+1)
-		p.dp = a.minus(a).plus(b.minus(a), 1./laneStep)
-		p.p0 = a.minus(p.dp)
-	}
 	if ln.uniform {
 		drift := float64(ln.slope * (float64(u) - ln.mid))
 		p.v0, p.dv = float64(p.k0)+drift, 1
@@ -229,6 +223,9 @@ func (p *strip) sample(u int) span {
 	p.stand(u)
 	l := p.inDEM()
 	f, ln := p.f, p.f.ln
+	if ln.places != nil {
+		p.see(u)
+	}
 	z, at := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	switch {
 	case ln.uniform && l == whole:

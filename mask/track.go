@@ -329,6 +329,21 @@ func (tr *tracker) bound(lim dem.Range) {
 	ln.rowH = ln.minDS / ln.cotMost
 }
 
+// see takes the places of the lanes at row u from the lattice.
+func (p *strip) see(u int) {
+	ln := p.f.ln
+	i := min(u/laneStep, ln.nu-2)
+	n, q := i*ln.nk+p.j, float64(u-laneStep*i)/laneStep
+	mix := func(a, b *place) place {
+		of := func(a, b float64) float64 { return a + float64(q*(b-a)) }
+		return place{of(a.x, b.x), of(a.y, b.y), of(a.nx, b.nx), of(a.ny, b.ny)}
+	}
+	a, b := mix(&ln.places[n], &ln.places[n+ln.nk]), mix(&ln.places[n+1], &ln.places[n+1+ln.nk])
+	d := b.minus(a)
+	p.dp = place{d.x * (1. / laneStep), d.y * (1. / laneStep), d.nx * (1. / laneStep), d.ny * (1. / laneStep)}
+	p.p0 = a.minus(p.dp)
+}
+
 // viewLanes fills m and r as a platform sees them and returns the lanes that
 // count: ground under the track and beyond it is none of the look's.
 func (p *strip) viewLanes(l span) span {
