@@ -131,13 +131,21 @@ func changes(a0, a1, b0, b1 float32, drift *[2]float32) (lo, hi float32) {
 }
 
 // crossed returns the bits of the patches that a path from column va to column vb
-// crosses, 0 where they are not all known.
+// crosses, 0 where they are not all known. A path along a column touches those on
+// both sides.
 func (g *gentle) crossed(va, vb float64) uint64 {
-	a, b := int(va)-g.base, int(vb)-g.base // columns are not negative inside the DEM
-	if a > b {
+	if va > vb {
+		va, vb = vb, va
+	}
+	a, b := int(va), int(vb) // columns are not negative inside the DEM
+	if float64(b) == vb {
+		b--
+	}
+	if b < a {
 		a, b = b, a
 	}
-	if a < 0 || b >= patches || va < 0 || vb < 0 {
+	a, b = a-g.base, b-g.base
+	if a < 0 || b >= patches || va < 0 {
 		return 0
 	}
 	return 1<<(b+1) - 1<<a

@@ -261,8 +261,8 @@ func (s *sweep) band(size int64) int64 {
 		near, far := ln.reach(s.lim)
 		rows = max(rows, min(size+int64(near+far), int64(ln.orient.u)))
 	}
-	// Heights, once more by lane, what stands where, and the cells of a strip.
-	return rows * (5*(windowBand*laneStep+2*bandMargin) + 4*(laneStep+1) + 48 + 16*laneStep)
+	// Heights, once more by lane, where lanes and runs stand, and cells of a strip.
+	return rows * (5*(windowBand*laneStep+2*bandMargin) + 4*(laneStep+1) + 400 + 16*laneStep)
 }
 
 // crop shrinks a tile to the cells that count.

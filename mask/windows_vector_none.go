@@ -2,18 +2,20 @@
 
 package mask
 
-func (g *guide) advanceVector(*laneRow, linear, float32) {}
+func (*guide) advanceVector(*laneRow, linear, float32) { panic(noVectors) }
 
-func (g *guide) seesVector(int, bool, []float32, []float32, linear, int, int) uint32 { return 0 }
+func (*guide) seesVector(int, bool, []float32, []float32, linear, int, int) uint32 {
+	panic(noVectors)
+}
 
-func (b *besideLine) slopesVector(int, []float32, []float32) int { return 0 }
+func (*besideLine) slopesVector(int, []float32, []float32) int { panic(noVectors) }
 
-func (q *steepness) searchVector(int) int { return 0 }
+func (*steepness) searchVector(int) int { panic(noVectors) }
 
-func heightsBetweenVector([]float32, []float32, linear, int) int { return 0 }
+func (*summits) raiseVector() { panic(noVectors) }
 
-func alongLineVector(_, _, _ []float32, _, _ linear, _ int) int { return 0 }
+func (*endsBlock) fillVector(*steps, *windower, []float32, int) bool { panic(noVectors) }
 
-func (e *endsBlock) fillVector(*steps, *windower, []float32, int) bool { return false }
+func heightsBetweenVector([]float32, []float32, linear, int) int { panic(noVectors) }
 
-func (q *summits) raiseVector() {}
+func alongLineVector(_, _, _ []float32, _, _ linear, _ int) int { panic(noVectors) }
