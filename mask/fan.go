@@ -156,37 +156,67 @@ type fanGrade struct {
 // lanes at the edges of the strip, since there is ground between them.
 const fanShare = 1e-3
 
-// gradeFan returns the bounds of the row at which the strip stands, those of its
-// outermost lanes with cells between them, at that row and the next one, and at the
-// lowest and the highest ground.
-func (p *strip) gradeFan(u int) (g fanGrade, ok bool) {
+// fanBounds are what the bounds of a row take from the cell of the lattice, by
+// lane at its edges and, of two, for the lowest and the highest ground: numbers of
+// its first row and by how much they change in a row.
+type fanBounds struct {
+	turn       [2][2]float64 // X' Y - Y' X of lens.view, the same all along
+	gain, more [2][2]float64 // X X' + Y Y'
+	span, wide [2]float64    // what a metre of height adds to the look angle, times X^2
+	per        float64       // one over the most slant range for a metre of height
+	spare      float64
+	drift      [2]float32
+}
+
+// boundFan finds them for the cell of the lattice at row i.
+func (p *strip) boundFan(i int) (b fanBounds) {
 	ln, lim := p.f.ln, &p.f.lim
-	n := min(u/laneStep, ln.nu-2)*ln.nk + p.j
-	rise := math.Inf(1)
-	falls, ds := [2]float64{math.Inf(-1), math.Inf(-1)}, 0.0
+	most, ds := 0.0, 0.0
 	for e := range 2 {
-		a, d := p.place(1+laneStep*e), place{}.plus(ln.places[n+e+ln.nk].minus(ln.places[n+e]), 1./laneStep)
-		if ds = max(ds, d.x); a.x <= 0 || d.x <= 0 {
-			return g, false
-		}
-		g.drift[e] = float32((ln.v[n+e+ln.nk] - ln.v[n+e]) * (1. / laneStep))
-		for range 2 {
-			per := 1 / (a.ny*a.x - a.nx*a.y)
-			for i, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
-				x, y, dx, dy := a.x+h*a.nx, a.y+h*a.ny, d.x+h*d.nx, d.y+h*d.ny
-				falls[i] = max(falls[i], (dx*y-dy*x)*per)
-				if level := math.Abs(x*a.nx + y*a.ny); (x*dx + y*dy) < rise*level {
-					rise = (x*dx + y*dy) / level
-				}
-			}
-			a = a.plus(d, 1)
+		n := i*ln.nk + p.j + e
+		m := n + ln.nk
+		first, last := ln.places[n], ln.places[m]
+		b.drift[e] = float32((ln.v[m] - ln.v[n]) * (1. / laneStep))
+		b.span[e] = first.ny*first.x - first.nx*first.y
+		b.wide[e] = (last.ny*last.x - last.nx*last.y - b.span[e]) * (1. / laneStep)
+		ds = max(ds, (last.x-first.x)*(1./laneStep))
+		for k, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
+			x, y := first.x+h*first.nx, first.y+h*first.ny
+			x1, y1 := last.x+h*last.nx, last.y+h*last.ny
+			dx, dy := (x1-x)*(1./laneStep), (y1-y)*(1./laneStep)
+			b.turn[e][k] = dx*y - dy*x
+			b.gain[e][k], b.more[e][k] = x*dx+y*dy, dx*dx+dy*dy
+			most = max(most, math.Abs(x*first.nx+y*first.ny), math.Abs(x1*last.nx+y1*last.ny))
 		}
 	}
-	relief := max(lim.high-lim.low, 1)
-	spare := fanShare*ds + (1-gradeShare)*max(math.Abs(falls[0]), math.Abs(falls[1]))
-	per := max(falls[1]-falls[0], 0) / relief
-	g.rise, g.perHeight = float32(rise*gradeShare), float32(per)
-	g.fall = float32(falls[0] + spare - per*lim.low)
+	b.per, b.spare = gradeShare/most, fanShare*ds
+	return b
+}
+
+// gradeFan returns the bounds of the row at which the strip stands, those of its
+// outermost lanes with cells between them, at that row and the next one, and at the
+// lowest and the highest ground; ok is false next to the radar.
+func (p *strip) gradeFan(u int) (g fanGrade, ok bool) {
+	ln, lim, b := p.f.ln, &p.f.lim, &p.fan
+	i := min(u/laneStep, ln.nu-2)
+	if i != p.graded { // the same for all rows of the lattice's cell
+		*b, p.graded = p.boundFan(i), i
+	}
+	t := float64(u - laneStep*i)
+	rise, low, high := math.Inf(1), math.Inf(-1), math.Inf(-1)
+	for e := range 2 {
+		span := b.span[e] + t*b.wide[e]
+		if !(span > 0 && b.wide[e] > 0) {
+			return g, false
+		}
+		here, next := 1/span, 1/(span+b.wide[e])
+		low = max(low, b.turn[e][0]*here, b.turn[e][0]*next)
+		high = max(high, b.turn[e][1]*here, b.turn[e][1]*next)
+		rise = min(rise, b.gain[e][0]+t*b.more[e][0], b.gain[e][1]+t*b.more[e][1])
+	}
+	spare := b.spare + (1-gradeShare)*max(math.Abs(low), math.Abs(high))
+	per := max(high-low, 0) / max(lim.high-lim.low, 1)
+	g = fanGrade{rise: float32(rise * b.per), fall: float32(low + spare - per*lim.low), perHeight: float32(per), drift: b.drift}
 	return g, rise > 0
 }
 
@@ -215,3 +245,7 @@ func (p *strip) markFan(g *gentle, u int, a, b *byLane41) {
 		}
 	}
 }
+
+// narrow is the distance of lanes, in columns, below which their heights are
+// picked from those of a few columns.
+const narrow = 0.9

@@ -15,11 +15,11 @@ type strip struct {
 	ua, ub int    // rows that are marched
 	u0, u1 int    // rows with cells
 
-	// At the row that is sampled: column and ground distance of lane k0, and
-	// their change for one lane.
+	// At the row where the strip stands: column and ground distance of lane k0,
+	// and their change for one lane.
 	v0, dv, s0, ds float64
 	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
-	p0, dp         place   // of a platform: place of lane 0, change for one lane
+	p0, dp         place   // of a platform, at the row that is sampled: place of lane 0, change for one lane
 	h, m, r        byLane
 	share          byLane // of a fan: see lens.steepness
 
@@ -32,6 +32,7 @@ type strip struct {
 	gentle []gentle // by row from ua on
 	graded int      // of a platform: the row of the lattice that bounds are of
 	bounds grade
+	fan    fanBounds // the same of a fan
 	at     []lateral // the same
 
 	fwd forwardState
@@ -174,12 +175,6 @@ func (p *strip) stand(u int) {
 	s := at(ln.s, n)
 	p.ds = (at(ln.s, n+1) - s) / laneStep
 	p.s0 = s - p.ds
-	if ln.places != nil {
-		place := func(n int) place { return ln.places[n].plus(ln.places[n+ln.nk].minus(ln.places[n]), q) }
-		a, b := place(n), place(n+1)
-		p.dp = a.minus(a).plus(b.minus(a), 1./laneStep)
-		p.p0 = a.minus(p.dp)
-	}
 	if ln.uniform {
 		drift := float64(ln.slope * (float64(u) - ln.mid))
 		p.v0, p.dv = float64(p.k0)+drift, 1
@@ -228,6 +223,9 @@ func (p *strip) sample(u int) span {
 	p.stand(u)
 	l := p.inDEM()
 	f, ln := p.f, p.f.ln
+	if ln.places != nil {
+		p.see(u)
+	}
 	z, at := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	switch {
 	case ln.uniform && l == whole:
@@ -250,6 +248,10 @@ func (p *strip) sample(u int) span {
 // spread fills h with the heights of lanes l at columns v, v + dv and so on of z.
 func (p *strip) spread(z []float32, v float64, l span) {
 	if vectors && l == whole {
+		if p.dv > 0 && p.dv < narrow {
+			spreadNarrowVector(&p.h, z, v, p.dv)
+			return
+		}
 		if turn, shift := shiftOf(v, p.dv); shift*shift <= 1 {
 			spreadVector(&p.h, z, v, p.dv, turn, shift)
 			return
@@ -420,7 +422,9 @@ func (p *strip) forward() {
 			p.forwardSure(row, l)
 			continue
 		}
-		p.forwardUnsure(row, unsure, l)
+		if last == u || !p.forwardTrackUnsure(row, unsure, l) {
+			p.forwardUnsure(row, unsure, l)
+		}
 	}
 }
 
@@ -585,7 +589,9 @@ func (p *strip) backward(cells func(u int)) {
 			p.sure[u-p.ua] |= 2
 			p.backwardSure(row, l)
 		} else {
-			p.backwardUnsure(row, p.unsureRow(u), l)
+			if last == u || !p.backwardTrackUnsure(row, p.unsureRow(u), l) {
+				p.backwardUnsure(row, p.unsureRow(u), l)
+			}
 		}
 		if u < p.u1 {
 			cells(u)

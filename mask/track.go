@@ -329,6 +329,21 @@ func (tr *tracker) bound(lim dem.Range) {
 	ln.rowH = ln.minDS / ln.cotMost
 }
 
+// see takes the places of the lanes at row u from the lattice.
+func (p *strip) see(u int) {
+	ln := p.f.ln
+	i := min(u/laneStep, ln.nu-2)
+	n, q := i*ln.nk+p.j, float64(u-laneStep*i)/laneStep
+	mix := func(a, b *place) place {
+		of := func(a, b float64) float64 { return a + float64(q*(b-a)) }
+		return place{of(a.x, b.x), of(a.y, b.y), of(a.nx, b.nx), of(a.ny, b.ny)}
+	}
+	a, b := mix(&ln.places[n], &ln.places[n+ln.nk]), mix(&ln.places[n+1], &ln.places[n+1+ln.nk])
+	d := b.minus(a)
+	p.dp = place{d.x * (1. / laneStep), d.y * (1. / laneStep), d.nx * (1. / laneStep), d.ny * (1. / laneStep)}
+	p.p0 = a.minus(p.dp)
+}
+
 // viewLanes fills m and r as a platform sees them and returns the lanes that
 // count: ground under the track and beyond it is none of the look's.
 func (p *strip) viewLanes(l span) span {
@@ -392,7 +407,7 @@ func (p *strip) equalRange(k int, r float64) float64 {
 func (p *strip) forwardTrack(row *lines, l span) {
 	minShade, maxNearer, _ := p.f.limitLines()
 	if vectors && l == whole {
-		forwardTrackVector(p, row, minShade, maxNearer)
+		forwardTrackVector(p, &p.fwd.top, &p.fwd.most, &row.shade, &row.nearer, minShade, maxNearer)
 		forwardMoveVector(p, row)
 		return
 	}
@@ -403,12 +418,39 @@ func (p *strip) forwardTrack(row *lines, l span) {
 	p.forwardMove(row, l)
 }
 
+// forwardTrackUnsure marches one row of a platform of which all ground is known,
+// with unknown terrain within reach. It reports whether it has: on vectors only,
+// and where no unknown terrain ends at the row.
+func (p *strip) forwardTrackUnsure(row *lines, unsure *unsureLines, l span) bool {
+	st := &p.fwd
+	if !vectors || p.f.ln.places == nil || l != whole || st.unknown != [padLanes]bool{} {
+		return false
+	}
+	minShade, maxNearer, _ := p.f.limitLines()
+	forwardTrackVector(p, &st.top, &st.most, &row.shade, &row.nearer, minShade, maxNearer)
+	forwardTrackVector(p, &st.topU, &st.mostU, &unsure.shade, &unsure.nearer, minShade, maxNearer)
+	forwardMoveUnsureVector(p, row)
+	return true
+}
+
+// backwardTrackUnsure fills the lines of such a row that the backward march sets.
+func (p *strip) backwardTrackUnsure(row *lines, unsure *unsureLines, l span) bool {
+	st := &p.bwd
+	if !vectors || p.f.ln.places == nil || l != whole || st.unknown != [padLanes]bool{} {
+		return false
+	}
+	_, _, minFarther := p.f.limitLines()
+	backwardTrackVector(p, &st.least, &row.farther, minFarther)
+	backwardTrackVector(p, &st.leastU, &unsure.farther, minFarther)
+	return true
+}
+
 // backwardTrack fills the lines of one row of a platform that the backward
 // march sets.
 func (p *strip) backwardTrack(row *lines, l span) {
 	_, _, minFarther := p.f.limitLines()
 	if vectors && l == whole {
-		backwardTrackVector(p, row, minFarther)
+		backwardTrackVector(p, &p.bwd.least, &row.farther, minFarther)
 		return
 	}
 	for k := l.a; k < l.b; k++ {
@@ -483,6 +525,10 @@ func (r *laneMargins) fromTrack(p *strip, u int, l span) {
 	ln, row := p.f.ln, p.row(u)
 	if vectors && l == whole {
 		trackMarginsVector(r, p, row)
+		if ln.fan == nil {
+			rangesVector(p, &r.near, &row.nearer, false)
+			rangesVector(p, &r.far, &row.farther, true)
+		}
 		return
 	}
 	for k := range marchLanes {
@@ -510,6 +556,15 @@ func (r *laneMargins) trackRangesU(p *strip, u int) {
 	l := p.inDEM()
 	bits := p.sure[u-p.ua]
 	row := p.unsureRow(u)
+	if vectors && l == whole {
+		if bits&1 == 0 {
+			rangesVector(p, &r.nearU, &row.nearer, false)
+		}
+		if bits&2 == 0 {
+			rangesVector(p, &r.farU, &row.farther, true)
+		}
+		return
+	}
 	for k := l.a; k < l.b; k++ {
 		q := p.place(k)
 		r.nearU[k], r.farU[k] = r.near[k], r.far[k]

@@ -47,27 +47,28 @@ func viewTrackVector(p *strip) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// forwardTrackVector fills the lines of strip.forwardTrack.
-func forwardTrackVector(p *strip, row *lines, minShade, maxNearer float64) {
-	ln, st := p.f.ln, &p.fwd
+// forwardTrackVector finds the lines of strip.forwardTrack from the largest m and
+// slant ranges so far.
+func forwardTrackVector(p *strip, tops, ranges *byLane, shades, nearers *byLane32, minShade, maxNearer float64) {
+	ln := p.f.ln
 	scale, datum, lowest, highest := four(ln.scale), four(ln.datum), four(minShade), four(maxNearer)
 	none, zero := four(math.Inf(-1)), four(0)
 	for k := 0; k < marchVectors; k += 4 {
 		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
 		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
-		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
+		top, most := lanes4(tops, k), lanes4(ranges, k)
 		shade := datum.Add(top.Mul(x).Sub(scale.Mul(y)).Div(scale.Mul(ny).Sub(top.Mul(nx))))
-		put4as32(&row.shade, k, shade.Merge(lowest, top.Greater(none)).Max(lowest))
+		put4as32(shades, k, shade.Merge(lowest, top.Greater(none)).Max(lowest))
 		if ln.fan != nil {
 			nearer := lanes4(&p.h, k).Add(lanes4(&p.r, k).Sub(most).Div(lanes4(&p.share, k)))
-			put4as32(&row.nearer, k, nearer.Min(highest))
+			put4as32(nearers, k, nearer.Min(highest))
 			continue
 		}
 		r := most.Max(zero)
 		n, b := nx.Mul(nx).Add(ny.Mul(ny)), x.Mul(nx).Add(y.Mul(ny))
 		c := x.Mul(x).Add(y.Mul(y)).Sub(r.Mul(r))
 		root := b.Mul(b).Sub(n.Mul(c)).Max(zero).Sqrt()
-		put4as32(&row.nearer, k, datum.Sub(b.Add(root).Div(n)).Min(highest))
+		put4as32(nearers, k, datum.Sub(b.Add(root).Div(n)).Min(highest))
 	}
 	archsimd.ClearAVXUpperBits()
 }
@@ -93,15 +94,42 @@ func forwardMoveVector(p *strip, row *lines) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// backwardTrackVector is strip.backwardTrack.
-func backwardTrackVector(p *strip, row *lines, minFarther float64) {
-	ln, st := p.f.ln, &p.bwd
+// forwardMoveUnsureVector is forwardMoveVector where unknown terrain may hide ground,
+// as strip.forwardUnsure has it.
+func forwardMoveUnsureVector(p *strip, row *lines) {
+	st := &p.fwd
+	none, zero, minus := four(nan), four(0), four(math.Copysign(0, -1)).AsInt64x4()
+	for k := 0; k < marchVectors; k += 4 {
+		m, r := lanes4(&p.m, k), lanes4(&p.r, k)
+		top, most, mostU, doubt := lanes4(&st.top, k), lanes4(&st.most, k), lanes4(&st.mostU, k), lanes4(&st.doubt, k)
+		bm, br := lanes4(&st.m, k), lanes4(&st.r, k)
+		edge := br.Add(top.Sub(bm).Div(m.Sub(bm)).Mul(r.Sub(br)))
+		hidden, lit := m.LessEqual(top), m.Greater(lanes4(&st.topU, k))
+		dip := r.Sub(edge).Merge(zero, edge.LessEqual(r))
+		dip = dip.Merge(dip.AsInt64x4().Or(minus).AsFloat64x4(), lit)
+		put4as32(&row.dip, k, none.Merge(dip, hidden))
+		best := edge.Merge(r, edge.Greater(r))
+		put4(&st.mostU, k, mostU.Merge(best.Merge(mostU, best.Greater(mostU)), hidden))
+		put4(&st.most, k, best.Merge(most, best.Greater(most).And(lit).And(m.Greater(top))))
+		doubtful := best.Merge(doubt, best.Greater(doubt).And(m.Greater(top)))
+		put4(&st.doubt, k, doubt.Merge(doubtful, lit))
+		put4(&st.top, k, top.Merge(m, hidden))
+		put4(&st.m, k, m.Merge(none, hidden))
+		put4(&st.r, k, r)
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// backwardTrackVector finds the lines of strip.backwardTrack from the smallest slant
+// ranges so far.
+func backwardTrackVector(p *strip, ranges *byLane, farthers *byLane32, minFarther float64) {
+	ln := p.f.ln
 	datum, lowest, zero := four(ln.datum), four(minFarther), four(0)
 	for k := 0; k < marchVectors; k += 4 {
-		r := lanes4(&st.least, k)
+		r := lanes4(ranges, k)
 		if ln.fan != nil {
 			farther := lanes4(&p.h, k).Add(lanes4(&p.r, k).Sub(r).Div(lanes4(&p.share, k)))
-			put4as32(&row.farther, k, farther.Max(lowest))
+			put4as32(farthers, k, farther.Max(lowest))
 			continue
 		}
 		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
@@ -110,12 +138,33 @@ func backwardTrackVector(p *strip, row *lines, minFarther float64) {
 		n, b := nx.Mul(nx).Add(ny.Mul(ny)), x.Mul(nx).Add(y.Mul(ny))
 		c := x.Mul(x).Add(y.Mul(y)).Sub(r.Mul(r))
 		root := b.Mul(b).Sub(n.Mul(c)).Max(zero).Sqrt()
-		put4as32(&row.farther, k, datum.Sub(b.Add(root).Div(n)).Max(lowest))
+		put4as32(farthers, k, datum.Sub(b.Add(root).Div(n)).Max(lowest))
 	}
 	archsimd.ClearAVXUpperBits()
 }
 
-// trackMarginsVector is laneMargins.fromTrack.
+// rangesVector finds how much slant range lies between the lanes' own ground and a
+// line of heights, and the other way round where the line is that of the ground
+// farther away.
+func rangesVector(p *strip, margin, line *byLane32, farther bool) {
+	datum, zero, none := four(p.f.ln.datum), four(0), four(math.Inf(-1))
+	for k := 0; k < marchVectors; k += 4 {
+		h := lanes4of32(line, k).Sub(datum)
+		x := between4(p.p0.x, p.dp.x, k).Add(h.Mul(between4(p.p0.nx, p.dp.nx, k)))
+		y := between4(p.p0.y, p.dp.y, k).Add(h.Mul(between4(p.p0.ny, p.dp.ny, k)))
+		r := none.Merge(x.Mul(x).Add(y.Mul(y)).Sqrt(), x.LessEqual(zero))
+		if own := lanes4(&p.r, k); farther {
+			r = r.Sub(own)
+		} else {
+			r = own.Sub(r)
+		}
+		put4as32(margin, k, r)
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
+// trackMarginsVector is laneMargins.fromTrack; for a track, without the margins of
+// range.
 func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
 	ln := p.f.ln
 	var share byLane32
@@ -123,19 +172,7 @@ func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
 		put4as32(&r.h, k, lanes4(&p.h, k))
 		if ln.fan != nil {
 			put4as32(&share, k, lanes4(&p.share, k))
-			continue
 		}
-		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
-		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
-		datum, zero, none := four(ln.datum), four(0), four(math.Inf(-1))
-		rangeOf := func(line *byLane32) archsimd.Float64x4 {
-			h := lanes4of32(line, k).Sub(datum)
-			x, y := x.Add(h.Mul(nx)), y.Add(h.Mul(ny))
-			return none.Merge(x.Mul(x).Add(y.Mul(y)).Sqrt(), x.LessEqual(zero))
-		}
-		own := lanes4(&p.r, k)
-		put4as32(&r.near, k, own.Sub(rangeOf(&row.nearer)))
-		put4as32(&r.far, k, rangeOf(&row.farther).Sub(own))
 	}
 	for k := 0; k < padLanes; k += 8 {
 		h := lanes8(&r.h, k)

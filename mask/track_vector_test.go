@@ -24,7 +24,8 @@ func TestTrackVectorsAreTheLoops(t *testing.T) {
 		l := src.Frame.At(row, col)
 		return geometry.Place{Lon: l.Lon, Lat: l.Lat}
 	}
-	for _, kind := range []geometry.Kind{geometry.Orbit, geometry.Flight, geometry.Tripod} {
+	for n := range 6 {
+		kind, open := []geometry.Kind{geometry.Orbit, geometry.Flight, geometry.Tripod}[n/2], n%2 == 0
 		for i := range src.Heights {
 			src.Heights[i] += 40 * rng.Float32()
 		}
@@ -39,7 +40,7 @@ func TestTrackVectorsAreTheLoops(t *testing.T) {
 		case geometry.Tripod:
 			look.Position, look.Antenna = at(90*rng.Float64()-0.5, 40), 300
 		}
-		lim := limits{low: 0, high: 3000, ceiling: 3000, openEdge: true, holeHeight: nan}
+		lim := limits{low: 0, high: 3000, ceiling: 3000, openEdge: open, holeHeight: nan}
 		ln, err := lanesOf(src, look, dem.Range{Min: lim.low, Max: lim.high})
 		require.NoError(t, err)
 		for _, ln := range append([]*lanes{ln}, ln.more...) {
@@ -64,9 +65,16 @@ func TestTrackVectorsAreTheLoops(t *testing.T) {
 						require.Equal(t, bits32(pair[1]), bits32(pair[0]), "%v, strip %d, row %d, line %d", kind, j, i, n)
 					}
 				}
+				for i := range p.unsure {
+					a, b := &p.unsure[i], &q.unsure[i]
+					for n, pair := range [][2]*byLane32{{&a.shade, &b.shade}, {&a.nearer, &b.nearer}, {&a.farther, &b.farther}} {
+						require.Equal(t, bits32(pair[1]), bits32(pair[0]), "%v, strip %d, row %d, unsure line %d", kind, j, i, n)
+					}
+				}
 				for i := range with {
 					a, b := &with[i], &without[i]
-					for n, pair := range [][2]*byLane32{{&a.h, &b.h}, {&a.clear, &b.clear}, {&a.near, &b.near}, {&a.far, &b.far}} {
+					for n, pair := range [][2]*byLane32{{&a.h, &b.h}, {&a.clear, &b.clear}, {&a.near, &b.near}, {&a.far, &b.far},
+						{&a.clearU, &b.clearU}, {&a.nearU, &b.nearU}, {&a.farU, &b.farU}} {
 						require.Equal(t, bits32(pair[1]), bits32(pair[0]), "%v, strip %d, %d rows from the end, margin %d", kind, j, i, n)
 					}
 				}
