@@ -79,8 +79,8 @@ func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n
 		}
 		m := low.Add(high.Sub(low).Mul(above.Div(above.Sub(below))))
 		seen := load(most, c)
-		any := above.Greater(zero).And(seen.Equal(archsimd.BroadcastFloat32x8(g.bound)))
-		out |= uint32(m.Greater(seen).Or(any).ToBits()) << c
+		larger := m.Greater(seen).Or(seen.Equal(archsimd.BroadcastFloat32x8(g.bound)))
+		out |= uint32(above.Greater(zero).And(larger).ToBits()) << c
 	}
 	archsimd.ClearAVXUpperBits()
 	return out & uint32(1<<n-1)

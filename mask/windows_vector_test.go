@@ -18,12 +18,13 @@ func TestWindowVectors(t *testing.T) {
 	if !vectors {
 		t.Log("this processor has no vectors: the portable loops are compared with themselves")
 	}
-	defer func(v bool) { vectors = v }(vectors)
+	have := vectors
+	defer func() { vectors = have }()
 	const seed = 5
 	t.Logf("seed %d", seed)
 	for k := range uint64(2000) {
 		var got [2][]float32
-		for i, v := range []bool{vectors, false} {
+		for i, v := range []bool{have, false} {
 			vectors = v
 			got[i] = windowLoops(rand.New(rand.NewPCG(seed, k)))
 		}
