@@ -101,8 +101,8 @@ func TestVectorsGiveTheSameLayers(t *testing.T) {
 	defer func() { vectors = true }()
 	const seed = 20261202
 	rng := rand.New(rand.NewPCG(seed, 1))
-	layers := []Layer{VerdictLayer, LayoverLayer, ShadowLayer, Clearance, FoldMargin, Returns, LocalIncidence}
 	for n := range 24 {
+		layers := []Layer{VerdictLayer, LayoverLayer, ShadowLayer, Clearance, FoldMargin, Returns, LocalIncidence}
 		src := mountainSquare(t, 150)
 		for i := range src.Heights {
 			src.Heights[i] += float32(n) * rng.Float32()
@@ -114,9 +114,16 @@ func TestVectorsGiveTheSameLayers(t *testing.T) {
 		require.NoError(t, err)
 		look := fixed(20+50*rng.Float64(), 360*rng.Float64())
 		look.Bandwidth = 50e6
-		if n%4 == 1 {
+		switch n % 4 {
+		case 0:
+			layers = append(layers, WindowLow, WindowHigh)
+		case 1:
 			look.Kind, look.Altitude, look.Heading, look.Side = geometry.Orbit, 600e3, look.Azimuth, geometry.Left
 			look.Azimuth = geometry.NotGiven
+		case 2:
+			l := src.Frame.At(149*rng.Float64(), 149*rng.Float64())
+			look.Kind, look.Antenna, look.Position = geometry.Tripod, 30, geometry.Place{Lon: l.Lon, Lat: l.Lat}
+			look.Azimuth, look.Incidence = geometry.NotGiven, geometry.NotGiven
 		}
 		run := func(on bool) map[Layer][]uint32 {
 			vectors = on
