@@ -185,9 +185,10 @@ func (p *strip) boundFan(i int) (b fanBounds) {
 	return b
 }
 
-// gradeFan is gradeTrack for a fan. It returns the bounds of the row at which the strip stands, those of its
-// outermost lanes with cells between them, at that row and the next one, and at the
-// lowest and the highest ground; ok is false next to the radar.
+// gradeFan is gradeTrack for a fan. It returns the bounds of the row at which the
+// strip stands: those of its outermost lanes with cells between them, at that row
+// and the next one, and at the lowest and the highest ground; ok is false next to
+// the radar.
 func (p *strip) gradeFan(u int) (g seenGrade, ok bool) {
 	ln, lim, b := p.f.ln, &p.f.lim, &p.fan
 	i := min(u/laneStep, ln.nu-2)

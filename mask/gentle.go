@@ -7,8 +7,9 @@ import "math"
 // column base. A patch is the bilinear surface between four cells.
 type gentle struct {
 	base       int
-	rises, lit uint64 // slant range grows, the look angle grows, away from the radar
-	dark       uint64 // of a platform: the look angle falls
+	rises, lit uint64  // slant range grows, the look angle grows, away from the radar
+	dark       uint64  // of a platform: the look angle falls
+	top        float64 // of a fan: the largest m between its lanes, or more
 	// What the row is worth, at the least: metres of height at equal slant range,
 	// and at an equal look angle.
 	worthR, worthM float32
@@ -52,7 +53,7 @@ func (p *strip) mark(u int) {
 		p.graded = -1
 	}
 	g := &p.gentle[u-p.ua]
-	*g = gentle{base: int(math.Floor(p.edgeA)) - 1, steep: float32(math.Inf(1))}
+	*g = gentle{base: int(math.Floor(p.edgeA)) - 1, steep: float32(math.Inf(1)), top: math.Inf(1)}
 	if u+1 >= p.ub {
 		return
 	}

@@ -603,11 +603,17 @@ func (p *strip) markSeen(g *gentle, u int, a, b *byLane41) {
 		return
 	}
 	g.worthR, g.worthM, g.steep = limits.worthR, limits.worthM, limits.steep
+	first, last := p.between(g.base, &limits.drift)
+	high := float32(math.Inf(-1))
 	if vectors {
-		g.rises, g.lit, g.dark = markSeenVector(a, b, &limits)
+		g.rises, g.lit, g.dark, high = markSeenVector(a, b, &limits, first, last)
+		g.top = p.topOf(u, high)
 		return
 	}
 	for k := range patches {
+		if k >= first && k <= last {
+			high = max(high, a[k], a[k+1], b[k], b[k+1])
+		}
 		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
 		if hi < limits.rise && lo > limits.drop {
 			g.rises |= 1 << k
@@ -619,6 +625,33 @@ func (p *strip) markSeen(g *gentle, u int, a, b *byLane41) {
 			g.dark |= 1 << k
 		}
 	}
+	g.top = p.topOf(u, high)
+}
+
+// between returns the first and the last patch, counted from column base, that lie
+// between the lanes at the strip's edges in a row, over which these drift.
+func (p *strip) between(base int, drift *[2]float32) (first, last int) {
+	a, b := float64(drift[0]), float64(drift[1])
+	return int(min(p.edgeA, p.edgeA+a)) - base, int(max(p.edgeB, p.edgeB+b)) - base
+}
+
+// topOf returns what m ground of a fan below a height does not exceed between row
+// u, where the strip stands, and the next one: m of a height is the ratio of two
+// linear functions there.
+func (p *strip) topOf(u int, high float32) float64 {
+	ln, h := p.f.ln, float64(high)
+	top := math.Inf(1)
+	if ln.fan == nil || !(h < top) {
+		return top
+	}
+	top = -top
+	n := min(u/laneStep, ln.nu-2)*ln.nk + p.j
+	for e := range 2 {
+		a, d := p.place(1+laneStep*e), place{}.plus(ln.places[n+e+ln.nk].minus(ln.places[n+e]), 1./laneStep)
+		next := a.plus(d, 1)
+		top = max(top, ln.viewM(&a, h), ln.viewM(&next, h))
+	}
+	return top + 1e-9*math.Abs(top)
 }
 
 // gradeTrack finds the bounds in the cell of the lattice at row i: the strictest of
