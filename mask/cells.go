@@ -210,7 +210,12 @@ func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt 
 	if w == 0 {
 		next = k
 	}
-	wk.quick(p, u, v, k, next, (float64(v)-p.v0)/p.dv, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
+	x := (float64(v) - p.v0) / p.dv
+	if doubt&doubtClear != 0 && p.shadowed(u, v, x) {
+		m.clear = signed(m.clear, false, t.margins.tinyM)
+		return m
+	}
+	wk.quick(p, u, v, k, next, x, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 	return m
 }
 

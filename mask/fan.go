@@ -144,14 +144,6 @@ func (q *quickWalk) laneRange(u, k int, line float32) float64 {
 	return r - (float64(line)-h)*ln.steepness(&p, h, r)
 }
 
-// fanGrade is grade for a fan, where the change of height above which the look
-// angle grows depends on the height: fall and perHeight times it. Ground above
-// the antenna must not fall too much either for its slant range to grow.
-type fanGrade struct {
-	rise, fall, perHeight float32
-	drift                 [2]float32
-}
-
 // fanShare is the part of a row by which the limits are stricter than those at the
 // lanes at the edges of the strip, since there is ground between them.
 const fanShare = 1e-3
@@ -193,57 +185,44 @@ func (p *strip) boundFan(i int) (b fanBounds) {
 	return b
 }
 
-// gradeFan returns the bounds of the row at which the strip stands, those of its
-// outermost lanes with cells between them, at that row and the next one, and at the
-// lowest and the highest ground; ok is false next to the radar.
-func (p *strip) gradeFan(u int) (g fanGrade, ok bool) {
+// gradeFan is gradeTrack for a fan. It returns the bounds of the row at which the
+// strip stands: those of its outermost lanes with cells between them, at that row
+// and the next one, and at the lowest and the highest ground; ok is false next to
+// the radar.
+func (p *strip) gradeFan(u int) (g seenGrade, ok bool) {
 	ln, lim, b := p.f.ln, &p.f.lim, &p.fan
 	i := min(u/laneStep, ln.nu-2)
 	if i != p.graded { // the same for all rows of the lattice's cell
 		*b, p.graded = p.boundFan(i), i
 	}
 	t := float64(u - laneStep*i)
-	rise, low, high := math.Inf(1), math.Inf(-1), math.Inf(-1)
+	rise := math.Inf(1)
+	var least, most [2]float64 // rises at which the look angle stays the same
 	for e := range 2 {
 		span := b.span[e] + t*b.wide[e]
 		if !(span > 0 && b.wide[e] > 0) {
 			return g, false
 		}
 		here, next := 1/span, 1/(span+b.wide[e])
-		low = max(low, b.turn[e][0]*here, b.turn[e][0]*next)
-		high = max(high, b.turn[e][1]*here, b.turn[e][1]*next)
+		for k, turn := range b.turn[e] {
+			x, y := turn*here, turn*next
+			if e == 0 {
+				least[k], most[k] = min(x, y), max(x, y)
+			}
+			least[k], most[k] = min(least[k], x, y), max(most[k], x, y)
+		}
 		rise = min(rise, b.gain[e][0]+t*b.more[e][0], b.gain[e][1]+t*b.more[e][1])
 	}
-	spare := b.spare + (1-gradeShare)*max(math.Abs(low), math.Abs(high))
-	per := max(high-low, 0) / max(lim.high-lim.low, 1)
-	g = fanGrade{rise: float32(rise * b.per), fall: float32(low + spare - per*lim.low), perHeight: float32(per), drift: b.drift}
+	spare := b.spare + (1-gradeShare)*max(math.Abs(least[0]), math.Abs(most[0]), math.Abs(least[1]), math.Abs(most[1]))
+	per := max(most[1]-most[0], 0) / max(lim.high-lim.low, 1)
+	g = seenGrade{rise: float32(rise * b.per), perHeight: float32(per), drift: b.drift}
+	g.drop = -g.rise
+	g.fall = float32(most[0] + spare - per*lim.low)
+	g.dark = float32(min(least[0]-per*lim.low, least[1]-per*lim.high) - spare)
+	// What a row is worth in height at equal slant range is not said: the lines of a
+	// fan do not tell it.
+	g.worthR, g.worthM, g.steep = float32(math.Inf(-1)), -float32(most[1]+spare), float32(math.Inf(1))
 	return g, rise > 0
-}
-
-// markFan is the work of strip.mark for a fan, with the heights a and b of the two
-// rows.
-func (p *strip) markFan(g *gentle, u int, a, b *byLane41) {
-	limits, ok := p.gradeFan(u)
-	if !ok {
-		return
-	}
-	// What a row is worth in height at equal slant range is not asked: the lines of
-	// a fan do not say it.
-	g.worthR = float32(math.Inf(-1))
-	g.worthM = -(limits.fall + float32(limits.perHeight*float32(p.f.lim.high)))
-	if vectors {
-		g.rises, g.lit = markFanVector(a, b, &limits)
-		return
-	}
-	for k := range patches {
-		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
-		if hi < limits.rise && lo > -limits.rise {
-			g.rises |= 1 << k
-		}
-		if lo > limits.fall+float32(limits.perHeight*max(a[k], a[k+1], b[k], b[k+1])) {
-			g.lit |= 1 << k
-		}
-	}
 }
 
 // narrow is the distance of lanes, in columns, below which their heights are

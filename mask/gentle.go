@@ -7,7 +7,9 @@ import "math"
 // column base. A patch is the bilinear surface between four cells.
 type gentle struct {
 	base       int
-	rises, lit uint64 // slant range grows, the look angle grows, away from the radar
+	rises, lit uint64  // slant range grows, the look angle grows, away from the radar
+	dark       uint64  // of a platform: the look angle falls
+	top        float64 // of a fan: the largest m between its lanes, or more
 	// What the row is worth, at the least: metres of height at equal slant range,
 	// and at an equal look angle.
 	worthR, worthM float32
@@ -20,7 +22,6 @@ type gentle struct {
 // columns that lines move in that row, at the least and at the most.
 type grade struct {
 	rise, fall float32
-	most       float32 // the largest limit of slant range, where rise is the least
 	drift      [2]float32
 }
 
@@ -31,7 +32,7 @@ const gradeShare = 0.99
 // patches is the number of patches of a row that lines of a strip may cross.
 const patches = padLanes
 
-// gradeOf returns the bounds of the row at which the strip stands.
+// gradeOf returns the bounds of a plane wave for the row at which the strip stands.
 func (p *strip) gradeOf(u int) grade {
 	ln := p.f.ln
 	i := min(u/laneStep, ln.nu-2)
@@ -41,39 +42,7 @@ func (p *strip) gradeOf(u int) grade {
 	ds := min(ln.s[m]-ln.s[n], ln.s[m+1]-ln.s[n+1]) * (gradeShare / laneStep)
 	g := grade{drift: [2]float32{drift(n, m), drift(n+1, m+1)}}
 	g.rise, g.fall = float32(ds*ln.tan), float32(-ds*ln.cot)
-	g.most = g.rise
-	if ln.places != nil {
-		if i != p.graded { // the same for all rows of the lattice's cell
-			p.bounds.rise, p.bounds.fall, p.bounds.most = p.gradeSeen(n, m)
-			p.graded = i
-		}
-		g.rise, g.fall, g.most = p.bounds.rise, p.bounds.fall, p.bounds.most
-	}
 	return g
-}
-
-// gradeSeen finds the bounds of a platform: the least of those at the corners of
-// the cell of the lattice and at the lowest and the highest ground; most is the
-// largest there of those that rise is the least of.
-func (p *strip) gradeSeen(n, m int) (rise, fall, most float32) {
-	ln, lim := p.f.ln, &p.f.lim
-	r, f, top := math.Inf(1), math.Inf(-1), math.Inf(-1)
-	for _, at := range [2][2]int{{n, m}, {n + 1, m + 1}} {
-		a, b := ln.places[at[0]], ln.places[at[1]]
-		for _, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
-			dx, dy := b.x+h*b.nx-a.x-h*a.nx, b.y+h*b.ny-a.y-h*a.ny
-			for _, q := range [2]place{a, b} {
-				x, y := q.x+h*q.nx, q.y+h*q.ny
-				if x <= 0 || x*q.nx+y*q.ny >= 0 || q.ny*x-q.nx*y <= 0 { // under the track, above the antenna
-					return float32(math.Inf(-1)), float32(math.Inf(1)), float32(math.Inf(1))
-				}
-				limit := -(x*dx + y*dy) / (x*q.nx + y*q.ny)
-				r, top = min(r, limit), max(top, limit)
-				f = max(f, -(dy*x-y*dx)/(q.ny*x-q.nx*y))
-			}
-		}
-	}
-	return float32(r * gradeShare / laneStep), float32(f * gradeShare / laneStep), float32(top * gradeShare / laneStep)
 }
 
 // mark finds the gentle patches between row u, where the strip stands, and the
@@ -84,7 +53,7 @@ func (p *strip) mark(u int) {
 		p.graded = -1
 	}
 	g := &p.gentle[u-p.ua]
-	*g = gentle{base: int(math.Floor(p.edgeA)) - 1, steep: float32(math.Inf(1))}
+	*g = gentle{base: int(math.Floor(p.edgeA)) - 1, steep: float32(math.Inf(1)), top: math.Inf(1)}
 	if u+1 >= p.ub {
 		return
 	}
@@ -94,12 +63,12 @@ func (p *strip) mark(u int) {
 		return
 	}
 	a, b := f.z[from:], f.z[to:]
-	if f.ln.fan != nil {
-		p.markFan(g, u, (*byLane41)(a), (*byLane41)(b))
+	if f.ln.places != nil {
+		p.markSeen(g, u, (*byLane41)(a), (*byLane41)(b))
 		return
 	}
 	limits := p.gradeOf(u)
-	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.most*surely
+	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.rise*surely
 	if vectors {
 		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
 		return

@@ -31,7 +31,7 @@ type strip struct {
 	sure   []uint8
 	gentle []gentle // by row from ua on
 	graded int      // of a platform: the row of the lattice that bounds are of
-	bounds grade
+	bounds seenGrade
 	fan    fanBounds // the same of a fan
 	at     []lateral // the same
 

@@ -284,6 +284,9 @@ func (q *quickWalk) below(u int, va, vb, sa float64) bool {
 	if q.y.ln.places == nil {
 		return false
 	}
+	if q.p.gentle[u-1-q.p.ua].top < q.m {
+		return true
+	}
 	_, high := q.between(u, -1, va, vb)
 	top := q.y.seeM(sa, high)
 	return top < q.m && !q.overhead(top)

@@ -263,9 +263,15 @@ func (r *runner) tileSize() int {
 		}
 		return (most+t*t*(24+bands))*int64(r.threads) <= memory
 	}
-	// Four tiles a worker balance their unequal costs.
-	w := r.job.Window
-	share := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(4*r.threads)))
+	// Four tiles a worker balance their unequal costs. A tripod has one: the lanes
+	// of each tile are marched from the radar on.
+	w, tiles := r.job.Window, 4*r.threads
+	for _, ln := range r.looks {
+		if ln.fan != nil {
+			tiles = r.threads
+		}
+	}
+	share := int64(math.Sqrt(float64(w.Rows) * float64(w.Cols) / float64(tiles)))
 	t := min(max(share, minTile), max(cacheTile, 2*int64(halo)), maxTile)
 	for t > minTile && !fits(t) {
 		t = t * 3 / 4

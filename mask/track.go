@@ -578,3 +578,123 @@ func (r *laneMargins) trackRangesU(p *strip, u int) {
 		}
 	}
 }
+
+// seenGrade is grade for a platform. Ground above the antenna must not fall too
+// much either for its slant range to grow, and the change above which the look
+// angle grows may depend on the height.
+type seenGrade struct {
+	rise, drop            float32
+	fall, dark, perHeight float32 // at height 0: the look angle grows above fall, falls below dark
+	drift                 [2]float32
+	worthR, worthM, steep float32 // see gentle
+}
+
+// markSeen is the work of strip.mark for a platform, with the heights a and b of
+// the two rows.
+func (p *strip) markSeen(g *gentle, u int, a, b *byLane41) {
+	limits, ok := p.bounds, true
+	if p.f.ln.fan != nil {
+		limits, ok = p.gradeFan(u)
+	} else if i := min(u/laneStep, p.f.ln.nu-2); i != p.graded { // the same for all rows of the lattice's cell
+		limits = p.gradeTrack(i)
+		p.bounds, p.graded = limits, i
+	}
+	if !ok {
+		return
+	}
+	g.worthR, g.worthM, g.steep = limits.worthR, limits.worthM, limits.steep
+	first, last := p.between(g.base, &limits.drift)
+	high := float32(math.Inf(-1))
+	if vectors {
+		g.rises, g.lit, g.dark, high = markSeenVector(a, b, &limits, first, last)
+		g.top = p.topOf(u, high)
+		return
+	}
+	for k := range patches {
+		if k >= first && k <= last {
+			high = max(high, a[k], a[k+1], b[k], b[k+1])
+		}
+		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
+		if hi < limits.rise && lo > limits.drop {
+			g.rises |= 1 << k
+		}
+		if lo > limits.fall+float32(limits.perHeight*max(a[k], a[k+1], b[k], b[k+1])) {
+			g.lit |= 1 << k
+		}
+		if hi < limits.dark+float32(limits.perHeight*min(a[k], a[k+1], b[k], b[k+1])) {
+			g.dark |= 1 << k
+		}
+	}
+	g.top = p.topOf(u, high)
+}
+
+// between returns the first and the last patch, counted from column base, that lie
+// between the lanes at the strip's edges in a row, over which these drift.
+func (p *strip) between(base int, drift *[2]float32) (first, last int) {
+	a, b := float64(drift[0]), float64(drift[1])
+	return int(min(p.edgeA, p.edgeA+a)) - base, int(max(p.edgeB, p.edgeB+b)) - base
+}
+
+// topOf returns what m ground of a fan below a height does not exceed between row
+// u, where the strip stands, and the next one: m of a height is the ratio of two
+// linear functions there.
+func (p *strip) topOf(u int, high float32) float64 {
+	ln, h := p.f.ln, float64(high)
+	top := math.Inf(1)
+	if ln.fan == nil || !(h < top) {
+		return top
+	}
+	top = -top
+	n := min(u/laneStep, ln.nu-2)*ln.nk + p.j
+	for e := range 2 {
+		a, d := p.place(1+laneStep*e), place{}.plus(ln.places[n+e+ln.nk].minus(ln.places[n+e]), 1./laneStep)
+		next := a.plus(d, 1)
+		top = max(top, ln.viewM(&a, h), ln.viewM(&next, h))
+	}
+	return top + 1e-9*math.Abs(top)
+}
+
+// gradeTrack finds the bounds in the cell of the lattice at row i: the strictest of
+// those at its corners and at the lowest and the highest ground.
+func (p *strip) gradeTrack(i int) seenGrade {
+	ln, lim := p.f.ln, &p.f.lim
+	inf := math.Inf(1)
+	rise, steep, fall, dark := inf, -inf, -inf, inf
+	var drift [2]float32
+	for e := range 2 {
+		n := i*ln.nk + p.j + e
+		a, b := ln.places[n], ln.places[n+ln.nk]
+		drift[e] = float32((ln.v[n+ln.nk] - ln.v[n]) * (1. / laneStep))
+		for _, h := range [2]float64{lim.low - ln.datum, lim.high - ln.datum} {
+			dx, dy := b.x+h*b.nx-a.x-h*a.nx, b.y+h*b.ny-a.y-h*a.ny
+			for _, q := range [2]place{a, b} {
+				x, y := q.x+h*q.nx, q.y+h*q.ny
+				if x <= 0 || x*q.nx+y*q.ny >= 0 || q.ny*x-q.nx*y <= 0 { // under the track, above the antenna
+					rise, steep, fall, dark = -inf, inf, inf, -inf
+					continue
+				}
+				limit := -(x*dx + y*dy) / (x*q.nx + y*q.ny)
+				rise, steep = min(rise, limit), max(steep, limit)
+				limit = (y*dx - x*dy) / (q.ny*x - q.nx*y)
+				fall, dark = max(fall, limit), min(dark, limit)
+			}
+		}
+	}
+	const share = gradeShare / laneStep
+	g := seenGrade{rise: float32(rise * share), drop: float32(-inf), fall: float32(fall * share), drift: drift}
+	g.dark = float32((dark - (1-gradeShare)*math.Abs(dark)) / laneStep)
+	g.worthR, g.worthM, g.steep = g.rise, -g.fall, float32(steep*share*surely)
+	return g
+}
+
+// shadowed reports whether the ground right before the cell (u, v), which is on lane
+// x of the strip, surely hides it: towards the radar it rises above its line of
+// sight over the whole row.
+func (p *strip) shadowed(u, v int, x float64) bool {
+	if u <= p.ua {
+		return false
+	}
+	g := &p.gentle[u-1-p.ua]
+	c := g.crossed(p.at[u-1-p.ua].column(x), float64(v))
+	return c != 0 && g.dark&c == c
+}

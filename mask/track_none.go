@@ -10,5 +10,7 @@ func forwardMoveVector(*strip, *lines)                                        { 
 func backwardTrackVector(*strip, *byLane, *byLane32, float64)                 { panic(noVectors) }
 func trackMarginsVector(*laneMargins, *strip, *lines)                         { panic(noVectors) }
 
-func spreadNarrowVector(*byLane, []float32, float64, float64)           { panic(noVectors) }
-func markFanVector(*byLane41, *byLane41, *fanGrade) (rises, lit uint64) { panic(noVectors) }
+func spreadNarrowVector(*byLane, []float32, float64, float64) { panic(noVectors) }
+func markSeenVector(_, _ *byLane41, _ *seenGrade, _, _ int) (rises, lit, dark uint64, high float32) {
+	panic(noVectors)
+}
