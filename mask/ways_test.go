@@ -1,0 +1,183 @@
+package mask_test
+
+import (
+	"context"
+	"flag"
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"testing"
+
+	"github.com/stretchr/testify/require"
+
+	"foldshade/dem"
+	"foldshade/geometry"
+	"foldshade/mask"
+	"foldshade/mask/internal/testterrain"
+)
+
+var (
+	waysScenes = flag.Int("ways.scenes", 60, "random grids of TestEveryWayGivesTheSame")
+	waysKind   = flag.String("ways.kind", "", "fixed, track or tripod only")
+)
+
+// waysScene draws a grid large enough for bundles of cells, smooth to white, whose
+// slopes are about those at which ground folds or hides.
+func waysScene(rng *rand.Rand) scene {
+	var s scene
+	rows, cols := 20+rng.IntN(100), 20+rng.IntN(100)
+	cell := 5 * math.Exp2(3*rng.Float64())
+	var g *dem.Grid
+	switch rng.IntN(4) {
+	case 0:
+		g, s.name = testterrain.Metric(rows, cols, cell, cell, geometry.Angle(rng.Float64()*2-1)), "turned"
+	case 1:
+		g, s.name = testterrain.Metric(rows, cols, cell, cell*math.Exp2(rng.Float64()*2-1), 0), "oblong"
+	case 2:
+		g, s.name = testterrain.Transverse(rows, cols, cell, 300000+400000*rng.Float64(), 6e6*rng.Float64()+1e6, -123), "transverse"
+	default:
+		deg := cell / 111000 * math.Exp2(4*rng.Float64())
+		g, s.name = testterrain.Geographic(rows, cols, deg, deg*math.Exp2(rng.Float64()*2-1), 100*rng.Float64(), 140*rng.Float64()-70), "geographic"
+	}
+	local := g.At(0, 0)
+	cell = min(math.Hypot(local.ColE, local.ColN), math.Hypot(local.RowE, local.RowN))
+	smooth := [...]float64{0, 0.5, 0.8, 1}[rng.IntN(4)]
+	s.terrain = &dem.Memory{Frame: g, Heights: testterrain.Fractal(rng, rows, cols, cell*math.Exp2(rng.Float64()*4-2+3*smooth), smooth)}
+	s.name += fmt.Sprintf(", fractal %v", smooth)
+	if rng.IntN(3) == 0 {
+		for range 1 + rng.IntN(12) {
+			s.terrain.Heights[rng.IntN(rows*cols)] += float32(cell * 4 * rng.Float64())
+		}
+		s.name += ", walls"
+	}
+	s.options = mask.DefaultOptions()
+	s.options.OpenEdge = rng.IntN(2) > 0
+	if rng.IntN(4) == 0 {
+		s.drill(rng)
+	}
+	azimuth := geometry.Angle(360*rng.Float64()) * geometry.Degree
+	if rng.IntN(3) == 0 {
+		azimuth = geometry.Angle(45*rng.IntN(8)) * geometry.Degree
+	}
+	s.look = fixedLook(geometry.Angle(20+50*rng.Float64())*geometry.Degree, azimuth)
+	return s
+}
+
+// tripod gives a scene a radar on the ground.
+func (s scene) tripod(rng *rand.Rand) scene {
+	g := s.terrain.Frame
+	for {
+		row, col := rng.Float64()*float64(g.Rows-1), rng.Float64()*float64(g.Cols-1)
+		l := g.At(row, col)
+		look := geometry.NewLook()
+		look.Name, look.Kind = fmt.Sprintf("tripod at %.2f, %.2f", row, col), geometry.Tripod
+		look.Position, look.Antenna = geometry.Place{Lon: l.Lon, Lat: l.Lat}, 2*math.Exp2(7*rng.Float64())
+		if h := s.terrain.Heights[int(row)*g.Cols+int(col)] + s.terrain.Heights[(int(row)+1)*g.Cols+int(col)] + s.terrain.Heights[int(row)*g.Cols+int(col)+1] + s.terrain.Heights[(int(row)+1)*g.Cols+int(col)+1]; h != h {
+			continue
+		}
+		s.look = look
+		return s
+	}
+}
+
+// differenceOf returns how many values and classes of two rasters differ, and the
+// first of them.
+func differenceOf(whole, part *raster) (n, classes int, first string) {
+	for i := range part.window.Rows * part.window.Cols {
+		row, col := part.window.Row+i/part.window.Cols, part.window.Col+i%part.window.Cols
+		j := (row-whole.window.Row)*whole.window.Cols + col - whole.window.Col
+		for l, c := range part.classes {
+			if a, ok := whole.classes[l]; ok && a[j] != c[i] {
+				n++
+				classes++
+				if classes == 1 {
+					first = fmt.Sprintf("%s at %d, %d: %v, %v", l, row, col, mask.Class(a[j]), mask.Class(c[i]))
+				}
+			}
+		}
+		for l, bands := range part.values {
+			if a, ok := whole.values[l]; ok && math.Float32bits(a[0][j]) != math.Float32bits(bands[0][i]) && !(a[0][j] != a[0][j] && bands[0][i] != bands[0][i]) {
+				if n++; first == "" {
+					first = fmt.Sprintf("%s at %d, %d: %v, %v", l, row, col, a[0][j], bands[0][i])
+				}
+			}
+		}
+	}
+	return n, classes, first
+}
+
+// TestEveryWayGivesTheSame: small tiles, windows, other layers beside, vectors or
+// loops, all to the bit.
+func TestEveryWayGivesTheSame(t *testing.T) {
+	defer mask.SetVectors(true)
+	layers := []mask.Layer{mask.VerdictLayer, mask.LayoverLayer, mask.ShadowLayer, mask.Clearance, mask.FoldMargin}
+	counts := map[string]int{}
+	for k := range *waysScenes {
+		rng := rand.New(rand.NewPCG(*walkSeed, uint64(21000+k)))
+		s := waysScene(rng)
+		kind := [...]string{"fixed", "track", "tripod"}[k%3]
+		if *waysKind != "" {
+			kind = *waysKind
+		}
+		switch kind {
+		case "track":
+			s = s.tracked(rng)
+		case "tripod":
+			s = s.tripod(rng)
+		}
+		g := s.terrain.Frame
+		s.options.Threads = 1
+		if s.options.Tile = 4096; rng.IntN(2) == 0 {
+			s.options.Tile = 0
+		}
+		whole := march(t, s.terrain, g.Whole(), layers, s.options, s.look)
+		report := func(way string, part *raster) {
+			n, classes, first := differenceOf(&whole[0], part)
+			if n > 0 {
+				counts[kind+" "+way]++
+				if classes > 0 {
+					counts[kind+" "+way+" classes"]++
+				}
+				t.Errorf("grid %d, %s: %d differ, %d classes: %s\n%v, %s", k, way, n, classes, first, s, s.look.Name)
+			}
+		}
+		for _, tile := range []int{5, 7, 13 + rng.IntN(30)} {
+			o := s.options
+			o.Tile = tile
+			report(fmt.Sprintf("tile %d", min(tile, 13)), &march(t, s.terrain, g.Whole(), layers, o, s.look)[0])
+		}
+		more := append(append([]mask.Layer{}, layers...), mask.Returns)
+		report("returns", &march(t, s.terrain, g.Whole(), more, s.options, s.look)[0])
+		other := fixedLook(33*deg, 100*deg)
+		report("looks", &march(t, s.terrain, g.Whole(), layers, s.options, other, s.look)[1])
+		mask.SetVectors(false)
+		report("loops", &march(t, s.terrain, g.Whole(), layers, s.options, s.look)[0])
+		mask.SetVectors(true)
+	}
+	t.Log(counts)
+}
+
+// Beside a hole that is given a height, the slope that the layers have is one-sided
+// and without it; the surface that the march folds has it. The cell east of the hole
+// is folded by 19.7 m of slant range: the walk says so.
+func TestFoldsBesideAHoleOfGivenHeight(t *testing.T) {
+	g := testterrain.Metric(5, 10, 10, 10, 0)
+	hole := float32(math.NaN())
+	m := &dem.Memory{Frame: g, Heights: []float32{
+		1, 14, 26, 34, 46, 51, 66, 71, 82, 91,
+		6, 14, 24, 35, 42, 53, hole, 74, 84, 91,
+		5, 11, 20, 34, 45, 54, 62, 71, 84, 93,
+		1, 15, 24, 35, 43, 55, 65, 71, 86, 93,
+		3, 16, 26, 32, 45, 54, 60, 72, 81, 92,
+	}}
+	o := openEdge()
+	o.HoleHeight = -27
+	look := fixedLook(50*deg, 96*deg)
+	span, err := dem.Scan(context.Background(), m)
+	require.NoError(t, err)
+	want := newWalker(m, span, look, o).at(1, 7, nil)
+	require.Equal(t, kindFolded, want.kind)
+	require.Less(t, want.r, -15.)
+	got := march(t, m, g.Whole(), marginLayers, o, look)[0]
+	require.Equal(t, kindFolded, got.kind(mask.LayoverLayer, 1, 7))
+}
