@@ -18,7 +18,7 @@ import (
 
 var (
 	waysScenes = flag.Int("ways.scenes", 60, "random grids of TestEveryWayGivesTheSame")
-	waysKind   = flag.String("ways.kind", "", "fixed, track or tripod only")
+	waysKind   = flag.String("ways.kind", "", "fixed, track, tripod or polar only")
 )
 
 // waysScene draws a grid large enough for bundles of cells, smooth to white, whose
@@ -80,6 +80,25 @@ func (s scene) tripod(rng *rand.Rand) scene {
 	}
 }
 
+// polar puts a scene on large cells near a pole, where lines of one azimuth bend and
+// drift apart.
+func (s *scene) polar(rng *rand.Rand) {
+	old := s.terrain.Frame
+	local := old.At(0, 0)
+	cell := math.Hypot(local.RowE, local.RowN)
+	deg := 0.002 * math.Exp2(4*rng.Float64())
+	lat := 60 + 24*rng.Float64()
+	if rng.IntN(2) == 0 {
+		lat = -lat
+	}
+	g := testterrain.Geographic(old.Rows, old.Cols, deg*math.Exp2(2*rng.Float64()), deg, 12, lat)
+	h := make([]float32, len(s.terrain.Heights))
+	for i, z := range s.terrain.Heights {
+		h[i] = z * float32(min(deg*111000/cell, 40))
+	}
+	s.terrain, s.name = &dem.Memory{Frame: g, Heights: h}, s.name+fmt.Sprintf(", polar %.4f at %.2f", deg, lat)
+}
+
 // differenceOf returns how many values and classes of two rasters differ, and the
 // first of them.
 func differenceOf(whole, part *raster) (n, classes int, first string) {
@@ -96,7 +115,7 @@ func differenceOf(whole, part *raster) (n, classes int, first string) {
 			}
 		}
 		for l, bands := range part.values {
-			if a, ok := whole.values[l]; ok && math.Float32bits(a[0][j]) != math.Float32bits(bands[0][i]) && !(a[0][j] != a[0][j] && bands[0][i] != bands[0][i]) {
+			if a, ok := whole.values[l]; ok && differs(a, bands, j, i) {
 				if n++; first == "" {
 					first = fmt.Sprintf("%s at %d, %d: %v, %v", l, row, col, a[0][j], bands[0][i])
 				}
@@ -104,6 +123,17 @@ func differenceOf(whole, part *raster) (n, classes int, first string) {
 		}
 	}
 	return n, classes, first
+}
+
+// differs reports whether a band has other bits; all NaN are alike.
+func differs(a, b [][]float32, j, i int) bool {
+	for n := range a {
+		x, y := a[n][j], b[n][i]
+		if math.Float32bits(x) != math.Float32bits(y) && (x == x || y == y) {
+			return true
+		}
+	}
+	return false
 }
 
 // TestEveryWayGivesTheSame: small tiles, windows, other layers beside, vectors or
@@ -115,7 +145,7 @@ func TestEveryWayGivesTheSame(t *testing.T) {
 	for k := range *waysScenes {
 		rng := rand.New(rand.NewPCG(*walkSeed, uint64(21000+k)))
 		s := waysScene(rng)
-		kind := [...]string{"fixed", "track", "tripod"}[k%3]
+		kind := [...]string{"fixed", "track", "tripod", "polar"}[k%4]
 		if *waysKind != "" {
 			kind = *waysKind
 		}
@@ -124,8 +154,11 @@ func TestEveryWayGivesTheSame(t *testing.T) {
 			s = s.tracked(rng)
 		case "tripod":
 			s = s.tripod(rng)
+		case "polar":
+			s.polar(rng)
 		}
 		g := s.terrain.Frame
+		s.look.Bandwidth = 20e6
 		s.options.Threads = 1
 		if s.options.Tile = 4096; rng.IntN(2) == 0 {
 			s.options.Tile = 0
@@ -148,10 +181,26 @@ func TestEveryWayGivesTheSame(t *testing.T) {
 		}
 		more := append(append([]mask.Layer{}, layers...), mask.Returns)
 		report("returns", &march(t, s.terrain, g.Whole(), more, s.options, s.look)[0])
-		other := fixedLook(33*deg, 100*deg)
+		other := fixedLook(33*deg, 10*deg*geometry.Angle(rng.IntN(36)))
+		other.Bandwidth = 20e6
 		report("looks", &march(t, s.terrain, g.Whole(), layers, s.options, other, s.look)[1])
 		mask.SetVectors(false)
 		report("loops", &march(t, s.terrain, g.Whole(), layers, s.options, s.look)[0])
+		mask.SetVectors(true)
+		more = append(more, mask.Share, mask.SlantRange, mask.LocalIncidence)
+		if s.look.Kind == geometry.Fixed {
+			more = append(more, mask.WindowLow, mask.WindowHigh)
+		}
+		whole = march(t, s.terrain, g.Whole(), more, s.options, s.look)
+		o := s.options
+		o.Tile = 3 + rng.IntN(40)
+		report("more, tiles", &march(t, s.terrain, g.Whole(), more, o, s.look)[0])
+		row, col := rng.IntN(g.Rows), rng.IntN(g.Cols)
+		cut := dem.Window{Row: row, Col: col, Rows: 1 + rng.IntN(g.Rows-row), Cols: 1 + rng.IntN(g.Cols-col)}
+		report("more, window", &march(t, s.terrain, cut, more, s.options, s.look)[0])
+		report("more, looks", &march(t, s.terrain, g.Whole(), more, s.options, other, s.look)[1])
+		mask.SetVectors(false)
+		report("more, loops", &march(t, s.terrain, g.Whole(), more, s.options, s.look)[0])
 		mask.SetVectors(true)
 	}
 	t.Log(counts)
