@@ -8,6 +8,7 @@ import (
 	"math/rand/v2"
 	"testing"
 
+	"github.com/stretchr/testify/assert"
 	"github.com/stretchr/testify/require"
 
 	"foldshade/dem"
@@ -125,6 +126,62 @@ func differenceOf(whole, part *raster) (n, classes int, first string) {
 	return n, classes, first
 }
 
+// sceneOf draws a scene of a kind.
+func sceneOf(seed uint64, k int, kind string) (scene, *rand.Rand) {
+	rng := rand.New(rand.NewPCG(seed, uint64(21000+k)))
+	s := waysScene(rng)
+	switch kind {
+	case "track":
+		s = s.tracked(rng)
+	case "tripod":
+		s = s.tripod(rng)
+	case "polar":
+		s.polar(rng)
+	}
+	return s, rng
+}
+
+// Cells in bundles of eight and cells one by one, as in tiles of seven columns:
+// scenes in which they differed.
+func TestBundlesAreTheirCells(t *testing.T) {
+	for _, c := range []struct {
+		why  string
+		seed uint64
+		grid int
+		kind string
+	}{
+		{"lanes under the track have no lines", 1, 67, "track"},
+		{"lines of a row surely fold before those of a later one do not", 11, 7, "polar"},
+		{"the same, of unknown terrain", 6, 87, "fixed"},
+		{"cells that are not doubtful in a bundle with some that are open", 5, 45, "fixed"},
+	} {
+		s, _ := sceneOf(c.seed, c.grid, c.kind)
+		g := s.terrain.Frame
+		s.options.Threads, s.options.Tile = 1, 4096
+		whole := march(t, s.terrain, g.Whole(), marginLayers, s.options, s.look)[0]
+		s.options.Tile = 7
+		n, classes, first := differenceOf(&whole, &march(t, s.terrain, g.Whole(), marginLayers, s.options, s.look)[0])
+		assert.Zero(t, n, "%s: %d classes: %s\n%v, %s", c.why, classes, first, s, s.look.Name)
+	}
+}
+
+// Ground distances of a row differ by several parts in a hundred between the lanes of
+// a strip on large cells near a pole: slopes a little below the incidence are no
+// layover of their own, and their partners count.
+func TestSlopesNearAPole(t *testing.T) {
+	s, _ := sceneOf(31, 12, "polar")
+	span, err := dem.Scan(context.Background(), s.terrain)
+	require.NoError(t, err)
+	w := newWalker(s.terrain, span, s.look, s.options)
+	got := march(t, s.terrain, s.terrain.Frame.Whole(), marginLayers, s.options, s.look)[0]
+	for _, c := range [][2]int{{63, 72}, {18, 87}, {15, 17}, {91, 104}, {21, 16}} {
+		want := w.at(c[0], c[1], nil)
+		require.Equal(t, kindFolded, want.kind)
+		require.Less(t, want.r, -50.)
+		assert.Equal(t, kindFolded, got.kind(mask.LayoverLayer, c[0], c[1]), "row %d, column %d: folded by %.0f m", c[0], c[1], -want.r)
+	}
+}
+
 // differs reports whether a band has other bits; all NaN are alike.
 func differs(a, b [][]float32, j, i int) bool {
 	for n := range a {
@@ -143,20 +200,11 @@ func TestEveryWayGivesTheSame(t *testing.T) {
 	layers := []mask.Layer{mask.VerdictLayer, mask.LayoverLayer, mask.ShadowLayer, mask.Clearance, mask.FoldMargin}
 	counts := map[string]int{}
 	for k := range *waysScenes {
-		rng := rand.New(rand.NewPCG(*walkSeed, uint64(21000+k)))
-		s := waysScene(rng)
 		kind := [...]string{"fixed", "track", "tripod", "polar"}[k%4]
 		if *waysKind != "" {
 			kind = *waysKind
 		}
-		switch kind {
-		case "track":
-			s = s.tracked(rng)
-		case "tripod":
-			s = s.tripod(rng)
-		case "polar":
-			s.polar(rng)
-		}
+		s, rng := sceneOf(*walkSeed, k, kind)
 		g := s.terrain.Frame
 		s.look.Bandwidth = 20e6
 		s.options.Threads = 1
