@@ -154,13 +154,14 @@ func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lin
 	doubtful := dim | lit&(doubtN|doubtG)
 	if !r.sure && doubtful != 0 {
 		open := (&early{p, r, u, v, k, z}).open(part, slackM, slackN, slackG)
-		m, n, g = positive(m, open, r.tinyM), positive(n, open, r.tinyR), positive(g, open, r.tinyR)
+		m = positive(m, open, r.tinyM)
+		n, g = positive(n, open&doubtN, r.tinyR), positive(g, open&doubtG, r.tinyR)
 		dim, unlit, unfolded = dim&^open, unlit&^open, unfolded&^open
 		doubtful &^= open
 	}
-	on := uint8(0)
-	if !r.exact { // cells on a lane are treated alike on both sides
-		on = part.Equal(zero).ToBits()
+	on := m.Add(n).Add(g).IsNaN().ToBits() // beside a lane without lines
+	if !r.exact {                          // cells on a lane are treated alike on both sides
+		on |= part.Equal(zero).ToBits()
 	}
 	fold := none.Merge(n.Min(g), shadow)
 	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
@@ -226,12 +227,13 @@ func (p *strip) steep8(u, v int) uint8 {
 	half := eight(0.5)
 	along := load(at.after).Sub(load(at.before)).Mul(half)
 	across := load(at.here + 1).Sub(load(at.here - 1)).Mul(half)
-	return along.Add(across.Mul(eight(at.drift))).Greater(eight(at.limit)).ToBits()
+	least := across.Mul(eight(at.drift[0])).Min(across.Mul(eight(at.drift[1])))
+	return along.Add(least).Greater(eight(at.limit)).ToBits()
 }
 
 // early settles cells of a bundle, as quickWalk does, on gentle ground: where the
 // lines of limits of a row nearby leave no doubt. What it cannot tell is for
-// quickWalk to say.
+// quickWalk to say; so are cells on which a row has cast doubt from the other side.
 type early struct {
 	*strip
 	*laneMargins
@@ -267,7 +269,7 @@ func (e *early) lit(doubtful uint8, unknown bool) (yes uint8) {
 			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
 			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(g.worthM, e.u-u+1))
 			now := clears(rise, absolute(x.Sub(y)), e.perM, e.slackM) & doubtful
-			yes, doubtful = yes|now, doubtful&^now
+			yes, doubtful = yes|now, doubtful&^(now|rise.Less(eight(0)).ToBits())
 		}
 	}
 	return yes
@@ -297,7 +299,7 @@ func (e *early) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 		cos := eight(e.cos)
 		rise = rise.Add(e.worth(g.worthR, n)).Mul(cos)
 		now := clears(rise, absolute(x.Sub(y)).Mul(cos), e.perR, e.slackR) & doubtful
-		yes, doubtful = yes|now, doubtful&^now
+		yes, doubtful = yes|now, doubtful&^(now|rise.Less(eight(0)).ToBits())
 	}
 	return yes
 }

@@ -22,6 +22,7 @@ type gentle struct {
 // columns that lines move in that row, at the least and at the most.
 type grade struct {
 	rise, fall float32
+	most       float32 // above it slant range surely falls
 	drift      [2]float32
 }
 
@@ -39,9 +40,11 @@ func (p *strip) gradeOf(u int) grade {
 	n := i*ln.nk + p.j
 	m := n + ln.nk
 	drift := func(n, m int) float32 { return float32((ln.v[m] - ln.v[n]) * (1. / laneStep)) }
-	ds := min(ln.s[m]-ln.s[n], ln.s[m+1]-ln.s[n+1]) * (gradeShare / laneStep)
+	a, b := (ln.s[m]-ln.s[n])/laneStep, (ln.s[m+1]-ln.s[n+1])/laneStep
+	ds := min(a, b) * gradeShare
 	g := grade{drift: [2]float32{drift(n, m), drift(n+1, m+1)}}
 	g.rise, g.fall = float32(ds*ln.tan), float32(-ds*ln.cot)
+	g.most = float32(max(a, b) * surely * ln.tan)
 	return g
 }
 
@@ -68,7 +71,7 @@ func (p *strip) mark(u int) {
 		return
 	}
 	limits := p.gradeOf(u)
-	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.rise*surely
+	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.most
 	if vectors {
 		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
 		return
@@ -135,28 +138,32 @@ func (g *gentle) lightening(va, vb float64) bool {
 }
 
 // vicinity are the places in a field's heights of a cell and of those before and
-// after it, the columns that lines move in a row, and the rise in
-// a row from which ground is layover by its own slope.
+// after it, the columns that the strip's first and last lanes move in a row, and the
+// rise in a row above which ground is layover by its own slope.
 type vicinity struct {
 	before, here, after int
-	drift, limit        float32
+	drift               [2]float32
+	limit               float32
 }
 
 // surely is by how much a slope passes the limit to be layover whatever rounding
 // may do.
-const surely = 1.02 / gradeShare
+const surely = 1.02
 
 // vicinity finds the neighbours of the cell (u, v); ok is false where it lies at the
-// end of the field.
+// end of the field, and where holes have been given a height, which the slope of a
+// cell does not count.
 func (p *strip) vicinity(u, v int) (a vicinity, ok bool) {
 	f := p.f
 	i := u - f.ua
-	if u <= p.ua || u >= p.ub-1 {
+	if hole := f.lim.holeHeight; u <= p.ua || u >= p.ub-1 || hole == hole {
 		return a, false
 	}
 	a.before, a.here, a.after = (i-1)*f.width+v-f.at[i-1], i*f.width+v-f.at[i], (i+1)*f.width+v-f.at[i+1]
 	n := u - p.ua
-	a.drift, a.limit = float32(p.at[n+1].v0-p.at[n].v0), p.gentle[n].steep
+	next, here := p.at[n+1], p.at[n]
+	a.drift = [2]float32{float32(next.v0 - here.v0), float32(next.column(marchLanes-1) - here.column(marchLanes-1))}
+	a.limit = p.gentle[n].steep
 	return a, true
 }
 
@@ -170,5 +177,5 @@ func (p *strip) steep(u, v int) bool {
 	z := p.f.z
 	along := float32(float32(z[a.after]-z[a.before]) * 0.5)
 	across := float32(float32(z[a.here+1]-z[a.here-1]) * 0.5)
-	return along+float32(across*a.drift) > a.limit
+	return along+min(float32(across*a.drift[0]), float32(across*a.drift[1])) > a.limit
 }
