@@ -2,5 +2,7 @@
 
 package mask
 
-// SetVectors turns the vectors on or off.
-func SetVectors(on bool) { vectors = on }
+import "simd/archsimd"
+
+// SetVectors turns the vectors on, where the processor has them, or off.
+func SetVectors(on bool) { vectors = on && archsimd.X86.AVX2() }
