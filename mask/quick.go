@@ -17,6 +17,7 @@ func (w *walker) quick(p *strip, u, v, k, next int, x float64, m *lane, doubt do
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
 	q := quickWalk{walker: w, p: p, u: u, k: k, next: next, slackM: slackM * w.y.gain(s, h), slackR: slackR}
+	q.ua, q.ub = max(p.ua, u-p.f.near), min(p.ub, u+1+p.f.far)
 	q.m, q.r = w.y.own(s, h)
 	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
 	if doubt&doubtClear != 0 {
@@ -71,6 +72,7 @@ type quickWalk struct {
 	*walker
 	p              *strip
 	u, k, next     int
+	ua, ub         int // rows within the point's own reach
 	m, r           float64
 	slackM, slackR float64
 }
@@ -317,7 +319,7 @@ func (q *quickWalk) left(v float64) bool { return q.y.ln.places != nil && q.outs
 func (q *quickWalk) lit(unknown bool) bool {
 	reached := q.m // no less than the line's m at row u
 	vb, sb := q.y.at(q.u)
-	for u := q.u; u > q.p.ua; u-- {
+	for u := q.u; u > q.ua; u-- {
 		va, sa := vb, sb
 		vb, sb = q.y.at(u - 1)
 		if reached <= q.m && q.p.gentle[u-1-q.p.ua].lightening(vb, va) {
@@ -353,7 +355,7 @@ func (q *quickWalk) lit(unknown bool) bool {
 
 // edge reports whether unknown terrain lies beyond row u of the DEM.
 func (q *quickWalk) edge(u int) bool {
-	return !q.f.lim.openEdge && (u == 0 && q.p.ua == 0 || u > 0 && q.p.ub == q.f.ln.orient.u)
+	return !q.f.lim.openEdge && (u == 0 && q.ua == 0 || u > 0 && q.ub == q.f.ln.orient.u)
 }
 
 // edgePoint is the walk's point at row u with a height.
@@ -371,7 +373,7 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 	best := none
 	reached := q.r // no less than the line's slant range at row u
 	vb, sb := q.y.at(q.u)
-	for u := q.u; u > q.p.ua; u-- {
+	for u := q.u; u > q.ua; u-- {
 		va, sa := vb, sb
 		vb, sb = q.y.at(u - 1)
 		if best == none && reached <= q.r && q.p.gentle[u-1-q.p.ua].rising(vb, va) {
@@ -441,7 +443,7 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 	top, topU, prev, hidden := q.m, math.Inf(-1), cut{m: q.m, r: q.r}, false
 	reached := q.r // no more than the line's slant range at row u
 	vb, sb := q.y.at(q.u)
-	for u := q.u; u < q.p.ub-1; u++ {
+	for u := q.u; u < q.ub-1; u++ {
 		va, sa := vb, sb
 		vb, sb = q.y.at(u + 1)
 		if reached >= q.r && q.p.gentle[u-q.p.ua].rising(va, vb) {
