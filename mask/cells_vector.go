@@ -412,23 +412,12 @@ var spread = func() (s [256]uint64) {
 // turnVectors transposes a stripe of eight rows of src, at first, first + step and
 // so on, rows long, to columns of dst.
 func turnVectors(dst, src []float32, rows, cols, first, step int) {
+	var columns [turnBlock]int
+	for k := range columns {
+		columns[k] = k * cols
+	}
 	for r := 0; r < rows; r += turnBlock {
-		load := func(k int) archsimd.Int32x8 {
-			return archsimd.LoadFloat32x8((*[8]float32)(src[first+k*step+r:])).AsInt32x8()
-		}
-		store := func(k int, x archsimd.Int32x8) {
-			x.AsFloat32x8().Store((*[8]float32)(dst[(r+k)*cols:]))
-		}
-		a, b, c, d := fours(load(0), load(1), load(2), load(3))
-		e, f, g, h := fours(load(4), load(5), load(6), load(7))
-		store(0, a.Select128FromPair(0, 2, e))
-		store(1, b.Select128FromPair(0, 2, f))
-		store(2, c.Select128FromPair(0, 2, g))
-		store(3, d.Select128FromPair(0, 2, h))
-		store(4, a.Select128FromPair(1, 3, e))
-		store(5, b.Select128FromPair(1, 3, f))
-		store(6, c.Select128FromPair(1, 3, g))
-		store(7, d.Select128FromPair(1, 3, h))
+		squareVector(dst, &columns, r*cols, src, first+r, step)
 	}
 	archsimd.ClearAVXUpperBits()
 }

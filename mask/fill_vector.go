@@ -49,28 +49,31 @@ func completeVector(z []float32) bool {
 // rows says where in dst the row of each column begins, at row 0 of src.
 func turnVector(dst []float32, rows *[8]int, src []float32, n, lo, va, vb int) {
 	for v := va; v < vb; v += 8 {
-		s := src[(v-lo)*n:]
-		load := func(k int) archsimd.Int32x8 {
-			return archsimd.LoadFloat32x8((*[8]float32)(s[k*n:])).AsInt32x8()
-		}
-		// Pairs of rows, then fours, by halves of a vector.
-		p0, p1, p2, p3 := load(0), load(1), load(2), load(3)
-		q0, q1, q2, q3 := load(4), load(5), load(6), load(7)
-		a, b, c, d := fours(p0, p1, p2, p3)
-		e, f, g, h := fours(q0, q1, q2, q3)
-		store := func(k int, x archsimd.Int32x8) {
-			x.AsFloat32x8().Store((*[8]float32)(dst[rows[k]+v:]))
-		}
-		store(0, a.Select128FromPair(0, 2, e))
-		store(1, b.Select128FromPair(0, 2, f))
-		store(2, c.Select128FromPair(0, 2, g))
-		store(3, d.Select128FromPair(0, 2, h))
-		store(4, a.Select128FromPair(1, 3, e))
-		store(5, b.Select128FromPair(1, 3, f))
-		store(6, c.Select128FromPair(1, 3, g))
-		store(7, d.Select128FromPair(1, 3, h))
+		squareVector(dst, rows, v, src, (v-lo)*n, n)
 	}
 	archsimd.ClearAVXUpperBits()
+}
+
+// squareVector writes the columns of eight by eight numbers, whose rows begin at
+// first, first + step and so on of src, to dst: column k from rows[k] + at on.
+func squareVector(dst []float32, rows *[8]int, at int, src []float32, first, step int) {
+	load := func(k int) archsimd.Int32x8 {
+		return archsimd.LoadFloat32x8((*[8]float32)(src[first+k*step:])).AsInt32x8()
+	}
+	store := func(k int, x archsimd.Int32x8) {
+		x.AsFloat32x8().Store((*[8]float32)(dst[rows[k]+at:]))
+	}
+	// Pairs of rows, then fours, by halves of a vector.
+	a, b, c, d := fours(load(0), load(1), load(2), load(3))
+	e, f, g, h := fours(load(4), load(5), load(6), load(7))
+	store(0, a.Select128FromPair(0, 2, e))
+	store(1, b.Select128FromPair(0, 2, f))
+	store(2, c.Select128FromPair(0, 2, g))
+	store(3, d.Select128FromPair(0, 2, h))
+	store(4, a.Select128FromPair(1, 3, e))
+	store(5, b.Select128FromPair(1, 3, f))
+	store(6, c.Select128FromPair(1, 3, g))
+	store(7, d.Select128FromPair(1, 3, h))
 }
 
 // fours returns the columns of four rows: the first to fourth column in the low
