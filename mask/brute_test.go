@@ -546,12 +546,18 @@ func randomScene(rng *rand.Rand) scene {
 	if rng.IntN(3) == 0 {
 		s.drill(rng)
 	}
+	s.look = randomLook(rng)
+	return s
+}
+
+// randomLook draws a plane wave of 20 to 70 degrees; one in three looks along rows,
+// columns or diagonals.
+func randomLook(rng *rand.Rand) geometry.Look {
 	azimuth := geometry.Angle(360*rng.Float64()) * geometry.Degree
 	if rng.IntN(3) == 0 {
 		azimuth = geometry.Angle(45*rng.IntN(8)) * geometry.Degree
 	}
-	s.look = fixedLook(geometry.Angle(20+50*rng.Float64())*geometry.Degree, azimuth)
-	return s
+	return fixedLook(geometry.Angle(20+50*rng.Float64())*geometry.Degree, azimuth)
 }
 
 // drill makes holes, and now and then gives them a height or lifts the

@@ -56,11 +56,7 @@ func waysScene(rng *rand.Rand) scene {
 	if rng.IntN(4) == 0 {
 		s.drill(rng)
 	}
-	azimuth := geometry.Angle(360*rng.Float64()) * geometry.Degree
-	if rng.IntN(3) == 0 {
-		azimuth = geometry.Angle(45*rng.IntN(8)) * geometry.Degree
-	}
-	s.look = fixedLook(geometry.Angle(20+50*rng.Float64())*geometry.Degree, azimuth)
+	s.look = randomLook(rng)
 	return s
 }
 
