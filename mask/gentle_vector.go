@@ -8,22 +8,30 @@ import "simd/archsimd"
 func markVector(a, b *byLane41, g *grade) (rises, lit uint64) {
 	rise, fall := eight(g.rise), eight(g.fall)
 	least, most := eight(g.drift[0]), eight(g.drift[1])
-	load := func(z *byLane41, k int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[8]float32)(z[k:])) }
 	for k := 0; k < patches; k += 8 {
-		a0, a1, b0, b1 := load(a, k), load(a, k+1), load(b, k), load(b, k+1)
-		e0, e1 := b0.Sub(a0), b1.Sub(a1)
-		da, db := a1.Sub(a0), b1.Sub(b0)
-		s, t, x, y := da.Mul(least), da.Mul(most), db.Mul(least), db.Mul(most)
-		lo := e0.Min(e1).Add(s.Min(t).Min(x.Min(y)))
-		hi := e0.Max(e1).Add(s.Max(t).Max(x.Max(y)))
-		// A missing corner shows in both sums of all four, whatever Min makes of it.
-		sum := e0.Add(e1)
-		known := sum.Equal(sum)
+		lo, hi, known := changes8(corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1), least, most)
 		rises |= uint64(hi.Less(rise).And(known).ToBits()) << k
 		lit |= uint64(lo.Greater(fall).And(known).ToBits()) << k
 	}
 	archsimd.ClearAVXUpperBits()
 	return rises, lit
+}
+
+// corner are the corners of eight patches.
+func corner(z *byLane41, k int) archsimd.Float32x8 {
+	return archsimd.LoadFloat32x8((*[8]float32)(z[k:]))
+}
+
+// changes8 is changes for eight patches; known says which have all their corners.
+func changes8(a0, a1, b0, b1, least, most archsimd.Float32x8) (lo, hi archsimd.Float32x8, known archsimd.Mask32x8) {
+	e0, e1 := b0.Sub(a0), b1.Sub(a1)
+	da, db := a1.Sub(a0), b1.Sub(b0)
+	s, t, x, y := da.Mul(least), da.Mul(most), db.Mul(least), db.Mul(most)
+	lo = e0.Min(e1).Add(s.Min(t).Min(x.Min(y)))
+	hi = e0.Max(e1).Add(s.Max(t).Max(x.Max(y)))
+	// A missing corner shows in the sum of all four, whatever Min makes of it.
+	sum := e0.Add(e1)
+	return lo, hi, sum.Equal(sum)
 }
 
 // along returns which of a bundle of cells, a bit each, from column v of row u on,

@@ -193,17 +193,9 @@ func markSeenVector(a, b *byLane41, g *seenGrade, first, last int) (rises, lit, 
 	number, highest := archsimd.LoadInt32x8(&numbers8), low
 	rise, drop, fall, dim, per := eight(g.rise), eight(g.drop), eight(g.fall), eight(g.dark), eight(g.perHeight)
 	least, most := eight(g.drift[0]), eight(g.drift[1])
-	load := func(z *byLane41, k int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[8]float32)(z[k:])) }
 	for k := 0; k < patches; k += 8 {
-		a0, a1, b0, b1 := load(a, k), load(a, k+1), load(b, k), load(b, k+1)
-		e0, e1 := b0.Sub(a0), b1.Sub(a1)
-		da, db := a1.Sub(a0), b1.Sub(b0)
-		s, t, x, y := da.Mul(least), da.Mul(most), db.Mul(least), db.Mul(most)
-		lo := e0.Min(e1).Add(s.Min(t).Min(x.Min(y)))
-		hi := e0.Max(e1).Add(s.Max(t).Max(x.Max(y)))
-		// A missing corner shows in both sums of all four, whatever Min makes of it.
-		sum := e0.Add(e1)
-		known := sum.Equal(sum)
+		a0, a1, b0, b1 := corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1)
+		lo, hi, known := changes8(a0, a1, b0, b1, least, most)
 		top, bottom := a0.Max(a1).Max(b0.Max(b1)), a0.Min(a1).Min(b0.Min(b1))
 		at := archsimd.BroadcastInt32x8(int32(k)).Add(number)
 		outside := at.Greater(to).Or(from.Greater(at))
