@@ -8,39 +8,40 @@ import "simd/archsimd"
 // with turnAsk those that need more than their turns: without a height, next
 // to a limit of the swath or outside it, and nearly compressed ones.
 func sightVector(c *sightCells, j int) {
-	all := archsimd.BroadcastFloat64x4
 	load := func(a []float32) archsimd.Float64x4 {
 		return archsimd.LoadFloat32x4((*[4]float32)(a[j:])).ConvertToFloat64()
 	}
-	t := all(float64(c.col + j)).Add(archsimd.LoadFloat64x4(&steps4)).Div(all(c.ln.sights.colStep)).Sub(all(float64(c.from)))
-	quadratic := func(p, q, r float64) archsimd.Float64x4 { return all(p).Add(t.Mul(all(q).Add(t.Mul(all(r))))) }
+	t := whole4(c.col + j).Add(archsimd.LoadFloat64x4(&steps4)).Div(fourAt(&c.ln.sights.colStep)).Sub(whole4(c.from))
+	quadratic := func(p, q, r *float64) archsimd.Float64x4 {
+		return fourAt(p).Add(t.Mul(fourAt(q).Add(t.Mul(fourAt(r)))))
+	}
 	a, b, q := &c.a, &c.b, &c.patch.c
 	travel := enu4{
-		quadratic(a.travel.East, b.travel.East, q.travel.East),
-		quadratic(a.travel.North, b.travel.North, q.travel.North),
-		quadratic(a.travel.Up, b.travel.Up, q.travel.Up),
+		quadratic(&a.travel.East, &b.travel.East, &q.travel.East),
+		quadratic(&a.travel.North, &b.travel.North, &q.travel.North),
+		quadratic(&a.travel.Up, &b.travel.Up, &q.travel.Up),
 	}
-	higher := load(c.z).Sub(all(c.ln.datum))
+	higher := load(c.z).Sub(fourAt(&c.ln.datum))
 	later := higher.Mul(travel.u)
 	way := enu4{
-		quadratic(a.way.East, b.way.East, q.way.East).Add(later.Mul(travel.e)),
-		quadratic(a.way.North, b.way.North, q.way.North).Add(later.Mul(travel.n)),
-		quadratic(a.way.Up, b.way.Up, q.way.Up).Sub(higher).Add(later.Mul(travel.u)),
+		quadratic(&a.way.East, &b.way.East, &q.way.East).Add(later.Mul(travel.e)),
+		quadratic(&a.way.North, &b.way.North, &q.way.North).Add(later.Mul(travel.n)),
+		quadratic(&a.way.Up, &b.way.Up, &q.way.Up).Sub(higher).Add(later.Mul(travel.u)),
 	}
-	zero, one := all(0), all(1)
+	zero, one := zero4(), fourOf(1)
 	if c.upright {
-		travel = enu4{way.n, all(-1).Mul(way.e), zero}
+		travel = enu4{way.n, fourOf(-1).Mul(way.e), zero}
 	}
-	per := func(i int) archsimd.Float64x4 { return all(c.per[i]).Add(t.Mul(all(c.dper[i]))) }
+	per := func(i int) archsimd.Float64x4 { return fourAt(&c.per[i]).Add(t.Mul(fourAt(&c.dper[i]))) }
 	zc, zr := load(c.zc), load(c.zr)
 	gE := per(0).Mul(zc).Add(per(1).Mul(zr))
 	gN := per(2).Mul(zc).Add(per(3).Mul(zr))
 	above := travel.cross(way).upwards()
 	gain := above.facet(gE, gN)
-	level := all(c.job.Options.CompressedBelow).Mul(above.u)
+	level := fourAt(&c.job.Options.CompressedBelow).Mul(above.u)
 	lean := travel.u.Mul(travel.u).Mul(one.Add(gE.Mul(gE)).Add(gN.Mul(gN)))
-	sure := gain.Greater(level.Mul(all(1 + sureShare))).Or(gain.Less(level.Mul(all(1 - sureShare))))
-	sure = sure.And(lean.LessEqual(all(leanMost))).And(level.Greater(zero)).And(c.inside(way))
+	sure := gain.Greater(level.Mul(fourOf(1 + sureShare))).Or(gain.Less(level.Mul(fourOf(1 - sureShare))))
+	sure = sure.And(lean.LessEqual(fourOf(leanMost))).And(level.Greater(zero)).And(c.inside(way))
 
 	bit := archsimd.BroadcastInt64x4
 	turn := way.facet(gE, gN).LessEqual(zero).ToInt64x4().And(bit(turnShadow))
@@ -98,7 +99,7 @@ func (a enu4) over(x archsimd.Float64x4) enu4 { return enu4{a.e.Div(x), a.n.Div(
 
 // upwards turns vectors that point down round.
 func (a enu4) upwards() enu4 {
-	minus, down := archsimd.BroadcastFloat64x4(-1), a.u.Less(archsimd.BroadcastFloat64x4(0))
+	minus, down := fourOf(-1), a.u.Less(zero4())
 	return enu4{minus.Mul(a.e).Merge(a.e, down), minus.Mul(a.n).Merge(a.n, down), minus.Mul(a.u).Merge(a.u, down)}
 }
 
@@ -110,16 +111,15 @@ func (a enu4) facet(gE, gN archsimd.Float64x4) archsimd.Float64x4 {
 // inside says of which cells it is sure that they lie inside the limits and
 // above the horizon: at twice the distance from them at which a cell is close.
 func (s *swath) inside(way enu4) archsimd.Mask64x4 {
-	all := archsimd.BroadcastFloat64x4
 	r2 := way.dot(way)
 	ok := way.u.Equal(way.u)
 	if s.horizontal {
-		ok = way.u.Greater(all(0)).And(way.u.Mul(way.u).Greater(all(4 * closeTo * closeTo).Mul(r2)))
+		ok = way.u.Greater(zero4()).And(way.u.Mul(way.u).Greater(fourOf(4 * closeTo * closeTo).Mul(r2)))
 	}
 	if !s.bounded {
 		return ok
 	}
 	cos := way.u.Div(r2.Sqrt())
-	ok = ok.And(cos.Less(all(s.most - 2*closeTo))).And(cos.Greater(all(s.least + 2*closeTo)))
-	return ok.And(r2.Mul(all(1 - 2*closeTo)).Greater(all(s.nearest))).And(r2.Mul(all(1 + 2*closeTo)).Less(all(s.farthest)))
+	ok = ok.And(cos.Less(fourAt(&s.most).Sub(fourOf(2 * closeTo)))).And(cos.Greater(fourAt(&s.least).Add(fourOf(2 * closeTo))))
+	return ok.And(r2.Mul(fourOf(1 - 2*closeTo)).Greater(fourAt(&s.nearest))).And(r2.Mul(fourOf(1 + 2*closeTo)).Less(fourAt(&s.farthest)))
 }

@@ -124,6 +124,18 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 // bundle is the number of cells that a vector holds.
 const bundle = 8
 
+// mixed is a bundle of cells not all of which are open: where it stands, and what
+// is kept for those that are looked at by themselves.
+type mixed struct {
+	*strip
+	*laneMargins
+	u, v, k                int
+	z                      *[bundle]float32
+	w, clear, near, far    [bundle]float32
+	doubtM, doubtN, doubtG uint8 // which margins are doubtful
+	scattered              [2][bundle]float32
+}
+
 // lineUp says where the columns of a row lie between the lanes of a strip: column
 // first beyond lane k by w lanes, every next column by a lane and dw more.
 type lineUp struct {

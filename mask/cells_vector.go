@@ -13,8 +13,6 @@ import (
 // The margins of the lanes and of the cells between them on vectors of eight: what
 // the loops of cells.go do.
 
-func eight(x float32) archsimd.Float32x8 { return archsimd.BroadcastFloat32x8(x) }
-
 func lanes8(a *byLane32, k int) archsimd.Float32x8 {
 	return archsimd.LoadFloat32x8((*[8]float32)(a[k:]))
 }
@@ -43,7 +41,7 @@ func marginsVector(r *laneMargins, heights *byLane, row *lines, cos float32) {
 // roughnessVector is roughness: the bits of numbers that are not negative order as
 // the numbers do, and NaN above all.
 func roughnessVector(a, rough *byLane32, perRow float32) {
-	share, growth, per := eight(roughShare), eight(roughGrowth), eight(perRow)
+	share, growth, per := eightOf(roughShare), eightOf(roughGrowth), eight(perRow)
 	gap := func(k int) archsimd.Int32x8 {
 		return absolute(lanes8(a, k+1).Sub(lanes8(a, k))).AsInt32x8()
 	}
@@ -60,10 +58,10 @@ func (l *lineUp) at8(v int) (k int, w archsimd.Float32x8) {
 	k, _ = l.at(v)
 	number := archsimd.LoadInt32x8(&numbers8)
 	column := archsimd.BroadcastInt32x8(int32(v - l.first)).Add(number).ConvertToFloat32()
-	w = eight(l.w).Add(eight(l.dw).Mul(column))
+	w = eightAt(&l.w).Add(eightAt(&l.dw).Mul(column))
 	turns := archsimd.BroadcastInt32x8(int32(k - l.k - v + l.first)).ConvertToFloat32()
 	w = w.Sub(turns)
-	return k, w.Masked(w.GreaterEqual(eight(onLane)))
+	return k, w.Masked(w.GreaterEqual(eightOf(onLane)))
 }
 
 // classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1). The lanes
@@ -82,14 +80,14 @@ func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineU
 	bump := absolute(archsimd.LoadFloat32x8(z).Sub(x.Add(part.Mul(lanes8(&r.h, k+1).Sub(x)))))
 	x = lanes8(&r.clear, k)
 	m := x.Add(part.Mul(lanes8(&r.clear, k+1).Sub(x)))
-	open := m.Greater(eight(r.slackM).Add(bump).Add(lanes8(&r.roughM, k)))
-	slack := eight(r.slackR).Add(bump)
+	open := m.Greater(eightAt(&r.slackM).Add(bump).Add(lanes8(&r.roughM, k)))
+	slack := eightAt(&r.slackR).Add(bump)
 	x = lanes8(&r.near, k)
 	n := x.Add(part.Mul(lanes8(&r.near, k+1).Sub(x)))
 	open = open.And(n.Greater(slack.Add(lanes8(&r.roughN, k))))
 	x = lanes8(&r.far, k)
 	g := x.Add(part.Mul(lanes8(&r.far, k+1).Sub(x)))
-	open = open.And(g.Greater(slack.Add(lanes8(&r.roughF, k)))).And(part.Greater(eight(0)))
+	open = open.And(g.Greater(slack.Add(lanes8(&r.roughF, k)))).And(part.Greater(zero8()))
 	if open.ToBits() != 0xff {
 		archsimd.ClearAVXUpperBits()
 		t.classifyMixed(p, wk, u, v, skip, k, line, z)
@@ -111,149 +109,187 @@ const allOpen = 0x0101010101010101 * uint64(Open)
 // classifyMixed is classifyBundle for any cells: those that are not doubtful at
 // once, the others one by one.
 func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lineUp, z *[bundle]float32) {
-	r := &t.margins
-	_, part := line.at8(v)
-	zero, none := eight(0), eight(float32(nan))
-	blend := func(a *byLane32) archsimd.Float32x8 {
-		x := lanes8(a, k)
-		return x.Add(part.Mul(lanes8(a, k+1).Sub(x)))
-	}
-	m, n, g := blend(&r.clear), blend(&r.near), blend(&r.far)
-	bump := absolute(archsimd.LoadFloat32x8(z).Sub(blend(&r.h)))
-	slackM, slackN := eight(r.slackM).Add(bump), eight(r.slackR).Add(bump)
-	slackG := slackN
-	if !r.exact {
-		slackM = slackM.Add(lanes8(&r.roughM, k))
-		slackN, slackG = slackN.Add(lanes8(&r.roughN, k)), slackG.Add(lanes8(&r.roughF, k))
-	}
-	shadow := zero.Sub(slackM).Greater(m)
-	dark, lit := shadow.ToBits(), m.Greater(slackM).ToBits()
-	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
-	unlit, unfolded := uint8(0), uint8(0) // undetermined: whether lit, whether folded
-	if !r.sure {
-		mU, nU, gU := blend(&r.clearU), blend(&r.nearU), blend(&r.farU)
-		doubtN |= ^absolute(nU).Greater(slackN).ToBits()
-		doubtG |= ^absolute(gU).Greater(slackG).ToBits()
-		lit &= absolute(mU).Greater(slackM).ToBits()
-		unlit, unfolded = mU.LessEqual(zero).ToBits(), nU.LessEqual(zero).ToBits()|gU.LessEqual(zero).ToBits()
-	}
-	dim := ^(lit | dark) // doubtful whether lit
-	if dim|lit&(doubtN|doubtG) != 0 {
-		steep := p.steep8(u, v)
-		doubtN, doubtG = doubtN&^(dark|steep), doubtG&^(dark|steep)
-	}
-	if r.sure && dim|doubtN|doubtG != 0 {
-		e := early{p, r, u, v, k, z}
-		yes := e.lit(dim, false)
-		m, lit, dim = positive(m, yes, r.tinyM), lit|yes, dim&^yes
-		yes = e.alone(doubtN&lit, -1, false)
-		n, doubtN = positive(n, yes, r.tinyR), doubtN&^yes
-		yes = e.alone(doubtG&lit, 1, false)
-		g, doubtG = positive(g, yes, r.tinyR), doubtG&^yes
-	}
-	doubtful := dim | lit&(doubtN|doubtG)
-	if !r.sure && doubtful != 0 {
-		open := (&early{p, r, u, v, k, z}).open(part, slackM, slackN, slackG)
-		m = positive(m, open, r.tinyM)
-		n, g = positive(n, open&doubtN, r.tinyR), positive(g, open&doubtG, r.tinyR)
-		dim, unlit, unfolded = dim&^open, unlit&^open, unfolded&^open
-		doubtful &^= open
-	}
-	on := m.Add(n).Add(g).IsNaN().ToBits() // beside a lane without lines
-	if !r.exact {                          // cells on a lane are treated alike on both sides
-		on |= part.Equal(zero).ToBits()
-	}
-	fold := none.Merge(n.Min(g), shadow)
-	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+	c := &t.mixed
+	c.strip, c.laneMargins, c.u, c.v, c.k, c.z = p, &t.margins, u, v, k, z
 	i, stride := t.place(p.f, u, v)
-	if stride == 1 && skip == 0 {
-		binary.LittleEndian.PutUint64(t.raw[i:], codes)
-		if t.wantClear {
-			m.Store((*[bundle]float32)(t.clear[i:]))
-		}
-		if t.wantFold {
-			fold.Store((*[bundle]float32)(t.fold[i:]))
-		}
+	var doubtful, single uint8
+	if t.margins.sure {
+		doubtful, single = t.mixSure(c, line, i, stride, skip)
 	} else {
-		t.scatter(i, stride, skip, codes, m, fold)
+		doubtful, single = t.mixUnsure(c, line, i, stride, skip)
 	}
-	doubtful, on = doubtful>>skip<<skip, on>>skip<<skip
-	if doubtful|on == 0 {
-		return
-	}
-	c := bundled{doubtM: dim, doubtN: doubtN, doubtG: doubtG}
-	part.Store(&c.w)
-	m.Store(&c.clear)
-	n.Store(&c.near)
-	g.Store(&c.far)
 	archsimd.ClearAVXUpperBits()
-	single := on
-	if !r.sure {
-		single |= doubtful
-	}
-	for ; single != 0; single &= single - 1 {
+	for single = single >> skip << skip; single != 0; single &= single - 1 {
 		j := bits.TrailingZeros8(single)
 		doubtful &^= 1 << j
 		t.classifyCell(p, wk, u, v+j, k+j, c.w[j], z[j])
 	}
-	for ; doubtful != 0; doubtful &= doubtful - 1 {
+	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
 		j := bits.TrailingZeros8(doubtful)
 		m, doubt := c.of(j)
 		t.set(i+j*stride, t.ask(p, wk, u, v+j, k+j, c.w[j], m, doubt))
 	}
 }
 
-// bundled holds the margins of a bundle, and which are doubtful.
-type bundled struct {
-	w, clear, near, far    [bundle]float32
-	doubtM, doubtN, doubtG uint8
+// blend returns a lane's numbers for the cells of a bundle.
+func (c *mixed) blend(a *byLane32, part archsimd.Float32x8) archsimd.Float32x8 {
+	x := lanes8(a, c.k)
+	return x.Add(part.Mul(lanes8(a, c.k+1).Sub(x)))
+}
+
+// slacks returns under which sizes the margins of the cells of a bundle are doubtful.
+func (c *mixed) slacks(part archsimd.Float32x8) (m, near, far archsimd.Float32x8) {
+	r := c.laneMargins
+	bump := absolute(archsimd.LoadFloat32x8(c.z).Sub(c.blend(&r.h, part)))
+	m, near = eightAt(&r.slackM).Add(bump), eightAt(&r.slackR).Add(bump)
+	if r.exact {
+		return m, near, near
+	}
+	return m.Add(lanes8(&r.roughM, c.k)), near.Add(lanes8(&r.roughN, c.k)), near.Add(lanes8(&r.roughF, c.k))
+}
+
+// mixSure stores what the lanes say of the cells of a bundle, from index i on, and
+// returns which of them are doubtful, and which are to be looked at by themselves.
+//
+//go:noinline
+func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
+	_, part := line.at8(c.v)
+	r := c.laneMargins
+	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
+	slackM, slackN, slackG := c.slacks(part)
+	zero := zero8()
+	shadow := zero.Sub(slackM).Greater(m)
+	dark, lit := shadow.ToBits(), m.Greater(slackM).ToBits()
+	doubtN, doubtG := ^absolute(n).Greater(slackN).ToBits(), ^absolute(g).Greater(slackG).ToBits()
+	dim := ^(lit | dark) // doubtful whether lit
+	if dim|lit&(doubtN|doubtG) != 0 {
+		steep := c.steep8(c.u, c.v)
+		doubtN, doubtG = doubtN&^(dark|steep), doubtG&^(dark|steep)
+	}
+	if dim|doubtN|doubtG != 0 {
+		yes := c.lit(dim, false)
+		m, lit, dim = positive(m, yes, &r.tinyM), lit|yes, dim&^yes
+		yes = c.alone(doubtN&lit, -1, false)
+		n, doubtN = positive(n, yes, &r.tinyR), doubtN&^yes
+		yes = c.alone(doubtG&lit, 1, false)
+		g, doubtG = positive(g, yes, &r.tinyR), doubtG&^yes
+	}
+	codes := codesOf(dark, 0, 0, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+	t.storeBundle(i, stride, skip, codes, m, none8().Merge(n.Min(g), shadow))
+	c.doubtM, c.doubtN, c.doubtG = dim, doubtN, doubtG
+	return dim | lit&(doubtN|doubtG), c.keep(part, m, n, g)
+}
+
+// mixUnsure is mixSure where terrain may be unknown: doubtful cells are looked at
+// by themselves.
+//
+//go:noinline
+func (t *sheet) mixUnsure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
+	_, part := line.at8(c.v)
+	r := c.laneMargins
+	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
+	mU, nU, gU := c.blend(&r.clearU, part), c.blend(&r.nearU, part), c.blend(&r.farU, part)
+	slackM, slackN, slackG := c.slacks(part)
+	zero := zero8()
+	shadow := zero.Sub(slackM).Greater(m)
+	dark, lit := shadow.ToBits(), m.Greater(slackM).And(absolute(mU).Greater(slackM)).ToBits()
+	doubtN := ^absolute(n).Greater(slackN).And(absolute(nU).Greater(slackN)).ToBits()
+	doubtG := ^absolute(g).Greater(slackG).And(absolute(gU).Greater(slackG)).ToBits()
+	// Undetermined: whether lit, whether folded.
+	unlit, unfolded := mU.LessEqual(zero).ToBits(), nU.LessEqual(zero).ToBits()|gU.LessEqual(zero).ToBits()
+	dim := ^(lit | dark)
+	if dim|lit&(doubtN|doubtG) != 0 {
+		steep := c.steep8(c.u, c.v)
+		doubtN, doubtG = doubtN&^(dark|steep), doubtG&^(dark|steep)
+	}
+	doubtful = dim | lit&(doubtN|doubtG)
+	if doubtful != 0 {
+		open := c.open(part, slackM, slackN, slackG)
+		m = positive(m, open, &r.tinyM)
+		n, g = positive(n, open&doubtN, &r.tinyR), positive(g, open&doubtG, &r.tinyR)
+		unlit, unfolded = unlit&^open, unfolded&^open
+		doubtful &^= open
+	}
+	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
+	t.storeBundle(i, stride, skip, codes, m, none8().Merge(n.Min(g), shadow))
+	return 0, doubtful | c.keep(part, m, n, g)
+}
+
+// storeBundle stores the codes and margins of the cells from skip on of a bundle
+// whose first is at index i.
+func (t *sheet) storeBundle(i, stride, skip int, codes uint64, clear, fold archsimd.Float32x8) {
+	if stride != 1 || skip != 0 {
+		clear.Store(&t.mixed.scattered[0])
+		fold.Store(&t.mixed.scattered[1])
+		t.scatter(i, stride, skip, codes)
+		return
+	}
+	binary.LittleEndian.PutUint64(t.raw[i:], codes)
+	if t.wantClear {
+		clear.Store((*[bundle]float32)(t.clear[i:]))
+	}
+	if t.wantFold {
+		fold.Store((*[bundle]float32)(t.fold[i:]))
+	}
+}
+
+// keep keeps margins for cells that are looked at by themselves, and returns those
+// that must be: beside a lane without lines, and on a lane, where both sides are to
+// be treated alike.
+func (c *mixed) keep(part, m, n, g archsimd.Float32x8) (single uint8) {
+	part.Store(&c.w)
+	m.Store(&c.clear)
+	n.Store(&c.near)
+	g.Store(&c.far)
+	single = m.Add(n).Add(g).IsNaN().ToBits()
+	if !c.exact {
+		single |= part.Equal(zero8()).ToBits()
+	}
+	return single
 }
 
 // of returns the margins of cell j where no terrain is unknown.
-func (c *bundled) of(j int) (m lane, d doubts) {
+func (c *mixed) of(j int) (m lane, d doubts) {
 	m = lane{clear: c.clear[j], near: c.near[j], far: c.far[j], clearU: c.clear[j], nearU: c.near[j], farU: c.far[j]}
 	d = doubts(c.doubtM>>j&1)*doubtClear | doubts(c.doubtN>>j&1)*doubtNear | doubts(c.doubtG>>j&1)*doubtFar
 	return m, d
 }
 
 // steep8 is strip.steep for the cells from column v on.
+//
+//go:noinline
 func (p *strip) steep8(u, v int) uint8 {
-	at, ok := p.vicinity(u, v)
-	if !ok {
+	archsimd.ClearAVXUpperBits()
+	var at vicinity
+	if !p.vicinity(u, v, &at) {
 		return 0
 	}
 	z := p.f.z
 	load := func(i int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[bundle]float32)(z[i:])) }
-	half := eight(0.5)
+	half := eightOf(0.5)
 	along := load(at.after).Sub(load(at.before)).Mul(half)
 	across := load(at.here + 1).Sub(load(at.here - 1)).Mul(half)
-	least := across.Mul(eight(at.drift[0])).Min(across.Mul(eight(at.drift[1])))
-	return along.Add(least).Greater(eight(at.limit)).ToBits()
+	least := across.Mul(eightAt(&at.drift[0])).Min(across.Mul(eightAt(&at.drift[1])))
+	return along.Add(least).Greater(eightAt(&at.limit)).ToBits()
 }
 
 // early settles cells of a bundle, as quickWalk does, on gentle ground: where the
 // lines of limits of a row nearby leave no doubt. What it cannot tell is for
 // quickWalk to say; so are cells on which a row has cast doubt from the other side.
-type early struct {
-	*strip
-	*laneMargins
-	u, v, k int
-	z       *[bundle]float32
-}
 
-// earlyRows is how far early looks.
+// earlyRows is how far lit and alone look.
 const earlyRows = 8
 
 // path is strip.along for the row before or after u; no vectors are alive here.
 //
 //go:noinline
-func (e *early) path(u, next int, good uint64) uint8 {
+func (e *mixed) path(u, next int, good uint64) uint8 {
 	archsimd.ClearAVXUpperBits()
 	return e.along(e.v, e.u, u, next, good)
 }
 
 // lit returns which of the doubtful cells no ground hides, or no unknown terrain.
-func (e *early) lit(doubtful uint8, unknown bool) (yes uint8) {
+func (e *mixed) lit(doubtful uint8, unknown bool) (yes uint8) {
 	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
 		g := &e.gentle[u-1-e.ua]
 		doubtful &= e.path(u, u-1, g.lit)
@@ -267,9 +303,9 @@ func (e *early) lit(doubtful uint8, unknown bool) (yes uint8) {
 				line = &unsure.shade
 			}
 			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
-			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(g.worthM, e.u-u+1))
-			now := clears(rise, absolute(x.Sub(y)), e.perM, e.slackM) & doubtful
-			yes, doubtful = yes|now, doubtful&^(now|rise.Less(eight(0)).ToBits())
+			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(&g.worthM, e.u-u+1))
+			now := clears(rise, absolute(x.Sub(y)), &e.perM, &e.slackM) & doubtful
+			yes, doubtful = yes|now, doubtful&^(now|rise.Less(zero8()).ToBits())
 		}
 	}
 	return yes
@@ -278,7 +314,7 @@ func (e *early) lit(doubtful uint8, unknown bool) (yes uint8) {
 // alone returns which of the doubtful cells have no partner towards the radar, dir
 // -1, or away from it, 1; when possible is set, none that may be lit, nor unknown
 // terrain.
-func (e *early) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
+func (e *mixed) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 	for n := 1; doubtful != 0 && n <= earlyRows; n++ {
 		u := e.u + dir*n
 		if u < e.ua || u >= e.ub {
@@ -296,17 +332,17 @@ func (e *early) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 		if dir > 0 {
 			rise = h.Sub(x.Max(y))
 		}
-		cos := eight(e.cos)
-		rise = rise.Add(e.worth(g.worthR, n)).Mul(cos)
-		now := clears(rise, absolute(x.Sub(y)).Mul(cos), e.perR, e.slackR) & doubtful
-		yes, doubtful = yes|now, doubtful&^(now|rise.Less(eight(0)).ToBits())
+		cos := eightAt(&e.cos)
+		rise = rise.Add(e.worth(&g.worthR, n)).Mul(cos)
+		now := clears(rise, absolute(x.Sub(y)).Mul(cos), &e.perR, &e.slackR) & doubtful
+		yes, doubtful = yes|now, doubtful&^(now|rise.Less(zero8()).ToBits())
 	}
 	return yes
 }
 
 // line returns the line of row u that ground towards the radar or away from it
 // sets.
-func (e *early) line(u, dir int, possible bool) *byLane32 {
+func (e *mixed) line(u, dir int, possible bool) *byLane32 {
 	unsure := e.unsureRow(u)
 	if possible && unsure != nil {
 		switch {
@@ -322,66 +358,67 @@ func (e *early) line(u, dir int, possible bool) *byLane32 {
 	return &e.row(u).farther
 }
 
-func (e *early) sureAt(u int) uint8 { return e.strip.sure[u-e.ua] }
+func (e *mixed) sureAt(u int) uint8 { return e.strip.sure[u-e.ua] }
 
 // open returns which cells are open whatever stands where terrain is unknown; not
 // those with a lane that has no margins.
 //
 //go:noinline
-func (e *early) open(part, slackM, slackN, slackG archsimd.Float32x8) (cells uint8) {
-	cells = 0xff
-	for _, x := range [...]struct {
-		margins *byLane32
-		slack   archsimd.Float32x8
-		yes     func(doubtful uint8) uint8
-	}{
-		{&e.laneMargins.clear, slackM, func(d uint8) uint8 { return e.lit(d, false) }},
-		{&e.clearU, slackM, func(d uint8) uint8 { return e.lit(d, true) }},
-		{&e.laneMargins.near, slackN, func(d uint8) uint8 { return e.alone(d, -1, false) }},
-		{&e.nearU, slackN, func(d uint8) uint8 { return e.alone(d, -1, true) }},
-		{&e.laneMargins.far, slackG, func(d uint8) uint8 { return e.alone(d, 1, false) }},
-		{&e.farU, slackG, func(d uint8) uint8 { return e.alone(d, 1, true) }},
-	} {
-		a := lanes8(x.margins, e.k)
-		a = a.Add(part.Mul(lanes8(x.margins, e.k+1).Sub(a)))
-		cells &= a.Greater(eight(0).Sub(x.slack)).ToBits() // else surely not, or missing
-		doubtful := cells &^ a.Greater(x.slack).ToBits()
-		cells &^= doubtful &^ x.yes(doubtful)
-	}
-	return cells
+func (e *mixed) open(part, slackM, slackN, slackG archsimd.Float32x8) (cells uint8) {
+	yes, maybe := e.sides(&e.laneMargins.clear, part, slackM)
+	cells = yes | e.lit(maybe, false)
+	yes, maybe = e.sides(&e.clearU, part, slackM)
+	cells &= yes | e.lit(maybe&cells, true)
+	yes, maybe = e.sides(&e.laneMargins.near, part, slackN)
+	cells &= yes | e.alone(maybe&cells, -1, false)
+	yes, maybe = e.sides(&e.nearU, part, slackN)
+	cells &= yes | e.alone(maybe&cells, -1, true)
+	yes, maybe = e.sides(&e.laneMargins.far, part, slackG)
+	cells &= yes | e.alone(maybe&cells, 1, false)
+	yes, maybe = e.sides(&e.farU, part, slackG)
+	return cells & (yes | e.alone(maybe&cells, 1, true))
+}
+
+// sides returns which of the cells have a margin larger than the slack, and which
+// are within it.
+func (e *mixed) sides(a *byLane32, part, slack archsimd.Float32x8) (yes, maybe uint8) {
+	x := e.blend(a, part)
+	yes = x.Greater(slack).ToBits()
+	return yes, x.Greater(zero8().Sub(slack)).ToBits() &^ yes
 }
 
 // worth is what n rows are worth.
-func (e *early) worth(row float32, n int) archsimd.Float32x8 {
-	return eight(row).Mul(archsimd.BroadcastInt32x8(int32(n)).ConvertToFloat32())
+func (e *mixed) worth(row *float32, n int) archsimd.Float32x8 {
+	return eightAt(row).Mul(whole8(n))
 }
 
 // clears returns which margins are larger than the slack, for which the
 // difference of the lanes beside them counts as in roughness.
-func clears(margin, gap archsimd.Float32x8, perRow, slack float32) uint8 {
-	rough := gap.Mul(eight(roughShare).Add(gap.Mul(eight(roughGrowth)).Mul(eight(perRow))))
-	return margin.Sub(rough).Greater(eight(slack)).ToBits()
+func clears(margin, gap archsimd.Float32x8, perRow, slack *float32) uint8 {
+	rough := gap.Mul(eightOf(roughShare).Add(gap.Mul(eightOf(roughGrowth)).Mul(eightAt(perRow))))
+	return margin.Sub(rough).Greater(eightAt(slack)).ToBits()
 }
 
 // positive returns the margins x, with those of the cells yes positive.
-func positive(x archsimd.Float32x8, yes uint8, tiny float32) archsimd.Float32x8 {
+func positive(x archsimd.Float32x8, yes uint8, tiny *float32) archsimd.Float32x8 {
 	if yes == 0 {
 		return x
 	}
 	bit := archsimd.LoadInt32x8(&bits8)
 	asked := archsimd.BroadcastInt32x8(int32(yes)).And(bit).Equal(bit)
-	wrong := asked.And(x.LessEqual(eight(0)))
-	return eight(tiny).Merge(x, wrong)
+	wrong := asked.And(x.LessEqual(zero8()))
+	return eightAt(tiny).Merge(x, wrong)
 }
 
 // scatter stores the cells from skip on of a bundle whose first is at index i.
-func (t *sheet) scatter(i, stride, skip int, codes uint64, clear, fold archsimd.Float32x8) {
-	var c, f [bundle]float32
-	clear.Store(&c)
-	fold.Store(&f)
+//
+//go:noinline
+func (t *sheet) scatter(i, stride, skip int, codes uint64) {
+	archsimd.ClearAVXUpperBits()
+	c := &t.mixed.scattered
 	for j := skip; j < bundle; j++ {
 		t.raw[i+j*stride] = uint8(codes >> (8 * j))
-		t.keep(i+j*stride, c[j], f[j])
+		t.keep(i+j*stride, c[0][j], c[1][j])
 	}
 }
 

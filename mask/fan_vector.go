@@ -11,12 +11,13 @@ func spreadNarrowVector(h *byLane, z []float32, v, dv float64) {
 	for i := range from {
 		from[i] = int(v + float64(dv*float64(4*i)))
 	}
-	nearly, close := four(1-onColumn), four(onColumn)
+	nearly, close := fourOf(1-onColumn), fourOf(onColumn)
 	var none archsimd.Uint32x8
 	one := archsimd.BroadcastUint32x8(1)
-	for i, first := range from {
+	for i := range from {
+		first := from[i]
 		k := 4 * i
-		at := between4(v, dv, k)
+		at := between4(&v, &dv, k)
 		whole := at.ConvertToInt32()
 		rest := at.Sub(whole.ConvertToFloat64())
 		pick := none.SetLo(whole.Sub(archsimd.BroadcastInt32x4(int32(first))).AsUint32x4())

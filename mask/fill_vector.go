@@ -16,8 +16,17 @@ import (
 // centralVector is centralScalar, eight at a time.
 func centralVector(d, before, mid, after []float32) bool {
 	n := len(d) &^ 7
+	whole := central8(d, before, mid, after, n)
+	archsimd.ClearAVXUpperBits()
+	return centralScalar(d[n:], before[n:], mid[n:], after[n:]) && whole
+}
+
+// central8 is centralVector for the first n, a multiple of eight.
+//
+//go:noinline
+func central8(d, before, mid, after []float32, n int) bool {
 	before, mid, after = before[:len(d)], mid[:len(d)], after[:len(d)]
-	half := archsimd.BroadcastFloat32x8(0.5)
+	half := eightOf(0.5)
 	ok := half.Equal(half)
 	for j := 0; j < n; j += 8 {
 		x := archsimd.LoadFloat32x8((*[8]float32)(after[j:])).Sub(archsimd.LoadFloat32x8((*[8]float32)(before[j:]))).Mul(half)
@@ -25,23 +34,28 @@ func centralVector(d, before, mid, after []float32) bool {
 		h := archsimd.LoadFloat32x8((*[8]float32)(mid[j:]))
 		ok = ok.And(x.Equal(x)).And(h.Equal(h))
 	}
-	whole := ok.ToBits() == 0xff
-	archsimd.ClearAVXUpperBits()
-	return centralScalar(d[n:], before[n:], mid[n:], after[n:]) && whole
+	return ok.ToBits() == 0xff
 }
 
 // completeVector is completeScalar, eight at a time.
 func completeVector(z []float32) bool {
 	n := len(z) &^ 7
-	one := archsimd.BroadcastFloat32x8(1)
+	whole := complete8(z, n)
+	archsimd.ClearAVXUpperBits()
+	return whole && completeScalar(z[n:])
+}
+
+// complete8 is completeVector for the first n, a multiple of eight.
+//
+//go:noinline
+func complete8(z []float32, n int) bool {
+	one := eightOf(1)
 	ok := one.Equal(one)
 	for j := 0; j < n; j += 8 {
 		h := archsimd.LoadFloat32x8((*[8]float32)(z[j:]))
 		ok = ok.And(h.Equal(h))
 	}
-	whole := ok.ToBits() == 0xff
-	archsimd.ClearAVXUpperBits()
-	return whole && completeScalar(z[n:])
+	return ok.ToBits() == 0xff
 }
 
 // turnVector copies eight columns of src, the rows lo and following of which are n
@@ -88,13 +102,15 @@ func fours(p, q, r, s archsimd.Int32x8) (a, b, c, d archsimd.Int32x8) {
 // blockVector is seeBlock for a whole block that begins at a column, four cells
 // at a time.
 func blockVector(w *worker, a, b *view, from int) {
-	all := archsimd.BroadcastFloat64x4
 	zc, zr := (*[viewStep]float32)(w.zc[from:]), (*[viewStep]float32)(w.zr[from:])
-	aUp0, aUp1, dUp0, dUp1 := all(a.up[0]), all(a.up[1]), all(b.up[0]-a.up[0]), all(b.up[1]-a.up[1])
-	aC0, aC1, dC0, dC1 := all(a.c[0]), all(a.c[1]), all(b.c[0]-a.c[0]), all(b.c[1]-a.c[1])
-	aR0, aR1, dR0, dR1 := all(a.r[0]), all(a.r[1]), all(b.r[0]-a.r[0]), all(b.r[1]-a.r[1])
-	lim, zero := all(w.job.Options.CompressedBelow), all(0)
-	layover, shadow, compressed := archsimd.BroadcastInt64x4(turnLayover), archsimd.BroadcastInt64x4(turnShadow), archsimd.BroadcastInt64x4(turnCompressed)
+	aUp0, aUp1 := fourAt(&a.up[0]), fourAt(&a.up[1])
+	dUp0, dUp1 := fourAt(&b.up[0]).Sub(aUp0), fourAt(&b.up[1]).Sub(aUp1)
+	aC0, aC1 := fourAt(&a.c[0]), fourAt(&a.c[1])
+	dC0, dC1 := fourAt(&b.c[0]).Sub(aC0), fourAt(&b.c[1]).Sub(aC1)
+	aR0, aR1 := fourAt(&a.r[0]), fourAt(&a.r[1])
+	dR0, dR1 := fourAt(&b.r[0]).Sub(aR0), fourAt(&b.r[1]).Sub(aR1)
+	lim, zero := fourAt(&w.job.Options.CompressedBelow), zero4()
+	layover, shadow, compressed := archsimd.LoadInt64x4(&layover4), archsimd.LoadInt64x4(&shadow4), archsimd.LoadInt64x4(&compressed4)
 	// Lane l collects the turns of the cells l, 4 + l, 8 + l and so on, one a byte.
 	var sum archsimd.Int64x4
 	for i := viewStep - 4; i >= 0; i -= 4 {
@@ -112,9 +128,9 @@ func blockVector(w *worker, a, b *view, from int) {
 		if !w.wantFacets {
 			continue
 		}
-		part := func(a, b float64) archsimd.Float64x4 { return all(a).Add(t.Mul(all(b - a))) }
-		up2 := part(a.up[2], b.up[2])
-		across := up2.Add(c.Mul(part(a.c[2], b.c[2]))).Add(r.Mul(part(a.r[2], b.r[2])))
+		part := func(a, b *float64) archsimd.Float64x4 { return fourAt(a).Add(t.Mul(fourAt(b).Sub(fourAt(a)))) }
+		up2 := part(&a.up[2], &b.up[2])
+		across := up2.Add(c.Mul(part(&a.c[2], &b.c[2]))).Add(r.Mul(part(&a.r[2], &b.r[2])))
 		f, j := &w.facets, from+i
 		store4(f.along, j, along)
 		store4(f.above, j, above)
@@ -123,9 +139,9 @@ func blockVector(w *worker, a, b *view, from int) {
 		store4(f.up[1], j, up1)
 		store4(f.up[2], j, up2)
 		if w.wantViews {
-			store4(f.east, j, part(a.east, b.east))
-			store4(f.north, j, part(a.north, b.north))
-			store4(f.s, j, part(a.s, b.s))
+			store4(f.east, j, part(&a.east, &b.east))
+			store4(f.north, j, part(&a.north, &b.north))
+			store4(f.s, j, part(&a.s, &b.s))
 		}
 	}
 	pairs := archsimd.LoadInt8x16(&bytePairs)
@@ -136,6 +152,13 @@ func blockVector(w *worker, a, b *view, from int) {
 	lo.InterleaveHi(hi).AsUint8x16().Store((*[16]uint8)(turns[16:]))
 	archsimd.ClearAVXUpperBits()
 }
+
+// The turns in all places of a vector.
+var (
+	layover4    = [4]int64{turnLayover, turnLayover, turnLayover, turnLayover}
+	shadow4     = [4]int64{turnShadow, turnShadow, turnShadow, turnShadow}
+	compressed4 = [4]int64{turnCompressed, turnCompressed, turnCompressed, turnCompressed}
+)
 
 // bytePairs brings the bytes of two 64-bit numbers side by side.
 var bytePairs = [16]int8{0, 8, 1, 9, 2, 10, 3, 11, 4, 12, 5, 13, 6, 14, 7, 15}
@@ -157,9 +180,8 @@ func store4(a []float64, j int, x archsimd.Float64x4) { x.Store((*[4]float64)(a[
 // localIncidencesVector is localIncidences for all columns but the last few, and
 // returns how many it filled.
 func localIncidencesVector(f *facetRow, a []float32) int {
-	all := archsimd.BroadcastFloat64x4
 	odd := func(even, k, y archsimd.Float64x4) archsimd.Float64x4 { return even.Add(k.Mul(y)) }
-	one, zero, quarter, perRadian := all(1), all(0), all(math.Pi/4), all(180/math.Pi)
+	one, zero, quarter, perRadian := fourOf(1), zero4(), fourOf(math.Pi/4), fourOf(180/math.Pi)
 	n := len(a) &^ 3
 	for j := 0; j < n; j += 4 {
 		along, above, across := load4(f.along, j), load4(f.above, j), load4(f.across, j)
@@ -167,10 +189,10 @@ func localIncidencesVector(f *facetRow, a []float32) int {
 		x := side.Sub(along).Div(side.Add(along))
 		y := x.Mul(x)
 		z := y.Mul(y)
-		low := odd(one, all(geometry.Arctan3), y).Add(z.Mul(odd(all(geometry.Arctan5), all(geometry.Arctan7), y)))
-		high := odd(all(geometry.Arctan9), all(geometry.Arctan11), y).Add(z.Mul(odd(all(geometry.Arctan13), all(geometry.Arctan15), y)))
+		low := odd(one, fourOf(geometry.Arctan3), y).Add(z.Mul(odd(fourOf(geometry.Arctan5), fourOf(geometry.Arctan7), y)))
+		high := odd(fourOf(geometry.Arctan9), fourOf(geometry.Arctan11), y).Add(z.Mul(odd(fourOf(geometry.Arctan13), fourOf(geometry.Arctan15), y)))
 		z = z.Mul(z)
-		angle := quarter.Add(x.Mul(low.Add(z.Mul(high.Add(z.Mul(all(geometry.Arctan17)))))))
+		angle := quarter.Add(x.Mul(low.Add(z.Mul(high.Add(z.Mul(fourOf(geometry.Arctan17)))))))
 		angle.Mul(perRadian).ConvertToFloat32().Store((*[4]float32)(a[j:]))
 		if along.Greater(zero).ToBits() != 0xf { // facets that turn their backs
 			archsimd.ClearAVXUpperBits()
@@ -184,7 +206,7 @@ func localIncidencesVector(f *facetRow, a []float32) int {
 // foreshorteningsVector is foreshortenings for all columns but the last few, and
 // returns how many it filled.
 func foreshorteningsVector(f *facetRow, a []float32) int {
-	one := archsimd.BroadcastFloat64x4(1)
+	one := fourOf(1)
 	n := len(a) &^ 3
 	for j := 0; j < n; j += 4 {
 		gain, level, lean := load4(f.above, j), load4(f.up[1], j), load4(f.up[2], j)

@@ -150,28 +150,28 @@ type vicinity struct {
 // may do.
 const surely = 1.02
 
-// vicinity finds the neighbours of the cell (u, v); ok is false where it lies at the
-// end of the field, and where holes have been given a height, which the slope of a
-// cell does not count.
-func (p *strip) vicinity(u, v int) (a vicinity, ok bool) {
+// vicinity finds the neighbours of the cell (u, v); false where it lies at the end of
+// the field, and where holes have been given a height, which the slope of a cell
+// does not count.
+func (p *strip) vicinity(u, v int, a *vicinity) bool {
 	f := p.f
 	i := u - f.ua
 	if hole := f.lim.holeHeight; u <= p.ua || u >= p.ub-1 || hole == hole {
-		return a, false
+		return false
 	}
 	a.before, a.here, a.after = (i-1)*f.width+v-f.at[i-1], i*f.width+v-f.at[i], (i+1)*f.width+v-f.at[i+1]
 	n := u - p.ua
 	next, here := p.at[n+1], p.at[n]
 	a.drift = [2]float32{float32(next.v0 - here.v0), float32(next.column(marchLanes-1) - here.column(marchLanes-1))}
 	a.limit = p.gentle[n].steep
-	return a, true
+	return true
 }
 
 // steep reports whether a look has layover at the cell (u, v) by its own
 // slope, the central differences.
 func (p *strip) steep(u, v int) bool {
-	a, ok := p.vicinity(u, v)
-	if !ok {
+	var a vicinity
+	if !p.vicinity(u, v, &a) {
 		return false
 	}
 	z := p.f.z

@@ -6,8 +6,8 @@ import "simd/archsimd"
 
 // markVector is the loop of strip.mark on vectors of eight patches.
 func markVector(a, b *byLane41, g *grade) (rises, lit uint64) {
-	rise, fall := eight(g.rise), eight(g.fall)
-	least, most := eight(g.drift[0]), eight(g.drift[1])
+	rise, fall := eightAt(&g.rise), eightAt(&g.fall)
+	least, most := eightAt(&g.drift[0]), eightAt(&g.drift[1])
 	for k := 0; k < patches; k += 8 {
 		lo, hi, known := changes8(corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1), least, most)
 		rises |= uint64(hi.Less(rise).And(known).ToBits()) << k

@@ -254,6 +254,9 @@ func (p *strip) spread(z []float32, v float64, l span) {
 		}
 		if turn, shift := shiftOf(v, p.dv); shift*shift <= 1 {
 			spreadVector(&p.h, z, v, p.dv, turn, shift)
+			for k := turn &^ 3; k < min((turn+3)&^3, marchLanes); k++ {
+				p.h[k] = lerp(z, v+float64(p.dv*float64(k)))
+			}
 			return
 		}
 	}

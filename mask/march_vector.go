@@ -2,7 +2,11 @@
 
 package mask
 
-import "simd/archsimd"
+import (
+	"math"
+
+	"simd/archsimd"
+)
 
 // The marches of a plane wave on vectors of four lanes: what the loops of march.go
 // do where all lanes lie in the DEM and no height is missing. Max and Min are for
@@ -11,8 +15,6 @@ import "simd/archsimd"
 type byLane36 [36]float32
 
 const marchVectors = (marchLanes + 3) / 4 * 4
-
-func four(x float64) archsimd.Float64x4 { return archsimd.BroadcastFloat64x4(x) }
 
 func lanes4(a *byLane, k int) archsimd.Float64x4 { return archsimd.LoadFloat64x4((*[4]float64)(a[k:])) }
 
@@ -39,7 +41,7 @@ func heightsVector(h *byLane, z, next *byLane36, rest float64) {
 // each other: those of lanes from turn on are shift off.
 func spreadVector(h *byLane, z []float32, v, dv float64, turn, shift int) {
 	first, step := four(v), four(dv)
-	nearly, close := four(1-onColumn), four(onColumn)
+	nearly, close := fourOf(1-onColumn), fourOf(onColumn)
 	before := int(v)
 	number := archsimd.LoadInt32x4((*[4]int32)(numbers8[:]))
 	for k := 0; k < marchVectors; k += 4 {
@@ -56,9 +58,6 @@ func spreadVector(h *byLane, z []float32, v, dv float64, turn, shift int) {
 		put4(h, k, q.Merge(x, rest.Greater(nearly)))
 	}
 	archsimd.ClearAVXUpperBits()
-	for k := turn &^ 3; k < min((turn+3)&^3, marchLanes); k++ {
-		h[k] = lerp(z, v+float64(dv*float64(k)))
-	}
 }
 
 // viewVector is strip.view.
@@ -76,7 +75,7 @@ func viewVector(p *strip, m0, dm, r0, dr, cos float64) {
 func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
 	st := &p.fwd
 	lowest, highest, per := four(minShade), four(maxNearer), four(perCos)
-	none, zero := four(nan), four(0)
+	none, zero := fourOf(math.NaN()), zero4()
 	for k := 0; k < marchVectors; k += 4 {
 		h, m, r := lanes4(&p.h, k), lanes4(&p.m, k), lanes4(&p.r, k)
 		top, most := lanes4(&st.top, k), lanes4(&st.most, k)

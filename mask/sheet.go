@@ -16,6 +16,7 @@ type sheet struct {
 	turned    bool     // the findings lie row by row of the marching frame, for now
 	beside    findings // room for them
 	margins   laneMargins
+	mixed     mixed
 	bin       float64 // metres of slant range, 0 when neither is wanted
 	wantClear bool
 	wantFold  bool

@@ -12,8 +12,8 @@ import (
 // where all lanes lie in the DEM and none under the track.
 
 // between4 is a number of lanes k to k+3 that changes by d from each to the next.
-func between4(a, d float64, k int) archsimd.Float64x4 {
-	return four(a).Add(four(d).Mul(lanes4(&laneNumbers, k)))
+func between4(a, d *float64, k int) archsimd.Float64x4 {
+	return fourAt(a).Add(fourAt(d).Mul(lanes4(&laneNumbers, k)))
 }
 
 func absolute4(x archsimd.Float64x4) archsimd.Float64x4 {
@@ -27,13 +27,13 @@ func lanes4of32(a *byLane32, k int) archsimd.Float64x4 {
 // viewTrackVector is strip.viewLanes.
 func viewTrackVector(p *strip) {
 	ln := p.f.ln
-	scale, datum, zero := four(ln.scale), four(ln.datum), four(0)
-	none, least := four(math.Inf(-1)), four(levelShare)
+	scale, datum, zero := fourAt(&ln.scale), fourAt(&ln.datum), zero4()
+	none, least := fourOf(math.Inf(-1)), fourOf(levelShare)
 	for k := 0; k < marchVectors; k += 4 {
-		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		nx, ny := between4(&p.p0.nx, &p.dp.nx, k), between4(&p.p0.ny, &p.dp.ny, k)
 		h := lanes4(&p.h, k).Sub(datum)
-		x := between4(p.p0.x, p.dp.x, k).Add(h.Mul(nx))
-		y := between4(p.p0.y, p.dp.y, k).Add(h.Mul(ny))
+		x := between4(&p.p0.x, &p.dp.x, k).Add(h.Mul(nx))
+		y := between4(&p.p0.y, &p.dp.y, k).Add(h.Mul(ny))
 		r := x.Mul(x).Add(y.Mul(y)).Sqrt()
 		under := x.LessEqual(zero)
 		put4(&p.m, k, none.Merge(scale.Mul(y).Div(x), under))
@@ -51,11 +51,11 @@ func viewTrackVector(p *strip) {
 // slant ranges so far.
 func forwardTrackVector(p *strip, tops, ranges *byLane, shades, nearers *byLane32, minShade, maxNearer float64) {
 	ln := p.f.ln
-	scale, datum, lowest, highest := four(ln.scale), four(ln.datum), four(minShade), four(maxNearer)
-	none, zero := four(math.Inf(-1)), four(0)
+	scale, datum, lowest, highest := fourAt(&ln.scale), fourAt(&ln.datum), four(minShade), four(maxNearer)
+	none, zero := fourOf(math.Inf(-1)), zero4()
 	for k := 0; k < marchVectors; k += 4 {
-		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
-		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		x, y := between4(&p.p0.x, &p.dp.x, k), between4(&p.p0.y, &p.dp.y, k)
+		nx, ny := between4(&p.p0.nx, &p.dp.nx, k), between4(&p.p0.ny, &p.dp.ny, k)
 		top, most := lanes4(tops, k), lanes4(ranges, k)
 		shade := datum.Add(top.Mul(x).Sub(scale.Mul(y)).Div(scale.Mul(ny).Sub(top.Mul(nx))))
 		put4as32(shades, k, shade.Merge(lowest, top.Greater(none)).Max(lowest))
@@ -76,7 +76,7 @@ func forwardTrackVector(p *strip, tops, ranges *byLane, shades, nearers *byLane3
 // forwardMoveVector is strip.forwardMove.
 func forwardMoveVector(p *strip, row *lines) {
 	st := &p.fwd
-	none, zero := four(nan), four(0)
+	none, zero := fourOf(math.NaN()), zero4()
 	for k := 0; k < marchVectors; k += 4 {
 		m, r := lanes4(&p.m, k), lanes4(&p.r, k)
 		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
@@ -98,7 +98,7 @@ func forwardMoveVector(p *strip, row *lines) {
 // as strip.forwardUnsure has it.
 func forwardMoveUnsureVector(p *strip, row *lines) {
 	st := &p.fwd
-	none, zero, minus := four(nan), four(0), four(math.Copysign(0, -1)).AsInt64x4()
+	none, zero, minus := fourOf(math.NaN()), zero4(), fourOf(math.Copysign(0, -1)).AsInt64x4()
 	for k := 0; k < marchVectors; k += 4 {
 		m, r := lanes4(&p.m, k), lanes4(&p.r, k)
 		top, most, mostU, doubt := lanes4(&st.top, k), lanes4(&st.most, k), lanes4(&st.mostU, k), lanes4(&st.doubt, k)
@@ -124,7 +124,7 @@ func forwardMoveUnsureVector(p *strip, row *lines) {
 // ranges so far.
 func backwardTrackVector(p *strip, ranges *byLane, farthers *byLane32, minFarther float64) {
 	ln := p.f.ln
-	datum, lowest, zero := four(ln.datum), four(minFarther), four(0)
+	datum, lowest, zero := fourAt(&ln.datum), four(minFarther), zero4()
 	for k := 0; k < marchVectors; k += 4 {
 		r := lanes4(ranges, k)
 		if ln.fan != nil {
@@ -132,8 +132,8 @@ func backwardTrackVector(p *strip, ranges *byLane, farthers *byLane32, minFarthe
 			put4as32(farthers, k, farther.Max(lowest))
 			continue
 		}
-		x, y := between4(p.p0.x, p.dp.x, k), between4(p.p0.y, p.dp.y, k)
-		nx, ny := between4(p.p0.nx, p.dp.nx, k), between4(p.p0.ny, p.dp.ny, k)
+		x, y := between4(&p.p0.x, &p.dp.x, k), between4(&p.p0.y, &p.dp.y, k)
+		nx, ny := between4(&p.p0.nx, &p.dp.nx, k), between4(&p.p0.ny, &p.dp.ny, k)
 		r = r.Max(zero)
 		n, b := nx.Mul(nx).Add(ny.Mul(ny)), x.Mul(nx).Add(y.Mul(ny))
 		c := x.Mul(x).Add(y.Mul(y)).Sub(r.Mul(r))
@@ -147,11 +147,11 @@ func backwardTrackVector(p *strip, ranges *byLane, farthers *byLane32, minFarthe
 // line of heights, and the other way round where the line is that of the ground
 // farther away.
 func rangesVector(p *strip, margin, line *byLane32, farther bool) {
-	datum, zero, none := four(p.f.ln.datum), four(0), four(math.Inf(-1))
+	datum, zero, none := fourAt(&p.f.ln.datum), zero4(), fourOf(math.Inf(-1))
 	for k := 0; k < marchVectors; k += 4 {
 		h := lanes4of32(line, k).Sub(datum)
-		x := between4(p.p0.x, p.dp.x, k).Add(h.Mul(between4(p.p0.nx, p.dp.nx, k)))
-		y := between4(p.p0.y, p.dp.y, k).Add(h.Mul(between4(p.p0.ny, p.dp.ny, k)))
+		x := between4(&p.p0.x, &p.dp.x, k).Add(h.Mul(between4(&p.p0.nx, &p.dp.nx, k)))
+		y := between4(&p.p0.y, &p.dp.y, k).Add(h.Mul(between4(&p.p0.ny, &p.dp.ny, k)))
 		r := none.Merge(x.Mul(x).Add(y.Mul(y)).Sqrt(), x.LessEqual(zero))
 		if own := lanes4(&p.r, k); farther {
 			r = r.Sub(own)
@@ -188,11 +188,11 @@ func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
 
 // markSeenVector is the loop of strip.markSeen on vectors of eight patches.
 func markSeenVector(a, b *byLane41, g *seenGrade, first, last int) (rises, lit, dark uint64, high float32) {
-	low, all := eight(float32(math.Inf(-1))), eight(float32(math.Inf(1)))
+	low, all := eightOf(float32(math.Inf(-1))), eightOf(float32(math.Inf(1)))
 	from, to := archsimd.BroadcastInt32x8(int32(first)), archsimd.BroadcastInt32x8(int32(last))
 	number, highest := archsimd.LoadInt32x8(&numbers8), low
-	rise, drop, fall, dim, per := eight(g.rise), eight(g.drop), eight(g.fall), eight(g.dark), eight(g.perHeight)
-	least, most := eight(g.drift[0]), eight(g.drift[1])
+	rise, drop, fall, dim, per := eightAt(&g.rise), eightAt(&g.drop), eightAt(&g.fall), eightAt(&g.dark), eightAt(&g.perHeight)
+	least, most := eightAt(&g.drift[0]), eightAt(&g.drift[1])
 	for k := 0; k < patches; k += 8 {
 		a0, a1, b0, b1 := corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1)
 		lo, hi, known := changes8(a0, a1, b0, b1, least, most)

@@ -336,7 +336,7 @@ func heightsBetween(h, z []float32, rest linear, from int) {
 	z = z[:len(h)+1]
 	k := 0
 	if vectors {
-		k = heightsBetweenVector(h, z, rest, from)
+		k = heightsBetweenVector(h, z, &rest, from)
 	}
 	for ; k < len(h); k++ {
 		h[k] = z[k] + float32(rest.at(from+k)*(z[k+1]-z[k]))

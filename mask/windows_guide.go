@@ -59,7 +59,7 @@ func (g *guide) reset() {
 // advance passes a row, d from the one before.
 func (g *guide) advance(h *laneRow, d linear, row int) {
 	if vectors {
-		g.advanceVector(h, d, float32(row))
+		g.advanceVector(h, &d, float32(row))
 		return
 	}
 	for k := range guideLanes {
@@ -86,7 +86,7 @@ func (g *guide) advance(h *laneRow, d linear, row int) {
 // between two slopes is zero at no less than the largest slope of the ground.
 func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) uint32 {
 	if vectors {
-		return g.seesVector(lane, on, h0, most, d, j, n)
+		return g.seesVector(lane, on, h0, most, &d, j, n)
 	}
 	other := 1
 	if on {

@@ -129,7 +129,7 @@ func (t *sheet) rangeSlopes(d *directions, row int, out []float32) {
 func alongLine(out, zc, zr []float32, c, r linear, from int) {
 	j := 0
 	if vectors {
-		j = alongLineVector(out, zc, zr, c, r, from)
+		j = alongLineVector(out, zc, zr, &c, &r, from)
 	}
 	for ; j < len(out); j++ {
 		out[j] = float32(zc[j]*c.at(from+j)) + float32(zr[j]*r.at(from+j))

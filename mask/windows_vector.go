@@ -4,7 +4,6 @@ package mask
 
 import (
 	"math"
-	"math/bits"
 	"simd/archsimd"
 )
 
@@ -25,12 +24,12 @@ func lowerOf(a, b float32x8) float32x8  { return a.Merge(b, a.Less(b)) }
 var ascending = [vectorWidth]float32{0, 1, 2, 3, 4, 5, 6, 7}
 
 // spread returns the line at columns j, j+1, ...
-func (q linear) spread(j int) float32x8 {
-	at := archsimd.BroadcastFloat32x8(float32(j)).Add(archsimd.LoadFloat32x8(&ascending))
-	return archsimd.BroadcastFloat32x8(q.a).Add(archsimd.BroadcastFloat32x8(q.b).Mul(at))
+func (q *linear) spread(j int) float32x8 {
+	at := whole8(j).Add(archsimd.LoadFloat32x8(&ascending))
+	return eightAt(&q.a).Add(eightAt(&q.b).Mul(at))
 }
 
-func heightsBetweenVector(h, z []float32, rest linear, from int) (k int) {
+func heightsBetweenVector(h, z []float32, rest *linear, from int) (k int) {
 	for ; k+vectorWidth <= len(h); k += vectorWidth {
 		a := load(z, k)
 		store(a.Add(rest.spread(from+k).Mul(load(z, k+1).Sub(a))), h, k)
@@ -39,13 +38,13 @@ func heightsBetweenVector(h, z []float32, rest linear, from int) (k int) {
 	return k
 }
 
-func (g *guide) advanceVector(h *laneRow, d linear, row float32) {
-	sign, rows := archsimd.BroadcastFloat32x8(g.sign), archsimd.BroadcastFloat32x8(row)
+func (g *guide) advanceVector(h *laneRow, d *linear, row float32) {
+	sign, rows := eightAt(&g.sign), eight(row)
 	for k := 0; k < guideLanes; k += vectorWidth {
 		z, away := load(h[:], k).Mul(sign), d.spread(k)
-		for l, slope := range g.slopes {
+		for l := range g.slopes {
 			top, held := g.top[l][k:], g.row[l][k:]
-			t := load(top, 0).Sub(away.Mul(archsimd.BroadcastFloat32x8(slope)))
+			t := load(top, 0).Sub(away.Mul(eightAt(&g.slopes[l])))
 			store(rows.Merge(load(held, 0), z.GreaterEqual(t)), held, 0)
 			store(higherOf(z, t), top, 0)
 		}
@@ -53,19 +52,19 @@ func (g *guide) advanceVector(h *laneRow, d linear, row float32) {
 	archsimd.ClearAVXUpperBits()
 }
 
-func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n int) (out uint32) {
+func (g *guide) seesVector(lane int, on bool, h0, most []float32, d *linear, j, n int) (out uint32) {
 	other := lane + 1
 	if on {
 		other = lane
 	}
-	sign := archsimd.BroadcastFloat32x8(g.sign)
+	sign := eightAt(&g.sign)
 	for c := 0; c < n; c += vectorWidth {
 		z, away := load(h0, c).Mul(sign), d.spread(j+c)
 		var zero, above, below, low float32x8
-		high := archsimd.BroadcastFloat32x8(float32(math.Inf(1)))
+		high := eightOf(float32(math.Inf(1)))
 		up := zero.Equal(zero)
-		for l, slope := range g.slopes {
-			m := archsimd.BroadcastFloat32x8(slope)
+		for l := range g.slopes {
+			m := eightAt(&g.slopes[l])
 			t := higherOf(load(g.top[l][lane+c:], 0), load(g.top[l][other+c:], 0))
 			x := t.Sub(z.Add(away.Mul(m)))
 			before := up
@@ -79,7 +78,7 @@ func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n
 		}
 		m := low.Add(high.Sub(low).Mul(above.Div(above.Sub(below))))
 		seen := load(most, c)
-		larger := m.Greater(seen).Or(seen.Equal(archsimd.BroadcastFloat32x8(g.bound)))
+		larger := m.Greater(seen).Or(seen.Equal(eightAt(&g.bound)))
 		out |= uint32(above.Greater(zero).And(larger).ToBits()) << c
 	}
 	archsimd.ClearAVXUpperBits()
@@ -87,7 +86,7 @@ func (g *guide) seesVector(lane int, on bool, h0, most []float32, d linear, j, n
 }
 
 func (b *besideLine) slopesVector(j int, up, down []float32) int {
-	one, own := archsimd.BroadcastFloat32x8(1), archsimd.BroadcastFloat32x8(ownGround)
+	one, own := eightOf(1), eightOf(ownGround)
 	c := 0
 	for ; c+vectorWidth <= len(up); c += vectorWidth {
 		h, a := load(b.here, c), b.across.spread(j+c)
@@ -109,7 +108,7 @@ func (b *besideLine) slopesVector(j int, up, down []float32) int {
 		}
 		store(higherOf(high, load(up, c)), up, c)
 		if down != nil {
-			store(higherOf(archsimd.BroadcastFloat32x8(0).Sub(low), load(down, c)), down, c)
+			store(higherOf(zero8().Sub(low), load(down, c)), down, c)
 		}
 	}
 	archsimd.ClearAVXUpperBits()
@@ -117,10 +116,10 @@ func (b *besideLine) slopesVector(j int, up, down []float32) int {
 }
 
 func (q *steepness) searchVector(n int) int {
-	mix, h0, s0, sign := archsimd.BroadcastFloat32x8(q.mix), archsimd.BroadcastFloat32x8(q.h0), archsimd.BroadcastFloat32x8(q.s0), archsimd.BroadcastFloat32x8(q.sign)
-	best := archsimd.BroadcastFloat32x8(float32(math.Inf(-1)))
-	row, at := archsimd.BroadcastFloat32x8(-1), archsimd.LoadFloat32x8(&ascending)
-	last := archsimd.BroadcastFloat32x8(float32(n))
+	mix, h0, s0, sign := eightAt(&q.mix), eightAt(&q.h0), eightAt(&q.s0), eightAt(&q.sign)
+	best := eightOf(float32(math.Inf(-1)))
+	row, at := eightOf(-1), archsimd.LoadFloat32x8(&ascending)
+	last := whole8(n)
 	for r := 0; r < n; r += vectorWidth {
 		a := load(q.a, r)
 		h := a.Add(mix.Mul(load(q.b, r).Sub(a)))
@@ -129,18 +128,28 @@ func (q *steepness) searchVector(n int) int {
 		m := sign.Mul(h.Sub(h0)).Div(d)
 		larger := m.Greater(best).And(last.Greater(at))
 		best, row = m.Merge(best, larger), at.Merge(row, larger)
-		at = at.Add(archsimd.BroadcastFloat32x8(vectorWidth))
+		at = at.Add(eightOf(vectorWidth))
 	}
 	var m, rows [vectorWidth]float32
 	best.Store(&m)
 	row.Store(&rows)
-	most := max(m[0], m[1], m[2], m[3], m[4], m[5], m[6], m[7])
-	first := bits.TrailingZeros8(best.Equal(archsimd.BroadcastFloat32x8(most)).ToBits())
 	archsimd.ClearAVXUpperBits()
-	return int(rows[first])
+	return int(rows[firstLargest(&m)])
 }
 
-func alongLineVector(out, zc, zr []float32, c, r linear, from int) (j int) {
+// firstLargest returns the first place of the largest number.
+//
+//go:noinline
+func firstLargest(m *[vectorWidth]float32) (at int) {
+	for k := range m {
+		if m[k] > m[at] {
+			at = k
+		}
+	}
+	return at
+}
+
+func alongLineVector(out, zc, zr []float32, c, r *linear, from int) (j int) {
 	for ; j+vectorWidth <= len(out); j += vectorWidth {
 		store(load(zc, j).Mul(c.spread(from+j)).Add(load(zr, j).Mul(r.spread(from+j))), out, j)
 	}
@@ -149,6 +158,13 @@ func alongLineVector(out, zc, zr []float32, c, r linear, from int) (j int) {
 }
 
 func (e *endsBlock) fillVector(s *steps, x *windower, rise []float32, at int) bool {
+	any := e.fill8(s, x, rise, at)
+	archsimd.ClearAVXUpperBits()
+	return any
+}
+
+//go:noinline
+func (e *endsBlock) fill8(s *steps, x *windower, rise []float32, at int) bool {
 	var differ archsimd.Int32x8
 	n := archsimd.BroadcastInt32x8(int32(s.n))
 	for k := 0; k < len(e[0]); k += vectorWidth {
@@ -168,27 +184,25 @@ func (e *endsBlock) fillVector(s *steps, x *windower, rise []float32, at int) bo
 		}
 		differ = differ.Or(compressed).Or(n.Sub(open)).Or(n.Sub(hide)).Or(mayFold)
 	}
-	any := !differ.IsZero()
-	archsimd.ClearAVXUpperBits()
-	return any
+	return !differ.IsZero()
 }
 
 func (l *ladder) upToVector(x float32x8) (n archsimd.Int32x8) {
-	if x.GreaterEqual(archsimd.BroadcastFloat32x8(l.low)).ToBits() == 0 {
+	if x.GreaterEqual(eightAt(&l.low)).ToBits() == 0 {
 		return n
 	}
-	for _, r := range l.rungs {
-		n = n.Sub(x.GreaterEqual(archsimd.BroadcastFloat32x8(r)).ToInt32x8())
+	for i := range l.rungs {
+		n = n.Sub(x.GreaterEqual(eightAt(&l.rungs[i])).ToInt32x8())
 	}
 	return n
 }
 
 func (l *ladder) belowVector(x float32x8) (n archsimd.Int32x8) {
-	if x.Greater(archsimd.BroadcastFloat32x8(l.low)).ToBits() == 0 {
+	if x.Greater(eightAt(&l.low)).ToBits() == 0 {
 		return n
 	}
-	for _, r := range l.rungs {
-		n = n.Sub(x.Greater(archsimd.BroadcastFloat32x8(r)).ToInt32x8())
+	for i := range l.rungs {
+		n = n.Sub(x.Greater(eightAt(&l.rungs[i])).ToInt32x8())
 	}
 	return n
 }
@@ -199,7 +213,7 @@ func (q *summits) raiseVector() {
 		m = higherOf(archsimd.LoadFloat32x8(&q.rise[k]).Div(archsimd.LoadFloat32x8(&q.away[k])), m)
 	}
 	var zero float32x8
-	two := archsimd.BroadcastFloat32x8(2)
+	two := eightOf(2)
 	for k := range q.arc {
 		a := &q.arc[k]
 		r, d, step := archsimd.LoadFloat32x8(&a.r), archsimd.LoadFloat32x8(&a.d), archsimd.LoadFloat32x8(&a.step)

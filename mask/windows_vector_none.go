@@ -2,9 +2,9 @@
 
 package mask
 
-func (*guide) advanceVector(*laneRow, linear, float32) { panic(noVectors) }
+func (*guide) advanceVector(*laneRow, *linear, float32) { panic(noVectors) }
 
-func (*guide) seesVector(int, bool, []float32, []float32, linear, int, int) uint32 {
+func (*guide) seesVector(int, bool, []float32, []float32, *linear, int, int) uint32 {
 	panic(noVectors)
 }
 
@@ -16,6 +16,6 @@ func (*summits) raiseVector() { panic(noVectors) }
 
 func (*endsBlock) fillVector(*steps, *windower, []float32, int) bool { panic(noVectors) }
 
-func heightsBetweenVector([]float32, []float32, linear, int) int { panic(noVectors) }
+func heightsBetweenVector([]float32, []float32, *linear, int) int { panic(noVectors) }
 
-func alongLineVector(_, _, _ []float32, _, _ linear, _ int) int { panic(noVectors) }
+func alongLineVector(_, _, _ []float32, _, _ *linear, _ int) int { panic(noVectors) }
