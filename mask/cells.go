@@ -184,15 +184,16 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 		}
 		return
 	}
-	m, doubt := t.margins.at(k, w, h)
+	var m lane
+	doubt := t.margins.at(k, w, h, &m)
 	folds := doubt&^(doubtClear|doubtClearU) != 0
 	if folds && p.steep(u, v) { // layover by its own slope, whatever shares its range
 		doubt &= doubtClear | doubtClearU
 	}
 	if doubt != 0 {
-		m = t.ask(p, wk, u, v, k, w, m, doubt)
+		t.ask(p, wk, u, v, k, w, &m, doubt)
 	}
-	fold := t.set(i, m)
+	fold := t.set(i, &m)
 	if t.bin > 0 {
 		if m.clearU > 0 {
 			t.count(p, wk, u, v, i, fold)
@@ -203,7 +204,7 @@ func (t *sheet) classifyCell(p *strip, wk *walker, u, v, k int, w, h float32) {
 }
 
 // set stores what a cell's margins say and returns its fold margin.
-func (t *sheet) set(i int, m lane) (fold float32) {
+func (t *sheet) set(i int, m *lane) (fold float32) {
 	t.raw[i] = uint8(m.raw())
 	fold = float32(nan)
 	if m.clear > 0 {
@@ -214,9 +215,10 @@ func (t *sheet) set(i int, m lane) (fold float32) {
 }
 
 // ask settles a doubtful cell.
-func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt doubts) lane {
+func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m *lane, doubt doubts) {
 	if sum := m.clear + m.near + m.far + m.clearU + m.nearU + m.farU; sum != sum {
-		return t.settle(p.f, wk, u, v, m)
+		t.settle(p.f, wk, u, v, m)
+		return
 	}
 	next := k + 1
 	if w == 0 {
@@ -225,10 +227,9 @@ func (t *sheet) ask(p *strip, wk *walker, u, v, k int, w float32, m lane, doubt 
 	x := (float64(v) - p.v0) / p.dv
 	if doubt&doubtClear != 0 && p.shadowed(u, v, x) {
 		m.clear = signed(m.clear, false, t.margins.tinyM)
-		return m
+		return
 	}
-	wk.quick(p, u, v, k, next, x, &m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
-	return m
+	wk.quick(p, u, v, k, next, x, m, doubt, float64(t.margins.slackM), float64(t.margins.slackR))
 }
 
 // count fills what shares the slant range of a cell. Where nothing comes within
@@ -347,11 +348,11 @@ const (
 	doubtFarU
 )
 
-// at returns the margins of a cell of height h at weight w between lanes k and
-// k+1, and which are doubtful: missing, or small against one row's worth of ground,
+// at finds the margins of a cell of height h at weight w between lanes k and
+// k+1, and returns which are doubtful: missing, or small against one row's worth of ground,
 // the roughness of the ground that decides, and how far the cell itself lies
 // above or below the ground between the lanes.
-func (r *laneMargins) at(k int, w, h float32) (m lane, d doubts) {
+func (r *laneMargins) at(k int, w, h float32, m *lane) (d doubts) {
 	bump := abs32(h - r.h[k])
 	if w != 0 {
 		bump = abs32(h - mix(r.h[k], r.h[k+1], w))
@@ -385,7 +386,7 @@ func (r *laneMargins) at(k int, w, h float32) (m lane, d doubts) {
 	m.clear = blend(&r.clear, &r.roughM, r.slackM, doubtClear)
 	m.clearU = m.clear
 	if m.clear < 0 && d == 0 {
-		return m, 0
+		return 0
 	}
 	m.near = blend(&r.near, &r.roughN, r.slackR, doubtNear)
 	m.far = blend(&r.far, &r.roughF, r.slackR, doubtFar)
@@ -395,15 +396,15 @@ func (r *laneMargins) at(k int, w, h float32) (m lane, d doubts) {
 		m.nearU = blend(&r.nearU, &r.roughN, r.slackR, doubtNearU)
 		m.farU = blend(&r.farU, &r.roughF, r.slackR, doubtFarU)
 	}
-	return m, d
+	return d
 }
 
 // lane holds margins as the lanes keep them.
 type lane struct{ clear, near, far, clearU, nearU, farU float32 }
 
-// settle returns the margins of a cell where a lane has none, by a walk over
+// settle finds the margins of a cell where a lane has none, by a walk over
 // the whole reach.
-func (t *sheet) settle(f *field, wk *walker, u, v int, m lane) lane {
+func (t *sheet) settle(f *field, wk *walker, u, v int, m *lane) {
 	x := wk.settle(f, u, v)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	shade, nearer, farther := f.limitLines()
@@ -411,11 +412,9 @@ func (t *sheet) settle(f *field, wk *walker, u, v int, m lane) lane {
 	if f.ln.places != nil && f.ln.fan == nil {
 		above, below = wk.ranges(u, h, nearer, farther)
 	}
-	return lane{
-		clear: float32(min(x.clear, most)), clearU: float32(min(x.clearU, most)),
-		near: float32(min(x.near, above)), nearU: float32(min(x.nearU, above)),
-		far: float32(min(x.far, below)), farU: float32(min(x.farU, below)),
-	}
+	m.clear, m.clearU = float32(min(x.clear, most)), float32(min(x.clearU, most))
+	m.near, m.nearU = float32(min(x.near, above)), float32(min(x.nearU, above))
+	m.far, m.farU = float32(min(x.far, below)), float32(min(x.farU, below))
 }
 
 // ranges returns how much slant range lies between a height at the walk's own

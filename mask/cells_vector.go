@@ -124,10 +124,12 @@ func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lin
 		doubtful &^= 1 << j
 		t.classifyCell(p, wk, u, v+j, k+j, c.w[j], z[j])
 	}
+	var m lane
 	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
 		j := bits.TrailingZeros8(doubtful)
-		m, doubt := c.of(j)
-		t.set(i+j*stride, t.ask(p, wk, u, v+j, k+j, c.w[j], m, doubt))
+		doubt := c.of(j, &m)
+		t.ask(p, wk, u, v+j, k+j, c.w[j], &m, doubt)
+		t.set(i+j*stride, &m)
 	}
 }
 
@@ -248,11 +250,12 @@ func (c *mixed) keep(part, m, n, g archsimd.Float32x8) (single uint8) {
 	return single
 }
 
-// of returns the margins of cell j where no terrain is unknown.
-func (c *mixed) of(j int) (m lane, d doubts) {
-	m = lane{clear: c.clear[j], near: c.near[j], far: c.far[j], clearU: c.clear[j], nearU: c.near[j], farU: c.far[j]}
-	d = doubts(c.doubtM>>j&1)*doubtClear | doubts(c.doubtN>>j&1)*doubtNear | doubts(c.doubtG>>j&1)*doubtFar
-	return m, d
+// of finds the margins of cell j where no terrain is unknown, and returns which are
+// doubtful.
+func (c *mixed) of(j int, m *lane) doubts {
+	m.clear, m.near, m.far = c.clear[j], c.near[j], c.far[j]
+	m.clearU, m.nearU, m.farU = m.clear, m.near, m.far
+	return doubts(c.doubtM>>j&1)*doubtClear | doubts(c.doubtN>>j&1)*doubtNear | doubts(c.doubtG>>j&1)*doubtFar
 }
 
 // steep8 is strip.steep for the cells from column v on.

@@ -33,8 +33,8 @@ const gradeShare = 0.99
 // patches is the number of patches of a row that lines of a strip may cross.
 const patches = padLanes
 
-// gradeOf returns the bounds of a plane wave for the row at which the strip stands.
-func (p *strip) gradeOf(u int) grade {
+// gradeOf finds the bounds of a plane wave for the row at which the strip stands.
+func (p *strip) gradeOf(u int, g *grade) {
 	ln := p.f.ln
 	i := min(u/laneStep, ln.nu-2)
 	n := i*ln.nk + p.j
@@ -42,10 +42,9 @@ func (p *strip) gradeOf(u int) grade {
 	drift := func(n, m int) float32 { return float32((ln.v[m] - ln.v[n]) * (1. / laneStep)) }
 	a, b := (ln.s[m]-ln.s[n])/laneStep, (ln.s[m+1]-ln.s[n+1])/laneStep
 	ds := min(a, b) * gradeShare
-	g := grade{drift: [2]float32{drift(n, m), drift(n+1, m+1)}}
+	g.drift[0], g.drift[1] = drift(n, m), drift(n+1, m+1)
 	g.rise, g.fall = float32(ds*ln.tan), float32(-ds*ln.cot)
 	g.most = float32(max(a, b) * surely * ln.tan)
-	return g
 }
 
 // mark finds the gentle patches between row u, where the strip stands, and the
@@ -70,7 +69,8 @@ func (p *strip) mark(u int) {
 		p.markSeen(g, u, (*byLane41)(a), (*byLane41)(b))
 		return
 	}
-	limits := p.gradeOf(u)
+	var limits grade
+	p.gradeOf(u, &limits)
 	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.most
 	if vectors {
 		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
@@ -162,7 +162,8 @@ func (p *strip) vicinity(u, v int, a *vicinity) bool {
 	a.before, a.here, a.after = (i-1)*f.width+v-f.at[i-1], i*f.width+v-f.at[i], (i+1)*f.width+v-f.at[i+1]
 	n := u - p.ua
 	next, here := p.at[n+1], p.at[n]
-	a.drift = [2]float32{float32(next.v0 - here.v0), float32(next.column(marchLanes-1) - here.column(marchLanes-1))}
+	a.drift[0] = float32(next.v0 - here.v0)
+	a.drift[1] = float32(next.column(marchLanes-1) - here.column(marchLanes-1))
 	a.limit = p.gentle[n].steep
 	return true
 }

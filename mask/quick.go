@@ -13,10 +13,12 @@ const atLimit = 1. / (1 << 14)
 // their own.
 func (w *walker) quick(p *strip, u, v, k, next int, x float64, m *lane, doubt doubts, slackM, slackR float64) {
 	w.f = p.f
-	w.y = p.ray(u, v, x)
+	w.y.aim(p, u, v, x)
 	_, s := w.y.at(u)
 	h := float64(p.f.z[(u-p.f.ua)*p.f.width+v-p.f.at[u-p.f.ua]])
-	q := quickWalk{walker: w, p: p, u: u, k: k, next: next, slackM: slackM * w.y.gain(s, h), slackR: slackR}
+	var q quickWalk
+	q.walker, q.p, q.u, q.k, q.next = w, p, u, k, next
+	q.slackM, q.slackR = slackM*w.y.gain(s, h), slackR
 	q.ua, q.ub = max(p.ua, u-p.f.near), min(p.ub, u+1+p.f.far)
 	q.m, q.r = w.y.own(s, h)
 	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
@@ -173,6 +175,8 @@ func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
 	if dx < 0 {
 		next, turn = 0, -1
 	}
+	var g arc
+	g.sa, g.ds = sa, sb-sa
 	for ; ; c += turn {
 		t1 := 1.0
 		if c != last {
@@ -193,7 +197,7 @@ func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
 		}
 		ep, eq := p1-p0, q1-q0
 		d := (eq - ep) * dx
-		g := arc{sa: sa, ds: sb - sa, a: p0 + ep*x0, b: (q0 - p0) + ep*dx + (eq-ep)*x0, d: d}
+		g.a, g.b, g.d = p0+ep*x0, (q0-p0)+ep*dx+(eq-ep)*x0, d
 		if len(q.cuts) == 0 && t0 > 0 {
 			q.emit(&g, t0)
 		}
@@ -212,8 +216,19 @@ func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
 type arc struct{ sa, ds, a, b, d float64 }
 
 func (q *quickWalk) emit(g *arc, t float64) {
-	m, r := q.y.see(g.sa+t*g.ds, g.a+t*(g.b+t*g.d))
-	q.cuts = append(q.cuts, cut{m: m, r: r})
+	x := q.more()
+	x.m, x.r = q.y.see(g.sa+t*g.ds, g.a+t*(g.b+t*g.d))
+	x.unknown = false
+}
+
+// more returns a new sample at the end of q.cuts, with what is left in it.
+func (q *quickWalk) more() *cut {
+	n := len(q.cuts)
+	if n == cap(q.cuts) {
+		q.cuts = append(q.cuts, cut{})
+	}
+	q.cuts = q.cuts[:n+1]
+	return &q.cuts[n]
 }
 
 // vertices emits the extremes of m and r between t0 and t1, in order.
@@ -244,7 +259,8 @@ func (q *quickWalk) walkUnknown(u, dir int, va, vb, sa, sb float64) {
 	q.cuts = q.cuts[:0]
 	for i := range q.pieces {
 		g := &q.pieces[i]
-		q.cuts = append(q.cuts, cut{g.m, g.r, g.unknown})
+		x := q.more()
+		x.m, x.r, x.unknown = g.m, g.r, g.unknown
 	}
 }
 
@@ -440,7 +456,8 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 // the point's slant range; when possible is set, whether ground that may be
 // lit, or unknown terrain, does.
 func (q *quickWalk) foldedFarther(possible bool) bool {
-	top, topU, prev, hidden := q.m, math.Inf(-1), cut{m: q.m, r: q.r}, false
+	top, topU, hidden := q.m, math.Inf(-1), false
+	m, r := q.m, q.r // of the sample before
 	reached := q.r // no more than the line's slant range at row u
 	vb, sb := q.y.at(q.u)
 	for u := q.u; u < q.ub-1; u++ {
@@ -459,7 +476,7 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 				hidden = false
 			}
 			for i := range q.cuts {
-				g := q.cuts[i]
+				g := &q.cuts[i]
 				reached = g.r
 				if g.unknown {
 					if possible && g.r <= q.r {
@@ -471,7 +488,7 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 				if g.m > top {
 					best := g.r
 					if hidden {
-						best = min(best, prev.r+(top-prev.m)/(g.m-prev.m)*(g.r-prev.r))
+						best = min(best, r+(top-m)/(g.m-m)*(g.r-r))
 					}
 					if best <= q.r && (possible || g.m > topU) {
 						return true
@@ -481,7 +498,7 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 				} else {
 					hidden = true
 				}
-				prev = g
+				m, r = g.m, g.r
 			}
 			if q.left(vb) {
 				return false

@@ -37,9 +37,10 @@ func (ln *lanes) rayAt(u, v float64) ray {
 	return ray{ln: ln, k: k, j: j, u0: -1, from: -1, to: -2}
 }
 
-// ray is newRay for a cell between the lanes of a strip, on its lane x.
-func (p *strip) ray(u, v int, x float64) ray {
-	return ray{ln: p.f.ln, k: float64(p.k0) + x, j: p.j, u0: u, v0: v, from: -1, to: -2}
+// aim is newRay for a cell between the lanes of a strip, on its lane x.
+func (y *ray) aim(p *strip, u, v int, x float64) {
+	y.ln, y.k, y.j = p.f.ln, float64(p.k0)+x, p.j
+	y.u0, y.v0, y.from, y.to = u, v, -1, -2
 }
 
 func (y *ray) at(u int) (v, s float64) {
