@@ -95,14 +95,15 @@ func (t *sheet) place(f *field, u, v int) (at, stride int) {
 // stands.
 func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	f := p.f
-	va, vb := p.cells(u)
+	p.stand(u)
+	va, vb := p.va, p.vb
 	if va >= vb {
 		return
 	}
 	z, base := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
 	line := p.line()
-	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.inDEM() == whole
+	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.in == whole
 	for v := va; v < vb; v++ {
 		if bundles {
 			from := min(v, vb-bundle)
@@ -265,7 +266,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	ln := p.f.ln
 	sin, cosine := ln.sin, ln.cos
 	if ln.places != nil {
-		mid := p.place(1 + laneStep/2)
+		mid := p.placeOf(1 + laneStep/2)
 		sin, cosine = ln.angle(&mid, p.middleHeight())
 	}
 	row := ln.minDS * max(sin, levelShare)
@@ -274,7 +275,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	r.perM, r.perR = settleShare/r.slackM, settleShare/r.slackR
 	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
 	r.cos = float32(math.Abs(cosine))
-	l := p.inDEM()
+	l := p.in
 	switch {
 	case ln.places != nil:
 		r.fromTrack(p, u, l)

@@ -161,7 +161,7 @@ func (p *strip) vicinity(u, v int, a *vicinity) bool {
 	}
 	a.before, a.here, a.after = (i-1)*f.width+v-f.at[i-1], i*f.width+v-f.at[i], (i+1)*f.width+v-f.at[i+1]
 	n := u - p.ua
-	next, here := p.at[n+1], p.at[n]
+	here, next := p.footingOf(u), p.footingOf(u+1)
 	a.drift[0] = float32(next.v0 - here.v0)
 	a.drift[1] = float32(next.column(marchLanes-1) - here.column(marchLanes-1))
 	a.limit = p.gentle[n].steep

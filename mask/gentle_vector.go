@@ -38,7 +38,7 @@ func changes8(a0, a1, b0, b1, least, most archsimd.Float32x8) (lo, hi archsimd.F
 // have a path over one row, from row a to row b next to it, on which all patches
 // are among those given for it. The strip stands at row u.
 func (p *strip) along(v, u, a, b int, good uint64) uint8 {
-	here, from, to := p.at[u-p.ua], p.at[a-p.ua], p.at[b-p.ua]
+	here, from, to := p.footingOf(u), p.footingOf(a), p.footingOf(b)
 	first := (float64(v) - here.v0) / here.dv
 	last := first + (bundle-1)/here.dv
 	c0, c1 := from.column(first), to.column(first)

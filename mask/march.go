@@ -15,13 +15,12 @@ type strip struct {
 	ua, ub int    // rows that are marched
 	u0, u1 int    // rows with cells
 
-	// At the row where the strip stands: column and ground distance of lane k0,
-	// and their change for one lane.
-	v0, dv, s0, ds float64
-	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
-	p0, dp         place   // of a platform, at the row that is sampled: place of lane 0, change for one lane
-	h, m, r        byLane
-	share          byLane // of a fan: see lens.steepness
+	*footing // of the row where the strip stands
+	feet     []footing
+	foot     int   // row of the first of them
+	p0, dp   place // of a platform, at the row that is sampled: place of lane 0, change for one lane
+	h, m, r  byLane
+	share    byLane // of a fan: see lens.steepness
 
 	// What the marches find, by row from ua to ub and lane.
 	lines  []lines
@@ -33,7 +32,6 @@ type strip struct {
 	graded int      // of a platform: the row of the lattice that bounds are of
 	bounds seenGrade
 	fan    fanBounds // the same of a fan
-	at     []lateral // the same
 
 	fwd forwardState
 	bwd backwardState
@@ -74,10 +72,17 @@ func (l *unsureLines) clear(k int) {
 	l.shade[k], l.nearer[k], l.farther[k] = x, x, x
 }
 
-// lateral says where the lanes cross a row: lane k at column v0 + dv k.
-type lateral struct{ v0, dv float64 }
+// footing says where the lanes of a strip cross a row: lane k at column v0 + dv k
+// and ground distance s0 + ds k.
+type footing struct {
+	v0, dv, s0, ds float64
+	edgeA, edgeB   float64 // columns of lanes 1 and 1+laneStep
+	in             span    // lanes in the DEM
+	turn, shift    int     // see shiftOf; of the panel's columns
+	va, vb         int     // columns of the strip's cells
+}
 
-func (a lateral) column(lane float64) float64 { return a.v0 + float64(a.dv*lane) }
+func (a *footing) column(lane float64) float64 { return a.v0 + float64(a.dv*lane) }
 
 // span is a range of lanes [a, b) of a strip.
 type span struct{ a, b int }
@@ -87,8 +92,12 @@ type span struct{ a, b int }
 func (p *strip) setUp(f *field, j int) bool {
 	p.f, p.j, p.k0 = f, j, f.ln.first+laneStep*j-1
 	p.u0, p.u1 = f.u1, f.u0
+	p.foot = min(f.ua, f.u0) - 1
+	p.feet = resize(p.feet, f.ub+1-p.foot)
 	for u := f.u0; u < f.u1; u++ {
-		if va, vb := p.cells(u); va < vb {
+		p.place(u)
+		p.stand(u)
+		if p.va < p.vb {
 			p.u0, p.u1 = min(p.u0, u), u+1
 		}
 	}
@@ -96,6 +105,12 @@ func (p *strip) setUp(f *field, j int) bool {
 		return false
 	}
 	p.ua, p.ub = max(p.u0-f.near, f.ua), min(p.u1+f.far, f.ub)
+	for u := max(p.ua-1, 0); u < f.u0; u++ {
+		p.place(u)
+	}
+	for u := f.u1; u < min(p.ub+1, f.ln.orient.u); u++ {
+		p.place(u)
+	}
 	p.copyPanel(f)
 	n := p.ub - p.ua
 	p.lines = resize(p.lines, n)
@@ -116,18 +131,21 @@ const panelColumns = patches + 8
 // fro.
 func (p *strip) copyPanel(f *field) {
 	z, at := p.panel.z, p.panel.at
+	feet := p.feet[p.ua-p.foot:]
 	p.panel = *f
 	q := &p.panel
 	p.f = q
 	q.ua, q.ub = p.ua, p.ub
 	rows := p.ub - p.ua
-	p.at, q.at = resize(p.at, rows), resize(at, rows)
+	q.at = resize(at, rows)
 	q.width = panelColumns
 	for i := range rows {
-		p.stand(p.ua + i)
-		p.at[i] = lateral{p.v0, p.dv}
-		q.at[i] = int(math.Floor(p.v0)) - 2
-		q.width = max(q.width, int(math.Floor(p.at[i].column(marchLanes-1)))+4-q.at[i])
+		a := &feet[i]
+		q.at[i] = int(math.Floor(a.v0)) - 2
+		q.width = max(q.width, int(math.Floor(a.column(marchLanes-1)))+4-q.at[i])
+		if !f.ln.uniform {
+			a.turn, a.shift = shiftOf(a.v0-float64(q.at[i]), a.dv)
+		}
 	}
 	q.z = resize(z, rows*q.width+padLanes) // vectors may read past the last row
 	for i := range rows {
@@ -153,20 +171,28 @@ func (p *strip) unsureRow(u int) *unsureLines {
 	return &p.unsure[u-p.ua]
 }
 
-// cells stands at row u and returns the columns [va, vb) of the field's cells
-// that lie between the strip's lanes.
-func (p *strip) cells(u int) (va, vb int) {
+// stand has the strip stand at row u.
+func (p *strip) stand(u int) { p.footing = &p.feet[u-p.foot] }
+
+// footingOf returns where the lanes cross row u.
+func (p *strip) footingOf(u int) *footing { return &p.feet[u-p.foot] }
+
+// place finds where the lanes cross row u, and which cells of the field lie between
+// those of the strip.
+func (p *strip) place(u int) {
 	p.stand(u)
-	va = int(math.Ceil(p.edgeA))
-	vb = int(math.Ceil(p.edgeB))
+	p.cross(u)
+	p.findDEM()
+	p.va, p.vb = int(math.Ceil(p.edgeA)), int(math.Ceil(p.edgeB))
 	if q := p.f.ln.fan; q != nil {
-		va, vb = q.clip(u, va, vb)
+		p.va, p.vb = q.clip(u, p.va, p.vb)
 	}
-	return max(va, p.f.v0), min(vb, p.f.v1)
+	p.va, p.vb = max(p.va, p.f.v0), min(p.vb, p.f.v1)
 }
 
-// stand takes columns and distances of the lanes at row u from the lattice.
-func (p *strip) stand(u int) {
+// cross takes columns and distances of the lanes at row u, where the strip stands,
+// from the lattice.
+func (p *strip) cross(u int) {
 	ln := p.f.ln
 	i := min(u/laneStep, ln.nu-2)
 	q := float64(u-laneStep*i) / laneStep
@@ -186,9 +212,9 @@ func (p *strip) stand(u int) {
 	p.v0 = p.edgeA - p.dv
 }
 
-// inDEM returns the lanes whose column at the row where the strip stands lies
-// in the DEM.
-func (p *strip) inDEM() span {
+// findDEM finds the lanes whose column at the row where the strip stands lies in
+// the DEM.
+func (p *strip) findDEM() {
 	last := float64(p.f.ln.orient.v - 1)
 	v := func(k int) float64 { return p.v0 + float64(p.dv*float64(k)) }
 	l := span{0, marchLanes}
@@ -211,7 +237,7 @@ func (p *strip) inDEM() span {
 		}
 	}
 	l.b = max(l.a, l.b)
-	return l
+	p.in = l
 }
 
 // whole is all lanes of a strip.
@@ -221,7 +247,7 @@ var whole = span{0, marchLanes}
 // it returns.
 func (p *strip) sample(u int) span {
 	p.stand(u)
-	l := p.inDEM()
+	l := p.in
 	f, ln := p.f, p.f.ln
 	if ln.places != nil {
 		p.see(u)
@@ -252,7 +278,7 @@ func (p *strip) spread(z []float32, v float64, l span) {
 			spreadNarrowVector(&p.h, z, v, p.dv)
 			return
 		}
-		if turn, shift := shiftOf(v, p.dv); shift*shift <= 1 {
+		if turn, shift := p.turn, p.shift; shift*shift <= 1 {
 			spreadVector(&p.h, z, v, p.dv, turn, shift)
 			for k := turn &^ 3; k < min((turn+3)&^3, marchLanes); k++ {
 				p.h[k] = lerp(z, v+float64(p.dv*float64(k)))
@@ -318,13 +344,13 @@ func (p *strip) view(l span) {
 	}
 }
 
-// place returns the place of lane k at the row where the strip stands.
-func (p *strip) place(k int) place { return p.p0.plus(p.dp, float64(k)) }
+// placeOf returns the place of lane k at the row where the strip stands.
+func (p *strip) placeOf(k int) place { return p.p0.plus(p.dp, float64(k)) }
 
 // middleHeight returns a height of the row that is sampled: that of its middle
 // lane, or of the datum where that has none.
 func (p *strip) middleHeight() float64 {
-	l := p.inDEM()
+	l := p.in
 	if h := p.h[(l.a+l.b)/2%marchLanes]; l.a < l.b && h == h {
 		return h
 	}
@@ -364,9 +390,7 @@ func (st *forwardState) reset() {
 func (p *strip) entering(l span, u, dir int, unknown *[padLanes]bool) (any bool) {
 	before := span{}
 	if back := u + dir; back >= 0 && back < p.f.ln.orient.u {
-		p.stand(back)
-		before = p.inDEM()
-		p.stand(u)
+		before = p.footingOf(back).in
 	}
 	for k := l.a; k < l.b; k++ {
 		if k < before.a || k >= before.b {

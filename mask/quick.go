@@ -458,7 +458,7 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 func (q *quickWalk) foldedFarther(possible bool) bool {
 	top, topU, hidden := q.m, math.Inf(-1), false
 	m, r := q.m, q.r // of the sample before
-	reached := q.r // no more than the line's slant range at row u
+	reached := q.r   // no more than the line's slant range at row u
 	vb, sb := q.y.at(q.u)
 	for u := q.u; u < q.ub-1; u++ {
 		va, sa := vb, sb

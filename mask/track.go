@@ -348,10 +348,10 @@ func (p *strip) see(u int) {
 // count: ground under the track and beyond it is none of the look's.
 func (p *strip) viewLanes(l span) span {
 	ln := p.f.ln
-	for l.a < l.b && p.place(l.a).x <= 0 {
+	for l.a < l.b && p.placeOf(l.a).x <= 0 {
 		l.a++
 	}
-	for l.a < l.b && p.place(l.b-1).x <= 0 {
+	for l.a < l.b && p.placeOf(l.b-1).x <= 0 {
 		l.b--
 	}
 	if vectors && l == whole {
@@ -359,7 +359,7 @@ func (p *strip) viewLanes(l span) span {
 		return l
 	}
 	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
+		q := p.placeOf(k)
 		p.m[k], p.r[k] = ln.view(&q, p.h[k])
 		if ln.fan != nil {
 			p.share[k] = ln.steepness(&q, p.h[k], p.r[k])
@@ -374,7 +374,7 @@ func (p *strip) seen(k int, h float64) (m, r float64) {
 		d := h - p.h[k]
 		return p.m[k] + d, p.r[k] - float64(d*p.f.ln.cos)
 	}
-	q := p.place(k)
+	q := p.placeOf(k)
 	return p.f.ln.view(&q, h)
 }
 
@@ -386,7 +386,7 @@ func (p *strip) shade(k int, top float64) float64 {
 	if math.IsInf(top, -1) {
 		return top
 	}
-	q := p.place(k)
+	q := p.placeOf(k)
 	return p.f.ln.shadeHeight(&q, top)
 }
 
@@ -399,7 +399,7 @@ func (p *strip) equalRange(k int, r float64) float64 {
 	case ln.fan != nil:
 		return p.h[k] + (p.r[k]-r)/p.share[k]
 	}
-	q := p.place(k)
+	q := p.placeOf(k)
 	return ln.rangeHeight(&q, max(r, 0))
 }
 
@@ -472,11 +472,11 @@ func (p *strip) freeForward(l span) bool {
 		return false
 	}
 	spare := spareRows * ln.minDS
-	mid := p.place(marchLanes / 2)
+	mid := p.placeOf(marchLanes / 2)
 	sin, cos := ln.angle(&mid, lim.low)
 	low := lim.low - spare*cos/sin
 	for k := range marchLanes {
-		q := p.place(k)
+		q := p.placeOf(k)
 		high, r := ln.view(&q, lim.high)
 		if st.unknown[k] || !(high < 0) || !(r > st.doubt[k]+spare) || !(ln.viewM(&q, low) > st.topU[k]) {
 			return false
@@ -494,7 +494,7 @@ func (p *strip) freeBackward(l span) bool {
 	}
 	spare := spareRows * ln.minDS
 	for k := range marchLanes {
-		q := p.place(k)
+		q := p.placeOf(k)
 		r := max(ln.viewR(&q, lim.low), ln.viewR(&q, lim.high))
 		if st.unknown[k] || !(r < st.doubt[k]-spare) {
 			return false
@@ -545,7 +545,7 @@ func (r *laneMargins) fromTrack(p *strip, u int, l span) {
 			r.far[k] = float32((h - row.farther[k]) * share)
 			continue
 		}
-		q := p.place(k)
+		q := p.placeOf(k)
 		r.near[k] = float32(p.r[k] - ln.viewR(&q, float64(row.nearer[k])))
 		r.far[k] = float32(ln.viewR(&q, float64(row.farther[k])) - p.r[k])
 	}
@@ -553,7 +553,7 @@ func (r *laneMargins) fromTrack(p *strip, u int, l span) {
 
 // trackRangesU is fromTrack with unknown terrain at its worst.
 func (r *laneMargins) trackRangesU(p *strip, u int) {
-	l := p.inDEM()
+	l := p.in
 	bits := p.sure[u-p.ua]
 	row := p.unsureRow(u)
 	if vectors && l == whole {
@@ -566,7 +566,7 @@ func (r *laneMargins) trackRangesU(p *strip, u int) {
 		return
 	}
 	for k := l.a; k < l.b; k++ {
-		q := p.place(k)
+		q := p.placeOf(k)
 		r.nearU[k], r.farU[k] = r.near[k], r.far[k]
 		if bits&1 == 0 {
 			nearer := p.f.ln.viewR(&q, float64(row.nearer[k]))
@@ -647,7 +647,7 @@ func (p *strip) topOf(u int, high float32) float64 {
 	top = -top
 	n := min(u/laneStep, ln.nu-2)*ln.nk + p.j
 	for e := range 2 {
-		a, d := p.place(1+laneStep*e), place{}.plus(ln.places[n+e+ln.nk].minus(ln.places[n+e]), 1./laneStep)
+		a, d := p.placeOf(1+laneStep*e), place{}.plus(ln.places[n+e+ln.nk].minus(ln.places[n+e]), 1./laneStep)
 		next := a.plus(d, 1)
 		top = max(top, ln.viewM(&a, h), ln.viewM(&next, h))
 	}
@@ -695,6 +695,6 @@ func (p *strip) shadowed(u, v int, x float64) bool {
 		return false
 	}
 	g := &p.gentle[u-1-p.ua]
-	c := g.crossed(p.at[u-1-p.ua].column(x), float64(v))
+	c := g.crossed(p.footingOf(u-1).column(x), float64(v))
 	return c != 0 && g.dark&c == c
 }
