@@ -135,6 +135,7 @@ type mixed struct {
 	w, clear, near, far    [bundle]float32
 	doubtM, doubtN, doubtG uint8 // which margins are doubtful
 	scattered              [2][bundle]float32
+	way                    way
 }
 
 // lineUp says where the columns of a row lie between the lanes of a strip: column

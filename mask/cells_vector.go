@@ -156,6 +156,7 @@ func (c *mixed) slacks(part archsimd.Float32x8) (m, near, far archsimd.Float32x8
 //go:noinline
 func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
 	_, part := line.at8(c.v)
+	part.Store(&c.w)
 	r := c.laneMargins
 	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
 	slackM, slackN, slackG := c.slacks(part)
@@ -188,6 +189,7 @@ func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, 
 //go:noinline
 func (t *sheet) mixUnsure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
 	_, part := line.at8(c.v)
+	part.Store(&c.w)
 	r := c.laneMargins
 	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
 	mU, nU, gU := c.blend(&r.clearU, part), c.blend(&r.nearU, part), c.blend(&r.farU, part)
@@ -239,7 +241,6 @@ func (t *sheet) storeBundle(i, stride, skip int, codes uint64, clear, fold archs
 // that must be: beside a lane without lines, and on a lane, where both sides are to
 // be treated alike.
 func (c *mixed) keep(part, m, n, g archsimd.Float32x8) (single uint8) {
-	part.Store(&c.w)
 	m.Store(&c.clear)
 	n.Store(&c.near)
 	g.Store(&c.far)
@@ -283,19 +284,11 @@ func (p *strip) steep8(u, v int) uint8 {
 // earlyRows is how far lit and alone look.
 const earlyRows = 8
 
-// path is strip.along for the row before or after u; no vectors are alive here.
-//
-//go:noinline
-func (e *mixed) path(u, next int, good uint64) uint8 {
-	archsimd.ClearAVXUpperBits()
-	return e.along(e.v, e.u, u, next, good)
-}
-
 // lit returns which of the doubtful cells no ground hides, or no unknown terrain.
 func (e *mixed) lit(doubtful uint8, unknown bool) (yes uint8) {
 	for u := e.u; doubtful != 0 && u > max(e.u-earlyRows, e.ua); u-- {
 		g := &e.gentle[u-1-e.ua]
-		doubtful &= e.path(u, u-1, g.lit)
+		doubtful &= e.along(u, u-1, doubtful, true)
 		if doubtful != 0 && (e.u-u)%2 == 1 {
 			line := &e.row(u - 1).shade
 			if unknown {
@@ -324,7 +317,7 @@ func (e *mixed) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 			break
 		}
 		g := &e.gentle[min(u, u-dir)-e.ua]
-		doubtful &= e.path(u-dir, u, g.rises)
+		doubtful &= e.along(u-dir, u, doubtful, false)
 		if doubtful == 0 || n%2 == 1 {
 			continue
 		}

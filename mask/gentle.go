@@ -13,6 +13,10 @@ type gentle struct {
 	// What the row is worth, at the least: metres of height at equal slant range,
 	// and at an equal look angle.
 	worthR, worthM float32
+	// Of a plane wave: the rise above which the look angle grows, and by how many
+	// columns lines move, as a grade has them.
+	fall  float32
+	drift [2]float32
 	// The rise in a row from which ground is surely layover by its own slope.
 	steep float32
 }
@@ -72,6 +76,7 @@ func (p *strip) mark(u int) {
 	var limits grade
 	p.gradeOf(u, &limits)
 	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.most
+	g.fall, g.drift = limits.fall, limits.drift
 	if vectors {
 		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
 		return

@@ -34,13 +34,26 @@ func changes8(a0, a1, b0, b1, least, most archsimd.Float32x8) (lo, hi archsimd.F
 	return lo, hi, sum.Equal(sum)
 }
 
-// along returns which of a bundle of cells, a bit each, from column v of row u on,
-// have a path over one row, from row a to row b next to it, on which all patches
-// are among those given for it. The strip stands at row u.
-func (p *strip) along(v, u, a, b int, good uint64) uint8 {
-	here, from, to := p.footingOf(u), p.footingOf(a), p.footingOf(b)
-	first := (float64(v) - here.v0) / here.dv
-	last := first + (bundle-1)/here.dv
+// way is the part of the surface between two rows that the range lines of a bundle
+// of cells cross: from column lo to column hi, counted from the patch of the first
+// cell at index at of the strip's heights, in one of the rows, and next in the other.
+// drift and limit are those of a grade.
+type way struct {
+	lo, hi   float32
+	at, next int
+	drift    *[2]float32
+	limit    *float32
+}
+
+// along returns which of the cells, a bit each, that are asked have a path over one
+// row, from row u to row next beside it, on which slant range grows away from the
+// radar; with lit, the look angle does.
+//
+//go:noinline
+func (c *mixed) along(u, next int, asked uint8, lit bool) uint8 {
+	archsimd.ClearAVXUpperBits()
+	first, last := float64(c.k)+float64(c.w[0]), float64(c.k+bundle-1)+float64(c.w[bundle-1])
+	from, to := c.footingOf(u), c.footingOf(next)
 	c0, c1 := from.column(first), to.column(first)
 	d0, d1 := from.column(last)-(bundle-1), to.column(last)-(bundle-1)
 	lo := min(min(c0, c1), min(d0, d1))
@@ -48,14 +61,67 @@ func (p *strip) along(v, u, a, b int, good uint64) uint8 {
 	if lo < 0 {
 		return 0
 	}
-	base := p.gentle[min(a, b)-p.ua].base
-	x, y := int(lo)-base, int(hi)-base
+	near := min(u, next)
+	g := &c.gentle[near-c.ua]
+	x, y := int(lo)-g.base, int(hi)-g.base
 	if x < 0 || y+bundle > patches {
 		return 0
 	}
-	out := good >> x
-	for x++; x <= y; x++ {
-		out &= good >> x
+	good, limit := g.rises, &g.worthR
+	if lit {
+		good, limit = g.lit, &g.fall
 	}
-	return uint8(out)
+	out := uint8(good >> x)
+	for k := x + 1; k <= y; k++ {
+		out &= uint8(good >> k)
+	}
+	if y > x+1 || asked&^out == 0 || c.f.ln.places != nil {
+		return out
+	}
+	f := c.f
+	i := near - f.ua
+	c.way.lo, c.way.hi = float32(lo-float64(x+g.base)), float32(hi-float64(x+g.base))
+	c.way.at = i*f.width + x + g.base - f.at[i]
+	c.way.next = (i+1)*f.width + x + g.base - f.at[i+1]
+	c.way.drift, c.way.limit = &g.drift, limit
+	return out | c.way.within(f.z, y > x, lit)
+}
+
+// within is along for the lines of a way instead of all that cross its patches, of
+// which there are two side by side or one.
+//
+//go:noinline
+func (w *way) within(z []float32, two, lit bool) uint8 {
+	lo, hi := eightAt(&w.lo), eightAt(&w.hi)
+	one := eightOf(1)
+	last := hi
+	if two {
+		last = one
+	}
+	yes := w.patch(z, 0, lo, last, lit)
+	if two {
+		yes &= w.patch(z, 1, zero8(), hi.Sub(one), lit)
+	}
+	return yes
+}
+
+// patch is within for the patches j beyond those of the way, between two of their
+// columns.
+func (w *way) patch(z []float32, j int, from, to archsimd.Float32x8, lit bool) uint8 {
+	load := func(i int) archsimd.Float32x8 { return archsimd.LoadFloat32x8((*[bundle]float32)(z[i+j:])) }
+	a0, a1, b0, b1 := load(w.at), load(w.at+1), load(w.next), load(w.next+1)
+	least, most := eightAt(&w.drift[0]), eightAt(&w.drift[1])
+	e := b0.Sub(a0)
+	turn := b1.Sub(a1).Sub(e)
+	e0, e1 := e.Add(from.Mul(turn)), e.Add(to.Mul(turn))
+	da, db := a1.Sub(a0), b1.Sub(b0)
+	s, t, x, y := da.Mul(least), da.Mul(most), db.Mul(least), db.Mul(most)
+	sum := turn.Add(e) // NaN where a corner is missing
+	known := sum.Equal(sum)
+	if lit {
+		lo := e0.Min(e1).Add(s.Min(t).Min(x.Min(y)))
+		return lo.Greater(eightAt(w.limit)).And(known).ToBits()
+	}
+	hi := e0.Max(e1).Add(s.Max(t).Max(x.Max(y)))
+	return hi.Less(eightAt(w.limit)).And(known).ToBits()
 }
