@@ -104,12 +104,16 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
 	line := p.line()
 	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.in == whole
+	first, straight := line.follow(va, vb-va)
 	for v := va; v < vb; v++ {
 		if bundles {
 			from := min(v, vb-bundle)
-			k, _ := line.at(from)
-			if last, _ := line.at(from + bundle - 1); last == k+bundle-1 && k >= 1 && last <= laneStep {
-				t.classifyBundle(p, wk, u, from, v-from, &line, (*[bundle]float32)(z[from-base:]))
+			k, ok := first+from-va, straight
+			if !straight {
+				k, ok = line.follow(from, bundle)
+			}
+			if ok {
+				t.classifyBundle(p, wk, u, from, v-from, k, &line, (*[bundle]float32)(z[from-base:]))
 				v = from + bundle - 1
 				continue
 			}
@@ -168,6 +172,14 @@ func (l *lineUp) at(v int) (k int, w float32) {
 		w = 0
 	}
 	return k, w
+}
+
+// follow returns the lane before column v, and whether the lanes before it and the
+// n - 1 columns after it follow each other and are the strip's own.
+func (l *lineUp) follow(v, n int) (k int, ok bool) {
+	k, _ = l.at(v)
+	last, _ := l.at(v + n - 1)
+	return k, last == k+n-1 && k >= 1 && last <= laneStep
 }
 
 // mix interpolates between two lanes.

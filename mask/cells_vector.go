@@ -52,24 +52,23 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// at8 returns the lane before column v and how far the cells from there on lie
-// beyond the lanes before them, which follow each other.
-func (l *lineUp) at8(v int) (k int, w archsimd.Float32x8) {
-	k, _ = l.at(v)
+// at8 returns how far the cells from column v on lie beyond the lanes before them,
+// which follow each other from lane k on.
+func (l *lineUp) at8(v, k int) (w archsimd.Float32x8) {
 	number := archsimd.LoadInt32x8(&numbers8)
 	column := archsimd.BroadcastInt32x8(int32(v - l.first)).Add(number).ConvertToFloat32()
 	w = eightAt(&l.w).Add(eightAt(&l.dw).Mul(column))
 	turns := archsimd.BroadcastInt32x8(int32(k - l.k - v + l.first)).ConvertToFloat32()
 	w = w.Sub(turns)
-	return k, w.Masked(w.GreaterEqual(eightOf(onLane)))
+	return w.Masked(w.GreaterEqual(eightOf(onLane)))
 }
 
 // classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1). The lanes
 // before them follow each other; z are the heights from column v on. Most bundles
 // are open, with all margins wide.
-func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip int, line *lineUp, z *[bundle]float32) {
+func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, line *lineUp, z *[bundle]float32) {
 	r := &t.margins
-	k, part := line.at8(v)
+	part := line.at8(v, k)
 	i, stride := t.place(p.f, u, v)
 	if skip > 0 || stride != 1 || !r.sure || r.exact {
 		archsimd.ClearAVXUpperBits()
@@ -155,7 +154,7 @@ func (c *mixed) slacks(part archsimd.Float32x8) (m, near, far archsimd.Float32x8
 //
 //go:noinline
 func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
-	_, part := line.at8(c.v)
+	part := line.at8(c.v, c.k)
 	part.Store(&c.w)
 	r := c.laneMargins
 	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
@@ -188,7 +187,7 @@ func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, 
 //
 //go:noinline
 func (t *sheet) mixUnsure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
-	_, part := line.at8(c.v)
+	part := line.at8(c.v, c.k)
 	part.Store(&c.w)
 	r := c.laneMargins
 	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)

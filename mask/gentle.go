@@ -142,6 +142,17 @@ func (g *gentle) lightening(va, vb float64) bool {
 	return c != 0 && g.lit&c == c
 }
 
+// way is the part of the surface between two rows that the range lines of a bundle
+// of cells cross: from column lo to column hi, counted from the patch of the first
+// cell at index at of the strip's heights, in one of the rows, and next in the other.
+// drift and limit are those of a grade.
+type way struct {
+	lo, hi   float32
+	at, next int
+	drift    *[2]float32
+	limit    *float32
+}
+
 // vicinity are the places in a field's heights of a cell and of those before and
 // after it, the columns that the strip's first and last lanes move in a row, and the
 // rise in a row above which ground is layover by its own slope.

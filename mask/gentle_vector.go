@@ -34,17 +34,6 @@ func changes8(a0, a1, b0, b1, least, most archsimd.Float32x8) (lo, hi archsimd.F
 	return lo, hi, sum.Equal(sum)
 }
 
-// way is the part of the surface between two rows that the range lines of a bundle
-// of cells cross: from column lo to column hi, counted from the patch of the first
-// cell at index at of the strip's heights, in one of the rows, and next in the other.
-// drift and limit are those of a grade.
-type way struct {
-	lo, hi   float32
-	at, next int
-	drift    *[2]float32
-	limit    *float32
-}
-
 // along returns which of the cells, a bit each, that are asked have a path over one
 // row, from row u to row next beside it, on which slant range grows away from the
 // radar; with lit, the look angle does.

@@ -20,6 +20,6 @@ func backwardMoveVector(*strip, *lines)                              { panic(noV
 func marginsVector(*laneMargins, *byLane, *lines, float32)           { panic(noVectors) }
 func roughnessVector(*byLane32, *byLane32, float32)                  { panic(noVectors) }
 
-func (*sheet) classifyBundle(*strip, *walker, int, int, int, *lineUp, *[bundle]float32) {
+func (*sheet) classifyBundle(*strip, *walker, int, int, int, int, *lineUp, *[bundle]float32) {
 	panic(noVectors)
 }
