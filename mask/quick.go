@@ -105,8 +105,7 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		row := q.p.row(u)
 		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	}
-	a = q.y.seeM(s, a)
-	b = q.y.seeM(s, b)
+	a, b = q.y.bothM(s, a, b)
 	return around(a, b, settleShare/q.slackM)
 }
 
@@ -152,8 +151,7 @@ func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
 	if q.f.ln.fan != nil {
 		return around(q.laneRange(u, q.k, a), q.laneRange(u, q.next, b), settleShare/q.slackR)
 	}
-	x := q.y.seeR(s, float64(a))
-	y := q.y.seeR(s, float64(b))
+	x, y := q.y.bothR(s, float64(a), float64(b))
 	return around(x, y, settleShare/q.slackR)
 }
 

@@ -119,6 +119,27 @@ func (y *ray) seeR(s, h float64) float64 {
 	return y.ln.viewR(&p, h)
 }
 
+// bothM and bothR are seeM and seeR of two heights at one place.
+func (y *ray) bothM(s, a, b float64) (ma, mb float64) {
+	ln := y.ln
+	if ln.places == nil {
+		far := float64(ln.cot * s)
+		return a + far, b + far
+	}
+	p := y.place(s)
+	return ln.viewM(&p, a), ln.viewM(&p, b)
+}
+
+func (y *ray) bothR(s, a, b float64) (ra, rb float64) {
+	ln := y.ln
+	if ln.places == nil {
+		far := float64(ln.sin * s)
+		return far - float64(ln.cos*a), far - float64(ln.cos*b)
+	}
+	p := y.place(s)
+	return ln.viewR(&p, a), ln.viewR(&p, b)
+}
+
 // place returns the place at ground distance s.
 func (y *ray) place(s float64) place {
 	d := (s - y.sa) * y.perDS
