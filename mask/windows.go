@@ -194,6 +194,7 @@ type windowStrip struct {
 	rows           int
 	allAt, at      []standing  // by row, of the field and from ua on
 	cells          windowCells // of the rows from u0 on
+	cut            windowCells // of one row
 	width          int         // cells that are held a row
 	heights        laneRow     // of the row that is sampled
 	allRuns        []windowRun
@@ -275,12 +276,12 @@ func (p *windowStrip) stand(u int) standing {
 	return st
 }
 
-// rowCells returns the cells of row ua + i.
-func (p *windowStrip) rowCells(i int) windowCells {
+// rowCells cuts the cells of row ua + i from those of the strip.
+func (p *windowStrip) rowCells(i int, c *windowCells) {
 	a := p.width * (p.ua + i - p.u0)
-	cut := func(s []float32) []float32 { return s[a : a+p.width+vectorSlack] }
-	c := &p.cells
-	return windowCells{cut(c.shade), cut(c.fold), cut(c.shadeU), cut(c.foldU)}
+	b := a + p.width + vectorSlack
+	all := &p.cells
+	c.shade, c.fold, c.shadeU, c.foldU = all.shade[a:b], all.fold[a:b], all.shadeU[a:b], all.foldU[a:b]
 }
 
 // columns returns the columns [va, vb) of the field's cells between the strip's
@@ -357,7 +358,7 @@ func linearOf(first, last float64) linear {
 // forward marches away from the radar: shade, nearer ground, and the next rows
 // on both sides.
 func (x *windower) forward() {
-	p := &x.strip
+	p, c := &x.strip, &x.strip.cut
 	x.shadeGuide.reset()
 	x.nearerGuide.reset()
 	p.forget(0, p.nearEnd)
@@ -369,24 +370,24 @@ func (x *windower) forward() {
 			x.shadeGuide.advance(&p.heights, d, reached)
 			x.nearerGuide.advance(&p.heights, d, reached)
 		}
-		c := p.rowCells(i)
+		p.rowCells(i, c)
 		fillWith(c.shade[:p.width], float32(x.minShade))
 		fillWith(c.fold[:p.width], float32(x.minFold))
 		for k := range p.runs(i) {
 			r := &p.runs(i)[k]
-			p.beside(r, &c)
+			p.beside(r, c)
 			x.seek(r, &x.shadeGuide, -1, c.shade)
 			x.seek(r, &x.nearerGuide, -1, c.fold)
 		}
 		if p.unknown {
-			x.unknownBefore(i, &c)
+			x.unknownBefore(i, c)
 		}
 	}
 }
 
 // backward marches towards the radar: farther ground.
 func (x *windower) backward() {
-	p := &x.strip
+	p, c := &x.strip, &x.strip.cut
 	x.fartherGuide.reset()
 	p.forget(p.rows-1, p.farEnd)
 	reached := p.rows - 1
@@ -395,12 +396,12 @@ func (x *windower) backward() {
 			p.sample(reached)
 			x.fartherGuide.advance(&p.heights, p.rowDistance(reached, reached+1), reached)
 		}
-		c := p.rowCells(i)
+		p.rowCells(i, c)
 		for k := range p.runs(i) {
 			x.seek(&p.runs(i)[k], &x.fartherGuide, 1, c.fold)
 		}
 		if p.unknown {
-			x.unknownBehind(i, &c)
+			x.unknownBehind(i, c)
 		}
 	}
 }
@@ -418,10 +419,10 @@ func (p *windowStrip) rowDistance(i, from int) linear {
 // handOut puts the slopes where they belong.
 func (x *windower) handOut() {
 	x.summits.finish()
-	p := &x.strip
+	p, c := &x.strip, &x.strip.cut
 	for i := p.u0 - p.ua; i < p.u1-p.ua; i++ {
-		c := p.rowCells(i)
-		x.put(i, &c)
+		p.rowCells(i, c)
+		x.put(i, c)
 	}
 }
 

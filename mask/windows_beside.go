@@ -96,12 +96,10 @@ func (r *windowRun) distance(row int) linear {
 }
 
 // line returns the range line of a cell of the run.
-func (r *windowRun) line(c int) ownLine {
+func (r *windowRun) line(c int, o *ownLine) {
 	a, b, q := &r.places[0], &r.places[1], float64(r.j+c)/laneStep
-	return ownLine{
-		p: r.p, i: r.i, h: float64(r.p.row(r.i, r.v)[c]),
-		k: a.k + float64(q*(b.k-a.k)), s: a.s + float64(q*(b.s-a.s)),
-	}
+	o.p, o.i, o.h = r.p, r.i, float64(r.p.row(r.i, r.v)[c])
+	o.k, o.s = a.k+float64(q*(b.k-a.k)), a.s+float64(q*(b.s-a.s))
 }
 
 func (p *windowStrip) course(i, j int) course {

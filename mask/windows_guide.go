@@ -146,7 +146,9 @@ func (x *windower) seek(r *windowRun, g *guide, dir int, most []float32) {
 	d := r.distance(at)
 	for b := g.sees(r.lane, r.on, h0, most[r.j:], d, r.j, r.n); b != 0; b &= b - 1 {
 		c := bits.TrailingZeros32(b)
-		o := r.line(c)
+		s := x.summits.next()
+		o := &s.o
+		r.line(c, o)
 		near, far, ok := g.between(r.lane+c, h0[c], d.at(r.j+c), at)
 		if !r.on {
 			if a, b, also := g.between(r.lane+c+1, h0[c], d.at(r.j+c), at); ok && also {
@@ -156,7 +158,8 @@ func (x *windower) seek(r *windowRun, g *guide, dir int, most []float32) {
 			}
 		}
 		if row := o.find(r.lane+c, near, far, dir, g.sign); row >= 0 {
-			x.summits.add(summit{o: o, row: row, sign: g.sign, most: &most[r.j+c]})
+			s.row, s.sign, s.most, s.moved = row, g.sign, &most[r.j+c], false
+			x.summits.add()
 		}
 	}
 }

@@ -123,10 +123,14 @@ type summit struct {
 // from the cells.
 type arcs struct{ h, r, d, t0, t1, away, step bySummit }
 
-// add takes a place. It is looked at when there are enough of them, or by flush.
-func (q *summits) add(s summit) {
+// next returns room for a place, for add to take.
+func (q *summits) next() *summit { return &q.of[q.n] }
+
+// add takes the next place. It is looked at when there are enough of them, or by
+// flush.
+func (q *summits) add() {
 	i := q.n
-	q.of[i] = s
+	s := &q.of[i]
 	o := &s.o
 	v, c, at, h := o.cross(s.row)
 	h0, away := float32(o.h), float32(math.Abs(at-o.s))
@@ -136,7 +140,7 @@ func (q *summits) add(s summit) {
 		if row < 0 || row >= o.p.rows {
 			row = s.row // says nothing new
 		}
-		q.addSide(i, 1+2*side, 2*side, &s, row, v, c, away, h0)
+		q.addSide(i, 1+2*side, 2*side, s, row, v, c, away, h0)
 	}
 	if q.n++; q.n == summitCount {
 		q.flush()
@@ -188,12 +192,13 @@ func (q *summits) flush() {
 	q.raiseAll(n)
 	q.n = 0
 	for i := range n {
-		s := q.of[i]
+		s := &q.of[i]
 		if q.least[i] > *s.most {
 			*s.most = q.least[i]
 		}
-		if q.moveOn(&s, i) {
-			q.add(s)
+		if q.moveOn(s, i) {
+			q.of[q.n] = *s
+			q.add()
 		}
 	}
 }

@@ -160,9 +160,11 @@ func raise(slope *float32, rise, distance float64) {
 func (x *windower) mend(i int, c *windowCells) {
 	p := &x.strip
 	p.sample(i)
+	var o ownLine
 	for _, r := range p.runs(i) {
 		for n := range r.n {
-			o, j := r.line(n), r.j+n
+			j := r.j + n
+			r.line(n, &o)
 			if o.h != o.h {
 				c.shade[j], c.shadeU[j], c.fold[j], c.foldU[j] = nanCell, nanCell, nanCell, nanCell
 				continue
