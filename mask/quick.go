@@ -215,8 +215,13 @@ type arc struct{ sa, ds, a, b, d float64 }
 
 func (q *quickWalk) emit(g *arc, t float64) {
 	x := q.more()
-	x.m, x.r = q.y.see(g.sa+t*g.ds, g.a+t*(g.b+t*g.d))
+	s, h := g.sa+t*g.ds, g.a+t*(g.b+t*g.d)
 	x.unknown = false
+	if ln := q.y.ln; ln.places == nil { // most often; without a call
+		x.m, x.r = ln.at(s, h)
+		return
+	}
+	x.m, x.r = q.y.see(s, h)
 }
 
 // more returns a new sample at the end of q.cuts, with what is left in it.
