@@ -183,7 +183,7 @@ func (w *walker) active(row, col int) bool {
 
 func (w *walker) difference(row, col, dr, dc int) float64 {
 	at := func(row, col int) float64 {
-		if row < 0 || col < 0 || row >= w.rows || col >= w.cols {
+		if row < 0 || col < 0 || row >= w.rows || col >= w.cols || w.hole[row*w.cols+col] {
 			return math.NaN()
 		}
 		return w.heights[row*w.cols+col]
@@ -197,7 +197,7 @@ func (w *walker) difference(row, col, dr, dc int) float64 {
 	case before == before:
 		return here - before
 	}
-	return 0
+	return math.NaN()
 }
 
 // answer is what the walk finds at a cell.
@@ -603,7 +603,7 @@ func (s scene) check(t testing.TB) (tally, *raster, []answer) {
 // length is some 5 % of the cells.
 const (
 	randomDiffer  = 0.01
-	randomLone    = 0.001 // white terrain: neighbouring lanes have nothing in common
+	randomLone    = 3e-6 // none in 600 grids; ground that is just not jagged may still mislead the lanes
 	randomGuessed = 0.01
 	randomTimid   = 0.05
 )
@@ -625,7 +625,7 @@ func TestRandomGridsAgainstWalk(t *testing.T) {
 		}
 	}
 	t.Logf("seed %d, %d grids: %v", *walkSeed, scenes, all)
-	assert.Less(t, float64(len(all.lone)), randomLone*float64(all.cells), "differing cells alone")
+	assert.LessOrEqual(t, float64(len(all.lone)), randomLone*float64(all.cells), "differing cells alone")
 	assert.Less(t, float64(all.differ), randomDiffer*float64(all.determined), "cells of another kind")
 	assert.Less(t, float64(all.guessed), randomGuessed*float64(all.cells), "cells undetermined in the walk only")
 	assert.Less(t, float64(all.timid), randomTimid*float64(all.cells), "cells undetermined in the engine only")

@@ -301,6 +301,12 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		roughness(&r.clear, &r.roughM, r.perM)
 		roughness(&r.near, &r.roughN, r.perR)
 		roughness(&r.far, &r.roughF, r.perR)
+		r.roughenJags(p, u)
+	} else {
+		r.roughM, r.roughN, r.roughF = byLane32{}, byLane32{}, byLane32{}
+	}
+	if dawn := p.jags[u-p.ua].dawn; dawn != 0 {
+		roughen(&r.roughN, dawn)
 	}
 	if sure {
 		return
@@ -385,11 +391,13 @@ func (r *laneMargins) at(k int, w, h float32, m *lane) (d doubts) {
 			}
 		}
 		switch {
-		case r.exact:
-		case w != 0:
+		case w != 0 || r.exact:
 			slack += rough[k]
 		default: // as much on one side as on the other
 			d := max(abs32(a[k]-a[k-1]), abs32(a[k+1]-a[k]))
+			if rough[k] > math.MaxFloat32 { // jagged ground
+				d = rough[k]
+			}
 			slack += d * (roughShare + float32(float32(roughGrowth*d)*(settleShare/base)))
 		}
 		if !(x > slack || x < -slack) {

@@ -143,9 +143,6 @@ func (c *mixed) slacks(part archsimd.Float32x8) (m, near, far archsimd.Float32x8
 	r := c.laneMargins
 	bump := absolute(archsimd.LoadFloat32x8(c.z).Sub(c.blend(&r.h, part)))
 	m, near = eightAt(&r.slackM).Add(bump), eightAt(&r.slackR).Add(bump)
-	if r.exact {
-		return m, near, near
-	}
 	return m.Add(lanes8(&r.roughM, c.k)), near.Add(lanes8(&r.roughN, c.k)), near.Add(lanes8(&r.roughF, c.k))
 }
 
@@ -297,8 +294,13 @@ func (e *mixed) lit(doubtful uint8, unknown bool) (yes uint8) {
 				}
 				line = &unsure.shade
 			}
+			j := e.jagsOf(u - 1)
 			x, y := lanes8(line, e.k), lanes8(line, e.k+1)
-			rise := archsimd.LoadFloat32x8(e.z).Sub(x.Max(y)).Add(e.worth(&g.worthM, e.u-u+1))
+			high := x.Max(y)
+			if j != nil && !unknown {
+				high = high.Max(lanes8(&j.shade, e.k)).Max(lanes8(&j.shade, e.k+1))
+			}
+			rise := archsimd.LoadFloat32x8(e.z).Sub(high).Add(e.worth(&g.worthM, e.u-u+1))
 			now := clears(rise, absolute(x.Sub(y)), &e.perM, &e.slackM) & doubtful
 			yes, doubtful = yes|now, doubtful&^(now|rise.Less(zero8()).ToBits())
 		}
@@ -320,12 +322,22 @@ func (e *mixed) alone(doubtful uint8, dir int, possible bool) (yes uint8) {
 		if doubtful == 0 || n%2 == 1 {
 			continue
 		}
+		if dir < 0 {
+			dawn := e.jags[u-e.ua].dawn >> e.k
+			doubtful &^= uint8(dawn | dawn>>1)
+		}
+		j := e.jagsOf(u)
 		h := archsimd.LoadFloat32x8(e.z)
 		line := e.line(u, dir, possible)
 		x, y := lanes8(line, e.k), lanes8(line, e.k+1)
-		rise := x.Min(y).Sub(h)
+		low, high := x.Min(y), x.Max(y)
+		if j != nil {
+			low = low.Min(lanes8(&j.nearer, e.k)).Min(lanes8(&j.nearer, e.k+1))
+			high = high.Max(lanes8(&j.farther, e.k)).Max(lanes8(&j.farther, e.k+1))
+		}
+		rise := low.Sub(h)
 		if dir > 0 {
-			rise = h.Sub(x.Max(y))
+			rise = h.Sub(high)
 		}
 		cos := eightAt(&e.cos)
 		rise = rise.Add(e.worth(&g.worthR, n)).Mul(cos)

@@ -101,6 +101,7 @@ func (tr *tracker) spread() {
 	mid := ln.placeAt(i, j, a, b)
 	ln.scale = mid.x * mid.x / (mid.ny*mid.x - mid.nx*mid.y)
 	ln.rowM, ln.rowR = ln.minDS, ln.minDS
+	ln.ownRow(tr.g, tr.maxDS)
 }
 
 // placeAt interpolates the place in a cell of the lattice.

@@ -1,6 +1,9 @@
 package mask
 
-import "math"
+import (
+	"math"
+	"math/bits"
+)
 
 // gentle says of the surface between a row and the next one where a range line
 // cannot be folded or hidden by it: a bit a column of patches, the first at
@@ -27,6 +30,7 @@ type gentle struct {
 type grade struct {
 	rise, fall float32
 	most       float32 // above it slant range surely falls
+	jag        float32 // a bend or a twist as large as this makes the ground jagged
 	drift      [2]float32
 }
 
@@ -60,27 +64,38 @@ func (p *strip) mark(u int) {
 	}
 	g := &p.gentle[u-p.ua]
 	*g = gentle{base: int(math.Floor(p.edgeA)) - 1, steep: float32(math.Inf(1)), top: math.Inf(1)}
+	p.jags[u-p.ua] = jags{}
+	i := u - f.ua
 	if u+1 >= p.ub {
+		if from := i*f.width + g.base - f.at[i]; from >= 0 && f.ln.places == nil {
+			a := (*byLane42)(f.z[from:])
+			p.findJags(u, a, a)
+		}
 		return
 	}
-	i := u - f.ua
 	from, to := i*f.width+g.base-f.at[i], (i+1)*f.width+g.base-f.at[i+1]
 	if from < 0 || to < 0 {
 		return
 	}
 	a, b := f.z[from:], f.z[to:]
 	if f.ln.places != nil {
-		p.markSeen(g, u, (*byLane41)(a), (*byLane41)(b))
+		p.markSeen(g, u, (*byLane42)(a), (*byLane42)(b))
 		return
 	}
 	var limits grade
 	p.gradeOf(u, &limits)
 	g.worthR, g.worthM, g.steep = limits.rise, -limits.fall, limits.most
 	g.fall, g.drift = limits.fall, limits.drift
+	limits.jag = p.jag.any
 	if vectors {
-		g.rises, g.lit = markVector((*byLane41)(a), (*byLane41)(b), &limits)
+		var jagged bool
+		g.rises, g.lit, jagged = markVector((*byLane42)(a), (*byLane42)(b), &limits)
+		if jagged {
+			p.findJags(u, (*byLane42)(a), (*byLane42)(b))
+		}
 		return
 	}
+	p.findJags(u, (*byLane42)(a), (*byLane42)(b))
 	for k := range patches {
 		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
 		if hi < limits.rise {
@@ -92,8 +107,8 @@ func (p *strip) mark(u int) {
 	}
 }
 
-// byLane41 holds the heights of the corners of the patches.
-type byLane41 [patches + 1]float32
+// byLane42 holds the heights of the corners of the patches, and the next one.
+type byLane42 [patches + 2]float32
 
 // changes returns the least and the most that the height may change along a line
 // over the patch between a0, a1 of one row and b0, b1 of the next.
@@ -133,6 +148,29 @@ func (g *gentle) crossed(va, vb float64) uint64 {
 func (g *gentle) rising(va, vb float64) bool {
 	c := g.crossed(va, vb)
 	return c != 0 && g.rises&c == c
+}
+
+// between are the bits of the patches between the lanes of a strip, about.
+const between = 1<<(laneStep+4) - 1
+
+// lanesOver returns the lanes of row u that touch patches, the first at column base,
+// or lie next to them.
+func (p *strip) lanesOver(u, base int, patches uint64) (lanes uint64) {
+	a := p.footingOf(u)
+	if p.f.ln.uniform { // patch n lies between lanes n-1 and n+1
+		if n := base - int(math.Floor(a.v0)); n == 0 {
+			return (patches>>1 | patches | patches<<1) & (1<<marchLanes - 1)
+		}
+	}
+	per := 1 / a.dv
+	for ; patches != 0; patches &= patches - 1 {
+		x := float64(base+bits.TrailingZeros64(patches)) - a.v0
+		first, last := int(math.Floor(float64(x*per))), int(math.Ceil(float64((x+1)*per)))
+		if first < marchLanes && last >= 0 {
+			lanes |= 2<<min(last, marchLanes-1) - 1<<max(first, 0)
+		}
+	}
+	return lanes
 }
 
 // lightening reports whether the look angle grows all along such a path, away

@@ -4,21 +4,29 @@ package mask
 
 import "simd/archsimd"
 
-// markVector is the loop of strip.mark on vectors of eight patches.
-func markVector(a, b *byLane41, g *grade) (rises, lit uint64) {
+// markVector is the loop of strip.mark on vectors of eight patches. It reports whether
+// there may be jagged ground among them: for the largest bend or twist, the bits of
+// numbers that are not negative order as the numbers do, and NaN above all.
+func markVector(a, b *byLane42, g *grade) (rises, lit uint64, jagged bool) {
+	var worst archsimd.Int32x8
 	rise, fall := eightAt(&g.rise), eightAt(&g.fall)
 	least, most := eightAt(&g.drift[0]), eightAt(&g.drift[1])
 	for k := 0; k < patches; k += 8 {
 		lo, hi, known := changes8(corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1), least, most)
 		rises |= uint64(hi.Less(rise).And(known).ToBits()) << k
 		lit |= uint64(lo.Greater(fall).And(known).ToBits()) << k
+		rise := corner(a, k+1).Sub(corner(a, k))
+		bend := corner(a, k+2).Sub(corner(a, k+1)).Sub(rise)
+		twist := corner(b, k+1).Sub(corner(b, k)).Sub(rise)
+		worst = worst.Max(absolute(bend).AsInt32x8()).Max(absolute(twist.Add(twist)).AsInt32x8())
 	}
+	jagged = worst.Greater(eightAt(&g.jag).AsInt32x8()).ToBits() != 0
 	archsimd.ClearAVXUpperBits()
-	return rises, lit
+	return rises, lit, jagged
 }
 
 // corner are the corners of eight patches.
-func corner(z *byLane41, k int) archsimd.Float32x8 {
+func corner(z *byLane42, k int) archsimd.Float32x8 {
 	return archsimd.LoadFloat32x8((*[8]float32)(z[k:]))
 }
 

@@ -114,6 +114,7 @@ type lanes struct {
 	// at a place of the grid, away from the radar.
 	ahead func(l *dem.Local) (e, n float64)
 	minDS float64 // least ground distance of one row along a lane, metres
+	own   float64 // the part of a row next to a point that counts as the point itself
 	// rowM, rowR and rowH are what one row of level ground is worth at least:
 	// metres of m, of r, and of height at equal r.
 	rowM, rowR, rowH float64
@@ -181,7 +182,7 @@ func fixedLanes(g *dem.Grid, look geometry.Look) *lanes {
 	ln.uniform = !geographic || slope(0, 0) == 0 && slope(float64(ln.orient.u), float64(ln.orient.v)) == 0
 	ln.slope = slope(0, 0)
 	ln.layOut(slope)
-	ln.measure(g, slope)
+	ln.ownRow(g, ln.measure(g, slope))
 	ln.rowM, ln.rowR = ln.minDS*ln.cot, ln.minDS*ln.sin
 	ln.rowH = ln.rowR / ln.cos
 	return ln
@@ -262,8 +263,9 @@ func follow(slope func(u, v float64) float64, u, v, distance float64) float64 {
 
 // measure fills the ground distances: zero on the wavefront through the
 // centre of the DEM, from there along the middle row, and from the middle row
-// along each lane, both by Simpson's rule on the local ground vectors.
-func (ln *lanes) measure(g *dem.Grid, slope func(u, v float64) float64) {
+// along each lane, both by Simpson's rule on the local ground vectors. It returns
+// the largest distance of one row.
+func (ln *lanes) measure(g *dem.Grid, slope func(u, v float64) float64) (most float64) {
 	ln.s = make([]float64, len(ln.v))
 	ln.minDS = math.Inf(1)
 	cu, cv := float64(ln.orient.u-1)/2, float64(ln.orient.v-1)/2
@@ -290,7 +292,7 @@ func (ln *lanes) measure(g *dem.Grid, slope func(u, v float64) float64) {
 				v += (v1 - v0) * (u - u0) / (u1 - u0)
 			}
 			d := ds(u, v)
-			ln.minDS = math.Min(ln.minDS, d)
+			ln.minDS, most = math.Min(ln.minDS, d), math.Max(most, d)
 			return d
 		}, u0, u1)
 	}
@@ -332,6 +334,20 @@ func (ln *lanes) measure(g *dem.Grid, slope func(u, v float64) float64) {
 			u0, v0 = u1, v1
 		}
 	}
+	return most
+}
+
+// ownRow finds which part of a row ownGround is, where one takes at most a ground
+// distance.
+func (ln *lanes) ownRow(g *dem.Grid, most float64) {
+	least := math.Inf(1)
+	for _, row := range [3]float64{0, float64(g.Rows-1) / 2, float64(g.Rows - 1)} {
+		for _, col := range [3]float64{0, float64(g.Cols-1) / 2, float64(g.Cols - 1)} {
+			l := g.At(row, col)
+			least = min(least, math.Hypot(l.ColE, l.ColN), math.Hypot(l.RowE, l.RowN))
+		}
+	}
+	ln.own = min(ownGround*least/most, ownGround)
 }
 
 // vAt returns the column at which lane k, which may be fractional, crosses

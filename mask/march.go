@@ -33,6 +33,10 @@ type strip struct {
 	bounds seenGrade
 	fan    fanBounds // the same of a fan
 
+	jag      jagState
+	jags     []jags // by row from ua on
+	jagLines []jagLines
+
 	fwd forwardState
 	bwd backwardState
 }
@@ -115,6 +119,7 @@ func (p *strip) setUp(f *field, j int) bool {
 	n := p.ub - p.ua
 	p.lines = resize(p.lines, n)
 	p.sure, p.gentle = resize(p.sure, n), resize(p.gentle, n)
+	p.resetJags()
 	p.unsure = p.unsure[:0]
 	if !f.sure {
 		p.unsure = resize(p.unsure, n)
@@ -447,10 +452,14 @@ func (p *strip) forward() {
 		if p.sure[u-p.ua] = 0; u-last > f.near {
 			p.sure[u-p.ua] = 1
 			p.forwardSure(row, l)
-			continue
-		}
-		if last == u || !p.forwardTrackUnsure(row, unsure, l) {
+		} else if last == u || !p.forwardTrackUnsure(row, unsure, l) {
 			p.forwardUnsure(row, unsure, l)
+		}
+		if u > p.ua && p.gentle[u-1-p.ua].rises&between != between {
+			p.findDawn(u)
+		}
+		if p.jag.mOn|p.jag.mostOn|p.jags[u-p.ua].columns|p.jags[max(u-1-p.ua, 0)].twisted != 0 {
+			p.forwardJags(u, l)
 		}
 	}
 }
@@ -620,10 +629,16 @@ func (p *strip) backward(cells func(u int)) {
 				p.backwardUnsure(row, p.unsureRow(u), l)
 			}
 		}
+		if p.jag.leastOn|p.jags[u-p.ua].twisted != 0 {
+			p.putBackwardJags(u, l)
+		}
 		if u < p.u1 {
 			cells(u)
 		}
 		p.backwardMove(row, u, l)
+		if j := &p.jags[u-p.ua]; p.jag.leastOn|j.columns != 0 || j.at > 0 {
+			p.backwardJags(u, l)
+		}
 	}
 }
 

@@ -20,6 +20,7 @@ func (w *walker) quick(p *strip, u, v, k, next int, x float64, m *lane, doubt do
 	q.walker, q.p, q.u, q.k, q.next = w, p, u, k, next
 	q.slackM, q.slackR = slackM*w.y.gain(s, h), slackR
 	q.ua, q.ub = max(p.ua, u-p.f.near), min(p.ub, u+1+p.f.far)
+	q.s, q.h, q.last = s, h, float64(p.f.ln.orient.v-1)
 	q.m, q.r = w.y.own(s, h)
 	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
 	if doubt&doubtClear != 0 {
@@ -69,21 +70,26 @@ func signed(margin float32, positive bool, tiny float32) float32 {
 	return margin
 }
 
-// quickWalk is one cell that is being settled: m and r are the point's own.
+// quickWalk is one cell that is being settled: m, r, s and h are the point's own.
 type quickWalk struct {
 	*walker
 	p              *strip
 	u, k, next     int
 	ua, ub         int // rows within the point's own reach
-	m, r           float64
+	m, r, s, h     float64
 	slackM, slackR float64
+	last           float64 // column of the DEM
 }
 
 // cut is a sample of the surface between two rows.
 type cut struct {
 	m, r    float64
-	unknown bool // m, r are then those of unknown terrain at its worst
+	s, h    float64 // ground distance and height
+	sag     float64 // see point
+	unknown bool    // m, r are then those of unknown terrain at its worst
 }
+
+func (g *cut) point() point { return point{m: g.m, r: g.r, s: g.s, h: g.h} }
 
 // bounds are what the two lanes say of a line at one place, with a slack for
 // the roughness that their difference shows.
@@ -106,17 +112,28 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	}
 	a, b = q.y.bothM(s, a, b)
-	return around(a, b, settleShare/q.slackM)
+	x := around(a, b, settleShare/q.slackM)
+	if j := q.p.jagsOf(u); j != nil && !unknown && besideLane(j.shadeOn, q.k, q.next) {
+		x.low = math.Inf(-1)
+		q.jagged(j.shadeOn, func(k int) { x.high = max(x.high, q.y.seeM(s, float64(j.shade[k]))) })
+	}
+	return x
 }
 
-// Where one lane has no line, the other stands for both with twice the slack.
+// jagged has f called for those of the two lanes that are among lanes.
+func (q *quickWalk) jagged(lanes uint64, f func(k int)) {
+	if lanes>>q.k&1 != 0 {
+		f(q.k)
+	}
+	if lanes>>q.next&1 != 0 && q.next != q.k {
+		f(q.next)
+	}
+}
+
+// Where one lane has no line, the other bounds nothing.
 func around(a, b, perRow float64) bounds {
 	if a != a || b != b {
-		alone := 2 * settleShare / perRow
-		if a != a {
-			a = b
-		}
-		return bounds{a - alone, a + alone}
+		return bounds{math.Inf(-1), math.Inf(1)}
 	}
 	if a > b {
 		a, b = b, a
@@ -133,7 +150,15 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
 		a, b = unsure.nearer[q.k], unsure.nearer[q.next]
 	}
-	return q.ranges(u, a, b, s)
+	x := q.ranges(u, a, b, s)
+	if besideLane(q.p.jags[u-q.p.ua].dawn, q.k, q.next) {
+		x.high = math.Inf(1)
+	}
+	if j := q.p.jagsOf(u); j != nil && besideLane(j.nearerOn, q.k, q.next) {
+		x.low = math.Inf(-1)
+		q.jagged(j.nearerOn, func(k int) { x.high = max(x.high, q.y.seeR(s, float64(j.nearer[k]))) })
+	}
+	return x
 }
 
 // farther is nearer for the ground farther than row u, and for the least slant
@@ -144,7 +169,12 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
 		a, b = unsure.farther[q.k], unsure.farther[q.next]
 	}
-	return q.ranges(u, a, b, s)
+	x := q.ranges(u, a, b, s)
+	if j := q.p.jagsOf(u); j != nil && besideLane(j.fartherOn, q.k, q.next) {
+		x.high = math.Inf(1)
+		q.jagged(j.fartherOn, func(k int) { x.low = min(x.low, q.y.seeR(s, float64(j.farther[k]))) })
+	}
+	return x
 }
 
 func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
@@ -166,7 +196,7 @@ func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
 	q.cuts = q.cuts[:0]
 	t0 := 0.0
 	if u == q.y.u0 {
-		t0 = ownGround // ground this close counts as the point itself
+		t0 = f.ln.own // ground this close counts as the point itself
 	}
 	c, last := int(math.Floor(va)), int(math.Floor(vb))
 	dx, next, turn := vb-va, 1, 1
@@ -197,12 +227,13 @@ func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
 		d := (eq - ep) * dx
 		g.a, g.b, g.d = p0+ep*x0, (q0-p0)+ep*dx+(eq-ep)*x0, d
 		if len(q.cuts) == 0 && t0 > 0 {
-			q.emit(&g, t0)
+			q.emit(&g, 0, t0)
 		}
+		from := t0
 		if d != 0 {
-			q.vertices(&g, t0, t1)
+			from = q.vertices(&g, t0, t1)
 		}
-		q.emit(&g, t1)
+		q.emit(&g, from, t1)
 		if t0 = t1; t1 == 1 {
 			return
 		}
@@ -213,15 +244,16 @@ func (q *quickWalk) walk(u, dir int, va, vb, sa, sb float64) {
 // distance sa + ds t.
 type arc struct{ sa, ds, a, b, d float64 }
 
-func (q *quickWalk) emit(g *arc, t float64) {
+// emit adds the sample at t, which follows the one at from.
+func (q *quickWalk) emit(g *arc, from, t float64) {
 	x := q.more()
-	s, h := g.sa+t*g.ds, g.a+t*(g.b+t*g.d)
+	x.s, x.h, x.sag = g.sa+t*g.ds, g.a+t*(g.b+t*g.d), g.d*(t-from)*(t-from)/4
 	x.unknown = false
 	if ln := q.y.ln; ln.places == nil { // most often; without a call
-		x.m, x.r = ln.at(s, h)
+		x.m, x.r = ln.at(x.s, x.h)
 		return
 	}
-	x.m, x.r = q.y.see(s, h)
+	x.m, x.r = q.y.see(x.s, x.h)
 }
 
 // more returns a new sample at the end of q.cuts, with what is left in it.
@@ -234,8 +266,9 @@ func (q *quickWalk) more() *cut {
 	return &q.cuts[n]
 }
 
-// vertices emits the extremes of m and r between t0 and t1, in order.
-func (q *quickWalk) vertices(g *arc, t0, t1 float64) {
+// vertices emits the extremes of m and r between t0 and t1, in order, and returns
+// where the last one lies.
+func (q *quickWalk) vertices(g *arc, t0, t1 float64) (last float64) {
 	worthM, worthR := q.y.worth(g.sa, g.sa+g.ds, g.a)
 	a, b := g.b+2*g.d*t0, g.b+2*g.d*t1 // h' at both ends
 	tm, tr := math.Inf(1), math.Inf(1)
@@ -248,12 +281,15 @@ func (q *quickWalk) vertices(g *arc, t0, t1 float64) {
 	if tr < tm {
 		tm, tr = tr, tm
 	}
-	if tm < t1 {
-		q.emit(g, tm)
+	if last = t0; tm < t1 {
+		q.emit(g, last, tm)
+		last = tm
 	}
 	if tr < t1 {
-		q.emit(g, tr)
+		q.emit(g, last, tr)
+		last = tr
 	}
+	return last
 }
 
 // walkUnknown is walk where a height is missing.
@@ -263,7 +299,7 @@ func (q *quickWalk) walkUnknown(u, dir int, va, vb, sa, sb float64) {
 	for i := range q.pieces {
 		g := &q.pieces[i]
 		x := q.more()
-		x.m, x.r, x.unknown = g.m, g.r, g.unknown
+		x.m, x.r, x.s, x.h, x.sag, x.unknown = g.m, g.r, g.s, g.h, g.sag, g.unknown
 	}
 }
 
@@ -329,9 +365,9 @@ func (q *quickWalk) beyond(u int, va, vb, sa float64) bool {
 // there slant range grows with height, and the look angle towards the radar.
 func (q *quickWalk) overhead(m float64) bool { return q.y.ln.places != nil && m > 0 }
 
-// left reports whether the walk of a platform's range line has left the DEM at
-// column v, where one of the lanes beside it may go on.
-func (q *quickWalk) left(v float64) bool { return q.y.ln.places != nil && q.outside(v) }
+// left reports whether the walk has left the DEM at column v, where one of the lanes
+// beside it may go on.
+func (q *quickWalk) left(v float64) bool { return v < 0 || v > q.last }
 
 // lit reports whether no ground towards the radar reaches the point's m: none
 // that the DEM shows, or no unknown terrain.
@@ -405,6 +441,14 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 			if !q.dull(u, va, vb, sa, best) {
 				q.walk(u, -1, va, vb, sa, sb)
 			}
+			if u == q.u && len(q.cuts) > 0 {
+				if g := &q.cuts[0]; g.r >= q.r && !g.unknown {
+					own := point{m: q.m, r: q.r, s: q.s, h: q.h}
+					if x, deep := q.deep(&own, g.s, g.h, g.sag); deep {
+						best = x.m
+					}
+				}
+			}
 			for i := range q.cuts {
 				g := &q.cuts[i]
 				reached = g.r
@@ -416,7 +460,7 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 				case g.m >= best:
 					best = none
 					if g.r >= q.r && !g.unknown {
-						best = g.m
+						best = q.highest(i, u, va, sa)
 					}
 				}
 			}
@@ -455,12 +499,37 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 	return best != none
 }
 
+// highest returns the largest m of the ground with at least the point's slant range
+// between sample i of the walk from row u towards the radar and the sample before
+// it: that of the sample, or of where slant range comes up to the point's.
+func (q *quickWalk) highest(i, u int, va, sa float64) float64 {
+	g := q.cuts[i].point()
+	var before point
+	switch {
+	case i > 0 && !q.cuts[i-1].unknown:
+		before = q.cuts[i-1].point()
+	case i > 0 || u == q.u:
+		return g.m
+	default:
+		before.s, before.h = sa, q.f.height(u, va)
+		before.m, before.r = q.y.see(before.s, before.h)
+	}
+	if !(before.r < q.r && before.m > g.m) {
+		return g.m
+	}
+	sag := q.cuts[i].sag
+	_, r := q.y.see((before.s+g.s)/2, (before.h+g.h)/2-sag)
+	t := passes(before.r, r, g.r, q.r)
+	m, _ := q.y.see(before.s+float64(t*(g.s-before.s)), before.h+float64(t*(g.h-before.h))-float64(4*sag*t*(1-t)))
+	return min(max(m, g.m), before.m)
+}
+
 // foldedFarther reports whether lit ground away from the radar comes down to
 // the point's slant range; when possible is set, whether ground that may be
 // lit, or unknown terrain, does.
 func (q *quickWalk) foldedFarther(possible bool) bool {
 	top, topU, hidden := q.m, math.Inf(-1), false
-	m, r := q.m, q.r // of the sample before
+	var before point // while hidden
 	reached := q.r   // no more than the line's slant range at row u
 	vb, sb := q.y.at(q.u)
 	for u := q.u; u < q.ub-1; u++ {
@@ -490,8 +559,9 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 				}
 				if g.m > top {
 					best := g.r
-					if hidden {
-						best = min(best, r+(top-m)/(g.m-m)*(g.r-r))
+					if hidden && before.r < best {
+						x := g.point()
+						best = q.y.rise(&before, &x, g.sag, top)
 					}
 					if best <= q.r && (possible || g.m > topU) {
 						return true
@@ -499,9 +569,8 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 					top = g.m
 					hidden = false
 				} else {
-					hidden = true
+					hidden, before = true, g.point()
 				}
-				m, r = g.m, g.r
 			}
 			if q.left(vb) {
 				return false

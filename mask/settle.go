@@ -188,6 +188,30 @@ type point struct {
 	unknown bool    // m, r are then those of unknown terrain at its worst
 	unsure  bool    // lit unless unknown terrain hides it
 	close   bool    // less than a row away
+	// Half way from the sample before, the surface lies this much below the straight
+	// line between the two, metres.
+	sag float64
+}
+
+// rise returns the slant range where m comes up to top on the way from sample a to
+// b, or from b to a, between which the surface sags.
+func (y *ray) rise(a, b *point, sag, top float64) float64 {
+	m, _ := y.see((a.s+b.s)/2, (a.h+b.h)/2-sag)
+	t := passes(a.m, m, b.m, top)
+	_, r := y.see(a.s+float64(t*(b.s-a.s)), a.h+float64(t*(b.h-a.h))-float64(4*sag*t*(1-t)))
+	return min(max(r, min(a.r, b.r)), max(a.r, b.r)) // one way only between two samples
+}
+
+// passes returns which part of the way a parabola takes from a, by mid half way, to
+// reach x, when it ends at b and neither rises nor falls on the whole way.
+func passes(a, mid, b, x float64) float64 {
+	if x == a {
+		return 0
+	}
+	bend := 4 * (mid - (a+b)/2)
+	slope := b - a + bend
+	root := math.Sqrt(max(float64(slope*slope)-float64(4*bend*(x-a)), 0))
+	return min(max(2*(x-a)/(slope+math.Copysign(root, b-a)), 0), 1)
 }
 
 // walker settles points by an exact walk along their own range line over the
@@ -212,7 +236,7 @@ func (w *walker) settle(f *field, u, v int) margins {
 	_, s := w.y.at(u)
 	h := float64(f.z[(u-f.ua)*f.width+v-f.at[u-f.ua]])
 	m, r := w.y.own(s, h)
-	x := w.towards(u, m, r)
+	x := w.towards(u, point{m: m, r: r, s: s, h: h})
 	gain := w.y.gain(s, h)
 	x.clear, x.clearU = x.clear/gain, x.clearU/gain
 	x.far, x.farU = math.Inf(1), math.Inf(1)
@@ -228,7 +252,8 @@ func (f *field) height(u int, v float64) float64 {
 }
 
 // towards walks from row u0 towards the radar.
-func (w *walker) towards(u0 int, m, r float64) margins {
+func (w *walker) towards(u0 int, own point) margins {
+	m, r := own.m, own.r
 	f, lim := w.f, w.f.lim
 	w.seq, w.stack = w.seq[:0], w.stack[:0]
 	topClose, topFar, topU := math.Inf(-1), math.Inf(-1), math.Inf(-1)
@@ -237,6 +262,12 @@ func (w *walker) towards(u0 int, m, r float64) margins {
 		va, sa := w.y.at(u)
 		vb, sb := w.y.at(u - 1)
 		w.step(u, -1, va, vb, sa, sb)
+		if u == u0 && len(w.pieces) > 0 && !w.pieces[0].unknown {
+			g := &w.pieces[0]
+			if x, deep := w.deep(&own, g.s, g.h, g.sag); deep {
+				w.push(x)
+			}
+		}
 		for _, q := range w.pieces {
 			q.close = q.close && u == u0
 			switch {
@@ -299,7 +330,7 @@ func (w *walker) nearest(r, mostU float64) (sure, possible float64) {
 		best := q.r
 		if n+1 < len(w.stack) && w.stack[n+1] != i+1 && !w.seq[i+1].unknown {
 			next, top := w.seq[i+1], w.seq[w.stack[n+1]].m
-			best = max(best, q.r+(top-q.m)/(next.m-q.m)*(next.r-q.r))
+			best = max(best, w.y.rise(&q, &next, next.sag, top))
 		}
 		if !q.close || best >= r {
 			any = max(any, best)
@@ -349,7 +380,7 @@ func (w *walker) away(u0 int, m, r float64) (sure, possible float64) {
 			}
 			best := q.r
 			if hidden && !prev.unknown {
-				best = min(best, prev.r+(top-prev.m)/(q.m-prev.m)*(q.r-prev.r))
+				best = min(best, w.y.rise(&prev, &q, q.sag, top))
 			}
 			if !q.close || best <= r {
 				any = min(any, best)
@@ -378,20 +409,33 @@ func (w *walker) away(u0 int, m, r float64) (sure, possible float64) {
 	return farR - r, any - r
 }
 
-// ownGround is the part of a row next to a point that counts as the point
+// ownGround is the part of a cell next to a point that counts as the point
 // itself: on curved ground an overlap or a shadow may begin right at the point,
-// millimetres deep, which no DEM can tell.
+// millimetres deep, which no DEM can tell. Of sites and windows it is the part of a
+// row.
 const ownGround = 0.1
+
+// ownDepth is the overlap with its own ground, in rows' worths of ground, that counts
+// all the same: a five hundredth, which is decimetres.
+const ownDepth = 1. / 500
+
+// deep looks half way along a point's own ground, which ends at ground distance s and
+// height h, towards the radar: whether it overlaps the point by more than ownDepth.
+func (w *walker) deep(own *point, s, h, sag float64) (x point, yes bool) {
+	x = point{s: (own.s + s) / 2, h: (own.h+h)/2 - sag, close: true}
+	x.m, x.r = w.y.see(x.s, x.h)
+	return x, x.r >= own.r+ownDepth*w.f.ln.rowR
+}
 
 // step fills w.pieces with the samples between row u, excluded, and the next
 // row in direction dir, included, in the order of the walk.
 func (w *walker) step(u, dir int, va, vb, sa, sb float64) {
 	w.pieces = w.pieces[:0]
 	a, b := math.Floor(va), math.Floor(vb)
-	t0 := 0.0
+	f, t0 := w.f, 0.0
 	if u == w.y.u0 {
 		// Ground this close counts as the point itself.
-		t0 = ownGround
+		t0 = f.ln.own
 		w.piece(u, dir, va, vb, sa, sb, t0, t0)
 	}
 	if a == b || va == vb {
@@ -440,9 +484,13 @@ func (w *walker) piece(u, dir int, va, vb, sa, sb, t0, t1 float64) {
 	d := (eq - ep) * dx
 	b := (q0 - p0) + ep*dx + (eq-ep)*x0
 	a := p0 + ep*x0
-	ds := sb - sa
+	ds, before := sb-sa, t0
+	if t0 == t1 { // the end of the point's own ground
+		before = 0
+	}
 	emit := func(t float64) {
-		q := point{s: sa + t*ds, h: a + t*(b+t*d), close: t < 1}
+		q := point{s: sa + t*ds, h: a + t*(b+t*d), close: t < 1, sag: d * (t - before) * (t - before) / 4}
+		before = t
 		q.m, q.r = w.y.see(q.s, q.h)
 		w.pieces = append(w.pieces, q)
 	}

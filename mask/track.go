@@ -109,6 +109,7 @@ func trackLanes(g *dem.Grid, look geometry.Look, p geometry.Platform, lim dem.Ra
 		return nil, fmt.Errorf("look %q: %w", look.Name, err)
 	}
 	tr.bound(lim)
+	tr.ln.ownRow(tr.g, tr.maxDS)
 	ln.sights = newSights(g, look, p, ln.datum)
 	return ln, nil
 }
@@ -120,6 +121,7 @@ type tracker struct {
 	ln    *lanes
 	datum float64
 	left  bool
+	maxDS float64 // the largest ground distance of one row
 }
 
 // point returns the earth-centred point at a grid position and the height of
@@ -271,7 +273,7 @@ func (r *rangePlane) place(g geometry.Geodetic) place {
 func (tr *tracker) measure(j int) {
 	ln := tr.ln
 	if j == 0 {
-		ln.minDS = math.Inf(1)
+		ln.minDS, tr.maxDS = math.Inf(1), 0
 	}
 	for i := 1; i < ln.nu; i++ {
 		n := i*ln.nk + j
@@ -279,7 +281,7 @@ func (tr *tracker) measure(j int) {
 		ue, un, ve, vn := ln.step(tr.g, u, v)
 		b := (ln.v[n] - ln.v[n-ln.nk]) / laneStep
 		ds := math.Hypot(ue+b*ve, un+b*vn)
-		ln.minDS = math.Min(ln.minDS, ds)
+		ln.minDS, tr.maxDS = math.Min(ln.minDS, ds), math.Max(tr.maxDS, ds)
 		ln.s[n] = ln.s[n-ln.nk] + laneStep*ds
 	}
 }
@@ -591,7 +593,7 @@ type seenGrade struct {
 
 // markSeen is the work of strip.mark for a platform, with the heights a and b of
 // the two rows.
-func (p *strip) markSeen(g *gentle, u int, a, b *byLane41) {
+func (p *strip) markSeen(g *gentle, u int, a, b *byLane42) {
 	limits, ok := p.bounds, true
 	if p.f.ln.fan != nil {
 		limits, ok = p.gradeFan(u)

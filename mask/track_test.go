@@ -163,6 +163,10 @@ func (s scene) tracked(rng *rand.Rand) scene {
 	return s
 }
 
+// tracksLone is the share of cells that may be alone: bends between the lanes of a
+// track are not looked at, and on white terrain lanes have nothing in common.
+const tracksLone = 0.0005
+
 func TestRandomGridsFromTracks(t *testing.T) {
 	scenes := 120
 	if *walkFull {
@@ -187,7 +191,7 @@ func TestRandomGridsFromTracks(t *testing.T) {
 		}
 	}
 	t.Logf("seed %d, %d grids: %v", *walkSeed, scenes, all)
-	assert.Less(t, float64(len(all.lone)), randomLone*float64(all.cells), "differing cells alone")
+	assert.Less(t, float64(len(all.lone)), tracksLone*float64(all.cells), "differing cells alone")
 	assert.Less(t, float64(all.differ), randomDiffer*float64(all.determined), "cells of another kind")
 	assert.Less(t, float64(all.guessed), randomGuessed*float64(all.cells), "cells undetermined in the walk only")
 	assert.Less(t, float64(all.timid), randomTimid*float64(all.cells), "cells undetermined in the engine only")

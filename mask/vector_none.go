@@ -9,16 +9,16 @@ type byLane36 [0]float32
 
 const noVectors = "built without vectors"
 
-func spreadVector(*byLane, []float32, float64, float64, int, int)    { panic(noVectors) }
-func turnVectors([]float32, []float32, int, int, int, int)           { panic(noVectors) }
-func heightsVector(*byLane, *byLane36, *byLane36, float64)           { panic(noVectors) }
-func markVector(*byLane41, *byLane41, *grade) (rises, lit uint64)    { panic(noVectors) }
-func viewVector(*strip, float64, float64, float64, float64, float64) { panic(noVectors) }
-func forwardVector(*strip, *lines, float64, float64, float64)        { panic(noVectors) }
-func backwardVector(*strip, *lines, float64, float64)                { panic(noVectors) }
-func backwardMoveVector(*strip, *lines)                              { panic(noVectors) }
-func marginsVector(*laneMargins, *byLane, *lines, float32)           { panic(noVectors) }
-func roughnessVector(*byLane32, *byLane32, float32)                  { panic(noVectors) }
+func spreadVector(*byLane, []float32, float64, float64, int, int)              { panic(noVectors) }
+func turnVectors([]float32, []float32, int, int, int, int)                     { panic(noVectors) }
+func heightsVector(*byLane, *byLane36, *byLane36, float64)                     { panic(noVectors) }
+func markVector(*byLane42, *byLane42, *grade) (rises, lit uint64, jagged bool) { panic(noVectors) }
+func viewVector(*strip, float64, float64, float64, float64, float64)           { panic(noVectors) }
+func forwardVector(*strip, *lines, float64, float64, float64)                  { panic(noVectors) }
+func backwardVector(*strip, *lines, float64, float64)                          { panic(noVectors) }
+func backwardMoveVector(*strip, *lines)                                        { panic(noVectors) }
+func marginsVector(*laneMargins, *byLane, *lines, float32)                     { panic(noVectors) }
+func roughnessVector(*byLane32, *byLane32, float32)                            { panic(noVectors) }
 
 func (*sheet) classifyBundle(*strip, *walker, int, int, int, int, *lineUp, *[bundle]float32) {
 	panic(noVectors)
