@@ -8,11 +8,11 @@ const settleShare = 0.25
 
 // roughShare is the part of the difference between two lanes by which the slack
 // grows at least.
-const roughShare = 0.5
+const roughShare = 0.25
 
 // roughGrowth lets that part grow with the difference, counted in rows' worths
 // of ground: where neighbouring lanes have little in common, they bound nothing.
-const roughGrowth = 3
+const roughGrowth = 1
 
 // foldUnknown is the raw code of a lit cell that is folded or not depending on
 // terrain that the DEM does not show. It never leaves the package.
