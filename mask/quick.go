@@ -115,19 +115,13 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 	x := around(a, b, settleShare/q.slackM)
 	if j := q.p.jagsOf(u); j != nil && !unknown && besideLane(j.shadeOn, q.k, q.next) {
 		x.low = math.Inf(-1)
-		q.jagged(j.shadeOn, func(k int) { x.high = max(x.high, q.y.seeM(s, float64(j.shade[k]))) })
+		for _, k := range [2]int{q.k, q.next} {
+			if j.shadeOn>>k&1 != 0 {
+				x.high = max(x.high, q.y.seeM(s, float64(j.shade[k])))
+			}
+		}
 	}
 	return x
-}
-
-// jagged has f called for those of the two lanes that are among lanes.
-func (q *quickWalk) jagged(lanes uint64, f func(k int)) {
-	if lanes>>q.k&1 != 0 {
-		f(q.k)
-	}
-	if lanes>>q.next&1 != 0 && q.next != q.k {
-		f(q.next)
-	}
 }
 
 // Where one lane has no line, the other bounds nothing.
@@ -156,7 +150,11 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	}
 	if j := q.p.jagsOf(u); j != nil && besideLane(j.nearerOn, q.k, q.next) {
 		x.low = math.Inf(-1)
-		q.jagged(j.nearerOn, func(k int) { x.high = max(x.high, q.y.seeR(s, float64(j.nearer[k]))) })
+		for _, k := range [2]int{q.k, q.next} {
+			if j.nearerOn>>k&1 != 0 {
+				x.high = max(x.high, q.y.seeR(s, float64(j.nearer[k])))
+			}
+		}
 	}
 	return x
 }
@@ -172,7 +170,11 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	x := q.ranges(u, a, b, s)
 	if j := q.p.jagsOf(u); j != nil && besideLane(j.fartherOn, q.k, q.next) {
 		x.high = math.Inf(1)
-		q.jagged(j.fartherOn, func(k int) { x.low = min(x.low, q.y.seeR(s, float64(j.farther[k]))) })
+		for _, k := range [2]int{q.k, q.next} {
+			if j.fartherOn>>k&1 != 0 {
+				x.low = min(x.low, q.y.seeR(s, float64(j.farther[k])))
+			}
+		}
 	}
 	return x
 }
@@ -503,24 +505,23 @@ func (q *quickWalk) foldedNearer(possible bool) bool {
 // between sample i of the walk from row u towards the radar and the sample before
 // it: that of the sample, or of where slant range comes up to the point's.
 func (q *quickWalk) highest(i, u int, va, sa float64) float64 {
-	g := q.cuts[i].point()
-	var before point
+	g := &q.cuts[i]
+	var before *cut
 	switch {
 	case i > 0 && !q.cuts[i-1].unknown:
-		before = q.cuts[i-1].point()
+		before = &q.cuts[i-1]
 	case i > 0 || u == q.u:
 		return g.m
 	default:
-		before.s, before.h = sa, q.f.height(u, va)
+		before = &cut{s: sa, h: q.f.height(u, va)}
 		before.m, before.r = q.y.see(before.s, before.h)
 	}
 	if !(before.r < q.r && before.m > g.m) {
 		return g.m
 	}
-	sag := q.cuts[i].sag
-	_, r := q.y.see((before.s+g.s)/2, (before.h+g.h)/2-sag)
+	_, r := q.y.see((before.s+g.s)/2, (before.h+g.h)/2-g.sag)
 	t := passes(before.r, r, g.r, q.r)
-	m, _ := q.y.see(before.s+float64(t*(g.s-before.s)), before.h+float64(t*(g.h-before.h))-float64(4*sag*t*(1-t)))
+	m, _ := q.y.see(before.s+float64(t*(g.s-before.s)), before.h+float64(t*(g.h-before.h))-float64(4*g.sag*t*(1-t)))
 	return min(max(m, g.m), before.m)
 }
 
@@ -569,7 +570,8 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 					top = g.m
 					hidden = false
 				} else {
-					hidden, before = true, g.point()
+					hidden = true
+					before.m, before.r, before.s, before.h = g.m, g.r, g.s, g.h
 				}
 			}
 			if q.left(vb) {
