@@ -416,7 +416,7 @@ func (w *walker) away(u0 int, m, r float64) (sure, possible float64) {
 const ownGround = 0.1
 
 // ownDepth is the overlap with its own ground, in rows' worths of ground, that counts
-// all the same: a five hundredth, which is decimetres.
+// all the same: a five hundredth, which is centimetres.
 const ownDepth = 1. / 500
 
 // deep looks half way along a point's own ground, which ends at ground distance s and
