@@ -271,6 +271,7 @@ type laneMargins struct {
 	tinyM, tinyR           float32 // see atLimit
 	cos                    float32 // slant range for a metre of height
 	roughM, roughN, roughF byLane32
+	jagged                 uint64 // gaps beside jagged ground or ground that it sets limits for
 }
 
 // fill takes the margins from the lines and the heights of the row that the
@@ -303,10 +304,11 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 		roughness(&r.far, &r.roughF, r.perR)
 		r.roughenJags(p, u)
 	} else {
-		r.roughM, r.roughN, r.roughF = byLane32{}, byLane32{}, byLane32{}
+		r.roughM, r.roughN, r.roughF, r.jagged = byLane32{}, byLane32{}, byLane32{}, 0
 	}
 	if dawn := p.jags[u-p.ua].dawn; dawn != 0 {
 		roughen(&r.roughN, dawn)
+		r.jagged |= gapsBeside(dawn)
 	}
 	if sure {
 		return
@@ -395,10 +397,11 @@ func (r *laneMargins) at(k int, w, h float32, m *lane) (d doubts) {
 			slack += rough[k]
 		default: // as much on one side as on the other
 			d := max(abs32(a[k]-a[k-1]), abs32(a[k+1]-a[k]))
-			if rough[k] > math.MaxFloat32 { // jagged ground
-				d = rough[k]
+			d *= roughShare + float32(float32(roughGrowth*d)*(settleShare/base))
+			if r.jagged>>(k-1)&3 != 0 {
+				d = max(d, rough[k-1], rough[k])
 			}
-			slack += d * (roughShare + float32(float32(roughGrowth*d)*(settleShare/base)))
+			slack += d
 		}
 		if !(x > slack || x < -slack) {
 			d |= bit

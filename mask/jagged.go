@@ -25,6 +25,7 @@ type jags struct {
 	columns   uint64
 	twisted   uint64 // patches between the row and the next one, the first at the base
 	lit, fold uint64 // lanes beside bends large for what hides, for what folds
+	seen      uint64 // gaps in which all ground of the row is surely lit
 	dawn      uint64 // see findDawn
 	at        int
 }
@@ -34,7 +35,20 @@ type jags struct {
 type jagLines struct {
 	shadeOn, nearerOn, fartherOn uint64
 	shade, nearer, farther       byLane32
+	least                        assured
 	dim                          uint64 // lanes whose sample may be lit or not
+}
+
+// assured is what ground near jagged ground sets as a limit for all range lines
+// between a lane and the next: the m that it reaches, and the slant ranges of lit
+// ground, nearer and farther. Infinite where it sets none.
+type assured struct{ shade, nearer, farther byLane }
+
+// reset says that no ground sets a limit.
+func (x *assured) reset() {
+	for k := range padLanes {
+		x.shade[k], x.nearer[k], x.farther[k] = math.Inf(-1), math.Inf(-1), math.Inf(1)
+	}
 }
 
 // noJags are limits that bound nothing.
@@ -42,6 +56,7 @@ var noJags = func() (x jagLines) {
 	fillWith(x.shade[:], -noLimit)
 	fillWith(x.nearer[:], noLimit)
 	fillWith(x.farther[:], -noLimit)
+	x.least.reset()
 	return x
 }()
 
@@ -51,6 +66,7 @@ var noJags = func() (x jagLines) {
 type jagState struct {
 	m, most, least         byLane
 	mOn, mostOn, leastOn   uint64
+	sure                   assured
 	bendLit, bendFold, any float32 // the least bends that count
 	slackM, slackR         float64
 }
@@ -61,6 +77,7 @@ func (p *strip) resetJags() {
 	ln := p.f.ln
 	st := &p.jag
 	st.mOn, st.mostOn, st.leastOn = 0, 0, 0
+	st.sure.reset()
 	st.bendLit, st.bendFold = float32(math.Inf(1)), float32(math.Inf(1))
 	if ln.places == nil && !(ln.uniform && ln.slope == 0) {
 		st.bendLit, st.bendFold = float32(jagShare*ln.minDS*ln.cot), float32(jagShare*ln.minDS*ln.tan)
@@ -199,41 +216,13 @@ func (l span) inside(lanes uint64) uint64 { return lanes & (1<<l.b - 1<<l.a) }
 // stands with the ground of the row taken into account.
 func (p *strip) forwardJags(u int, l span) {
 	st := &p.jag
-	j := &p.jags[u-p.ua]
-	var twisted uint64
-	if u > p.ua {
-		twisted = p.jags[u-1-p.ua].twisted
-	}
-	for c := twisted; c != 0; c &= c - 1 {
-		lanes, x := p.twistAt(u-1, bits.TrailingZeros64(c), u, l)
-		j.lit, j.fold = j.lit|lanes, j.fold|lanes
-		before := &p.jags[u-1-p.ua]
-		before.lit, before.fold = before.lit|lanes, before.fold|lanes
-		for on := lanes; on != 0; on &= on - 1 {
-			k := bits.TrailingZeros64(on)
-			keepMost(&st.m, &st.mOn, k, x.m)
-			keepMost(&st.most, &st.mostOn, k, x.far)
-		}
-	}
+	beside := p.followTwists(u, l)
 	if st.mOn, st.mostOn = l.inside(st.mOn), l.inside(st.mostOn); st.mOn|st.mostOn != 0 {
 		p.putForwardJags(u)
 	}
-	for c := j.columns; c != 0; c &= c - 1 {
-		x, ok := p.jagAt(u, bits.TrailingZeros64(c), l)
-		if !ok {
-			continue
-		}
-		beside := uint64(3) << x.k
-		if !(x.bend <= st.bendLit) {
-			j.lit |= beside
-		}
-		if !(x.bend <= st.bendFold) {
-			j.fold |= beside
-		}
-		for k := x.k; k <= x.k+1; k++ {
-			keepMost(&st.m, &st.mOn, k, x.m)
-			keepMost(&st.most, &st.mostOn, k, x.far)
-		}
+	beside |= p.followBends(u, l)
+	for gaps := l.gaps(beside | beside>>1); gaps != 0; gaps &= gaps - 1 {
+		p.assure(u, bits.TrailingZeros64(gaps))
 	}
 	// What lies well below other ground sets no limit.
 	for on := st.mOn; on != 0; on &= on - 1 {
@@ -248,11 +237,112 @@ func (p *strip) forwardJags(u int, l span) {
 	}
 }
 
+// followTwists has the march know of the twisted patches before row u, and returns
+// the lanes that touch them.
+func (p *strip) followTwists(u int, l span) (beside uint64) {
+	if u == p.ua {
+		return 0
+	}
+	st := &p.jag
+	before, j := &p.jags[u-1-p.ua], &p.jags[u-p.ua]
+	for c := before.twisted; c != 0; c &= c - 1 {
+		lanes, x := p.twistAt(u-1, bits.TrailingZeros64(c), u, l)
+		beside |= lanes
+		for on := lanes; on != 0; on &= on - 1 {
+			k := bits.TrailingZeros64(on)
+			keepMost(&st.m, &st.mOn, k, x.m)
+			keepMost(&st.most, &st.mostOn, k, x.far)
+		}
+	}
+	j.lit, j.fold = j.lit|beside, j.fold|beside
+	before.lit, before.fold = before.lit|beside, before.fold|beside
+	return beside
+}
+
+// followBends is followTwists for the bends of row u, and returns the lanes beside
+// them.
+func (p *strip) followBends(u int, l span) (beside uint64) {
+	st := &p.jag
+	j := &p.jags[u-p.ua]
+	for c := j.columns; c != 0; c &= c - 1 {
+		x, ok := p.jagAt(u, bits.TrailingZeros64(c), l)
+		if !ok {
+			continue
+		}
+		both := uint64(3) << x.k
+		beside |= both
+		if !(x.bend <= st.bendLit) {
+			j.lit |= both
+		}
+		if !(x.bend <= st.bendFold) {
+			j.fold |= both
+		}
+		for k := x.k; k <= x.k+1; k++ {
+			keepMost(&st.m, &st.mOn, k, x.m)
+			keepMost(&st.most, &st.mostOn, k, x.far)
+		}
+	}
+	return beside
+}
+
+// gaps returns the bits of the gaps between two lanes of a span.
+func (l span) gaps(lanes uint64) uint64 { return lanes & (1<<max(l.b-1, l.a) - 1<<l.a) }
+
+// extremes returns the least m and the smallest and largest slant range of the ground
+// of the row where the strip stands between lane k and the next; false where a height
+// is missing.
+func (p *strip) extremes(u, k int) (m, low, far float64, ok bool) {
+	f := p.f
+	m, low, far = min(p.m[k], p.m[k+1]), min(p.r[k], p.r[k+1]), max(p.r[k], p.r[k+1])
+	base := (u-f.ua)*f.width - f.at[u-f.ua]
+	last := int(p.column(float64(k + 1)))
+	for c := int(p.column(float64(k))) + 1; c <= last; c++ {
+		x := (float64(c) - p.v0) / p.dv
+		n, r := f.ln.at(p.s0+float64(p.ds*x), float64(f.z[base+c]))
+		m, low, far = min(m, n), min(low, r), max(far, r)
+	}
+	return m, low, far, m == m && far == far
+}
+
+// assure has what follows know of the limits that the ground of row u surely sets in
+// gap k.
+func (p *strip) assure(u, k int) {
+	m, low, _, ok := p.extremes(u, k)
+	if !ok {
+		return
+	}
+	st := &p.jag.sure
+	st.shade[k] = max(st.shade[k], m)
+	if p.sure[u-p.ua]&1 != 0 && m > p.highest(u, k) {
+		st.nearer[k] = max(st.nearer[k], low)
+		p.jags[u-p.ua].seen |= 1 << k
+	}
+}
+
+// highest returns the largest m that hides ground at row u in gap k, or more.
+func (p *strip) highest(u, k int) float64 {
+	row := p.row(u)
+	a, b := p.m[k]-(p.h[k]-float64(row.shade[k])), p.m[k+1]-(p.h[k+1]-float64(row.shade[k+1]))
+	x := around(a, b, settleShare/p.jag.slackM).high
+	if j := p.jagsOf(u); j != nil {
+		for i := k; i <= k+1; i++ {
+			if j.shadeOn>>i&1 != 0 {
+				x = max(x, p.m[i]-(p.h[i]-float64(j.shade[i])))
+			}
+		}
+	}
+	return x + p.jag.slackM
+}
+
 // putForwardJags puts the limits of row u that jagged ground before it may set. A
 // sample that jagged ground may hide counts as such from here on.
 func (p *strip) putForwardJags(u int) {
 	st := &p.jag
 	x := p.newJags(u)
+	for gaps := st.mOn | st.mostOn | (st.mOn|st.mostOn)>>1; gaps != 0; gaps &= gaps - 1 {
+		k := bits.TrailingZeros64(gaps)
+		x.least.shade[k], x.least.nearer[k] = st.sure.shade[k], st.sure.nearer[k]
+	}
 	minShade, maxNearer, _ := p.f.limitLines()
 	for on := st.mostOn; on != 0; on &= on - 1 {
 		k := bits.TrailingZeros64(on)
@@ -287,6 +377,10 @@ func (p *strip) putBackwardJags(u int, l span) {
 		return
 	}
 	x := p.newJags(u)
+	for gaps := st.leastOn | st.leastOn>>1; gaps != 0; gaps &= gaps - 1 {
+		k := bits.TrailingZeros64(gaps)
+		x.least.farther[k] = st.sure.farther[k]
+	}
 	_, _, minFarther := p.f.limitLines()
 	for on := st.leastOn; on != 0; on &= on - 1 {
 		k := bits.TrailingZeros64(on)
@@ -307,6 +401,12 @@ func (p *strip) backwardJags(u int, l span) {
 			keepLeast(&st.least, &st.leastOn, x.k+1, x.low)
 		}
 	}
+	for gaps := j.seen; gaps != 0; gaps &= gaps - 1 {
+		k := bits.TrailingZeros64(gaps)
+		if _, _, far, ok := p.extremes(u, k); ok {
+			st.sure.farther[k] = min(st.sure.farther[k], far)
+		}
+	}
 	if x := p.jagsOf(u); x != nil {
 		for on := x.dim; on != 0; on &= on - 1 {
 			k := bits.TrailingZeros64(on)
@@ -320,25 +420,75 @@ func (p *strip) backwardJags(u int, l span) {
 	}
 }
 
-// roughenJags has all cells be doubtful that lie beside lanes where jagged ground may
-// set the limit, or beside jagged ground itself.
+// roughenJags widens the slack of cells between lanes where jagged ground may set the
+// limit, by as much as that may lie beside what the lanes say, and makes that of cells
+// beside jagged ground itself infinite.
 func (r *laneMargins) roughenJags(p *strip, u int) {
 	j := &p.jags[u-p.ua]
-	if j.lit|j.fold == 0 && j.at == 0 {
-		return
-	}
-	lit, near, far := j.lit, j.fold, j.fold
+	r.jagged = gapsBeside(j.lit | j.fold)
+	r.roughM[0], r.roughN[0], r.roughF[0] = 0, 0, 0
 	if x := p.jagsOf(u); x != nil {
-		lit, near, far = lit|x.shadeOn, near|x.nearerOn, far|x.fartherOn
+		r.jagged |= gapsBeside(x.shadeOn | x.nearerOn | x.fartherOn)
+		row, per := p.row(u), 1/p.f.ln.cos
+		minShade, maxNearer, minFarther := p.f.limitLines()
+		if x.shadeOn != 0 {
+			r.widen(p, &r.clear, &r.roughM, &jagSide{x.shadeOn, &row.shade, &x.shade, &x.least.shade, &p.m, -1, 1, 1, float32(minShade)})
+		}
+		if x.nearerOn != 0 {
+			r.widen(p, &r.near, &r.roughN, &jagSide{x.nearerOn, &row.nearer, &x.nearer, &x.least.nearer, &p.r, per, -1, r.cos, float32(maxNearer)})
+		}
+		if x.fartherOn != 0 {
+			r.widen(p, &r.far, &r.roughF, &jagSide{x.fartherOn, &row.farther, &x.farther, &x.least.farther, &p.r, per, 1, r.cos, float32(minFarther)})
+		}
 	}
-	roughen(&r.roughM, lit)
-	roughen(&r.roughN, near)
-	roughen(&r.roughF, far)
+	roughen(&r.roughM, j.lit)
+	roughen(&r.roughN, j.fold)
+	roughen(&r.roughF, j.fold)
+}
+
+// jagSide is one of the limits of a row where jagged ground may set it for the lanes
+// on: the lanes' own line, that of jagged ground, and what is assured of a gap, in the
+// measure at of the lanes' ground, of which a metre of height is worth -1 / per.
+type jagSide struct {
+	on          uint64
+	line, jag   *byLane32
+	least, at   *byLane
+	per         float64
+	sign, scale float32 // 1 where ground counts that is higher, else -1; metres of margin for one of height
+	end         float32 // see limitLines
+}
+
+// widen makes rough at least what the margins between lanes may be wrong by.
+func (r *laneMargins) widen(p *strip, margin, rough *byLane32, x *jagSide) {
+	for gaps := gapsBeside(x.on); gaps != 0; gaps &= gaps - 1 {
+		k := bits.TrailingZeros64(gaps)
+		below, above := r.sides(margin, k)
+		d := rough[k]
+		for i := k; i <= k+1; i++ {
+			if below {
+				least := float32(p.h[i] + float64((x.at[i]-x.least[k])*x.per))
+				d = max(d, min((x.line[i]-least)*x.sign, (x.line[i]-x.end)*x.sign)*x.scale)
+			}
+			if above && x.on>>i&1 != 0 {
+				d = max(d, (x.jag[i]-x.line[i])*x.sign*x.scale)
+			}
+		}
+		rough[k] = d
+	}
+}
+
+// gapsBeside returns the gaps on both sides of lanes.
+func gapsBeside(lanes uint64) uint64 { return (lanes | lanes>>1) & (1<<(laneStep+1) - 1) }
+
+// sides reports whether margins between lane k and the next may be negative, and
+// whether they may be positive, with what terrain may be unknown as well.
+func (r *laneMargins) sides(a *byLane32, k int) (below, above bool) {
+	return !r.sure || !(a[k] > 0 && a[k+1] > 0), !r.sure || !(a[k] < 0 && a[k+1] < 0)
 }
 
 // roughen makes the slack infinite in the gaps on both sides of lanes.
 func roughen(rough *byLane32, lanes uint64) {
-	for gaps := (lanes | lanes>>1) & (1<<(laneStep+1) - 2); gaps != 0; gaps &= gaps - 1 {
+	for gaps := gapsBeside(lanes); gaps != 0; gaps &= gaps - 1 {
 		rough[bits.TrailingZeros64(gaps)] = float32(math.Inf(1))
 	}
 }

@@ -636,7 +636,7 @@ func (p *strip) backward(cells func(u int)) {
 			cells(u)
 		}
 		p.backwardMove(row, u, l)
-		if j := &p.jags[u-p.ua]; p.jag.leastOn|j.columns != 0 || j.at > 0 {
+		if j := &p.jags[u-p.ua]; p.jag.leastOn|j.columns|j.seen != 0 || j.at > 0 {
 			p.backwardJags(u, l)
 		}
 	}

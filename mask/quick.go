@@ -114,7 +114,7 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 	a, b = q.y.bothM(s, a, b)
 	x := around(a, b, settleShare/q.slackM)
 	if j := q.p.jagsOf(u); j != nil && !unknown && besideLane(j.shadeOn, q.k, q.next) {
-		x.low = math.Inf(-1)
+		x.low = j.least.shade[q.k]
 		for _, k := range [2]int{q.k, q.next} {
 			if j.shadeOn>>k&1 != 0 {
 				x.high = max(x.high, q.y.seeM(s, float64(j.shade[k])))
@@ -149,7 +149,7 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 		x.high = math.Inf(1)
 	}
 	if j := q.p.jagsOf(u); j != nil && besideLane(j.nearerOn, q.k, q.next) {
-		x.low = math.Inf(-1)
+		x.low = j.least.nearer[q.k]
 		for _, k := range [2]int{q.k, q.next} {
 			if j.nearerOn>>k&1 != 0 {
 				x.high = max(x.high, q.y.seeR(s, float64(j.nearer[k])))
@@ -169,7 +169,7 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	}
 	x := q.ranges(u, a, b, s)
 	if j := q.p.jagsOf(u); j != nil && besideLane(j.fartherOn, q.k, q.next) {
-		x.high = math.Inf(1)
+		x.high = j.least.farther[q.k]
 		for _, k := range [2]int{q.k, q.next} {
 			if j.fartherOn>>k&1 != 0 {
 				x.low = min(x.low, q.y.seeR(s, float64(j.farther[k])))
