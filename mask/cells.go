@@ -294,7 +294,7 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	case ln.places != nil:
 		r.fromTrack(p, u, l)
 	case vectors && l == whole:
-		marginsVector(r, &p.h, p.row(u), float32(cosine))
+		marginsVector(r, p.h, p.row(u), float32(cosine))
 	default:
 		r.fromLines(p, u, l, float32(cosine))
 	}

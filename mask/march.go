@@ -17,10 +17,12 @@ type strip struct {
 
 	*footing // of the row where the strip stands
 	feet     []footing
-	foot     int   // row of the first of them
-	p0, dp   place // of a platform, at the row that is sampled: place of lane 0, change for one lane
-	h, m, r  byLane
-	share    byLane // of a fan: see lens.steepness
+	foot     int     // row of the first of them
+	p0, dp   place   // of a platform, at the row that is sampled: place of lane 0, change for one lane
+	h        *byLane // the row's own of samples
+	m, r     byLane
+	share    byLane   // of a fan: see lens.steepness
+	samples  []byLane // heights of the lanes, by row from ua on
 
 	// What the marches find, by row from ua to ub and lane.
 	lines  []lines
@@ -117,7 +119,7 @@ func (p *strip) setUp(f *field, j int) bool {
 	}
 	p.copyPanel(f)
 	n := p.ub - p.ua
-	p.lines = resize(p.lines, n)
+	p.lines, p.samples = resize(p.lines, n), resize(p.samples, n)
 	p.sure, p.gentle = resize(p.sure, n), resize(p.gentle, n)
 	p.resetJags()
 	p.unsure = p.unsure[:0]
@@ -254,9 +256,7 @@ func (p *strip) sample(u int) span {
 	p.stand(u)
 	l := p.in
 	f, ln := p.f, p.f.ln
-	if ln.places != nil {
-		p.see(u)
-	}
+	p.h = &p.samples[u-p.ua]
 	z, at := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	switch {
 	case ln.uniform && l == whole:
@@ -269,22 +269,36 @@ func (p *strip) sample(u int) span {
 	default:
 		p.spread(z, p.v0-float64(at), l)
 	}
-	if ln.places != nil {
-		return p.viewLanes(l)
+	return p.view(u)
+}
+
+// view fills m and r at row u, where the strip stands, from its heights, and returns
+// the lanes that count.
+func (p *strip) view(u int) span {
+	if p.f.ln.places != nil {
+		p.see(u)
+		return p.viewLanes(p.in)
 	}
-	p.view(l)
-	return l
+	p.viewWave(p.in)
+	return p.in
+}
+
+// again is sample where the row has been sampled before.
+func (p *strip) again(u int) span {
+	p.stand(u)
+	p.h = &p.samples[u-p.ua]
+	return p.view(u)
 }
 
 // spread fills h with the heights of lanes l at columns v, v + dv and so on of z.
 func (p *strip) spread(z []float32, v float64, l span) {
 	if vectors && l == whole {
 		if p.dv > 0 && p.dv < narrow {
-			spreadNarrowVector(&p.h, z, v, p.dv)
+			spreadNarrowVector(p.h, z, v, p.dv)
 			return
 		}
 		if turn, shift := p.turn, p.shift; shift*shift <= 1 {
-			spreadVector(&p.h, z, v, p.dv, turn, shift)
+			spreadVector(p.h, z, v, p.dv, turn, shift)
 			for k := turn &^ 3; k < min((turn+3)&^3, marchLanes); k++ {
 				p.h[k] = lerp(z, v+float64(p.dv*float64(k)))
 			}
@@ -329,11 +343,11 @@ func (p *strip) heights(z []float32, rest float64) {
 	case rest > 1-onColumn:
 		z = next
 	}
-	heightsVector(&p.h, (*byLane36)(z), (*byLane36)(next), rest)
+	heightsVector(p.h, (*byLane36)(z), (*byLane36)(next), rest)
 }
 
-// view fills m and r of a plane wave from h.
-func (p *strip) view(l span) {
+// viewWave fills m and r of a plane wave from h.
+func (p *strip) viewWave(l span) {
 	ln := p.f.ln
 	m0, dm := float64(ln.cot*p.s0), float64(ln.cot*p.ds)
 	r0, dr := float64(ln.sin*p.s0), float64(ln.sin*p.ds)
@@ -604,7 +618,7 @@ func (p *strip) backward(cells func(u int)) {
 	}
 	last := p.ub + f.far + 1 // last row at which terrain was unknown or unsure
 	for u := p.ub - 1; u >= p.u0; u-- {
-		l := p.sample(u)
+		l := p.again(u)
 		if !f.sure && !f.lim.openEdge && (l.a > 0 || l.b < marchLanes || u == p.ub-1) {
 			if p.entering(l, u, 1, &st.unknown) {
 				last = u

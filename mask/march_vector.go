@@ -60,11 +60,11 @@ func spreadVector(h *byLane, z []float32, v, dv float64, turn, shift int) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// viewVector is strip.view.
+// viewVector is strip.viewWave.
 func viewVector(p *strip, m0, dm, r0, dr, cos float64) {
 	vm0, vdm, vr0, vdr, vcos := four(m0), four(dm), four(r0), four(dr), four(cos)
 	for k := 0; k < marchVectors; k += 4 {
-		h, n := lanes4(&p.h, k), lanes4(&laneNumbers, k)
+		h, n := lanes4(p.h, k), lanes4(&laneNumbers, k)
 		put4(&p.m, k, h.Add(vm0.Add(vdm.Mul(n))))
 		put4(&p.r, k, vr0.Add(vdr.Mul(n)).Sub(vcos.Mul(h)))
 	}
@@ -77,7 +77,7 @@ func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
 	lowest, highest, per := four(minShade), four(maxNearer), four(perCos)
 	none, zero := fourOf(math.NaN()), zero4()
 	for k := 0; k < marchVectors; k += 4 {
-		h, m, r := lanes4(&p.h, k), lanes4(&p.m, k), lanes4(&p.r, k)
+		h, m, r := lanes4(p.h, k), lanes4(&p.m, k), lanes4(&p.r, k)
 		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
 		put4as32(&row.shade, k, h.Add(top.Sub(m)).Max(lowest))
 		put4as32(&row.nearer, k, h.Add(r.Sub(most).Mul(per)).Min(highest))
@@ -100,7 +100,7 @@ func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
 func backwardVector(p *strip, row *lines, minFarther, perCos float64) {
 	lowest, per := four(minFarther), four(perCos)
 	for k := 0; k < marchVectors; k += 4 {
-		farther := lanes4(&p.h, k).Sub(lanes4(&p.bwd.least, k).Sub(lanes4(&p.r, k)).Mul(per))
+		farther := lanes4(p.h, k).Sub(lanes4(&p.bwd.least, k).Sub(lanes4(&p.r, k)).Mul(per))
 		put4as32(&row.farther, k, farther.Max(lowest))
 	}
 	archsimd.ClearAVXUpperBits()

@@ -31,7 +31,7 @@ func viewTrackVector(p *strip) {
 	none, least := fourOf(math.Inf(-1)), fourOf(levelShare)
 	for k := 0; k < marchVectors; k += 4 {
 		nx, ny := between4(&p.p0.nx, &p.dp.nx, k), between4(&p.p0.ny, &p.dp.ny, k)
-		h := lanes4(&p.h, k).Sub(datum)
+		h := lanes4(p.h, k).Sub(datum)
 		x := between4(&p.p0.x, &p.dp.x, k).Add(h.Mul(nx))
 		y := between4(&p.p0.y, &p.dp.y, k).Add(h.Mul(ny))
 		r := x.Mul(x).Add(y.Mul(y)).Sqrt()
@@ -60,7 +60,7 @@ func forwardTrackVector(p *strip, tops, ranges *byLane, shades, nearers *byLane3
 		shade := datum.Add(top.Mul(x).Sub(scale.Mul(y)).Div(scale.Mul(ny).Sub(top.Mul(nx))))
 		put4as32(shades, k, shade.Merge(lowest, top.Greater(none)).Max(lowest))
 		if ln.fan != nil {
-			nearer := lanes4(&p.h, k).Add(lanes4(&p.r, k).Sub(most).Div(lanes4(&p.share, k)))
+			nearer := lanes4(p.h, k).Add(lanes4(&p.r, k).Sub(most).Div(lanes4(&p.share, k)))
 			put4as32(nearers, k, nearer.Min(highest))
 			continue
 		}
@@ -128,7 +128,7 @@ func backwardTrackVector(p *strip, ranges *byLane, farthers *byLane32, minFarthe
 	for k := 0; k < marchVectors; k += 4 {
 		r := lanes4(ranges, k)
 		if ln.fan != nil {
-			farther := lanes4(&p.h, k).Add(lanes4(&p.r, k).Sub(r).Div(lanes4(&p.share, k)))
+			farther := lanes4(p.h, k).Add(lanes4(&p.r, k).Sub(r).Div(lanes4(&p.share, k)))
 			put4as32(farthers, k, farther.Max(lowest))
 			continue
 		}
@@ -169,7 +169,7 @@ func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
 	ln := p.f.ln
 	var share byLane32
 	for k := 0; k < marchVectors; k += 4 {
-		put4as32(&r.h, k, lanes4(&p.h, k))
+		put4as32(&r.h, k, lanes4(p.h, k))
 		if ln.fan != nil {
 			put4as32(&share, k, lanes4(&p.share, k))
 		}
