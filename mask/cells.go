@@ -265,6 +265,7 @@ type laneMargins struct {
 	h                   byLane32 // heights
 	sure                bool     // the U margins are those without
 	exact               bool     // lanes run through cell centres
+	of                  *lanes   // the look that the following are of; of a platform: at the row
 	// The slack, and how much roughness widens it between a lane and the next.
 	slackM, slackR         float32
 	perM, perR             float32 // rows a metre
@@ -278,17 +279,17 @@ type laneMargins struct {
 // strip has sampled.
 func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	ln := p.f.ln
-	sin, cosine := ln.sin, ln.cos
-	if ln.places != nil {
+	cosine := ln.cos
+	switch {
+	case ln.places != nil:
 		mid := p.placeOf(1 + laneStep/2)
+		var sin float64
 		sin, cosine = ln.angle(&mid, p.middleHeight())
+		r.scale(ln, sin, cosine)
+	case r.of != ln:
+		r.scale(ln, ln.sin, cosine)
 	}
-	row := ln.minDS * max(sin, levelShare)
-	r.slackM, r.slackR = float32(settleShare*ln.minDS*max(math.Abs(cosine)/sin, levelShare)), float32(settleShare*row)
-	r.sure, r.exact = sure, ln.uniform && ln.slope == 0
-	r.perM, r.perR = settleShare/r.slackM, settleShare/r.slackR
-	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
-	r.cos = float32(math.Abs(cosine))
+	r.sure = sure
 	l := p.in
 	switch {
 	case ln.places != nil:
@@ -333,6 +334,16 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	if ln.places != nil && ln.fan == nil {
 		r.trackRangesU(p, u)
 	}
+}
+
+// scale finds what a row is worth where a look has an incidence of a sine and cosine.
+func (r *laneMargins) scale(ln *lanes, sin, cosine float64) {
+	r.of, r.exact = ln, ln.uniform && ln.slope == 0
+	r.slackM = float32(settleShare * ln.minDS * max(math.Abs(cosine)/sin, levelShare))
+	r.slackR = float32(settleShare * (ln.minDS * max(sin, levelShare)))
+	r.perM, r.perR = settleShare/r.slackM, settleShare/r.slackR
+	r.tinyM, r.tinyR = float32(atLimit*float64(r.slackM)), float32(atLimit*float64(r.slackR))
+	r.cos = float32(math.Abs(cosine))
 }
 
 // roughness fills rough with the largest difference of neighbouring lanes among

@@ -81,13 +81,17 @@ func forwardVector(p *strip, row *lines, minShade, maxNearer, perCos float64) {
 		top, most := lanes4(&st.top, k), lanes4(&st.most, k)
 		put4as32(&row.shade, k, h.Add(top.Sub(m)).Max(lowest))
 		put4as32(&row.nearer, k, h.Add(r.Sub(most).Mul(per)).Min(highest))
-		// Where ground comes out of the shadow, its edge counts.
-		bm, br := lanes4(&st.m, k), lanes4(&st.r, k)
-		edge := br.Add(top.Sub(bm).Div(m.Sub(bm)).Mul(r.Sub(br)))
 		hidden := m.LessEqual(top)
-		dip := r.Sub(edge).Merge(zero, edge.LessEqual(r))
+		bm := lanes4(&st.m, k)
+		dip, best := zero, r
+		if bm.Equal(bm).ToBits()&^hidden.ToBits() != 0 {
+			// Where ground comes out of the shadow, its edge counts.
+			br := lanes4(&st.r, k)
+			edge := br.Add(top.Sub(bm).Div(m.Sub(bm)).Mul(r.Sub(br)))
+			dip = r.Sub(edge).Merge(zero, edge.LessEqual(r))
+			best = edge.Merge(r, edge.Greater(r))
+		}
 		put4as32(&row.dip, k, none.Merge(dip, hidden))
-		best := edge.Merge(r, edge.Greater(r))
 		put4(&st.most, k, most.Merge(best.Max(most), hidden))
 		put4(&st.top, k, top.Merge(m, hidden))
 		put4(&st.m, k, m.Merge(none, hidden))
