@@ -105,6 +105,9 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	line := p.line()
 	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.in == whole
 	first, straight := line.follow(va, vb-va)
+	if bundles {
+		t.mixed.stand(t, p, wk, u, &line)
+	}
 	for v := va; v < vb; v++ {
 		if bundles {
 			from := min(v, vb-bundle)
@@ -113,7 +116,7 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 				k, ok = line.follow(from, bundle)
 			}
 			if ok {
-				t.classifyBundle(p, wk, u, from, v-from, k, &line, (*[bundle]float32)(z[from-base:]))
+				t.classifyBundle(from, v-from, k, (*[bundle]float32)(z[from-base:]))
 				v = from + bundle - 1
 				continue
 			}
@@ -129,17 +132,31 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 // bundle is the number of cells that a vector holds.
 const bundle = 8
 
-// mixed is a bundle of cells not all of which are open: where it stands, and what
-// is kept for those that are looked at by themselves.
+// mixed is a bundle of cells of a row, the first at (u, v) after lane k: where it
+// stands, what the lanes say of its cells, and what is kept for those that are looked
+// at by themselves.
 type mixed struct {
 	*strip
 	*laneMargins
-	u, v, k                int
+	walk                   *walker
+	up                     lineUp
+	u                      int
+	at, stride             int  // index in the findings of column 0 of the row, and for one more
+	plain                  bool // where all are open, that is all
+	v, k                   int
 	z                      *[bundle]float32
 	w, clear, near, far    [bundle]float32
-	doubtM, doubtN, doubtG uint8 // which margins are doubtful
+	wideM, wideN, wideG    [bundle]float32 // the slacks
+	doubtM, doubtN, doubtG uint8           // which margins are doubtful
 	scattered              [2][bundle]float32
 	way                    way
+}
+
+// stand has bundles stand at row u.
+func (c *mixed) stand(t *sheet, p *strip, wk *walker, u int, line *lineUp) {
+	c.strip, c.laneMargins, c.walk, c.u, c.up = p, &t.margins, wk, u, *line
+	c.at, c.stride = t.place(p.f, u, 0)
+	c.plain = c.stride == 1 && t.margins.sure && !t.margins.exact
 }
 
 // lineUp says where the columns of a row lie between the lanes of a strip: column

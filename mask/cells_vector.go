@@ -63,43 +63,48 @@ func (l *lineUp) at8(v, k int) (w archsimd.Float32x8) {
 	return w.Masked(w.GreaterEqual(eightOf(onLane)))
 }
 
-// classifyBundle classifies the cells (u, v+skip) to (u, v+bundle-1). The lanes
-// before them follow each other; z are the heights from column v on. Most bundles
-// are open, with all margins wide.
-func (t *sheet) classifyBundle(p *strip, wk *walker, u, v, skip, k int, line *lineUp, z *[bundle]float32) {
-	r := &t.margins
-	part := line.at8(v, k)
-	i, stride := t.place(p.f, u, v)
-	if skip > 0 || stride != 1 || !r.sure || r.exact {
-		archsimd.ClearAVXUpperBits()
-		t.classifyMixed(p, wk, u, v, skip, k, line, z)
-		return
+// classifyBundle classifies the cells from column v + skip to v + bundle - 1 of a row.
+// The lanes before them follow each other from lane k on; z are the heights from
+// column v on. Most bundles are open, with all margins wide.
+func (t *sheet) classifyBundle(v, skip, k int, z *[bundle]float32) {
+	c := &t.mixed
+	c.v, c.k, c.z = v, k, z
+	if !t.open(c, skip) {
+		t.classifyMixed(c, skip)
 	}
-	x := lanes8(&r.h, k)
-	bump := absolute(archsimd.LoadFloat32x8(z).Sub(x.Add(part.Mul(lanes8(&r.h, k+1).Sub(x)))))
-	x = lanes8(&r.clear, k)
-	m := x.Add(part.Mul(lanes8(&r.clear, k+1).Sub(x)))
-	open := m.Greater(eightAt(&r.slackM).Add(bump).Add(lanes8(&r.roughM, k)))
+}
+
+// open finds what the lanes say of the cells of a bundle. It stores it and returns true
+// where they are open and nothing else need be asked.
+func (t *sheet) open(c *mixed, skip int) bool {
+	r, k := c.laneMargins, c.k
+	part := c.up.at8(c.v, k)
+	part.Store(&c.w)
+	m, n, g := blend(&r.clear, k, part), blend(&r.near, k, part), blend(&r.far, k, part)
+	bump := absolute(archsimd.LoadFloat32x8(c.z).Sub(blend(&r.h, k, part)))
+	slackM := eightAt(&r.slackM).Add(bump).Add(lanes8(&r.roughM, k))
 	slack := eightAt(&r.slackR).Add(bump)
-	x = lanes8(&r.near, k)
-	n := x.Add(part.Mul(lanes8(&r.near, k+1).Sub(x)))
-	open = open.And(n.Greater(slack.Add(lanes8(&r.roughN, k))))
-	x = lanes8(&r.far, k)
-	g := x.Add(part.Mul(lanes8(&r.far, k+1).Sub(x)))
-	open = open.And(g.Greater(slack.Add(lanes8(&r.roughF, k)))).And(part.Greater(zero8()))
-	if open.ToBits() != 0xff {
+	slackN, slackG := slack.Add(lanes8(&r.roughN, k)), slack.Add(lanes8(&r.roughF, k))
+	open := m.Greater(slackM).And(n.Greater(slackN)).And(g.Greater(slackG)).And(part.Greater(zero8())).ToBits()
+	if i := c.at + c.v*c.stride; open == 0xff && c.plain && skip == 0 {
+		binary.LittleEndian.PutUint64(t.raw[i:], allOpen)
+		if t.wantClear {
+			m.Store((*[bundle]float32)(t.clear[i:]))
+		}
+		if t.wantFold {
+			n.Min(g).Store((*[bundle]float32)(t.fold[i:]))
+		}
 		archsimd.ClearAVXUpperBits()
-		t.classifyMixed(p, wk, u, v, skip, k, line, z)
-		return
+		return true
 	}
-	binary.LittleEndian.PutUint64(t.raw[i:], allOpen)
-	if t.wantClear {
-		m.Store((*[bundle]float32)(t.clear[i:]))
-	}
-	if t.wantFold {
-		n.Min(g).Store((*[bundle]float32)(t.fold[i:]))
-	}
+	m.Store(&c.clear)
+	n.Store(&c.near)
+	g.Store(&c.far)
+	slackM.Store(&c.wideM)
+	slackN.Store(&c.wideN)
+	slackG.Store(&c.wideG)
 	archsimd.ClearAVXUpperBits()
+	return false
 }
 
 // allOpen is a bundle of open cells.
@@ -107,55 +112,43 @@ const allOpen = 0x0101010101010101 * uint64(Open)
 
 // classifyMixed is classifyBundle for any cells: those that are not doubtful at
 // once, the others one by one.
-func (t *sheet) classifyMixed(p *strip, wk *walker, u, v, skip, k int, line *lineUp, z *[bundle]float32) {
-	c := &t.mixed
-	c.strip, c.laneMargins, c.u, c.v, c.k, c.z = p, &t.margins, u, v, k, z
-	i, stride := t.place(p.f, u, v)
+func (t *sheet) classifyMixed(c *mixed, skip int) {
+	i := c.at + c.v*c.stride
 	var doubtful, single uint8
 	if t.margins.sure {
-		doubtful, single = t.mixSure(c, line, i, stride, skip)
+		doubtful, single = t.mixSure(c, i, skip)
 	} else {
-		doubtful, single = t.mixUnsure(c, line, i, stride, skip)
+		doubtful, single = t.mixUnsure(c, i, skip)
 	}
 	archsimd.ClearAVXUpperBits()
 	for single = single >> skip << skip; single != 0; single &= single - 1 {
 		j := bits.TrailingZeros8(single)
 		doubtful &^= 1 << j
-		t.classifyCell(p, wk, u, v+j, k+j, c.w[j], z[j])
+		t.classifyCell(c.strip, c.walk, c.u, c.v+j, c.k+j, c.w[j], c.z[j])
 	}
 	var m lane
 	for doubtful = doubtful >> skip << skip; doubtful != 0; doubtful &= doubtful - 1 {
 		j := bits.TrailingZeros8(doubtful)
 		doubt := c.of(j, &m)
-		t.ask(p, wk, u, v+j, k+j, c.w[j], &m, doubt)
-		t.set(i+j*stride, &m)
+		t.ask(c.strip, c.walk, c.u, c.v+j, c.k+j, c.w[j], &m, doubt)
+		t.set(i+j*c.stride, &m)
 	}
 }
 
-// blend returns a lane's numbers for the cells of a bundle.
-func (c *mixed) blend(a *byLane32, part archsimd.Float32x8) archsimd.Float32x8 {
-	x := lanes8(a, c.k)
-	return x.Add(part.Mul(lanes8(a, c.k+1).Sub(x)))
-}
-
-// slacks returns under which sizes the margins of the cells of a bundle are doubtful.
-func (c *mixed) slacks(part archsimd.Float32x8) (m, near, far archsimd.Float32x8) {
-	r := c.laneMargins
-	bump := absolute(archsimd.LoadFloat32x8(c.z).Sub(c.blend(&r.h, part)))
-	m, near = eightAt(&r.slackM).Add(bump), eightAt(&r.slackR).Add(bump)
-	return m.Add(lanes8(&r.roughM, c.k)), near.Add(lanes8(&r.roughN, c.k)), near.Add(lanes8(&r.roughF, c.k))
+// blend returns a lane's numbers for the cells of a bundle that begins after lane k.
+func blend(a *byLane32, k int, part archsimd.Float32x8) archsimd.Float32x8 {
+	x := lanes8(a, k)
+	return x.Add(part.Mul(lanes8(a, k+1).Sub(x)))
 }
 
 // mixSure stores what the lanes say of the cells of a bundle, from index i on, and
 // returns which of them are doubtful, and which are to be looked at by themselves.
 //
 //go:noinline
-func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
-	part := line.at8(c.v, c.k)
-	part.Store(&c.w)
+func (t *sheet) mixSure(c *mixed, i, skip int) (doubtful, single uint8) {
 	r := c.laneMargins
-	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
-	slackM, slackN, slackG := c.slacks(part)
+	m, n, g := archsimd.LoadFloat32x8(&c.clear), archsimd.LoadFloat32x8(&c.near), archsimd.LoadFloat32x8(&c.far)
+	slackM, slackN, slackG := archsimd.LoadFloat32x8(&c.wideM), archsimd.LoadFloat32x8(&c.wideN), archsimd.LoadFloat32x8(&c.wideG)
 	zero := zero8()
 	shadow := zero.Sub(slackM).Greater(m)
 	dark, lit := shadow.ToBits(), m.Greater(slackM).ToBits()
@@ -174,22 +167,21 @@ func (t *sheet) mixSure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, 
 		g, doubtG = positive(g, yes, &r.tinyR), doubtG&^yes
 	}
 	codes := codesOf(dark, 0, 0, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
-	t.storeBundle(i, stride, skip, codes, m, none8().Merge(n.Min(g), shadow))
+	t.storeBundle(i, c.stride, skip, codes, m, none8().Merge(n.Min(g), shadow))
 	c.doubtM, c.doubtN, c.doubtG = dim, doubtN, doubtG
-	return dim | lit&(doubtN|doubtG), c.keep(part, m, n, g)
+	return dim | lit&(doubtN|doubtG), c.keep(m, n, g)
 }
 
 // mixUnsure is mixSure where terrain may be unknown: doubtful cells are looked at
 // by themselves.
 //
 //go:noinline
-func (t *sheet) mixUnsure(c *mixed, line *lineUp, i, stride, skip int) (doubtful, single uint8) {
-	part := line.at8(c.v, c.k)
-	part.Store(&c.w)
+func (t *sheet) mixUnsure(c *mixed, i, skip int) (doubtful, single uint8) {
 	r := c.laneMargins
-	m, n, g := c.blend(&r.clear, part), c.blend(&r.near, part), c.blend(&r.far, part)
-	mU, nU, gU := c.blend(&r.clearU, part), c.blend(&r.nearU, part), c.blend(&r.farU, part)
-	slackM, slackN, slackG := c.slacks(part)
+	part := archsimd.LoadFloat32x8(&c.w)
+	m, n, g := archsimd.LoadFloat32x8(&c.clear), archsimd.LoadFloat32x8(&c.near), archsimd.LoadFloat32x8(&c.far)
+	mU, nU, gU := blend(&r.clearU, c.k, part), blend(&r.nearU, c.k, part), blend(&r.farU, c.k, part)
+	slackM, slackN, slackG := archsimd.LoadFloat32x8(&c.wideM), archsimd.LoadFloat32x8(&c.wideN), archsimd.LoadFloat32x8(&c.wideG)
 	zero := zero8()
 	shadow := zero.Sub(slackM).Greater(m)
 	dark, lit := shadow.ToBits(), m.Greater(slackM).And(absolute(mU).Greater(slackM)).ToBits()
@@ -204,15 +196,15 @@ func (t *sheet) mixUnsure(c *mixed, line *lineUp, i, stride, skip int) (doubtful
 	}
 	doubtful = dim | lit&(doubtN|doubtG)
 	if doubtful != 0 {
-		open := c.open(part, slackM, slackN, slackG)
+		open := c.clearly(part, slackM, slackN, slackG)
 		m = positive(m, open, &r.tinyM)
 		n, g = positive(n, open&doubtN, &r.tinyR), positive(g, open&doubtG, &r.tinyR)
 		unlit, unfolded = unlit&^open, unfolded&^open
 		doubtful &^= open
 	}
 	codes := codesOf(dark, unlit, unfolded, n.LessEqual(zero).ToBits(), g.LessEqual(zero).ToBits())
-	t.storeBundle(i, stride, skip, codes, m, none8().Merge(n.Min(g), shadow))
-	return 0, doubtful | c.keep(part, m, n, g)
+	t.storeBundle(i, c.stride, skip, codes, m, none8().Merge(n.Min(g), shadow))
+	return 0, doubtful | c.keep(m, n, g)
 }
 
 // storeBundle stores the codes and margins of the cells from skip on of a bundle
@@ -236,13 +228,13 @@ func (t *sheet) storeBundle(i, stride, skip int, codes uint64, clear, fold archs
 // keep keeps margins for cells that are looked at by themselves, and returns those
 // that must be: beside a lane without lines, and on a lane, where both sides are to
 // be treated alike.
-func (c *mixed) keep(part, m, n, g archsimd.Float32x8) (single uint8) {
+func (c *mixed) keep(m, n, g archsimd.Float32x8) (single uint8) {
 	m.Store(&c.clear)
 	n.Store(&c.near)
 	g.Store(&c.far)
 	single = m.Add(n).Add(g).IsNaN().ToBits()
 	if !c.exact {
-		single |= part.Equal(zero8()).ToBits()
+		single |= archsimd.LoadFloat32x8(&c.w).Equal(zero8()).ToBits()
 	}
 	return single
 }
@@ -367,11 +359,11 @@ func (e *mixed) line(u, dir int, possible bool) *byLane32 {
 
 func (e *mixed) sureAt(u int) uint8 { return e.strip.sure[u-e.ua] }
 
-// open returns which cells are open whatever stands where terrain is unknown; not
+// clearly returns which cells are open whatever stands where terrain is unknown; not
 // those with a lane that has no margins.
 //
 //go:noinline
-func (e *mixed) open(part, slackM, slackN, slackG archsimd.Float32x8) (cells uint8) {
+func (e *mixed) clearly(part, slackM, slackN, slackG archsimd.Float32x8) (cells uint8) {
 	yes, maybe := e.sides(&e.laneMargins.clear, part, slackM)
 	cells = yes | e.lit(maybe, false)
 	yes, maybe = e.sides(&e.clearU, part, slackM)
@@ -389,7 +381,7 @@ func (e *mixed) open(part, slackM, slackN, slackG archsimd.Float32x8) (cells uin
 // sides returns which of the cells have a margin larger than the slack, and which
 // are within it.
 func (e *mixed) sides(a *byLane32, part, slack archsimd.Float32x8) (yes, maybe uint8) {
-	x := e.blend(a, part)
+	x := blend(a, e.k, part)
 	yes = x.Greater(slack).ToBits()
 	return yes, x.Greater(zero8().Sub(slack)).ToBits() &^ yes
 }

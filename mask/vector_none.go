@@ -20,6 +20,6 @@ func backwardMoveVector(*strip, *lines)                                        {
 func marginsVector(*laneMargins, *byLane, *lines, float32)                     { panic(noVectors) }
 func roughnessVector(*byLane32, *byLane32, float32)                            { panic(noVectors) }
 
-func (*sheet) classifyBundle(*strip, *walker, int, int, int, int, *lineUp, *[bundle]float32) {
+func (*sheet) classifyBundle(int, int, int, *[bundle]float32) {
 	panic(noVectors)
 }
