@@ -22,6 +22,7 @@ func (w *walker) quick(p *strip, u, v, k, next int, x float64, m *lane, doubt do
 	q.ua, q.ub = max(p.ua, u-p.f.near), min(p.ub, u+1+p.f.far)
 	q.s, q.h, q.last = s, h, float64(p.f.ln.orient.v-1)
 	q.m, q.r = w.y.own(s, h)
+	q.setEnds()
 	tinyM, tinyR := float32(atLimit*slackM), float32(atLimit*slackR)
 	if doubt&doubtClear != 0 {
 		m.clear = signed(m.clear, q.lit(false), tinyM)
@@ -79,6 +80,24 @@ type quickWalk struct {
 	m, r, s, h     float64
 	slackM, slackR float64
 	last           float64 // column of the DEM
+	ends           bounds  // the least slant range that ground nearer, and the largest that ground farther may set, see setEnds
+	endM           float64 // the same of m
+}
+
+// setEnds finds what ground beyond the point's own reach may set as a limit at most. A
+// limit is brought up to it, so that it does not depend on how much farther the field
+// happens to extend, and on what happens to be beyond. Platforms go without.
+func (q *quickWalk) setEnds() {
+	f, ln := q.f, q.f.ln
+	q.endM, q.ends = math.Inf(-1), bounds{math.Inf(-1), math.Inf(1)}
+	if ln.places != nil {
+		return
+	}
+	high := max(f.lim.high, f.lim.ceiling)
+	relief := high - f.lim.low // see reach
+	q.endM, _ = ln.at(q.s-relief*(ln.cot+ln.tan), high)
+	_, q.ends.low = ln.at(q.s-relief*ln.cot, f.lim.low)
+	_, q.ends.high = ln.at(q.s+relief*ln.cot, high)
 }
 
 // cut is a sample of the surface between two rows.
@@ -112,7 +131,7 @@ func (q *quickWalk) shade(u int, s float64, unknown bool) bounds {
 		a, b = float64(row.shade[q.k]), float64(row.shade[q.next])
 	}
 	a, b = q.y.bothM(s, a, b)
-	x := around(a, b, settleShare/q.slackM)
+	x := around(max(a, q.endM), max(b, q.endM), settleShare/q.slackM)
 	if j := q.p.jagsOf(u); j != nil && !unknown && besideLane(j.shadeOn, q.k, q.next) {
 		x.low = j.least.shade[q.k]
 		for _, k := range [2]int{q.k, q.next} {
@@ -144,7 +163,8 @@ func (q *quickWalk) nearer(u int, s float64, possible bool) bounds {
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&1 == 0 {
 		a, b = unsure.nearer[q.k], unsure.nearer[q.next]
 	}
-	x := q.ranges(u, a, b, s)
+	ra, rb := q.ranges(u, a, b, s)
+	x := around(max(ra, q.ends.low), max(rb, q.ends.low), settleShare/q.slackR)
 	if besideLane(q.p.jags[u-q.p.ua].dawn, q.k, q.next) {
 		x.high = math.Inf(1)
 	}
@@ -167,7 +187,8 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	if unsure := q.p.unsureRow(u); possible && unsure != nil && q.p.sure[u-q.p.ua]&2 == 0 {
 		a, b = unsure.farther[q.k], unsure.farther[q.next]
 	}
-	x := q.ranges(u, a, b, s)
+	ra, rb := q.ranges(u, a, b, s)
+	x := around(min(ra, q.ends.high), min(rb, q.ends.high), settleShare/q.slackR)
 	if j := q.p.jagsOf(u); j != nil && besideLane(j.fartherOn, q.k, q.next) {
 		x.high = j.least.farther[q.k]
 		for _, k := range [2]int{q.k, q.next} {
@@ -179,12 +200,13 @@ func (q *quickWalk) farther(u int, s float64, possible bool) bounds {
 	return x
 }
 
-func (q *quickWalk) ranges(u int, a, b float32, s float64) bounds {
+// ranges returns the slant ranges of two lines, at heights a and b of lanes k and next
+// of row u.
+func (q *quickWalk) ranges(u int, a, b float32, s float64) (ra, rb float64) {
 	if q.f.ln.fan != nil {
-		return around(q.laneRange(u, q.k, a), q.laneRange(u, q.next, b), settleShare/q.slackR)
+		return q.laneRange(u, q.k, a), q.laneRange(u, q.next, b)
 	}
-	x, y := q.y.bothR(s, float64(a), float64(b))
-	return around(x, y, settleShare/q.slackR)
+	return q.y.bothR(s, float64(a), float64(b))
 }
 
 // walk fills q.cuts with the samples that walker.step finds between row u,

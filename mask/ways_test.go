@@ -150,6 +150,7 @@ func TestBundlesAreTheirCells(t *testing.T) {
 		{"lines of a row surely fold before those of a later one do not", 11, 7, "polar"},
 		{"the same, of unknown terrain", 6, 87, "fixed"},
 		{"cells that are not doubtful in a bundle with some that are open", 5, 45, "fixed"},
+		{"limits that ground beyond a cell's own reach sets for other cells", 1005, 36, "fixed"},
 	} {
 		s, _ := sceneOf(c.seed, c.grid, c.kind)
 		g := s.terrain.Frame
