@@ -404,6 +404,14 @@ func (st *forwardState) reset() {
 	}
 }
 
+// joinSure is for the first row where terrain may be unknown after rows where none was:
+// ground that is surely lit may be lit.
+func (st *forwardState) joinSure() {
+	for k := range padLanes {
+		st.mostU[k] = max(st.mostU[k], st.most[k])
+	}
+}
+
 // entering marks the lanes that are in the DEM at row u, where they are l, but
 // not one row back in direction dir, and reports whether there are any.
 func (p *strip) entering(l span, u, dir int, unknown *[padLanes]bool) (any bool) {
@@ -466,8 +474,13 @@ func (p *strip) forward() {
 		if p.sure[u-p.ua] = 0; u-last > f.near {
 			p.sure[u-p.ua] = 1
 			p.forwardSure(row, l)
-		} else if last == u || !p.forwardTrackUnsure(row, unsure, l) {
-			p.forwardUnsure(row, unsure, l)
+		} else {
+			if u > p.ua && p.sure[u-1-p.ua]&1 != 0 {
+				p.fwd.joinSure()
+			}
+			if last == u || !p.forwardTrackUnsure(row, unsure, l) {
+				p.forwardUnsure(row, unsure, l)
+			}
 		}
 		if u > p.ua && p.gentle[u-1-p.ua].rises&between != between {
 			p.findDawn(u)

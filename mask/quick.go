@@ -86,18 +86,39 @@ type quickWalk struct {
 
 // setEnds finds what ground beyond the point's own reach may set as a limit at most. A
 // limit is brought up to it, so that it does not depend on how much farther the field
-// happens to extend, and on what happens to be beyond. Platforms go without.
+// happens to extend: the walk meets unknown terrain at the same places. Where there is
+// none, that does not matter; a tripod's field holds all there is.
 func (q *quickWalk) setEnds() {
-	f, ln := q.f, q.f.ln
+	f := q.f
 	q.endM, q.ends = math.Inf(-1), bounds{math.Inf(-1), math.Inf(1)}
-	if ln.places != nil {
+	if f.sure || f.ln.fan != nil {
 		return
 	}
 	high := max(f.lim.high, f.lim.ceiling)
-	relief := high - f.lim.low // see reach
-	q.endM, _ = ln.at(q.s-relief*(ln.cot+ln.tan), high)
-	_, q.ends.low = ln.at(q.s-relief*ln.cot, f.lim.low)
-	_, q.ends.high = ln.at(q.s+relief*ln.cot, high)
+	if s, ok := q.seenFrom(q.u - f.near); ok {
+		q.endM = min(q.y.seeM(s, high), q.m)
+	}
+	if s, ok := q.seenFrom(q.u - f.far); ok {
+		q.ends.low = min(q.y.seeR(s, f.lim.low), q.r)
+	}
+	if s, ok := q.seenFrom(q.u + f.far); ok {
+		q.ends.high = max(q.y.seeR(s, high), q.r)
+	}
+}
+
+// seenFrom returns the ground distance at row u, false where no ground of the look's
+// lies beyond.
+func (q *quickWalk) seenFrom(u int) (s float64, ok bool) {
+	if u < 0 || u >= q.f.ln.orient.u {
+		return 0, false
+	}
+	_, s = q.y.at(u)
+	if q.f.ln.places != nil {
+		p := q.y.place(s)
+		ok = p.x > 0
+		return s, ok
+	}
+	return s, true
 }
 
 // cut is a sample of the surface between two rows.

@@ -137,26 +137,28 @@ func sceneOf(seed uint64, k int, kind string) (scene, *rand.Rand) {
 	return s, rng
 }
 
-// Cells in bundles of eight and cells one by one, as in tiles of seven columns:
-// scenes in which they differed.
-func TestBundlesAreTheirCells(t *testing.T) {
+// One tile and small ones, some without room for a bundle of eight cells: scenes in
+// which they differed.
+func TestSmallTilesOfHardScenes(t *testing.T) {
 	for _, c := range []struct {
 		why  string
 		seed uint64
 		grid int
 		kind string
+		tile int
 	}{
-		{"lanes under the track have no lines", 1, 67, "track"},
-		{"lines of a row surely fold before those of a later one do not", 11, 7, "polar"},
-		{"the same, of unknown terrain", 6, 87, "fixed"},
-		{"cells that are not doubtful in a bundle with some that are open", 5, 45, "fixed"},
-		{"limits that ground beyond a cell's own reach sets for other cells", 1005, 36, "fixed"},
+		{"lanes under the track have no lines", 1, 67, "track", 7},
+		{"lines of a row surely fold before those of a later one do not", 11, 7, "polar", 7},
+		{"the same, of unknown terrain", 6, 87, "fixed", 7},
+		{"cells that are not doubtful in a bundle with some that are open", 5, 45, "fixed", 7},
+		{"limits that ground beyond a cell's own reach sets for other cells", 1005, 36, "fixed", 7},
+		{"ground that is surely lit, before terrain is unknown", 2021, 33, "track", 9},
 	} {
 		s, _ := sceneOf(c.seed, c.grid, c.kind)
 		g := s.terrain.Frame
 		s.options.Threads, s.options.Tile = 1, 4096
 		whole := march(t, s.terrain, g.Whole(), marginLayers, s.options, s.look)[0]
-		s.options.Tile = 7
+		s.options.Tile = c.tile
 		n, classes, first := differenceOf(&whole, &march(t, s.terrain, g.Whole(), marginLayers, s.options, s.look)[0])
 		assert.Zero(t, n, "%s: %d classes: %s\n%v, %s", c.why, classes, first, s, s.look.Name)
 	}
