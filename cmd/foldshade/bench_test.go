@@ -2,6 +2,7 @@ package main
 
 import (
 	"context"
+	"math"
 	"syscall"
 	"testing"
 
@@ -122,4 +123,89 @@ func slopeSeconds(b *testing.B, ds *godal.Dataset) float64 {
 	require.NoError(b, err)
 	require.NoError(b, out.Close())
 	return cpuSeconds() - before
+}
+
+// BenchmarkBareMarchAgainstSlope measures what the masks begin with, by itself: the
+// marches of shadow and of both partners along lanes a cell apart, with their margins,
+// in plain loops over the whole DEM; no halo, no classes, no cells between the lanes,
+// no missing heights, nothing settled. It takes the least of several runs of each.
+func BenchmarkBareMarchAgainstSlope(b *testing.B) {
+	src := mirrored(b)
+	godal.RegisterAll()
+	plain := inMemory(b, src)
+	defer plain.Close()
+	declared := inMemory(b, src)
+	defer declared.Close()
+	require.NoError(b, declared.Bands()[0].SetNoData(-32767))
+	m := bareMarch{z: src.Heights}
+	for i := range m.margins {
+		m.margins[i] = make([]float32, len(m.z))
+	}
+	slope, noData, march := math.Inf(1), math.Inf(1), math.Inf(1)
+	for range 3 {
+		slope, noData = min(slope, slopeSeconds(b, plain)), min(noData, slopeSeconds(b, declared))
+	}
+	for b.Loop() {
+		before := cpuSeconds()
+		for k := 0; k < benchSide; k += bareLanes {
+			m.lanes(k)
+		}
+		march = min(march, cpuSeconds()-before)
+	}
+	b.ReportMetric(march/benchSide/benchSide*1e9, "march-ns/cell")
+	b.ReportMetric(march/slope, "ratio")
+	b.ReportMetric(march/noData, "ratio-nodata")
+}
+
+// bareLanes is how many lanes are marched abreast.
+const bareLanes = 240
+
+// bareMarch is a march at 39 degrees; margins are clearance and those of ranges, of
+// partners nearer and farther, lane by lane.
+type bareMarch struct {
+	z       []float32
+	margins [3][]float32
+}
+
+// lanes marches bareLanes lanes from lane k on, away from the radar and back; lanes
+// that leave the DEM go on at its other side.
+func (m *bareMarch) lanes(k int) {
+	const slope, incidence = 0.2, 39 * geometry.Degree
+	cot, sin, cos := 1/incidence.Tan(), incidence.Sin(), incidence.Cos()
+	var top, most, least [bareLanes]float64
+	for i := range bareLanes {
+		top[i], most[i], least[i] = math.Inf(-1), math.Inf(-1), math.Inf(1)
+	}
+	var h [bareLanes]float64
+	sample := func(u int) (s float64, at int) {
+		v := slope * float64(u)
+		first, w := k+int(v), float32(v-math.Floor(v))
+		row := m.z[u*benchSide : (u+1)*benchSide]
+		for i := range h {
+			c := (first + i) % (benchSide - 1)
+			h[i] = float64(row[c] + w*(row[c+1]-row[c]))
+		}
+		return 30 * math.Hypot(1, slope) * float64(u), u*benchSide + k
+	}
+	for u := range benchSide {
+		s, at := sample(u)
+		clear, near := m.margins[0][at:at+bareLanes], m.margins[1][at:at+bareLanes]
+		for i, h := range h {
+			m, r := h+cot*s, sin*s-cos*h
+			clear[i], near[i] = float32(m-top[i]), float32(r-most[i])
+			if m > top[i] {
+				top[i], most[i] = m, max(most[i], r)
+			}
+		}
+	}
+	for u := benchSide - 1; u >= 0; u-- {
+		s, at := sample(u)
+		clear, far := m.margins[0][at:at+bareLanes], m.margins[2][at:at+bareLanes]
+		for i, h := range h {
+			r := sin*s - cos*h
+			if far[i] = float32(least[i] - r); clear[i] > 0 {
+				least[i] = min(least[i], r)
+			}
+		}
+	}
 }
