@@ -319,7 +319,8 @@ func (p *strip) assure(u, k int) {
 	}
 }
 
-// highest returns the largest m that hides ground at row u in gap k, or more.
+// highest returns the largest m that hides ground at row u in gap k, or more, but for
+// the slack: a line may cross a bend up to a row after the row at which it counts.
 func (p *strip) highest(u, k int) float64 {
 	row := p.row(u)
 	a, b := p.m[k]-(p.h[k]-float64(row.shade[k])), p.m[k+1]-(p.h[k+1]-float64(row.shade[k+1]))
@@ -331,7 +332,7 @@ func (p *strip) highest(u, k int) float64 {
 			}
 		}
 	}
-	return x + p.jag.slackM
+	return x + (1-settleShare)*p.f.ln.rowM
 }
 
 // putForwardJags puts the limits of row u that jagged ground before it may set. A
@@ -422,13 +423,16 @@ func (p *strip) backwardJags(u int, l span) {
 
 // roughenJags widens the slack of cells between lanes where jagged ground may set the
 // limit, by as much as that may lie beside what the lanes say, and makes that of cells
-// beside jagged ground itself infinite.
+// beside jagged ground itself infinite, and of all these where terrain may be unknown.
 func (r *laneMargins) roughenJags(p *strip, u int) {
 	j := &p.jags[u-p.ua]
 	r.jagged = gapsBeside(j.lit | j.fold)
 	r.roughM[0], r.roughN[0], r.roughF[0] = 0, 0, 0
-	if x := p.jagsOf(u); x != nil {
+	x := p.jagsOf(u)
+	if x != nil {
 		r.jagged |= gapsBeside(x.shadeOn | x.nearerOn | x.fartherOn)
+	}
+	if x != nil && r.sure {
 		row, per := p.row(u), 1/p.f.ln.cos
 		minShade, maxNearer, minFarther := p.f.limitLines()
 		if x.shadeOn != 0 {
@@ -441,9 +445,13 @@ func (r *laneMargins) roughenJags(p *strip, u int) {
 			r.widen(p, &r.far, &r.roughF, &jagSide{x.fartherOn, &row.farther, &x.farther, &x.least.farther, &p.r, per, 1, r.cos, float32(minFarther)})
 		}
 	}
-	roughen(&r.roughM, j.lit)
-	roughen(&r.roughN, j.fold)
-	roughen(&r.roughF, j.fold)
+	lit, near, far := j.lit, j.fold, j.fold
+	if x != nil && !r.sure { // the lines with unknown terrain may lie elsewhere
+		lit, near, far = lit|x.shadeOn, near|x.nearerOn, far|x.fartherOn
+	}
+	roughen(&r.roughM, lit)
+	roughen(&r.roughN, near)
+	roughen(&r.roughF, far)
 }
 
 // jagSide is one of the limits of a row where jagged ground may set it for the lanes
@@ -481,9 +489,9 @@ func (r *laneMargins) widen(p *strip, margin, rough *byLane32, x *jagSide) {
 func gapsBeside(lanes uint64) uint64 { return (lanes | lanes>>1) & (1<<(laneStep+1) - 1) }
 
 // sides reports whether margins between lane k and the next may be negative, and
-// whether they may be positive, with what terrain may be unknown as well.
+// whether they may be positive.
 func (r *laneMargins) sides(a *byLane32, k int) (below, above bool) {
-	return !r.sure || !(a[k] > 0 && a[k+1] > 0), !r.sure || !(a[k] < 0 && a[k+1] < 0)
+	return !(a[k] > 0 && a[k+1] > 0), !(a[k] < 0 && a[k+1] < 0)
 }
 
 // roughen makes the slack infinite in the gaps on both sides of lanes.

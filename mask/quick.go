@@ -86,15 +86,29 @@ type quickWalk struct {
 
 // setEnds finds what ground beyond the point's own reach may set as a limit at most. A
 // limit is brought up to it, so that it does not depend on how much farther the field
-// happens to extend: the walk meets unknown terrain at the same places. Where there is
-// none, that does not matter; a tripod's field holds all there is.
+// happens to extend: the walk meets unknown terrain at the same places.
 func (q *quickWalk) setEnds() {
+	f, ln := q.f, q.f.ln
+	high := max(f.lim.high, f.lim.ceiling)
+	if ln.places != nil {
+		q.setSeenEnds(high)
+		return
+	}
+	relief := high - f.lim.low // see reach, which has a row to spare
+	far := float64(relief*ln.cot) + ln.minDS
+	q.endM, _ = ln.at(q.s-(far+float64(relief*ln.tan)), high)
+	_, q.ends.low = ln.at(q.s-far, f.lim.low)
+	_, q.ends.high = ln.at(q.s+far, high)
+}
+
+// setSeenEnds is setEnds for platforms. Where no terrain is unknown, it does not
+// matter; a tripod's field holds all there is.
+func (q *quickWalk) setSeenEnds(high float64) {
 	f := q.f
 	q.endM, q.ends = math.Inf(-1), bounds{math.Inf(-1), math.Inf(1)}
 	if f.sure || f.ln.fan != nil {
 		return
 	}
-	high := max(f.lim.high, f.lim.ceiling)
 	if s, ok := q.seenFrom(q.u - f.near); ok {
 		q.endM = min(q.y.seeM(s, high), q.m)
 	}
@@ -113,12 +127,8 @@ func (q *quickWalk) seenFrom(u int) (s float64, ok bool) {
 		return 0, false
 	}
 	_, s = q.y.at(u)
-	if q.f.ln.places != nil {
-		p := q.y.place(s)
-		ok = p.x > 0
-		return s, ok
-	}
-	return s, true
+	p := q.y.place(s)
+	return s, p.x > 0
 }
 
 // cut is a sample of the surface between two rows.
