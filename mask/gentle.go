@@ -68,7 +68,7 @@ func (p *strip) mark(u int) {
 	i := u - f.ua
 	if u+1 >= p.ub {
 		if from := i*f.width + g.base - f.at[i]; from >= 0 && f.ln.places == nil {
-			a := (*byLane42)(f.z[from:])
+			a := (*patchRow)(f.z[from:])
 			p.findJags(u, a, a)
 		}
 		return
@@ -79,7 +79,7 @@ func (p *strip) mark(u int) {
 	}
 	a, b := f.z[from:], f.z[to:]
 	if f.ln.places != nil {
-		p.markSeen(g, u, (*byLane42)(a), (*byLane42)(b))
+		p.markSeen(g, u, (*patchRow)(a), (*patchRow)(b))
 		return
 	}
 	var limits grade
@@ -89,13 +89,13 @@ func (p *strip) mark(u int) {
 	limits.jag = p.jag.any
 	if vectors {
 		var jagged bool
-		g.rises, g.lit, jagged = markVector((*byLane42)(a), (*byLane42)(b), &limits)
+		g.rises, g.lit, jagged = markVector((*patchRow)(a), (*patchRow)(b), &limits)
 		if jagged {
-			p.findJags(u, (*byLane42)(a), (*byLane42)(b))
+			p.findJags(u, (*patchRow)(a), (*patchRow)(b))
 		}
 		return
 	}
-	p.findJags(u, (*byLane42)(a), (*byLane42)(b))
+	p.findJags(u, (*patchRow)(a), (*patchRow)(b))
 	for k := range patches {
 		lo, hi := changes(a[k], a[k+1], b[k], b[k+1], &limits.drift)
 		if hi < limits.rise {
@@ -107,8 +107,8 @@ func (p *strip) mark(u int) {
 	}
 }
 
-// byLane42 holds the heights of the corners of the patches, and the next one.
-type byLane42 [patches + 2]float32
+// patchRow holds the heights of the corners of the patches, and the next one.
+type patchRow [patches + 2]float32
 
 // changes returns the least and the most that the height may change along a line
 // over the patch between a0, a1 of one row and b0, b1 of the next.

@@ -7,7 +7,7 @@ import "simd/archsimd"
 // markVector is the loop of strip.mark on vectors of eight patches. It reports whether
 // there may be jagged ground among them: for the largest bend or twist, the bits of
 // numbers that are not negative order as the numbers do, and NaN above all.
-func markVector(a, b *byLane42, g *grade) (rises, lit uint64, jagged bool) {
+func markVector(a, b *patchRow, g *grade) (rises, lit uint64, jagged bool) {
 	var worst archsimd.Int32x8
 	rise, fall := eightAt(&g.rise), eightAt(&g.fall)
 	least, most := eightAt(&g.drift[0]), eightAt(&g.drift[1])
@@ -26,7 +26,7 @@ func markVector(a, b *byLane42, g *grade) (rises, lit uint64, jagged bool) {
 }
 
 // corner are the corners of eight patches.
-func corner(z *byLane42, k int) archsimd.Float32x8 {
+func corner(z *patchRow, k int) archsimd.Float32x8 {
 	return archsimd.LoadFloat32x8((*[8]float32)(z[k:]))
 }
 

@@ -125,7 +125,7 @@ func (p *strip) findDawn(u int) {
 
 // findJags finds the jagged ground of row u, of which a are the heights, and between
 // it and the next one, of which b are.
-func (p *strip) findJags(u int, a, b *byLane42) {
+func (p *strip) findJags(u int, a, b *patchRow) {
 	j := &p.jags[u-p.ua]
 	j.columns, j.twisted = bends(a, b, p.jag.any)
 }
@@ -133,7 +133,7 @@ func (p *strip) findJags(u int, a, b *byLane42) {
 // bends returns at which heights of row a, but the first and the last, it bends by
 // more than a limit, and which of the patches between it and row b twist by more
 // than half as much. A height beside a missing one may bend by any amount.
-func bends(a, b *byLane42, limit float32) (columns, twisted uint64) {
+func bends(a, b *patchRow, limit float32) (columns, twisted uint64) {
 	for k := range patches - 1 {
 		rise := a[k+1] - a[k]
 		if bend := (a[k+2] - a[k+1]) - rise; !(abs32(bend) <= limit) && a[k+1] == a[k+1] {

@@ -45,8 +45,15 @@ type strip struct {
 
 const marchLanes = laneStep + 3
 
-// padLanes is marchLanes and room for whole vectors of eight.
-const padLanes = laneStep + 8
+// padLanes is marchLanes and room for whole vectors of eight, marchVectors just whole
+// vectors of four.
+const (
+	padLanes     = laneStep + 8
+	marchVectors = (marchLanes + 3) / 4 * 4
+)
+
+// heightRun holds neighbouring heights of a row, as many as the lanes.
+type heightRun [marchVectors]float32
 
 // byLane holds a number of each lane of a strip, byLane32 a smaller one.
 type (
@@ -343,7 +350,7 @@ func (p *strip) heights(z []float32, rest float64) {
 	case rest > 1-onColumn:
 		z = next
 	}
-	heightsVector(p.h, (*byLane36)(z), (*byLane36)(next), rest)
+	heightsVector(p.h, (*heightRun)(z), (*heightRun)(next), rest)
 }
 
 // viewWave fills m and r of a plane wave from h.

@@ -12,10 +12,6 @@ import (
 // do where all lanes lie in the DEM and no height is missing. Max and Min are for
 // numbers only: what they make of NaN is not defined.
 
-type byLane36 [36]float32
-
-const marchVectors = (marchLanes + 3) / 4 * 4
-
 func lanes4(a *byLane, k int) archsimd.Float64x4 { return archsimd.LoadFloat64x4((*[4]float64)(a[k:])) }
 
 func put4(a *byLane, k int, x archsimd.Float64x4) { x.Store((*[4]float64)(a[k:])) }
@@ -26,7 +22,7 @@ func put4as32(a *byLane32, k int, x archsimd.Float64x4) {
 
 // heightsVector is heightsAt for all lanes: z holds the heights before them, next
 // those beyond.
-func heightsVector(h *byLane, z, next *byLane36, rest float64) {
+func heightsVector(h *byLane, z, next *heightRun, rest float64) {
 	part := four(rest)
 	for k := 0; k < marchVectors; k += 4 {
 		p := archsimd.LoadFloat32x4((*[4]float32)(z[k:])).ConvertToFloat64()

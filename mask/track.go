@@ -593,7 +593,7 @@ type seenGrade struct {
 
 // markSeen is the work of strip.mark for a platform, with the heights a and b of
 // the two rows.
-func (p *strip) markSeen(g *gentle, u int, a, b *byLane42) {
+func (p *strip) markSeen(g *gentle, u int, a, b *patchRow) {
 	limits, ok := p.bounds, true
 	if p.f.ln.fan != nil {
 		limits, ok = p.gradeFan(u)

@@ -187,7 +187,7 @@ func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
 }
 
 // markSeenVector is the loop of strip.markSeen on vectors of eight patches.
-func markSeenVector(a, b *byLane42, g *seenGrade, first, last int) (rises, lit, dark uint64, high float32) {
+func markSeenVector(a, b *patchRow, g *seenGrade, first, last int) (rises, lit, dark uint64, high float32) {
 	low, all := eightOf(float32(math.Inf(-1))), eightOf(float32(math.Inf(1)))
 	from, to := archsimd.BroadcastInt32x8(int32(first)), archsimd.BroadcastInt32x8(int32(last))
 	number, highest := archsimd.LoadInt32x8(&numbers8), low

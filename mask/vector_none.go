@@ -5,14 +5,12 @@ package mask
 // vectors says that the inner loops run on vectors: not in this build.
 const vectors = false
 
-type byLane36 [0]float32
-
 const noVectors = "built without vectors"
 
 func spreadVector(*byLane, []float32, float64, float64, int, int)              { panic(noVectors) }
 func turnVectors([]float32, []float32, int, int, int, int)                     { panic(noVectors) }
-func heightsVector(*byLane, *byLane36, *byLane36, float64)                     { panic(noVectors) }
-func markVector(*byLane42, *byLane42, *grade) (rises, lit uint64, jagged bool) { panic(noVectors) }
+func heightsVector(*byLane, *heightRun, *heightRun, float64)                   { panic(noVectors) }
+func markVector(*patchRow, *patchRow, *grade) (rises, lit uint64, jagged bool) { panic(noVectors) }
 func viewVector(*strip, float64, float64, float64, float64, float64)           { panic(noVectors) }
 func forwardVector(*strip, *lines, float64, float64, float64)                  { panic(noVectors) }
 func backwardVector(*strip, *lines, float64, float64)                          { panic(noVectors) }

@@ -21,7 +21,7 @@ const guideStep = 1.4
 // lanes behind the last are NaN where that matters.
 type laneRow [guideLanes]float32
 
-const guideLanes = 40
+const guideLanes = 64
 
 // guide holds, by lane, the lines that support the ground passed so far at some
 // slopes: every line as its height over the row passed last, and the row in which
@@ -84,7 +84,7 @@ func (g *guide) advance(h *laneRow, d linear, row int) {
 //
 // How far a line is above a point is a convex function of its slope, so its chord
 // between two slopes is zero at no less than the largest slope of the ground.
-func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) uint32 {
+func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) uint64 {
 	if vectors {
 		return g.seesVector(lane, on, h0, most, &d, j, n)
 	}
@@ -92,7 +92,7 @@ func (g *guide) sees(lane int, on bool, h0, most []float32, d linear, j, n int) 
 	if on {
 		other = 0
 	}
-	out := uint32(0)
+	out := uint64(0)
 	for c := range n {
 		z, d := g.sign*h0[c], d.at(j+c)
 		l, above, below := 0, float32(0), float32(0)
@@ -145,7 +145,7 @@ func (x *windower) seek(r *windowRun, g *guide, dir int, most []float32) {
 	h0 := p.row(r.i, r.v)
 	d := r.distance(at)
 	for b := g.sees(r.lane, r.on, h0, most[r.j:], d, r.j, r.n); b != 0; b &= b - 1 {
-		c := bits.TrailingZeros32(b)
+		c := bits.TrailingZeros64(b)
 		s := x.summits.next()
 		o := &s.o
 		r.line(c, o)

@@ -52,7 +52,7 @@ func (g *guide) advanceVector(h *laneRow, d *linear, row float32) {
 	archsimd.ClearAVXUpperBits()
 }
 
-func (g *guide) seesVector(lane int, on bool, h0, most []float32, d *linear, j, n int) (out uint32) {
+func (g *guide) seesVector(lane int, on bool, h0, most []float32, d *linear, j, n int) (out uint64) {
 	other := lane + 1
 	if on {
 		other = lane
@@ -79,10 +79,10 @@ func (g *guide) seesVector(lane int, on bool, h0, most []float32, d *linear, j, 
 		m := low.Add(high.Sub(low).Mul(above.Div(above.Sub(below))))
 		seen := load(most, c)
 		larger := m.Greater(seen).Or(seen.Equal(eightAt(&g.bound)))
-		out |= uint32(above.Greater(zero).And(larger).ToBits()) << c
+		out |= uint64(above.Greater(zero).And(larger).ToBits()) << c
 	}
 	archsimd.ClearAVXUpperBits()
-	return out & uint32(1<<n-1)
+	return out & uint64(1<<n-1)
 }
 
 func (b *besideLine) slopesVector(j int, up, down []float32) int {

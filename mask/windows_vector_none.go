@@ -4,7 +4,7 @@ package mask
 
 func (*guide) advanceVector(*laneRow, *linear, float32) { panic(noVectors) }
 
-func (*guide) seesVector(int, bool, []float32, []float32, *linear, int, int) uint32 {
+func (*guide) seesVector(int, bool, []float32, []float32, *linear, int, int) uint64 {
 	panic(noVectors)
 }
 
