@@ -351,6 +351,21 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	if ln.places != nil && ln.fan == nil {
 		r.trackRangesU(p, u)
 	}
+	if !r.exact {
+		widenTo(&r.roughM, &r.clearU, r.perM)
+		widenTo(&r.roughN, &r.nearU, r.perR)
+		widenTo(&r.roughF, &r.farU, r.perR)
+	}
+}
+
+// widenTo makes rough at least the roughness of margins with unknown terrain: it may
+// lie before one lane and not before the next.
+func widenTo(rough, a *byLane32, perRow float32) {
+	var wide byLane32
+	roughness(a, &wide, perRow)
+	for k := 1; k <= laneStep; k++ {
+		rough[k] = max(rough[k], wide[k])
+	}
 }
 
 // scale finds what a row is worth where a look has an incidence of a sine and cosine.
