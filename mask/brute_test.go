@@ -396,12 +396,13 @@ type tally struct {
 	differ            int64 // determined on both sides, of another kind
 	timid, guessed    int64 // undetermined in the engine only, in the walk only
 	lone              []string
+	below             int // those of lone that a platform sees almost below itself
 }
 
 func (c *tally) add(o tally) {
 	c.cells, c.determined, c.differ = c.cells+o.cells, c.determined+o.determined, c.differ+o.differ
 	c.timid, c.guessed = c.timid+o.timid, c.guessed+o.guessed
-	c.lone = append(c.lone, o.lone...)
+	c.lone, c.below = append(c.lone, o.lone...), c.below+o.below
 }
 
 func (c tally) String() string {

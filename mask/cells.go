@@ -103,7 +103,7 @@ func (t *sheet) classifyRow(p *strip, wk *walker, u int) {
 	z, base := f.z[(u-f.ua)*f.width:], f.at[u-f.ua]
 	t.margins.fill(p, u, p.sure[u-p.ua] == 3)
 	line := p.line()
-	bundles := vectors && t.bin == 0 && vb-va >= bundle && p.in == whole
+	bundles := vectors && t.bin == 0 && vb-va >= bundle
 	first, straight := line.follow(va, vb-va)
 	if bundles {
 		t.mixed.stand(t, p, wk, u, &line)
@@ -351,20 +351,38 @@ func (r *laneMargins) fill(p *strip, u int, sure bool) {
 	if ln.places != nil && ln.fan == nil {
 		r.trackRangesU(p, u)
 	}
-	if !r.exact {
+	if r.exact {
+		return
+	}
+	if bits&1 == 0 {
 		widenTo(&r.roughM, &r.clearU, r.perM)
 		widenTo(&r.roughN, &r.nearU, r.perR)
+	}
+	if bits&2 == 0 {
 		widenTo(&r.roughF, &r.farU, r.perR)
 	}
 }
 
-// widenTo makes rough at least the roughness of margins with unknown terrain: it may
-// lie before one lane and not before the next.
+// unknownBend is the bend, in rows' worths of ground, from which on margins with
+// unknown terrain widen the slack.
+const unknownBend = 1
+
+// widenTo makes rough as large as the margins with unknown terrain bend from lane to
+// lane: it may lie before one and not before the next. Along an edge of the DEM they
+// grow evenly, and say what lies between them.
 func widenTo(rough, a *byLane32, perRow float32) {
-	var wide byLane32
-	roughness(a, &wide, perRow)
+	if vectors {
+		widenVector(rough, a, perRow)
+		return
+	}
+	bend := func(k int) float32 { return abs32((a[k+1] - a[k]) - (a[k] - a[k-1])) }
+	before := bend(1)
 	for k := 1; k <= laneStep; k++ {
-		rough[k] = max(rough[k], wide[k])
+		next := bend(k + 1)
+		d := max(before, next)
+		if before = next; !(d*perRow <= unknownBend) {
+			rough[k] = max(rough[k], d*(roughShare+float32(float32(roughGrowth*d)*perRow)))
+		}
 	}
 }
 

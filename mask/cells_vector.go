@@ -52,6 +52,22 @@ func roughnessVector(a, rough *byLane32, perRow float32) {
 	archsimd.ClearAVXUpperBits()
 }
 
+// widenVector is widenTo, with numbers ordered as in roughnessVector.
+func widenVector(rough, a *byLane32, perRow float32) {
+	share, growth, per, least := eightOf(roughShare), eightOf(roughGrowth), eight(perRow), eightOf(unknownBend)
+	bend := func(k int) archsimd.Int32x8 {
+		x := lanes8(a, k)
+		return absolute(lanes8(a, k+1).Sub(x).Sub(x.Sub(lanes8(a, k-1)))).AsInt32x8()
+	}
+	for k := 1; k <= laneStep; k += 8 {
+		d := bend(k).Max(bend(k + 1)).AsFloat32x8()
+		wide := d.Mul(share.Add(growth.Mul(d).Mul(per))).AsInt32x8()
+		r := lanes8(rough, k)
+		put8(rough, k, r.Merge(r.AsInt32x8().Max(wide).AsFloat32x8(), d.Mul(per).LessEqual(least)))
+	}
+	archsimd.ClearAVXUpperBits()
+}
+
 // at8 returns how far the cells from column v on lie beyond the lanes before them,
 // which follow each other from lane k on.
 func (l *lineUp) at8(v, k int) (w archsimd.Float32x8) {

@@ -67,7 +67,8 @@ func (p *strip) mark(u int) {
 	p.jags[u-p.ua] = jags{}
 	i := u - f.ua
 	if u+1 >= p.ub {
-		if from := i*f.width + g.base - f.at[i]; from >= 0 && f.ln.places == nil {
+		if from := i*f.width + g.base - f.at[i]; from >= 0 && f.ln.fan == nil {
+			p.limitJags()
 			a := (*patchRow)(f.z[from:])
 			p.findJags(u, a, a)
 		}
@@ -78,6 +79,7 @@ func (p *strip) mark(u int) {
 		return
 	}
 	a, b := f.z[from:], f.z[to:]
+	p.limitJags()
 	if f.ln.places != nil {
 		p.markSeen(g, u, (*patchRow)(a), (*patchRow)(b))
 		return

@@ -15,14 +15,19 @@ func markVector(a, b *patchRow, g *grade) (rises, lit uint64, jagged bool) {
 		lo, hi, known := changes8(corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1), least, most)
 		rises |= uint64(hi.Less(rise).And(known).ToBits()) << k
 		lit |= uint64(lo.Greater(fall).And(known).ToBits()) << k
-		rise := corner(a, k+1).Sub(corner(a, k))
-		bend := corner(a, k+2).Sub(corner(a, k+1)).Sub(rise)
-		twist := corner(b, k+1).Sub(corner(b, k)).Sub(rise)
-		worst = worst.Max(absolute(bend).AsInt32x8()).Max(absolute(twist.Add(twist)).AsInt32x8())
+		worst = worst.Max(bends8(corner(a, k), corner(a, k+1), corner(a, k+2), corner(b, k), corner(b, k+1)))
 	}
 	jagged = worst.Greater(eightAt(&g.jag).AsInt32x8()).ToBits() != 0
 	archsimd.ClearAVXUpperBits()
 	return rises, lit, jagged
+}
+
+// bends8 returns the larger of the bends of eight heights a1 of a row and of twice the
+// twists of the patches before them, as the bits of numbers that are not negative.
+func bends8(a0, a1, a2, b0, b1 archsimd.Float32x8) archsimd.Int32x8 {
+	rise := a1.Sub(a0)
+	bend, twist := a2.Sub(a1).Sub(rise), b1.Sub(b0).Sub(rise)
+	return absolute(bend).AsInt32x8().Max(absolute(twist.Add(twist)).AsInt32x8())
 }
 
 // corner are the corners of eight patches.

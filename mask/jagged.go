@@ -64,10 +64,16 @@ var noJags = func() (x jagLines) {
 // range of such ground so far, the smallest slant range of it on the way back, and
 // for which lanes they may set a limit.
 type jagState struct {
-	m, most, least         byLane
-	mOn, mostOn, leastOn   uint64
-	sure                   assured
-	bendLit, bendFold, any float32 // the least bends that count
+	m, most, least       byLane
+	mOn, mostOn, leastOn uint64
+	sure                 assured
+	jagLimits
+}
+
+// jagLimits are the least bends that count, for what hides and for what folds, metres,
+// and a quarter of a row's worth of m and of slant range.
+type jagLimits struct {
+	bendLit, bendFold, any float32
 	slackM, slackR         float64
 }
 
@@ -78,14 +84,57 @@ func (p *strip) resetJags() {
 	st := &p.jag
 	st.mOn, st.mostOn, st.leastOn = 0, 0, 0
 	st.sure.reset()
-	st.bendLit, st.bendFold = float32(math.Inf(1)), float32(math.Inf(1))
-	if ln.places == nil && !(ln.uniform && ln.slope == 0) {
-		st.bendLit, st.bendFold = float32(jagShare*ln.minDS*ln.cot), float32(jagShare*ln.minDS*ln.tan)
+	if ln.places == nil {
+		st.jagLimits = jagLimitsOf(ln, ln.sin, ln.cos, 1)
+		if ln.uniform && ln.slope == 0 {
+			st.noBends()
+		}
 	}
-	st.any = min(st.bendLit, st.bendFold)
-	st.slackM, st.slackR = settleShare*ln.minDS*ln.cot, settleShare*ln.minDS*ln.sin
 	p.jags = resize(p.jags, p.ub-p.ua)
 	p.jagLines = p.jagLines[:0]
+}
+
+// jagLimitsOf returns the limits for an incidence of a sine and cosine, where a metre
+// of height is worth gain of m.
+func jagLimitsOf(ln *lanes, sin, cos, gain float64) (l jagLimits) {
+	row := settleShare * ln.minDS
+	l.bendLit, l.bendFold = float32(jagShare/settleShare*row*cos/sin), float32(jagShare/settleShare*row*sin/cos)
+	l.any = min(l.bendLit, l.bendFold)
+	l.slackM, l.slackR = row*cos/sin*gain, row*sin
+	return l
+}
+
+// noBends says that no bend counts.
+func (l *jagLimits) noBends() {
+	l.bendLit, l.bendFold = float32(math.Inf(1)), float32(math.Inf(1))
+	l.any = l.bendLit
+}
+
+// limitJags finds the limits of a track for the row where the strip stands: the
+// strictest of those at the lanes at its edges that are in the DEM, and at the lowest
+// and the highest ground. Jagged ground is not looked for where all those lie under the
+// track or above the antenna.
+func (p *strip) limitJags() {
+	ln, lim, st := p.f.ln, &p.f.lim, &p.jag
+	if ln.places == nil || ln.fan != nil {
+		return
+	}
+	st.noBends()
+	if p.in.a == p.in.b {
+		return
+	}
+	for _, k := range [2]int{p.in.a, p.in.b - 1} {
+		q := p.placeOf(k)
+		for _, h := range [2]float64{lim.low, lim.high} {
+			sin, cos := ln.angle(&q, h)
+			if !(q.x > 0 && cos > 0) {
+				continue
+			}
+			l := jagLimitsOf(ln, sin, cos, ln.viewM(&q, h+1)-ln.viewM(&q, h))
+			st.bendLit, st.bendFold, st.any = min(st.bendLit, l.bendLit), min(st.bendFold, l.bendFold), min(st.any, l.any)
+			st.slackM, st.slackR = l.slackM, l.slackR
+		}
+	}
 }
 
 // jagsOf returns the limits of jagged ground at row u, nil where there are none.
@@ -166,7 +215,7 @@ func (p *strip) jagAt(u, n int, l span) (j jagged, ok bool) {
 	}
 	z := f.z[(u-f.ua)*f.width+c-f.at[u-f.ua]-1:]
 	j.bend = abs32((z[2] - z[1]) - (z[1] - z[0]))
-	m, r := f.ln.at(p.s0+float64(p.ds*x), float64(z[1]))
+	m, r := p.seenAt(x, float64(z[1]))
 	j.m, j.low, j.far = m, r, r
 	for k := j.k; k <= j.k+1; k++ {
 		if p.m[k] == p.m[k] {
@@ -188,8 +237,9 @@ func (p *strip) twistAt(u, n, here int, l span) (lanes uint64, j jagged) {
 		z := f.z[(w-f.ua)*f.width+c-f.at[w-f.ua]:]
 		for i := range 2 {
 			x := (float64(c+i) - a.v0) / a.dv
-			m, r := f.ln.at(a.s0+float64(a.ds*x), float64(z[i]))
-			j.m, j.low, j.far = max(j.m, m), min(j.low, r), max(j.far, r)
+			if m, r := p.seenFrom(w, x, float64(z[i])); !math.IsInf(m, -1) {
+				j.m, j.low, j.far = max(j.m, m), min(j.low, r), max(j.far, r)
+			}
 		}
 	}
 	return l.inside(p.lanesOver(here, c, 1)), j
@@ -262,6 +312,7 @@ func (p *strip) followTwists(u int, l span) (beside uint64) {
 // followBends is followTwists for the bends of row u, and returns the lanes beside
 // them.
 func (p *strip) followBends(u int, l span) (beside uint64) {
+	p.limitJags()
 	st := &p.jag
 	j := &p.jags[u-p.ua]
 	for c := j.columns; c != 0; c &= c - 1 {
@@ -298,7 +349,7 @@ func (p *strip) extremes(u, k int) (m, low, far float64, ok bool) {
 	last := int(p.column(float64(k + 1)))
 	for c := int(p.column(float64(k))) + 1; c <= last; c++ {
 		x := (float64(c) - p.v0) / p.dv
-		n, r := f.ln.at(p.s0+float64(p.ds*x), float64(f.z[base+c]))
+		n, r := p.seenAt(x, float64(f.z[base+c]))
 		m, low, far = min(m, n), min(low, r), max(far, r)
 	}
 	return m, low, far, m == m && far == far
@@ -323,12 +374,14 @@ func (p *strip) assure(u, k int) {
 // the slack: a line may cross a bend up to a row after the row at which it counts.
 func (p *strip) highest(u, k int) float64 {
 	row := p.row(u)
-	a, b := p.m[k]-(p.h[k]-float64(row.shade[k])), p.m[k+1]-(p.h[k+1]-float64(row.shade[k+1]))
+	a, _ := p.seen(k, float64(row.shade[k]))
+	b, _ := p.seen(k+1, float64(row.shade[k+1]))
 	x := around(a, b, settleShare/p.jag.slackM).high
 	if j := p.jagsOf(u); j != nil {
 		for i := k; i <= k+1; i++ {
 			if j.shadeOn>>i&1 != 0 {
-				x = max(x, p.m[i]-(p.h[i]-float64(j.shade[i])))
+				m, _ := p.seen(i, float64(j.shade[i]))
+				x = max(x, m)
 			}
 		}
 	}
@@ -347,13 +400,13 @@ func (p *strip) putForwardJags(u int) {
 	minShade, maxNearer, _ := p.f.limitLines()
 	for on := st.mostOn; on != 0; on &= on - 1 {
 		k := bits.TrailingZeros64(on)
-		if h := p.h[k] + (p.r[k]-st.most[k])/p.f.ln.cos; h < maxNearer {
+		if h := p.equalRange(k, st.most[k]); h < maxNearer {
 			x.nearer[k], x.nearerOn = float32(h), x.nearerOn|1<<k
 		}
 	}
 	for on := st.mOn; on != 0; on &= on - 1 {
 		k := bits.TrailingZeros64(on)
-		h := p.h[k] + (st.m[k] - p.m[k])
+		h := p.shade(k, st.m[k])
 		if !(h > minShade) {
 			continue
 		}
@@ -385,7 +438,7 @@ func (p *strip) putBackwardJags(u int, l span) {
 	_, _, minFarther := p.f.limitLines()
 	for on := st.leastOn; on != 0; on &= on - 1 {
 		k := bits.TrailingZeros64(on)
-		if h := p.h[k] - (st.least[k]-p.r[k])/p.f.ln.cos; h > minFarther {
+		if h := p.equalRange(k, st.least[k]); h > minFarther {
 			x.farther[k], x.fartherOn = float32(h), x.fartherOn|1<<k
 		}
 	}
@@ -423,7 +476,8 @@ func (p *strip) backwardJags(u int, l span) {
 
 // roughenJags widens the slack of cells between lanes where jagged ground may set the
 // limit, by as much as that may lie beside what the lanes say, and makes that of cells
-// beside jagged ground itself infinite, and of all these where terrain may be unknown.
+// beside jagged ground itself infinite, and of all these where terrain may be unknown
+// and for platforms.
 func (r *laneMargins) roughenJags(p *strip, u int) {
 	j := &p.jags[u-p.ua]
 	r.jagged = gapsBeside(j.lit | j.fold)
@@ -432,7 +486,8 @@ func (r *laneMargins) roughenJags(p *strip, u int) {
 	if x != nil {
 		r.jagged |= gapsBeside(x.shadeOn | x.nearerOn | x.fartherOn)
 	}
-	if x != nil && r.sure {
+	bounded := r.sure && p.f.ln.places == nil
+	if x != nil && bounded {
 		row, per := p.row(u), 1/p.f.ln.cos
 		minShade, maxNearer, minFarther := p.f.limitLines()
 		if x.shadeOn != 0 {
@@ -446,7 +501,7 @@ func (r *laneMargins) roughenJags(p *strip, u int) {
 		}
 	}
 	lit, near, far := j.lit, j.fold, j.fold
-	if x != nil && !r.sure { // the lines with unknown terrain may lie elsewhere
+	if x != nil && !bounded { // the lines with unknown terrain may lie elsewhere
 		lit, near, far = lit|x.shadeOn, near|x.nearerOn, far|x.fartherOn
 	}
 	roughen(&r.roughM, lit)

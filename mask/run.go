@@ -263,9 +263,10 @@ func (r *runner) tileSize() int {
 		}
 		return (most+t*t*(24+bands))*int64(r.threads) <= memory
 	}
-	// Four tiles a worker balance their unequal costs. A tripod has one: the lanes
-	// of each tile are marched from the radar on.
-	w, tiles := r.job.Window, 4*r.threads
+	// Two tiles a worker balance their unequal costs, and more of them would march
+	// more ground twice. A tripod has one: the lanes of each tile are marched from the
+	// radar on.
+	w, tiles := r.job.Window, 2*r.threads
 	for _, ln := range r.looks {
 		if ln.fan != nil {
 			tiles = r.threads

@@ -328,7 +328,7 @@ func (w *walker) nearest(r, mostU float64) (sure, possible float64) {
 	for n, i := range w.stack {
 		q := w.seq[i]
 		best := q.r
-		if n+1 < len(w.stack) && w.stack[n+1] != i+1 && !w.seq[i+1].unknown {
+		if n+1 < len(w.stack) && w.stack[n+1] != i+1 && !w.seq[i+1].unknown && w.seq[i+1].m > math.Inf(-1) {
 			next, top := w.seq[i+1], w.seq[w.stack[n+1]].m
 			best = max(best, w.y.rise(&q, &next, next.sag, top))
 		}

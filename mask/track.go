@@ -332,7 +332,10 @@ func (tr *tracker) bound(lim dem.Range) {
 }
 
 // see takes the places of the lanes at row u from the lattice.
-func (p *strip) see(u int) {
+func (p *strip) see(u int) { p.p0, p.dp = p.placesOf(u) }
+
+// placesOf returns the place of lane 0 at row u, and the change for one lane.
+func (p *strip) placesOf(u int) (p0, dp place) {
 	ln := p.f.ln
 	i := min(u/laneStep, ln.nu-2)
 	n, q := i*ln.nk+p.j, float64(u-laneStep*i)/laneStep
@@ -342,8 +345,8 @@ func (p *strip) see(u int) {
 	}
 	a, b := mix(&ln.places[n], &ln.places[n+ln.nk]), mix(&ln.places[n+1], &ln.places[n+1+ln.nk])
 	d := b.minus(a)
-	p.dp = place{d.x * (1. / laneStep), d.y * (1. / laneStep), d.nx * (1. / laneStep), d.ny * (1. / laneStep)}
-	p.p0 = a.minus(p.dp)
+	dp = place{d.x * (1. / laneStep), d.y * (1. / laneStep), d.nx * (1. / laneStep), d.ny * (1. / laneStep)}
+	return a.minus(dp), dp
 }
 
 // viewLanes fills m and r as a platform sees them and returns the lanes that
@@ -378,6 +381,27 @@ func (p *strip) seen(k int, h float64) (m, r float64) {
 	}
 	q := p.placeOf(k)
 	return p.f.ln.view(&q, h)
+}
+
+// seenAt is seen for a lane that may be fractional, seenFrom the same at row u.
+func (p *strip) seenAt(lane, h float64) (m, r float64) {
+	ln := p.f.ln
+	if ln.places == nil {
+		return ln.at(p.s0+float64(p.ds*lane), h)
+	}
+	q := p.p0.plus(p.dp, lane)
+	return ln.view(&q, h)
+}
+
+func (p *strip) seenFrom(u int, lane, h float64) (m, r float64) {
+	ln := p.f.ln
+	if ln.places == nil {
+		a := p.footingOf(u)
+		return ln.at(a.s0+float64(a.ds*lane), h)
+	}
+	p0, dp := p.placesOf(u)
+	q := p0.plus(dp, lane)
+	return ln.view(&q, h)
 }
 
 // shade returns the height at which lane k reaches top.
@@ -589,6 +613,7 @@ type seenGrade struct {
 	fall, dark, perHeight float32 // at height 0: the look angle grows above fall, falls below dark
 	drift                 [2]float32
 	worthR, worthM, steep float32 // see gentle
+	jag                   float32 // see grade
 }
 
 // markSeen is the work of strip.mark for a platform, with the heights a and b of
@@ -605,12 +630,20 @@ func (p *strip) markSeen(g *gentle, u int, a, b *patchRow) {
 		return
 	}
 	g.worthR, g.worthM, g.steep = limits.worthR, limits.worthM, limits.steep
+	limits.jag = p.jag.any
 	first, last := p.between(g.base, &limits.drift)
 	high := float32(math.Inf(-1))
 	if vectors {
-		g.rises, g.lit, g.dark, high = markSeenVector(a, b, &limits, first, last)
+		var jagged bool
+		g.rises, g.lit, g.dark, high, jagged = markSeenVector(a, b, &limits, first, last)
 		g.top = p.topOf(u, high)
+		if jagged && p.f.ln.fan == nil {
+			p.findJags(u, a, b)
+		}
 		return
+	}
+	if p.f.ln.fan == nil {
+		p.findJags(u, a, b)
 	}
 	for k := range patches {
 		if k >= first && k <= last {

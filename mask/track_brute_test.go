@@ -177,6 +177,7 @@ func (w *trackWalker) active(a *antenna, row, col int) bool {
 type trackAnswer struct {
 	answer
 	worthM, worthR float64
+	angle          float64 // from the downward vertical at the antenna
 }
 
 func (w *trackWalker) at(row, col int, buf []seenAs) (out trackAnswer) {
@@ -192,6 +193,7 @@ func (w *trackWalker) at(row, col int, buf []seenAs) (out trackAnswer) {
 	a, _ := w.abreast(own)
 	inf := math.Inf(1)
 	angle0, r0 := a.see(own.ECEF())
+	out.angle = angle0
 	here := w.grid.At(float64(row), float64(col))
 	cell := max(math.Hypot(here.ColE, here.ColN), math.Hypot(here.RowE, here.RowN))
 	out.worthM, out.worthR = cell/view.Incidence.Tan(), cell*view.Incidence.Sin()
@@ -339,6 +341,9 @@ func compareTrack(t testing.TB, w *trackWalker, got *raster, answers map[int]tra
 			f := fine.at(row, col, nil)
 			if f.kind == have.kind && f.shadowKind == have.shadowKind {
 				continue
+			}
+			if f.angle < belowAngle {
+				c.below++
 			}
 			c.lone = append(c.lone, fmt.Sprintf("row %d, column %d: engine %d, shadow layer %d; walk %d, %d (%+.4g m clear, %+.4g m from a fold); walk in thousandths %d, %d (%+.4g, %+.4g)",
 				row, col, have.kind, have.shadowKind, a.kind, a.shadowKind, a.m, a.r, f.kind, f.shadowKind, f.m, f.r))

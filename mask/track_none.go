@@ -11,6 +11,6 @@ func backwardTrackVector(*strip, *byLane, *byLane32, float64)                 { 
 func trackMarginsVector(*laneMargins, *strip, *lines)                         { panic(noVectors) }
 
 func spreadNarrowVector(*byLane, []float32, float64, float64) { panic(noVectors) }
-func markSeenVector(_, _ *patchRow, _ *seenGrade, _, _ int) (rises, lit, dark uint64, high float32) {
+func markSeenVector(_, _ *patchRow, _ *seenGrade, _, _ int) (rises, lit, dark uint64, high float32, jagged bool) {
 	panic(noVectors)
 }

@@ -186,8 +186,10 @@ func trackMarginsVector(r *laneMargins, p *strip, row *lines) {
 	archsimd.ClearAVXUpperBits()
 }
 
-// markSeenVector is the loop of strip.markSeen on vectors of eight patches.
-func markSeenVector(a, b *patchRow, g *seenGrade, first, last int) (rises, lit, dark uint64, high float32) {
+// markSeenVector is the loop of strip.markSeen on vectors of eight patches; jagged as
+// markVector has it.
+func markSeenVector(a, b *patchRow, g *seenGrade, first, last int) (rises, lit, dark uint64, high float32, jagged bool) {
+	var worst archsimd.Int32x8
 	low, all := eightOf(float32(math.Inf(-1))), eightOf(float32(math.Inf(1)))
 	from, to := archsimd.BroadcastInt32x8(int32(first)), archsimd.BroadcastInt32x8(int32(last))
 	number, highest := archsimd.LoadInt32x8(&numbers8), low
@@ -196,6 +198,7 @@ func markSeenVector(a, b *patchRow, g *seenGrade, first, last int) (rises, lit, 
 	for k := 0; k < patches; k += 8 {
 		a0, a1, b0, b1 := corner(a, k), corner(a, k+1), corner(b, k), corner(b, k+1)
 		lo, hi, known := changes8(a0, a1, b0, b1, least, most)
+		worst = worst.Max(bends8(a0, a1, corner(a, k+2), b0, b1))
 		top, bottom := a0.Max(a1).Max(b0.Max(b1)), a0.Min(a1).Min(b0.Min(b1))
 		at := archsimd.BroadcastInt32x8(int32(k)).Add(number)
 		outside := at.Greater(to).Or(from.Greater(at))
@@ -206,6 +209,8 @@ func markSeenVector(a, b *patchRow, g *seenGrade, first, last int) (rises, lit, 
 	}
 	var tops [8]float32
 	highest.Store(&tops)
+	jagged = worst.Greater(eightAt(&g.jag).AsInt32x8()).ToBits() != 0
 	archsimd.ClearAVXUpperBits()
-	return rises, lit, dark, max(tops[0], tops[1], tops[2], tops[3], tops[4], tops[5], tops[6], tops[7])
+	high = max(tops[0], tops[1], tops[2], tops[3], tops[4], tops[5], tops[6], tops[7])
+	return rises, lit, dark, high, jagged
 }

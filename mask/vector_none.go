@@ -17,6 +17,7 @@ func backwardVector(*strip, *lines, float64, float64)                          {
 func backwardMoveVector(*strip, *lines)                                        { panic(noVectors) }
 func marginsVector(*laneMargins, *byLane, *lines, float32)                     { panic(noVectors) }
 func roughnessVector(*byLane32, *byLane32, float32)                            { panic(noVectors) }
+func widenVector(*byLane32, *byLane32, float32)                                { panic(noVectors) }
 
 func (*sheet) classifyBundle(int, int, int, *[bundle]float32) {
 	panic(noVectors)

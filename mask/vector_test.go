@@ -164,3 +164,56 @@ func TestVectorsGiveTheSameLayers(t *testing.T) {
 		}
 	}
 }
+
+// TestWidenedSlacks: vectors and loops widen slacks alike, with lanes that are missing
+// and limits that are infinite, and only beside bends.
+func TestWidenedSlacks(t *testing.T) {
+	if !bothWays(t) {
+		return
+	}
+	defer func() { vectors = true }()
+	const seed, perRow = 20261203, 0.1
+	rng := rand.New(rand.NewPCG(seed, 5))
+	for n := range 200 {
+		var a, rough byLane32
+		for k := range a {
+			a[k], rough[k] = float32(40+3*k), float32(n%7)
+			switch {
+			case n > 0 && rng.IntN(15) == 0:
+				a[k] = float32(nan)
+			case n > 0 && rng.IntN(15) == 0:
+				a[k] = float32(math.Inf(1 - 2*rng.IntN(2)))
+			case n > 0 && rng.IntN(4) == 0:
+				a[k] += float32(30 * rng.NormFloat64())
+			}
+			if rng.IntN(20) == 0 {
+				rough[k] = float32([2]float64{nan, math.Inf(1)}[rng.IntN(2)])
+			}
+		}
+		before, loops := rough, rough
+		vectors = true
+		widenTo(&rough, &a, perRow)
+		vectors = false
+		widenTo(&loops, &a, perRow)
+		for k := 1; k <= laneStep; k++ {
+			want := before[k]
+			d := max(math.Abs(float64(a[k+1]-2*a[k]+a[k-1])), math.Abs(float64(a[k+2]-2*a[k+1]+a[k])))
+			if !(d*perRow <= 1) {
+				want = float32(max(float64(want), d*(roughShare+roughGrowth*d*perRow)))
+			}
+			require.InEpsilon(t, 1+off32(want), 1+off32(loops[k]), 1e-5, "seed %d, round %d, lane %d", seed, n, k)
+			require.Equal(t, off32(loops[k]), off32(rough[k]), "seed %d, round %d, lane %d", seed, n, k)
+		}
+	}
+}
+
+// off32 returns a number as one that compares: NaN as -1.5, an infinite one as -2.5.
+func off32(x float32) float64 {
+	switch {
+	case x != x:
+		return -1.5
+	case math.IsInf(float64(x), 0):
+		return -2.5
+	}
+	return float64(x)
+}
