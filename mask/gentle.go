@@ -152,8 +152,8 @@ func (g *gentle) rising(va, vb float64) bool {
 	return c != 0 && g.rises&c == c
 }
 
-// between are the bits of the patches between the lanes of a strip, about.
-const between = 1<<(laneStep+4) - 1
+// allPatches are the bits of all patches of a row.
+const allPatches = 1<<patches - 1
 
 // lanesOver returns the lanes of row u that touch patches, the first at column base,
 // or lie next to them.

@@ -310,10 +310,11 @@ type cut struct {
 	options mask.Options
 }
 
-// cuts returns tile sizes about a block of 32, and windows anywhere.
+// cuts returns tile sizes about a block of views and a strip of lanes, and windows
+// anywhere.
 func cuts(rng *rand.Rand, rows, cols int) []cut {
 	all := []cut{{dem.Window{Rows: rows, Cols: cols}, mask.DefaultOptions()}}
-	for _, tile := range []int{1 + rng.IntN(9), 31, 32, 33, 64, 130, 131, 132, 4096} {
+	for _, tile := range []int{4 + rng.IntN(6), 31, 32, 33, 56, 57, 64, 131, 4096} {
 		o := mask.DefaultOptions()
 		o.Tile, o.Threads = tile, rng.IntN(6)
 		all = append(all, cut{dem.Window{Rows: rows, Cols: cols}, o})

@@ -120,6 +120,7 @@ func (p *strip) limitJags() {
 		return
 	}
 	st.noBends()
+	st.slackM, st.slackR = 0, 0
 	if p.in.a == p.in.b {
 		return
 	}
@@ -132,7 +133,7 @@ func (p *strip) limitJags() {
 			}
 			l := jagLimitsOf(ln, sin, cos, ln.viewM(&q, h+1)-ln.viewM(&q, h))
 			st.bendLit, st.bendFold, st.any = min(st.bendLit, l.bendLit), min(st.bendFold, l.bendFold), min(st.any, l.any)
-			st.slackM, st.slackR = l.slackM, l.slackR
+			st.slackM, st.slackR = max(st.slackM, l.slackM), max(st.slackR, l.slackR)
 		}
 	}
 }
@@ -164,7 +165,7 @@ func (p *strip) findDawn(u int) {
 	g := &p.gentle[u-1-p.ua]
 	dip := &p.row(u - 1).dip
 	var lanes uint64
-	for on := p.lanesOver(u-1, g.base, ^g.rises&between); on != 0; on &= on - 1 {
+	for on := p.lanesOver(u-1, g.base, ^g.rises); on != 0; on &= on - 1 {
 		if k := bits.TrailingZeros64(on); dip[k] != dip[k] {
 			lanes |= 1 << k
 		}
@@ -312,7 +313,6 @@ func (p *strip) followTwists(u int, l span) (beside uint64) {
 // followBends is followTwists for the bends of row u, and returns the lanes beside
 // them.
 func (p *strip) followBends(u int, l span) (beside uint64) {
-	p.limitJags()
 	st := &p.jag
 	j := &p.jags[u-p.ua]
 	for c := j.columns; c != 0; c &= c - 1 {
@@ -385,7 +385,7 @@ func (p *strip) highest(u, k int) float64 {
 			}
 		}
 	}
-	return x + (1-settleShare)*p.f.ln.rowM
+	return x + (1/settleShare-1)*p.jag.slackM
 }
 
 // putForwardJags puts the limits of row u that jagged ground before it may set. A
@@ -446,6 +446,7 @@ func (p *strip) putBackwardJags(u int, l span) {
 
 // backwardJags follows jagged ground towards the radar, as forwardJags.
 func (p *strip) backwardJags(u int, l span) {
+	p.limitJags()
 	st := &p.jag
 	j := &p.jags[u-p.ua]
 	for c := j.columns; c != 0; c &= c - 1 {
@@ -500,13 +501,25 @@ func (r *laneMargins) roughenJags(p *strip, u int) {
 			r.widen(p, &r.far, &r.roughF, &jagSide{x.fartherOn, &row.farther, &x.farther, &x.least.farther, &p.r, per, 1, r.cos, float32(minFarther)})
 		}
 	}
-	lit, near, far := j.lit, j.fold, j.fold
+	unseen := p.beyondPatches(u)
+	r.jagged |= gapsBeside(unseen)
+	lit, near, far := j.lit|unseen, j.fold|unseen, j.fold|unseen
 	if x != nil && !bounded { // the lines with unknown terrain may lie elsewhere
 		lit, near, far = lit|x.shadeOn, near|x.nearerOn, far|x.fartherOn
 	}
 	roughen(&r.roughM, lit)
 	roughen(&r.roughN, near)
 	roughen(&r.roughF, far)
+}
+
+// beyondPatches returns the lanes of row u beyond the columns in which jagged ground is
+// looked for: none but where lanes spread by a tenth, on wide grids near a pole.
+func (p *strip) beyondPatches(u int) (lanes uint64) {
+	last := float64(p.gentle[u-p.ua].base + patches - 1)
+	for k := marchLanes - 1; k > 0 && p.column(float64(k)) > last; k-- {
+		lanes |= 1 << k
+	}
+	return lanes
 }
 
 // jagSide is one of the limits of a row where jagged ground may set it for the lanes

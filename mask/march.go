@@ -489,7 +489,7 @@ func (p *strip) forward() {
 				p.forwardUnsure(row, unsure, l)
 			}
 		}
-		if u > p.ua && p.gentle[u-1-p.ua].rises&between != between {
+		if u > p.ua && p.gentle[u-1-p.ua].rises != allPatches {
 			p.findDawn(u)
 		}
 		if p.jag.mOn|p.jag.mostOn|p.jags[u-p.ua].columns|p.jags[max(u-1-p.ua, 0)].twisted != 0 {

@@ -613,7 +613,7 @@ func (q *quickWalk) foldedFarther(possible bool) bool {
 				}
 				if g.m > top {
 					best := g.r
-					if hidden && before.r < best {
+					if hidden && before.r < best && before.m > math.Inf(-1) {
 						x := g.point()
 						best = q.y.rise(&before, &x, g.sag, top)
 					}

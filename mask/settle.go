@@ -379,7 +379,7 @@ func (w *walker) away(u0 int, m, r float64) (sure, possible float64) {
 				continue
 			}
 			best := q.r
-			if hidden && !prev.unknown {
+			if hidden && !prev.unknown && prev.m > math.Inf(-1) {
 				best = min(best, w.y.rise(&prev, &q, q.sag, top))
 			}
 			if !q.close || best <= r {
