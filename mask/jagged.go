@@ -97,10 +97,10 @@ func (p *strip) resetJags() {
 // jagLimitsOf returns the limits for an incidence of a sine and cosine, where a metre
 // of height is worth gain of m.
 func jagLimitsOf(ln *lanes, sin, cos, gain float64) (l jagLimits) {
-	row := settleShare * ln.minDS
-	l.bendLit, l.bendFold = float32(jagShare/settleShare*row*cos/sin), float32(jagShare/settleShare*row*sin/cos)
+	row := ln.minDS
+	l.bendLit, l.bendFold = float32(jagShare*row*cos/sin), float32(jagShare*row*sin/cos)
 	l.any = min(l.bendLit, l.bendFold)
-	l.slackM, l.slackR = row*cos/sin*gain, row*sin
+	l.slackM, l.slackR = settleShare*row*cos/sin*gain, settleShare*row*sin
 	return l
 }
 
@@ -111,8 +111,8 @@ func (l *jagLimits) noBends() {
 }
 
 // limitJags finds the limits of a track for the row where the strip stands: the
-// strictest of those at the lanes at its edges that are in the DEM, and at the lowest
-// and the highest ground. Jagged ground is not looked for where all those lie under the
+// least bends and the largest slacks of those at the lanes at its edges that are in
+// the DEM, and at the lowest and the highest ground. Jagged ground is not looked for where all those lie under the
 // track or above the antenna.
 func (p *strip) limitJags() {
 	ln, lim, st := p.f.ln, &p.f.lim, &p.jag

@@ -385,22 +385,24 @@ func (p *strip) seen(k int, h float64) (m, r float64) {
 
 // seenAt is seen for a lane that may be fractional, seenFrom the same at row u.
 func (p *strip) seenAt(lane, h float64) (m, r float64) {
-	ln := p.f.ln
-	if ln.places == nil {
-		return ln.at(p.s0+float64(p.ds*lane), h)
-	}
-	q := p.p0.plus(p.dp, lane)
-	return ln.view(&q, h)
+	return p.f.ln.seenOn(p.footing, &p.p0, &p.dp, lane, h)
 }
 
 func (p *strip) seenFrom(u int, lane, h float64) (m, r float64) {
-	ln := p.f.ln
+	var p0, dp place
+	if p.f.ln.places != nil {
+		p0, dp = p.placesOf(u)
+	}
+	return p.f.ln.seenOn(p.footingOf(u), &p0, &dp, lane, h)
+}
+
+// seenOn is seen on a row that lanes cross at a, of a platform with lane 0 at p0 and
+// dp from each to the next.
+func (ln *lanes) seenOn(a *footing, p0, dp *place, lane, h float64) (m, r float64) {
 	if ln.places == nil {
-		a := p.footingOf(u)
 		return ln.at(a.s0+float64(a.ds*lane), h)
 	}
-	p0, dp := p.placesOf(u)
-	q := p0.plus(dp, lane)
+	q := p0.plus(*dp, lane)
 	return ln.view(&q, h)
 }
 
