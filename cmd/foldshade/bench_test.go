@@ -104,7 +104,7 @@ func BenchmarkMasksAgainstSlope(b *testing.B) {
 
 // inMemory returns the heights of a benchmark as a raster in memory, with or without a
 // nodata value declared, until the benchmark ends.
-func inMemory(b *testing.B, src *dem.Memory, noData bool) *godal.Dataset {
+func inMemory(b testing.TB, src *dem.Memory, noData bool) *godal.Dataset {
 	godal.RegisterAll()
 	ds, err := godal.Create(godal.Memory, "", 1, godal.Float32, benchSide, benchSide)
 	require.NoError(b, err)
